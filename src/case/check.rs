@@ -1,0 +1,142 @@
+//! Ranges of the case's numbers, each stated once.
+
+use super::{Case, DutyCase, Store, VERSION};
+use crate::fault::{Fault, Result};
+
+/// Powers and energies beyond this (kW, kWh, kg, l) are slips of the pen: a thousand times the largest plants.
+const MOST: f64 = 1e12;
+
+/// Longest lists and names.
+const MOST_ENTRIES: usize = 200;
+
+/// Refuses a version from the future before the fields are looked at, so that the remedy is the right one.
+pub(super) fn version(text: &str) -> Result<()> {
+    #[derive(serde::Deserialize)]
+    struct Head {
+        millpond_case: Option<serde_json::Value>,
+    }
+    let head: Head = serde_json::from_str(text).map_err(|error| {
+        Fault::new(
+            format!("this is not a case file: {error}"),
+            format!("case file, row {}, column {}", error.line(), error.column()),
+            "Choose a case file (JSON) that this program wrote.",
+        )
+    })?;
+    match head.millpond_case.as_ref().map(serde_json::Value::as_u64) {
+        Some(Some(version)) if version == u64::from(VERSION) => Ok(()),
+        Some(Some(version)) if version > u64::from(VERSION) => Err(Fault::new(
+            format!("the case is of version {version}; this program reads up to version {VERSION}"),
+            "case file, at millpond_case",
+            "Open it with a newer Millpond.",
+        )),
+        _ => Err(Fault::new(
+            "the case does not state its version",
+            "case file, at millpond_case",
+            format!("Add \"millpond_case\": {VERSION}."),
+        )),
+    }
+}
+
+pub(super) fn ranges(case: &Case) -> Result<()> {
+    let record = &case.record;
+    optional("record.step_s", record.step_s, 1e-3, 31_536_000.0, "s")?;
+    count("record.roles", record.roles.len())?;
+    count("record.units", record.units.len())?;
+    for (field, mark, allowed) in
+        [("record.separator", record.separator, ",;\t|"), ("record.decimal", record.decimal, ".,")]
+    {
+        if let Some(mark) = mark
+            && !allowed.contains(mark)
+        {
+            return Err(Fault::new(
+                format!("{field} is {mark:?}"),
+                format!("case, at {field}"),
+                format!("Give one of {allowed:?}."),
+            ));
+        }
+    }
+    if let DutyCase::Limits { import_limit_kw, export_limit_kw, .. } = &case.duty {
+        optional("duty.import_limit_kw", *import_limit_kw, 0.0, MOST, "kW")?;
+        optional("duty.export_limit_kw", *export_limit_kw, 0.0, MOST, "kW")?;
+    }
+    let requirement = &case.requirement;
+    number("requirement.charge_efficiency", requirement.charge_efficiency, 1e-3, 1.0, "")?;
+    number("requirement.discharge_efficiency", requirement.discharge_efficiency, 1e-3, 1.0, "")?;
+    number("requirement.self_discharge_per_h", requirement.self_discharge_per_h, 0.0, 1e3, "1/h")?;
+    number("requirement.standing_kw", requirement.standing_kw, 0.0, MOST, "kW")?;
+    number("requirement.served_share", requirement.served_share, 0.0, 1.0, "")?;
+    number("requirement.depth", requirement.depth, 1e-2, 1.0, "")?;
+    number("requirement.end_of_life", requirement.end_of_life, 1e-2, 1.0, "")?;
+    number("requirement.margin", requirement.margin, 0.0, 10.0, "")?;
+    list("requirement.unserved_shares", &requirement.unserved_shares, 0.0, 1.0, "")?;
+    list("requirement.powers_kw", &requirement.powers_kw, 0.0, MOST, "kW")?;
+    list("requirement.band_edges_s", &requirement.band_edges_s, 1e-3, 1e10, "s")?;
+    if requirement.band_edges_s.windows(2).any(|pair| pair[0] >= pair[1]) {
+        return Err(Fault::new(
+            "requirement.band_edges_s do not rise",
+            "case, at requirement.band_edges_s",
+            "List the edges from short to long, each once.",
+        ));
+    }
+    let site = &case.site;
+    optional("site.mass_budget_kg", site.mass_budget_kg, 1e-6, MOST, "kg")?;
+    optional("site.volume_budget_l", site.volume_budget_l, 1e-6, MOST, "l")?;
+    optional("site.service_life_years", site.service_life_years, 0.01, 1000.0, "years")?;
+    optional("site.response_s", site.response_s, 0.0, 1e9, "s")?;
+    optional("site.transfer_s", site.transfer_s, 0.0, 1e9, "s")?;
+    optional("site.ambient_least_c", site.ambient_least_c, -273.15, 200.0, "degrees Celsius")?;
+    optional("site.ambient_greatest_c", site.ambient_greatest_c, -273.15, 200.0, "degrees Celsius")?;
+    if let (Some(least), Some(greatest)) = (site.ambient_least_c, site.ambient_greatest_c)
+        && least > greatest
+    {
+        return Err(Fault::new(
+            format!("the lowest air temperature, {least}, is above the highest, {greatest}"),
+            "case, at site.ambient_least_c",
+            "Exchange the two.",
+        ));
+    }
+    count("stores", case.stores.len())?;
+    for (i, Store::Fixed(store)) in case.stores.iter().enumerate() {
+        let at = |field: &str| format!("stores[{i}].{field}");
+        optional(&at("charge_kw"), store.charge_kw, 0.0, MOST, "kW")?;
+        optional(&at("discharge_kw"), store.discharge_kw, 0.0, MOST, "kW")?;
+        number(&at("energy_kwh"), store.energy_kwh, 0.0, MOST, "kWh")?;
+        number(&at("charge_efficiency"), store.charge_efficiency, 1e-3, 1.0, "")?;
+        number(&at("discharge_efficiency"), store.discharge_efficiency, 1e-3, 1.0, "")?;
+        number(&at("self_discharge_per_h"), store.self_discharge_per_h, 0.0, 1e3, "1/h")?;
+        number(&at("standing_kw"), store.standing_kw, 0.0, MOST, "kW")?;
+    }
+    Ok(())
+}
+
+fn number(field: &str, value: f64, least: f64, greatest: f64, unit: &str) -> Result<()> {
+    if value.is_finite() && (least..=greatest).contains(&value) {
+        return Ok(());
+    }
+    let unit = if unit.is_empty() { String::new() } else { format!(" {unit}") };
+    Err(Fault::new(
+        format!("{field} is {value}"),
+        format!("case, at {field}"),
+        format!("Give a number from {least} to {greatest}{unit}."),
+    ))
+}
+
+fn optional(field: &str, value: Option<f64>, least: f64, greatest: f64, unit: &str) -> Result<()> {
+    value.map_or(Ok(()), |value| number(field, value, least, greatest, unit))
+}
+
+fn list(field: &str, values: &[f64], least: f64, greatest: f64, unit: &str) -> Result<()> {
+    count(field, values.len())?;
+    values.iter().enumerate().try_for_each(|(i, value)| number(&format!("{field}[{i}]"), *value, least, greatest, unit))
+}
+
+fn count(field: &str, entries: usize) -> Result<()> {
+    if entries <= MOST_ENTRIES {
+        return Ok(());
+    }
+    Err(Fault::new(
+        format!("{field} has {entries} entries"),
+        format!("case, at {field}"),
+        format!("Keep at most {MOST_ENTRIES}."),
+    ))
+}

@@ -1,0 +1,2 @@
+//! The browser binary.
+fn main() {}

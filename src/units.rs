@@ -1,0 +1,5 @@
+//! Quantities: a number never travels without its unit, and one place writes them for people.
+//!
+//! Inside hot arrays a bare `f64` whose name ends in its unit does; [`people`] turns such numbers into text.
+
+pub mod people;
