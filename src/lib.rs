@@ -15,5 +15,7 @@ pub mod chart;
 pub mod fault;
 pub mod job;
 pub mod record;
+pub mod result;
+pub mod sheet;
 pub mod technology;
 pub mod units;
