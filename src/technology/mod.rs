@@ -2,3 +2,13 @@
 //!
 //! [`screen`] is the stage's door.
 
+mod catalogue;
+mod curve;
+mod family;
+mod hazards;
+mod rows;
+
+pub use catalogue::{Catalogue, CircuitData, Indoors, Market, MassBasis, Model, Quantity, Range, Siting, Technology};
+pub use curve::{Circuit, Meeting};
+pub use family::{Design, PLACES, Per};
+pub use hazards::{caution, hazard_words};
