@@ -311,7 +311,10 @@ impl Catalogue {
         let ranges: Vec<RangeRow> = table(ranges, "technologies.csv")?;
         let circuits: Vec<CircuitRow> = table(circuits, "technology_circuits.csv")?;
         let siting: Vec<SitingRow> = table(siting, "technology_siting.csv")?;
-        if circuits.len() != KINDS || siting.len() != KINDS || ranges.len() != KINDS * (Quantity::ALL.len() + 3) {
+        if circuits.len() != KINDS
+            || siting.len() != KINDS
+            || ranges.len() != KINDS * (Quantity::ALL.len() + 3)
+        {
             return Err(defect(
                 format!(
                     "{} ranges, {} circuits and {} sitings do not make {KINDS} kinds",
@@ -327,7 +330,8 @@ impl Catalogue {
             .map(|circuit| {
                 let id = circuit.technology.clone();
                 let place = siting.iter().find(|row| row.technology == id);
-                let place = place.ok_or_else(|| defect(format!("{id} has no siting row"), "technology_siting.csv"))?;
+                let place = place
+                    .ok_or_else(|| defect(format!("{id} has no siting row"), "technology_siting.csv"))?;
                 technology(&ranges, circuit, place)
             })
             .collect::<Result<_>>()?;
@@ -430,7 +434,8 @@ mod tests {
 
     #[test]
     fn a_broken_table_names_the_place() {
-        let ranges = include_str!("catalogue/technologies.csv").replacen("0.25,2.0,0.8,Wh/kg", "2.5,2.0,0.8,Wh/kg", 1);
+        let ranges =
+            include_str!("catalogue/technologies.csv").replacen("0.25,2.0,0.8,Wh/kg", "2.5,2.0,0.8,Wh/kg", 1);
         let fault = Catalogue::read(
             &ranges,
             include_str!("catalogue/technology_circuits.csv"),

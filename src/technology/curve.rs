@@ -52,8 +52,9 @@ impl Element {
             self.leak.map_or(y / (2.0 * power), |leak| leak * libm::log1p(y / (2.0 * leak * power)))
         };
         let k = self.k();
-        let bracket = k * (gain(self.full) - gain(end))
-            - 2.0 * self.resistance * libm::log(h(self.full) / h(end));
+        // Without resistance the last term vanishes, also for an end at zero, where its logarithm does not exist.
+        let spread = if bb > 0.0 { 2.0 * self.resistance * libm::log(h(self.full) / h(end)) } else { 0.0 };
+        let bracket = k * (gain(self.full) - gain(end)) - spread;
         self.capacitance / (k + 1.0) * bracket
     }
 
@@ -106,7 +107,8 @@ impl Meeting {
 /// The circuit of a design, for 1 kWh of rated energy: at its reference power it delivers exactly that.
 ///
 /// The tables give the energy inside to four digits and without the leak during the reference discharge; here it is
-/// scaled so that the reference holds with the leak in (by less than 0.2 %, except 2 % for iron-air, which takes 100 h).
+/// scaled so that the reference holds with the leak in: by less than 0.4 %, except 2 % for iron-air, which takes 100 h, and for zinc-bromine, which leaks
+/// much through a narrow window.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Circuit {
     model: Model,
@@ -127,7 +129,9 @@ impl Circuit {
     pub fn design(data: &CircuitData, ref_power_kw: f64, most_kw: Option<f64>) -> Self {
         let peak_kw = match data.model {
             Model::Fixed => ref_power_kw,
-            Model::Potential | Model::Kinetic => ref_power_kw * data.eta_discharge / (4.0 * data.conv_loss_frac),
+            Model::Potential | Model::Kinetic => {
+                ref_power_kw * data.eta_discharge / (4.0 * data.conv_loss_frac)
+            }
         };
         let mut circuit = Self {
             model: data.model,
@@ -176,7 +180,8 @@ impl Circuit {
     /// Energy delivered at the outer terminals at a constant power (kW per rated kWh), kWh per rated kWh; 0 above the
     /// greatest power and at no power.
     pub fn delivered_kwh(&self, power_kw: f64) -> f64 {
-        power_kw * self.lasts_h(power_kw)
+        let hours = self.lasts_h(power_kw);
+        if hours > 0.0 { power_kw * hours } else { 0.0 }
     }
 
     /// How long a constant power lasts from full, hours.
@@ -190,9 +195,8 @@ impl Circuit {
     fn time_h(&self, power_kw: f64, leak_h: Option<f64>) -> f64 {
         let inner = power_kw / self.eta_discharge;
         match self.model {
-            Model::Fixed => {
-                leak_h.map_or(self.energy_kwh / inner, |tau| tau * libm::log1p(self.energy_kwh / (inner * tau)))
-            }
+            Model::Fixed => leak_h
+                .map_or(self.energy_kwh / inner, |tau| tau * libm::log1p(self.energy_kwh / (inner * tau))),
             Model::Potential | Model::Kinetic => self.element(leak_h).discharge_time(inner),
         }
     }
@@ -272,10 +276,13 @@ mod tests {
         let reference = reference();
         let rows = reference["capacitor"]["rows"].as_array().unwrap();
         assert_eq!(rows.len(), 8);
-        let element = |leak, empty| Element { capacitance: 100.0, resistance: 0.005, leak, full: 54.0, empty };
+        let element =
+            |leak, empty| Element { capacitance: 100.0, resistance: 0.005, leak, full: 54.0, empty };
         for row in rows {
             let row = numbers(row);
-            for (column, leak, empty) in [(1, None, 0.0), (2, None, 27.0), (3, Some(500.0), 0.0), (4, Some(500.0), 27.0)] {
+            for (column, leak, empty) in
+                [(1, None, 0.0), (2, None, 27.0), (3, Some(500.0), 0.0), (4, Some(500.0), 27.0)]
+            {
                 let energy = row[0] * element(leak, empty).discharge_time(row[0]);
                 assert!(close(energy, row[column], 1e-9), "{} W, column {column}: {energy}", row[0]);
             }
@@ -283,15 +290,18 @@ mod tests {
         assert_eq!(element(None, 0.0).greatest_power(), 145_800.0);
         let steps = &reference["capacitor"]["step_times"]["rows"];
         let (down, up) = (numbers(&steps[0]), numbers(&steps[1]));
-        let discharge = Element { full: 54.0, empty: 40.0, ..element(Some(500.0), 0.0) }.discharge_time(2000.0);
+        let discharge =
+            Element { full: 54.0, empty: 40.0, ..element(Some(500.0), 0.0) }.discharge_time(2000.0);
         assert!(close(discharge, down[3], 1e-10));
-        let charge = Element { full: 50.0, empty: 30.0, ..element(Some(500.0), 0.0) }.charge_time(2000.0).unwrap();
+        let charge =
+            Element { full: 50.0, empty: 30.0, ..element(Some(500.0), 0.0) }.charge_time(2000.0).unwrap();
         assert!(close(charge, up[3], 1e-10));
     }
 
     #[test]
     fn its_dual_without_conversion_loss_is_the_reference_coil() {
-        let coil = Element { capacitance: 2.0, resistance: 0.0, leak: Some(1000.0), full: 2000.0, empty: 0.0 };
+        let coil =
+            Element { capacitance: 2.0, resistance: 0.0, leak: Some(1000.0), full: 2000.0, empty: 0.0 };
         for row in reference()["coil"]["rows"].as_array().unwrap() {
             let (power, energy) = (row[0].as_f64().unwrap(), row[1].as_f64().unwrap());
             assert!(close(power * coil.discharge_time(power), energy, 1e-12));
@@ -343,7 +353,8 @@ mod tests {
             let row = Circuit { energy_kwh: data.internal_store_kwh, leak_h: None, ..circuit };
             let delivered = row.delivered_kwh(data.ref_power_kw);
             assert!(close(delivered, 1.0, 6e-4), "{}: {delivered}", technology.id);
-            let most = if technology.id == "iron_air" { 0.025 } else { 4e-3 };
+            let leaky = ["iron_air", "zinc_bromine_flow"].contains(&technology.id.as_str());
+            let most = if leaky { 0.025 } else { 4e-3 };
             assert!((scaled - 1.0).abs() < most, "{}: {scaled}", technology.id);
             // Four digits of R and the efficiencies: 0.01 points.
             let round_trip = circuit.round_trip(data.ref_power_kw, data.ref_power_kw).unwrap() * 100.0;
@@ -368,7 +379,10 @@ mod tests {
             assert_eq!(circuit.delivered_kwh(0.0), 0.0);
             assert_eq!(circuit.delivered_kwh(f64::NAN), 0.0);
             if data.model != Model::Fixed {
-                assert!(circuit.delivered_kwh(circuit.peak_kw()) < 1e-3, "no energy at matched load from full");
+                assert!(
+                    circuit.delivered_kwh(circuit.peak_kw()) < 1e-3,
+                    "no energy at matched load from full"
+                );
             }
         }
     }
@@ -386,7 +400,9 @@ mod tests {
         assert_eq!(Circuit::design(hydro, 0.1, None).meets(1.0, 1.0), Meeting::PowerBound(0.1));
         let wheel = &catalogue.find("flywheel_steel").unwrap().circuit;
         // With no power drawn the speed falls to half in tau ln 2.
-        let Meeting::RunsDown(hours) = Circuit::design(wheel, 25.0, None).meets(2000.0, 1.0) else { panic!() };
+        let Meeting::RunsDown(hours) = Circuit::design(wheel, 25.0, None).meets(2000.0, 1.0) else {
+            panic!()
+        };
         assert!(close(hours, 188_400.0 / 3600.0 * std::f64::consts::LN_2, 1e-6), "{hours}");
     }
 }

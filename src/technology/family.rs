@@ -100,7 +100,11 @@ mod tests {
                 for design in &designs {
                     assert!(design.energy_wh >= energy.low && design.energy_wh <= energy.high);
                     let reference = design.circuit.ref_power_kw() * design.energy_wh;
-                    assert!(reference >= power.low * 0.999_999 && reference <= power.high * 1.000_001, "{}", technology.id);
+                    assert!(
+                        reference >= power.low * 0.999_999 && reference <= power.high * 1.000_001,
+                        "{}",
+                        technology.id
+                    );
                     let delivered = design.circuit.delivered_kwh(design.circuit.ref_power_kw());
                     assert!((delivered - 1.0).abs() < 1e-9, "{} {delivered}", technology.id);
                     if MACHINE_BOUND.contains(&technology.id.as_str()) {
@@ -108,7 +112,9 @@ mod tests {
                     }
                 }
                 assert_eq!(designs[3].energy_wh, energy.typical);
-                assert!((designs[3].circuit.ref_power_kw() * energy.typical / power.typical - 1.0).abs() < 1e-12);
+                assert!(
+                    (designs[3].circuit.ref_power_kw() * energy.typical / power.typical - 1.0).abs() < 1e-12
+                );
             }
         }
     }

@@ -4,17 +4,41 @@ use super::catalogue::Technology;
 
 /// The standard words of caution, each with the marks in the published text that call for it.
 const WORDS: [(&str, &[&str]); 7] = [
-    ("fire and thermal runaway", &["thermal runaway", "fire", "flammable", "burning", "ignition", "overheating"]),
+    (
+        "fire and thermal runaway",
+        &["thermal runaway", "fire", "flammable", "burning", "ignition", "overheating"],
+    ),
     ("rotor burst", &["rotor burst", "overspeed"]),
     ("hydrogen", &["hydrogen"]),
     (
         "toxic or cryogenic release",
-        &["toxic", "cryogenic", "bromine", "acid", "caustic", "asphyxiation", "fluorides", "boil-off", "cyanide"],
+        &[
+            "toxic",
+            "cryogenic",
+            "bromine",
+            "acid",
+            "caustic",
+            "asphyxiation",
+            "fluorides",
+            "boil-off",
+            "cyanide",
+        ],
     ),
     ("crushing magnets", &["crushing between magnets", "strong magnetic fields"]),
     (
         "arc flash and stored energy",
-        &["arc", "residual", "fault current", "short-circuit", "high dc current", "sudden release", "rupture", "dropped load", "pressur", "dam or penstock"],
+        &[
+            "arc",
+            "residual",
+            "fault current",
+            "short-circuit",
+            "high dc current",
+            "sudden release",
+            "rupture",
+            "dropped load",
+            "pressur",
+            "dam or penstock",
+        ],
     ),
     ("hot parts", &["hot surfaces", "hot cells", "molten", "hot exhaust"]),
 ];
@@ -24,14 +48,22 @@ pub fn hazard_words(technology: &Technology) -> Vec<&'static str> {
     let text = technology.hazards.to_lowercase();
     // Whole words for the short marks, so that "hydrogen cyanide" counts as toxic, not as hydrogen gas.
     let text = text.replace("hydrogen cyanide", "cyanide");
-    WORDS.iter().filter(|(_, marks)| marks.iter().any(|mark| starts_a_word(&text, mark))).map(|(word, _)| *word).collect()
+    WORDS
+        .iter()
+        .filter(|(_, marks)| marks.iter().any(|mark| starts_a_word(&text, mark)))
+        .map(|(word, _)| *word)
+        .collect()
 }
 
 /// One line of caution for the page: the standard words, then the published text.
 pub fn caution(technology: &Technology) -> String {
     let words = hazard_words(technology);
     let detail = technology.hazards.trim_end_matches('.');
-    if words.is_empty() { format!("{detail}.") } else { format!("{}: {}.", sentence(&words.join(", ")), lower_first(detail)) }
+    if words.is_empty() {
+        format!("{detail}.")
+    } else {
+        format!("{}: {}.", sentence(&words.join(", ")), lower_first(detail))
+    }
 }
 
 fn starts_a_word(text: &str, mark: &str) -> bool {

@@ -99,7 +99,10 @@ impl SitingRow {
     /// The facts, their words checked.
     pub(super) fn checked(&self) -> Result<Siting> {
         let unknown = |word: &str| {
-            defect(format!("the word {word} is not known"), &format!("technology_siting.csv, {}", self.technology))
+            defect(
+                format!("the word {word} is not known"),
+                &format!("technology_siting.csv, {}", self.technology),
+            )
         };
         let indoors = match self.indoors.as_str() {
             "yes" => Indoors::Yes,
