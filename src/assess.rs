@@ -65,10 +65,9 @@ pub fn screen(
             volume_budget_l: site.volume_budget_l,
             ambient_c: match (site.ambient_least_c, site.ambient_greatest_c) {
                 (None, None) => None,
-                (least, greatest) => Some((
-                    least.or(greatest).unwrap_or_default(),
-                    greatest.or(least).unwrap_or_default(),
-                )),
+                (least, greatest) => {
+                    Some((least.or(greatest).unwrap_or_default(), greatest.or(least).unwrap_or_default()))
+                }
             },
             indoors: site.indoors,
             margin: case.requirement.margin,

@@ -19,7 +19,13 @@ const MARK: f64 = 9.0;
 /// Dashes of the candidates, A to D.
 const DASHES: [&[f64]; 4] = [&[], &[12.0, 5.0], &[10.0, 3.0, 1.5, 3.0], &[4.0, 2.5]];
 /// Lines of equal time: hours and name.
-const TIMES: [(f64, &str); 5] = [(1.0 / 3600.0, "1\u{202f}s"), (1.0 / 60.0, "1\u{202f}min"), (1.0, "1\u{202f}h"), (24.0, "1\u{202f}d"), (730.0, "1\u{202f}month")];
+const TIMES: [(f64, &str); 5] = [
+    (1.0 / 3600.0, "1\u{202f}s"),
+    (1.0 / 60.0, "1\u{202f}min"),
+    (1.0, "1\u{202f}h"),
+    (24.0, "1\u{202f}d"),
+    (730.0, "1\u{202f}month"),
+];
 /// Decades that are shown at most, from the top.
 const MOST_DECADES: f64 = 7.0;
 
@@ -43,7 +49,12 @@ fn units(basis: Basis) -> (&'static str, &'static str) {
 /// What it shows, in a sentence.
 pub fn sentence(data: &Plane) -> String {
     let (across, up) = units(data.basis);
-    let mut text = format!("Ragone plane, {} against {}: {} kinds of storage", lower(up), lower(across), data.strands.len());
+    let mut text = format!(
+        "Ragone plane, {} against {}: {} kinds of storage",
+        lower(up),
+        lower(across),
+        data.strands.len()
+    );
     if let Some((power, energy)) = data.requirement {
         text.push_str(&format!(
             "; the requirement is {} at {}, {}",
@@ -114,7 +125,12 @@ pub fn plane<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: 
     }
     // The first named keeps its place: candidates, then the others as they were given.
     named.reverse();
-    named.sort_by_key(|n| (n.strand.candidate.unwrap_or(u8::MAX), data.strands.iter().position(|s| s.technology == n.strand.technology)));
+    named.sort_by_key(|n| {
+        (
+            n.strand.candidate.unwrap_or(u8::MAX),
+            data.strands.iter().position(|s| s.technology == n.strand.technology),
+        )
+    });
     spots.extend(plane_labels::draw(&mut pen, &frame, &named, &taken, &lines));
     pen.lift()?;
     Ok(Hits { main: frame, second: None, spots })
@@ -240,7 +256,8 @@ fn draw_strand<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, strand: &Strand)
     let line = visible(&strand.typical);
     let width = if strand.fluid_only { 2.6 } else { 2.1 };
     fading(pen, &line, Ink::new(colour, width * pen.palette.pens.thin), dash, strand.fluid_only);
-    (line.len() > 1).then(|| if line[0].1 <= line[line.len() - 1].1 { line } else { line.into_iter().rev().collect() })
+    (line.len() > 1)
+        .then(|| if line[0].1 <= line[line.len() - 1].1 { line } else { line.into_iter().rev().collect() })
 }
 
 /// A curve whose two ends fade to nothing over the last sixth of its height, its dashes carried on.
@@ -249,7 +266,8 @@ fn fading<S: Surface>(pen: &mut Pen<'_, S>, line: &[Point], ink: Ink, dash: &[f6
     if line.len() < 2 {
         return;
     }
-    let (top, bottom) = line.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(a, b), p| (a.min(p.1), b.max(p.1)));
+    let (top, bottom) =
+        line.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(a, b), p| (a.min(p.1), b.max(p.1)));
     let sixth = (bottom - top) / 6.0;
     // Opacity in steps, so that the middle of a curve stays one line.
     let alpha = |y: f64| {
@@ -312,7 +330,9 @@ fn requirement<S: Surface>(
         let square = (-libm::sin(slope), libm::cos(slope));
         let ends = [-20.0, 20.0].map(|r| (at.0 + square.0 * r, at.1 + square.1 * r));
         pen.line(&ends, ink);
-        taken.push(Patch::around(at, 1.0).joined(Patch::around(ends[0], 2.0)).joined(Patch::around(ends[1], 2.0)));
+        taken.push(
+            Patch::around(at, 1.0).joined(Patch::around(ends[0], 2.0)).joined(Patch::around(ends[1], 2.0)),
+        );
         spots.push(Spot { name: "point".to_owned(), area: Patch::around(at, 20.0).area() });
         let words = look.bold();
         let wide = words.width(&data.budget);
@@ -348,10 +368,8 @@ fn name_line<S: Surface>(
 ) {
     let look = Text::label(pen.palette.ink).end();
     let time = people::duration(energy / power * 3600.0);
-    let lines = [
-        "requirement".to_owned(),
-        format!("{} at {}, {time}", people::energy(energy), people::power(power)),
-    ];
+    let lines =
+        ["requirement".to_owned(), format!("{} at {}, {time}", people::energy(energy), people::power(power))];
     let wide = look.width(&lines[1]).max(look.bold().width(&lines[0]));
     let slope = (b.1 - a.1) / (b.0 - a.0).max(1.0);
     for share in [0.0, 0.05, 0.1, 0.2, 0.3, 0.4, 0.5, 0.6, 0.7] {

@@ -108,7 +108,9 @@ pub(super) fn draw<S: Surface>(
         let mut best: Option<(f64, Place, Patch)> = None;
         for place in places(&kind.line, look.width(&text)) {
             let patch = look.patch(place.at, &text).grown(2.0);
-            if !placer.clear(&patch) || leaders.iter().any(|(a, b)| shape::clip(*a, *b, patch.area()).is_some()) {
+            if !placer.clear(&patch)
+                || leaders.iter().any(|(a, b)| shape::clip(*a, *b, patch.area()).is_some())
+            {
                 continue;
             }
             if leaders.iter().any(|(a, b)| cross(*a, *b, place.from, place.to)) {
@@ -153,8 +155,7 @@ fn places(line: &[Point], wide: f64) -> Vec<Place> {
         let y = top + share * (bottom - top);
         let Some(to) = line.windows(2).find_map(|w| {
             let (a, b) = (w[0], w[1]);
-            (a.1 <= y && y <= b.1 && b.1 > a.1)
-                .then(|| (a.0 + (y - a.1) / (b.1 - a.1) * (b.0 - a.0), y))
+            (a.1 <= y && y <= b.1 && b.1 > a.1).then(|| (a.0 + (y - a.1) / (b.1 - a.1) * (b.0 - a.0), y))
         }) else {
             continue;
         };
@@ -162,7 +163,11 @@ fn places(line: &[Point], wide: f64) -> Vec<Place> {
             for up in [0.0, 16.0, -16.0, 34.0, -34.0, 58.0, -58.0, 90.0, -90.0, 130.0, -130.0] {
                 let base = to.1 - up + 4.5;
                 places.push(Place { at: (to.0 + out + 5.0, base), from: (to.0 + out, base - 4.5), to });
-                places.push(Place { at: (to.0 - out - 5.0 - wide, base), from: (to.0 - out, base - 4.5), to });
+                places.push(Place {
+                    at: (to.0 - out - 5.0 - wide, base),
+                    from: (to.0 - out, base - 4.5),
+                    to,
+                });
             }
         }
     }

@@ -29,7 +29,6 @@ pub struct Lay {
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
 enum Stage {
     Duty,
-    Requirement,
     Screening,
     Stores,
     Year,
@@ -44,7 +43,15 @@ enum Stage {
 impl Lay {
     /// The work for a record, a case and a view.
     pub fn new(record: Rc<Record>, case: Case, view: View, catalogue: Rc<Catalogue>) -> Self {
-        Self { record, case, view, catalogue, assessment: None, pictures: Pictures::default(), next: Stage::Duty }
+        Self {
+            record,
+            case,
+            view,
+            catalogue,
+            assessment: None,
+            pictures: Pictures::default(),
+            next: Stage::Duty,
+        }
     }
 
     /// Does one stage and returns the sheet after the last.
@@ -64,7 +71,7 @@ impl Lay {
         };
         let (duty, requirement) = (&done.duty, &done.requirement);
         self.next = match self.next {
-            Stage::Duty | Stage::Requirement | Stage::Screening => {
+            Stage::Duty | Stage::Screening => {
                 let (need, screening) = assess::screen(duty, requirement, &self.case, &self.catalogue);
                 done.need = need;
                 done.screening = screening;
@@ -128,8 +135,11 @@ impl Lay {
         };
         let result = done.result();
         let words = words::all(&done, &result, &self.case, &self.view, &self.pictures);
-        let (power_kw, served_share) =
-            done.requirement.asked.as_ref().map_or((0.0, 0.0), |asked| (asked.point.power_kw, asked.point.served_share));
+        let (power_kw, served_share) = done
+            .requirement
+            .asked
+            .as_ref()
+            .map_or((0.0, 0.0), |asked| (asked.point.power_kw, asked.point.served_share));
         let limits = match done.duty.kind {
             Kind::Limits(limits) => (limits.import_kw, limits.export_kw),
             _ => (None, None),
@@ -205,7 +215,7 @@ impl Job for Lay {
 
     fn progress(&self) -> Progress {
         let what = match self.next {
-            Stage::Duty | Stage::Requirement => "finding capacities",
+            Stage::Duty => "finding capacities",
             Stage::Screening => "judging technologies",
             Stage::Stores => "running stores",
             Stage::Year | Stage::Net => "drawing the year",

@@ -229,14 +229,18 @@ fn episodes(duty: &Duty) -> Vec<EpisodeRow> {
     [-1.0, 1.0]
         .into_iter()
         .flat_map(|sign| {
-            let mut side: Vec<_> = duty.episodes.iter().filter(|episode| episode.energy_kwh * sign > 0.0).collect();
-            side.sort_by(|a, b| b.energy_kwh.abs().total_cmp(&a.energy_kwh.abs()).then(a.start.cmp(&b.start)));
+            let mut side: Vec<_> =
+                duty.episodes.iter().filter(|episode| episode.energy_kwh * sign > 0.0).collect();
+            side.sort_by(|a, b| {
+                b.energy_kwh.abs().total_cmp(&a.energy_kwh.abs()).then(a.start.cmp(&b.start))
+            });
             side.truncate(LISTED);
             side
         })
         .map(|episode| {
             let end = episode.start + episode.steps;
-            let (from_us, to_us) = (pictures::reading_us(clock, episode.start), pictures::reading_us(clock, end));
+            let (from_us, to_us) =
+                (pictures::reading_us(clock, episode.start), pictures::reading_us(clock, end));
             EpisodeRow {
                 began: chart::ticks::moment(from_us),
                 ended: chart::ticks::moment(to_us),

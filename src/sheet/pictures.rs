@@ -2,9 +2,7 @@
 
 use super::View;
 use crate::case::{Balance, Case, Connection};
-use crate::chart::{
-    Critical, Cumulative, DurationCurve, EpisodeMark, Measure, NetPower, Week, YearSheet,
-};
+use crate::chart::{Critical, Cumulative, DurationCurve, EpisodeMark, Measure, NetPower, Week, YearSheet};
 use crate::duty::{Duty, Kind};
 use crate::numeric::Sum;
 use crate::record::Clock;
@@ -52,7 +50,8 @@ pub(super) fn year(duty: &Duty, critical: Option<&CriticalPeriod>) -> YearSheet 
     let short = clock.span_s() <= 21.0 * 86_400.0;
     let cell_s = if short { 900.0 } else { 3600.0 };
     let first = clock.civil(0);
-    let into_week_us = f64::from(first.weekday) * DAY_US + f64::from(first.hour) * HOUR_US + f64::from(first.minute) * 6e7;
+    let into_week_us =
+        f64::from(first.weekday) * DAY_US + f64::from(first.hour) * HOUR_US + f64::from(first.minute) * 6e7;
     let first_us = reading_us(clock, 0);
     // Seconds below the minute belong to the first cell.
     let start_us = ((first_us - into_week_us) / 6e7).floor() * 6e7;
@@ -73,15 +72,19 @@ pub(super) fn year(duty: &Duty, critical: Option<&CriticalPeriod>) -> YearSheet 
             counts[cell] += 1;
         }
     }
-    let net_kw =
-        sums.iter().zip(&counts).map(|(sum, count)| if *count == 0 { f64::NAN } else { sum / f64::from(*count) }).collect();
+    let net_kw = sums
+        .iter()
+        .zip(&counts)
+        .map(|(sum, count)| if *count == 0 { f64::NAN } else { sum / f64::from(*count) })
+        .collect();
     YearSheet {
         start_us,
         cell_s,
         cells_per_row,
         net_kw,
-        critical_us: critical
-            .map(|period| (reading_us(clock, period.from), reading_us(clock, period.to.min(clock.intervals)))),
+        critical_us: critical.map(|period| {
+            (reading_us(clock, period.from), reading_us(clock, period.to.min(clock.intervals)))
+        }),
     }
 }
 
@@ -221,7 +224,7 @@ pub(super) fn week(duty: &Duty, asked: &Asked) -> Week {
     let first = if into_day == 0.0 { 0 } else { (day as f64 - into_day).max(0.0) as usize % day };
     let days = (clock.intervals.saturating_sub(first)).div_ceil(day).max(1);
     let (mut unserved, mut lowest) = (vec![0.0; days], vec![f64::INFINITY; days]);
-    let mut i = 0;
+    let mut i = 0_usize;
     simulation::run(duty, &asked.store, |step| {
         if let Some(cell) = i.checked_sub(first).map(|since: usize| since / day) {
             unserved[cell] += (step.carried_kw.min(0.0) - step.asked_kw.min(0.0)).max(0.0);
@@ -250,7 +253,7 @@ pub(super) fn week(duty: &Duty, asked: &Asked) -> Week {
         unserved_word: if connected { "remaining import" } else { "unserved" }.to_owned(),
         ..Week::default()
     };
-    let (mut sums, mut count, mut i) = ((0.0, 0.0, f64::NAN), 0_usize, 0);
+    let (mut sums, mut count, mut i) = ((0.0, 0.0, f64::NAN), 0_usize, 0_usize);
     simulation::run(duty, &asked.store, |step| {
         if (from..to).contains(&i) {
             if count == 0 {
@@ -338,7 +341,9 @@ pub(super) fn cumulative(duty: &Duty, requirement: &Requirement, case: &Case) ->
 pub(super) fn measure(duty: &Duty) -> Measure {
     if matches!(duty.kind, Kind::Limits(_)) {
         Measure::HeldImportKw
-    } else if duty.connection == Connection::Connected && duty.totals.demand_kwh.is_some_and(|demand| demand > 0.0) {
+    } else if duty.connection == Connection::Connected
+        && duty.totals.demand_kwh.is_some_and(|demand| demand > 0.0)
+    {
         Measure::SelfSufficiency
     } else {
         Measure::ServedShare

@@ -81,15 +81,72 @@ mod tests {
         let catalogue = Catalogue::published().unwrap();
         let base = Need { margin: 0.1, ..Need::default() };
         let duties = [
-            ("50kW/100kWh", Need { discharge_kw: 50.0, charge_kw: 50.0, energy_kwh: 100.0, response_s: Some(1.0), round_trip_efficiency: Some(0.8), mean_hold_s: Some(6.0 * 3600.0), ..base.clone() }),
-            ("87kW/5MWh", Need { discharge_kw: 87.0, charge_kw: 99.0, energy_kwh: 5000.0, round_trip_efficiency: Some(0.30), mean_hold_s: Some(60.0 * 3600.0), mass_budget_kg: Some(80_000.0), cycles_per_year: Some(29.0), ambient_c: Some((-12.0, 26.0)), transfer_s: None, ..base.clone() }),
-            ("200kW/10s", Need { discharge_kw: 200.0, charge_kw: 200.0, energy_kwh: 200.0 / 360.0, response_s: Some(0.5), round_trip_efficiency: Some(0.7), ..base.clone() }),
+            (
+                "50kW/100kWh",
+                Need {
+                    discharge_kw: 50.0,
+                    charge_kw: 50.0,
+                    energy_kwh: 100.0,
+                    response_s: Some(1.0),
+                    round_trip_efficiency: Some(0.8),
+                    mean_hold_s: Some(6.0 * 3600.0),
+                    ..base.clone()
+                },
+            ),
+            (
+                "87kW/5MWh",
+                Need {
+                    discharge_kw: 87.0,
+                    charge_kw: 99.0,
+                    energy_kwh: 5000.0,
+                    round_trip_efficiency: Some(0.30),
+                    mean_hold_s: Some(60.0 * 3600.0),
+                    mass_budget_kg: Some(80_000.0),
+                    cycles_per_year: Some(29.0),
+                    ambient_c: Some((-12.0, 26.0)),
+                    transfer_s: None,
+                    ..base.clone()
+                },
+            ),
+            (
+                "200kW/10s",
+                Need {
+                    discharge_kw: 200.0,
+                    charge_kw: 200.0,
+                    energy_kwh: 200.0 / 360.0,
+                    response_s: Some(0.5),
+                    round_trip_efficiency: Some(0.7),
+                    ..base.clone()
+                },
+            ),
         ];
         for (name, need) in duties {
             println!("=== {name}");
             for kind in screen(&catalogue, &need).technologies {
-                let marks: Vec<String> = kind.criteria.iter().map(|j| format!("{:?}:{}", j.quantity, match j.verdict { Verdict::Carries => "c", Verdict::Strains => "S", Verdict::Fails => "F" })).collect();
-                println!("{:28} {:?} conf={} mass={:?}\n     {}\n     {}", kind.technology, kind.verdict, kind.confirmed, kind.mass_kg.map(|m| (m.typical.round(), m.good.round())), marks.join(" "), kind.deciding);
+                let marks: Vec<String> = kind
+                    .criteria
+                    .iter()
+                    .map(|j| {
+                        format!(
+                            "{:?}:{}",
+                            j.quantity,
+                            match j.verdict {
+                                Verdict::Carries => "c",
+                                Verdict::Strains => "S",
+                                Verdict::Fails => "F",
+                            }
+                        )
+                    })
+                    .collect();
+                println!(
+                    "{:28} {:?} conf={} mass={:?}\n     {}\n     {}",
+                    kind.technology,
+                    kind.verdict,
+                    kind.confirmed,
+                    kind.mass_kg.map(|m| (m.typical.round(), m.good.round())),
+                    marks.join(" "),
+                    kind.deciding
+                );
             }
         }
     }

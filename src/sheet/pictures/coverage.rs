@@ -58,7 +58,9 @@ fn served(duty: &Duty, requirement: &Requirement) -> Coverage {
                 ranges.corners(CORNERS).into_iter().filter(|capacity| *capacity < reach).collect()
             }
             // Denser near nothing, where the curve bends.
-            Curve::Leaking(_) => (0..RUNS).map(|k| reach * (k as f64 / RUNS as f64) * (k as f64 / RUNS as f64)).collect(),
+            Curve::Leaking(_) => {
+                (0..RUNS).map(|k| reach * (k as f64 / RUNS as f64) * (k as f64 / RUNS as f64)).collect()
+            }
         };
         capacities.push(reach);
         picture.curves.push(CoverageCurve {
