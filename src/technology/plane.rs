@@ -3,7 +3,7 @@
 use serde::{Deserialize, Serialize};
 
 use super::catalogue::{Catalogue, MassBasis, Quantity, Technology};
-use super::curve::Meeting;
+use super::curve::{Circuit, Meeting};
 use super::family::{Design, PLACES, Per};
 use super::need::{Need, Screening};
 use crate::chart::{Basis, Plane, Strand};
@@ -17,6 +17,12 @@ const LONGEST_H: f64 = 1440.0;
 
 /// A curve is drawn down to this many times its reference duration, and to two hours at least.
 const SLOWER: f64 = 300.0;
+
+/// A curve is drawn past the requirement's mark down to this share of the power there.
+const PAST_MARK: f64 = 0.6;
+
+/// Towards the matched load a curve is drawn until this share of the rated energy is left.
+const LEAST_DRAWN: f64 = 0.2;
 
 /// A point of the requirement on the plane, one for each budget asked.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -131,14 +137,23 @@ fn curves(technology: &Technology, need: Option<&Need>, per: Per) -> (Curve, Vec
     let place = |design: &Design, power_kw: f64, energy_kwh: f64| {
         (design.energy_wh * energy_kwh * depth / packing, design.energy_wh * power_kw / packing)
     };
+    let hours = need.and_then(Need::duration_s).map(|seconds| seconds / 3600.0);
+    let meeting = |design: &Design| match design.circuit.meets(hours?, depth) {
+        Meeting::Curve(power) => Some(power),
+        Meeting::PowerBound(_) | Meeting::RunsDown(_) => None,
+    };
     let curve = |design: &Design| -> Curve {
         let circuit = &design.circuit;
-        let longest_h = (SLOWER / circuit.ref_power_kw()).max(2.0).min(LONGEST_H);
-        let (top, bottom) = (circuit.peak_kw() * 0.999_5, 1.0 / longest_h);
+        let longest_h = (SLOWER / circuit.ref_power_kw()).clamp(2.0, LONGEST_H);
+        let top = top_kw(circuit);
+        // Far enough down to hold the mark.
+        let bottom = meeting(design).map_or(f64::INFINITY, |power| power * PAST_MARK).min(1.0 / longest_h);
         let ratio = (bottom / top).min(0.5);
         (0..POINTS)
             .map(|i| {
-                let power = top * libm::pow(ratio, i as f64 / (POINTS - 1) as f64);
+                // Denser at the top, where the knee is.
+                let share = i as f64 / (POINTS - 1) as f64;
+                let power = top * libm::pow(ratio, share * share);
                 place(design, power, circuit.delivered_kwh(power))
             })
             .filter(|(energy, power)| *energy > 0.0 && *power > 0.0)
@@ -150,16 +165,27 @@ fn curves(technology: &Technology, need: Option<&Need>, per: Per) -> (Curve, Vec
     for (design, at) in Design::all(technology, per).iter().zip(PLACES) {
         if at == 0.0 {
             typical = curve(design);
-            if let Some(seconds) = need.and_then(Need::duration_s)
-                && let Meeting::Curve(power) = design.circuit.meets(seconds / 3600.0, depth)
-            {
-                meets = Some(place(design, power, design.circuit.delivered_kwh(power)));
-            }
+            meets = meeting(design).map(|power| place(design, power, design.circuit.delivered_kwh(power)));
         } else {
             others.push(curve(design));
         }
     }
     (typical, others, meets)
+}
+
+/// Power at which a curve's drawing begins: the greatest, or where so little energy is left that the curve only runs
+/// along a level line.
+fn top_kw(circuit: &Circuit) -> f64 {
+    let (mut good, mut poor) = (circuit.ref_power_kw(), circuit.peak_kw());
+    let enough = |power: f64| circuit.delivered_kwh(power) >= LEAST_DRAWN;
+    if enough(poor) || good >= poor {
+        return poor;
+    }
+    for _ in 0..40 {
+        let middle = (good * poor).sqrt();
+        if enough(middle) { good = middle } else { poor = middle }
+    }
+    good
 }
 
 fn plants(technology: &Technology) -> (Curve, Vec<Curve>, Option<(f64, f64)>) {
@@ -198,5 +224,95 @@ fn budget_point(need: &Need, basis: Basis) -> (Option<(f64, f64)>, String) {
             (at, words)
         }
         Basis::Absolute => (Some((need.energy_kwh(), need.power_kw())), String::new()),
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::technology::screen;
+
+    fn need() -> Need {
+        Need {
+            discharge_kw: 87.0,
+            energy_kwh: 4740.0,
+            mass_budget_kg: Some(80_000.0),
+            volume_budget_l: Some(40_000.0),
+            ..Need::default()
+        }
+    }
+
+    #[test]
+    fn kinds_on_at_first_and_picks_are_drawn() {
+        let catalogue = Catalogue::published().unwrap();
+        let picks = ["smes".to_owned(), "li_ion_lfp".to_owned()];
+        let few = plane(&catalogue, None, None, Basis::Mass, false, &picks);
+        assert_eq!(few.strands.len(), 9);
+        let letter = |id: &str| few.strands.iter().find(|strand| strand.technology == id).unwrap().candidate;
+        assert_eq!((letter("smes"), letter("li_ion_lfp"), letter("edlc")), (Some(0), Some(1), None));
+        assert!(few.requirement.is_none() && few.point.is_none() && few.budget.is_empty());
+        assert_eq!(plane(&catalogue, None, None, Basis::Volume, true, &[]).strands.len(), 27);
+    }
+
+    #[test]
+    fn every_curve_can_be_drawn_on_logarithmic_axes() {
+        let catalogue = Catalogue::published().unwrap();
+        let need = need();
+        for basis in [Basis::Mass, Basis::Volume, Basis::Absolute] {
+            for strand in plane(&catalogue, Some(&need), None, basis, true, &[]).strands {
+                assert_eq!(strand.others.len(), 6);
+                for curve in strand.others.iter().chain([&strand.typical]) {
+                    assert!(curve.len() > 50, "{}", strand.technology);
+                    assert!(
+                        curve.iter().all(|(e, p)| *e > 0.0 && *p > 0.0 && e.is_finite() && p.is_finite())
+                    );
+                    assert!(curve.windows(2).all(|pair| pair[1].1 < pair[0].1), "power falls along a curve");
+                }
+                assert_eq!(
+                    strand.fluid_only,
+                    basis != Basis::Absolute && fluid_only(catalogue.find(&strand.technology).unwrap())
+                );
+            }
+        }
+    }
+
+    #[test]
+    fn a_mark_lies_on_the_requirement_and_agrees_with_the_mass() {
+        let catalogue = Catalogue::published().unwrap();
+        let need = need();
+        let screening = screen(&catalogue, &need);
+        let plane = plane(&catalogue, Some(&need), Some(&screening), Basis::Mass, true, &[]);
+        let hours = 4740.0 / 87.0;
+        let mut met = 0;
+        for strand in &plane.strands {
+            if let Some((energy, power)) = strand.meets {
+                met += 1;
+                let (first, last) = (strand.typical[0], strand.typical[strand.typical.len() - 1]);
+                assert!(power <= first.1 && power >= last.1, "the mark lies on the drawn curve");
+                assert!((energy / power / hours - 1.0).abs() < 1e-9, "{}", strand.technology);
+            }
+        }
+        assert!(met > 15, "{met}");
+        let lfp = plane.strands.iter().find(|strand| strand.technology == "li_ion_lfp").unwrap();
+        let kind = screening.find("li_ion_lfp").unwrap();
+        assert_eq!(lfp.verdict, Some(kind.verdict));
+        // Slow discharge loses less than the reference hour does: 7 % less mass than the box.
+        let by_curve = 4740e3 / lfp.meets.unwrap().0;
+        let by_box = kind.mass_kg.unwrap().typical;
+        assert!(by_curve < by_box && by_curve > 0.9 * by_box, "{by_curve} {by_box}");
+        assert_eq!(plane.requirement, Some((87.0, 4740.0)));
+        assert_eq!(plane.budget.replace('\u{202f}', " "), "80 t");
+    }
+
+    #[test]
+    fn each_budget_sets_a_point() {
+        let points = points(&need());
+        assert_eq!(points.len(), 2);
+        assert_eq!((points[0].energy_wh_per_kg, points[0].power_w_per_kg), (Some(59.25), Some(1.0875)));
+        assert_eq!((points[1].energy_wh_per_l, points[1].power_w_per_l), (Some(118.5), Some(2.175)));
+        let json = serde_json::to_value(&points[0]).unwrap();
+        assert_eq!(json["basis"], "mass");
+        assert!(json.get("energy_wh_per_l").is_none());
+        assert!(super::points(&Need { mass_budget_kg: Some(5.0), ..Need::default() }).is_empty());
     }
 }
