@@ -130,6 +130,8 @@ pub(super) struct Fill {
     sums: Vec<Option<f64>>,
     before: Option<i64>,
     at: Option<usize>,
+    /// Rows with a stamp.
+    rows: u64,
     stampless: Tally,
     /// Rows without a stamp since the last row with one: the table's foot, if nothing follows.
     foot: Tally,
@@ -154,6 +156,7 @@ impl Fill {
             record: ByteRecord::new(),
             before: None,
             at: None,
+            rows: 0,
             stampless: none(),
             foot: none(),
             heads: none(),
@@ -201,6 +204,7 @@ impl Fill {
             self.disorder.add(row, shown);
         }
         self.before = Some(instant);
+        self.rows += 1;
         let clock = &grid.clock;
         let from_start = instant - grid.shift_us - clock.start_us;
         let at = (from_start + clock.step_us / 2).div_euclid(clock.step_us);
@@ -446,17 +450,17 @@ impl Fill {
                 first(&self.outside)
             ),
         );
-        say(
-            FindingKind::Disorder,
-            &self.disorder,
-            "sorted in",
-            false,
+        let backwards = self.disorder.count * 2 > self.rows;
+        let text = if backwards {
+            "The rows run from the newest to the oldest.".to_owned()
+        } else {
             format!(
                 "{} a stamp before that of the row above: {}.",
                 rows(self.disorder.count, "has", "have"),
                 first(&self.disorder)
-            ),
-        );
+            )
+        };
+        say(FindingKind::Disorder, &self.disorder, "sorted in", false, text);
         say(
             FindingKind::Repeat,
             &self.repeat,

@@ -180,7 +180,7 @@ impl Reader {
     fn start_scan(&mut self) -> Result<()> {
         let rows = self.open(self.at)?;
         let file = &self.files[self.at];
-        let scan = Scan::new(file.timing, file.dialect.marks, self.zone.clone(), self.terms.date_order);
+        let scan = Scan::new(file.timing, file.dialect.marks, file.resolver(self.zone.as_ref()), self.terms.date_order);
         self.stage = Stage::Scan(rows, scan);
         Ok(())
     }
@@ -363,7 +363,6 @@ impl Reader {
                     uses.push(Use::new(cell, column.header.clone(), column.unit, into, watched));
                 }
             }
-            let zone = if matches!(file.timing, Timing::Counter { .. }) { None } else { self.zone.clone() };
             self.plans.push(Some(FilePlan {
                 index,
                 name: file.name.clone(),
@@ -379,7 +378,7 @@ impl Reader {
                 slots,
                 lane,
                 repeat: self.terms.remedies.repeat,
-                resolver: Resolver::new(zone),
+                resolver: file.resolver(self.zone.as_ref()),
             }));
         }
         lanes.len()
@@ -458,6 +457,18 @@ impl Reader {
 }
 
 impl File {
+    /// What turns the file's stamps into instants.
+    fn resolver(&self, zone: Option<&TimeZone>) -> Resolver {
+        if matches!(self.timing, Timing::Counter { .. }) {
+            return Resolver::new(None, false);
+        }
+        let moment = |row: Option<&(u64, csv::ByteRecord)>| {
+            self.timing.read(&row?.1, crate::case::DateOrder::DayFirst, self.dialect.marks).map(|moment| moment.us)
+        };
+        let falling = moment(self.dialect.rows.first()) > moment(self.dialect.rows.last());
+        Resolver::new(zone.cloned(), falling)
+    }
+
     /// How the file was read, for the page.
     fn reading(&self) -> FileReading {
         let dialect = &self.dialect;
@@ -534,7 +545,9 @@ impl Job for Reader {
                     self.start_fill()?;
                 }
                 Stage::Fill(Some((rows, fill))) => {
-                    let Some(grid) = &self.grid else { return Ok(None) };
+                    let Some(grid) = &self.grid else {
+                        return Err(Fault::new("the record has no clock", self.site.clone(), "Report this as a defect."));
+                    };
                     let mut ended = false;
                     while left > 0 {
                         let row = rows

@@ -122,6 +122,13 @@ fn one_series_in_many_dialects_is_one_record() {
             [vec![0xfe, 0xff], plain.encode_utf16().flat_map(u16::to_be_bytes).collect()].concat(),
         ),
         ("total at the foot", format!("{plain}Total,1248.375,1014.25\n").into()),
+        ("a line that names the separator", format!("sep=;\n{}", plain.replace(',', ";")).into()),
+        ("decimal commas in quotes", plain.lines().map(quoted_commas).collect::<String>().into()),
+        ("columns padded with spaces", plain.replace(',', " ,   ").into()),
+        ("start and end columns", {
+            let rows = plain.lines().skip(1).map(|line| line.replacen(',', ",2026-02-01 00:00,", 1) + "\n");
+            format!("start,end,supply kW,demand kW\n{}", rows.collect::<String>()).into()
+        }),
         ("gzip", gzip(plain.as_bytes())),
         ("gzip in two members", [gzip(&plain.as_bytes()[..60]), gzip(&plain.as_bytes()[60..])].concat()),
     ];
@@ -134,6 +141,12 @@ fn one_series_in_many_dialects_is_one_record() {
         let harmless = [FindingKind::Ignored];
         assert!(kinds(&record).iter().all(|kind| harmless.contains(kind)), "{name}: {:?}", record.findings);
     }
+}
+
+/// A row with every cell in quotes and decimal commas.
+fn quoted_commas(line: &str) -> String {
+    let cells: Vec<String> = line.split(',').map(|cell| format!("\"{}\"", cell.replace('.', ","))).collect();
+    cells.join(",") + "\n"
 }
 
 fn gzip(bytes: &[u8]) -> Vec<u8> {
@@ -406,6 +419,15 @@ fn absurd_stamps_are_left_out_not_stretched_to() {
 }
 
 #[test]
+fn rows_from_the_newest_to_the_oldest_make_the_same_record() {
+    let head = "time,load kW\n";
+    let rows = ["2026-01-31 00:00,1\n", "2026-01-31 01:00,2\n", "2026-01-31 02:00,3\n", "2026-01-31 03:00,4\n"];
+    let backwards = read_text(&format!("{head}{}{}{}{}", rows[3], rows[2], rows[1], rows[0]));
+    assert_eq!(demand(&backwards), demand(&read_text(&format!("{head}{}", rows.concat()))));
+    assert_eq!(found(&backwards, FindingKind::Disorder).unwrap().text, "The rows run from the newest to the oldest.");
+}
+
+#[test]
 fn files_of_one_site_share_a_clock() {
     let january: &[u8] = b"time,load kW\n2026-01-31 22:00,1\n2026-01-31 23:00,2\n";
     let february: &[u8] = b"time,load kW\n2026-02-01 00:00,3\n2026-02-01 01:00,4\n";
@@ -440,6 +462,7 @@ fn faults_say_what_where_and_what_to_do() {
         (b"time,remark\n2026-01-31 00:00,foo\n2026-01-31 00:15,bar\n", "no column holds numbers"),
         (b"time,load kW\n00:00,1\n00:15,2\n", "no column with dates"),
         (b"time,load kW\n01.01.2026 00:00,1,5\n01.01.2026 00:15,2,5\n", "decimal commas"),
+        (b"time,load kW\n2026-01-01,1\n2026-02-01,2\n2026-03-01,2\n", "nothing can be said of storage"),
         (b"hello world", "no row of the file"),
     ] {
         let fault = read_bytes(bytes).unwrap_err();

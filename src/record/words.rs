@@ -204,7 +204,7 @@ const TIME: Words = (
     ],
     &[
         "time", "zeit", "tijd", "stamp", "ts", "from", "von", "start", "begin", "beginn", "interval",
-        "period", "mtu", "utc",
+        "period", "mtu", "utc", "unix", "epoch",
     ],
 );
 const DATE: Words = (&["datum", "fecha"], &["date", "tag", "day", "jour", "dag"]);
