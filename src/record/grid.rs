@@ -156,7 +156,10 @@ fn step(files: &[Stamped], terms: &RecordCase, findings: &mut Vec<Finding>) -> R
             }
             if found.step_us > 8 * DAY {
                 return Err(Fault::new(
-                    format!("the rows lie {} apart: nothing can be said of storage from them", people_duration(found.step_us as f64 / 1e6)),
+                    format!(
+                        "the rows lie {} apart: nothing can be said of storage from them",
+                        people_duration(found.step_us as f64 / 1e6)
+                    ),
                     file.name,
                     "Choose a file with a reading at least every day, better every hour or quarter of an hour.",
                 ));

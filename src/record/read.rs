@@ -180,7 +180,12 @@ impl Reader {
     fn start_scan(&mut self) -> Result<()> {
         let rows = self.open(self.at)?;
         let file = &self.files[self.at];
-        let scan = Scan::new(file.timing, file.dialect.marks, file.resolver(self.zone.as_ref()), self.terms.date_order);
+        let scan = Scan::new(
+            file.timing,
+            file.dialect.marks,
+            file.resolver(self.zone.as_ref()),
+            self.terms.date_order,
+        );
         self.stage = Stage::Scan(rows, scan);
         Ok(())
     }
@@ -463,7 +468,9 @@ impl File {
             return Resolver::new(None, false);
         }
         let moment = |row: Option<&(u64, csv::ByteRecord)>| {
-            self.timing.read(&row?.1, crate::case::DateOrder::DayFirst, self.dialect.marks).map(|moment| moment.us)
+            self.timing
+                .read(&row?.1, crate::case::DateOrder::DayFirst, self.dialect.marks)
+                .map(|moment| moment.us)
         };
         let falling = moment(self.dialect.rows.first()) > moment(self.dialect.rows.last());
         Resolver::new(zone.cloned(), falling)
@@ -546,7 +553,11 @@ impl Job for Reader {
                 }
                 Stage::Fill(Some((rows, fill))) => {
                     let Some(grid) = &self.grid else {
-                        return Err(Fault::new("the record has no clock", self.site.clone(), "Report this as a defect."));
+                        return Err(Fault::new(
+                            "the record has no clock",
+                            self.site.clone(),
+                            "Report this as a defect.",
+                        ));
                     };
                     let mut ended = false;
                     while left > 0 {

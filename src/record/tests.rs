@@ -421,10 +421,14 @@ fn absurd_stamps_are_left_out_not_stretched_to() {
 #[test]
 fn rows_from_the_newest_to_the_oldest_make_the_same_record() {
     let head = "time,load kW\n";
-    let rows = ["2026-01-31 00:00,1\n", "2026-01-31 01:00,2\n", "2026-01-31 02:00,3\n", "2026-01-31 03:00,4\n"];
+    let rows =
+        ["2026-01-31 00:00,1\n", "2026-01-31 01:00,2\n", "2026-01-31 02:00,3\n", "2026-01-31 03:00,4\n"];
     let backwards = read_text(&format!("{head}{}{}{}{}", rows[3], rows[2], rows[1], rows[0]));
     assert_eq!(demand(&backwards), demand(&read_text(&format!("{head}{}", rows.concat()))));
-    assert_eq!(found(&backwards, FindingKind::Disorder).unwrap().text, "The rows run from the newest to the oldest.");
+    assert_eq!(
+        found(&backwards, FindingKind::Disorder).unwrap().text,
+        "The rows run from the newest to the oldest."
+    );
 }
 
 #[test]
