@@ -116,7 +116,7 @@ fn blank(site: &str) -> SiteResult {
     SiteResult {
         millpond_result: result::VERSION,
         version: env!("CARGO_PKG_VERSION").to_owned(),
-        zones_version: result::ZONES.to_owned(),
+        zones_version: result::zones().to_owned(),
         site: site.to_owned(),
         error: None,
         record: None,

@@ -24,4 +24,6 @@ pub mod sheet;
 pub mod simulation;
 pub mod statement;
 pub mod technology;
+#[cfg(all(feature = "terminal", not(target_arch = "wasm32")))]
+pub mod terminal;
 pub mod units;

@@ -192,7 +192,7 @@ fn heads(record: &Record, done: &Assessment, version: &str) -> Heads {
         }
         .to_owned(),
         clock: format!("{zone}, {}", crate::units::people::duration(record.clock.step_s())),
-        version: format!("{version}, zones {}", crate::result::ZONES),
+        version: format!("{version}, zones {}", crate::result::zones()),
     }
 }
 
