@@ -12,7 +12,7 @@ use super::words::{at, energy_unit, extent};
 use crate::fault::Result;
 use crate::units::people;
 
-const TOP: f64 = 28.0;
+const TOP: f64 = 34.0;
 
 /// Height for a width, px.
 pub fn height(width: u32) -> u32 {
@@ -72,7 +72,7 @@ pub fn coverage<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, dat
     let right = if narrow { 10.0 } else { names + 18.0 };
     let plot = (if narrow { 36.0 } else { 40.0 }, TOP, pen.width - right, TOP + plot_height(size.0));
     let frame = axes(&mut pen, plot, data);
-    let mut placer = Placer::new(Patch { x0: plot.0 + 2.0, y0: plot.1 - 12.0, x1: pen.width, y1: plot.3 - 4.0 });
+    let mut placer = Placer::new(Patch { x0: plot.0 + 2.0, y0: plot.1 - 18.0, x1: pen.width, y1: plot.3 - 4.0 });
     let mut lines = Vec::new();
     for (i, curve) in data.curves.iter().take(3).enumerate().rev() {
         let line: Vec<Point> = curve.energy_kwh.iter().zip(&curve.value).map(|(&e, &v)| frame.px(e, v)).collect();
@@ -109,7 +109,7 @@ fn axes<S: Surface>(pen: &mut Pen<'_, S>, plot: (f64, f64, f64, f64), data: &Cov
     let marked = data.marks.iter().map(|m| m.energy_kwh).filter(|e| e.is_finite()).fold(0.0, f64::max);
     let most = if most.max(marked) > 0.0 { most.max(marked) } else { 1.0 };
     let frame = Frame::new(plot, (0.0, most), (low, high));
-    let (x0, y0, x1, y1) = plot;
+    let (x0, _, x1, y1) = plot;
     let tick = Text::tick(pen.palette);
     let percent = Ticks { step: upright.step * 100.0, values: Vec::new() };
     for &v in &upright.values {
@@ -162,26 +162,33 @@ fn draw_marks<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Coverage, 
     for (i, (names, mark, at)) in groups.into_iter().enumerate() {
         let look = Text::label(pen.palette.ink);
         let lines = [names, people::energy(mark.energy_kwh).to_string(), value_text(data.measure, mark.value)];
-        let wide =
-            lines.iter().enumerate().map(|(k, l)| look.bold_if(k == 0).width(l)).fold(0.0, f64::max);
+        // All three lines where they stay clear, or else the name alone.
         let mut options = Vec::new();
-        for share in [0.44, 0.36, 0.52, 0.28, 0.6, 0.7, 0.2, 0.8, 0.9] {
+        for (count_of_lines, share) in [0.44, 0.36, 0.52, 0.28, 0.6, 0.7, 0.2, 0.8, 0.9]
+            .map(|s| (3, s))
+            .into_iter()
+            .chain([0.44, 0.36, 0.28, 0.2, 0.14, 0.1, 0.06].map(|s| (1, s)))
+        {
+            let wide = lines[..count_of_lines]
+                .iter()
+                .enumerate()
+                .map(|(k, l)| look.bold_if(k == 0).width(l))
+                .fold(0.0, f64::max);
             // The first and the last stand before their drop, the one between after it, if they can.
-            let before = count < 3 || i != 1;
+            let before = if count < 3 { i == 0 } else { i != 1 };
             for side in [before, !before] {
                 let y = frame.plot.3 - share * (frame.plot.3 - frame.plot.1);
-                options.push((if side { at.0 - 8.0 - wide } else { at.0 + 8.0 }, y, side));
+                let x = if side { at.0 - 8.0 - wide } else { at.0 + 8.0 };
+                let tall = if count_of_lines == 1 { 4.0 } else { 40.0 };
+                options.push((count_of_lines, side, Patch { x0: x, y0: y - 12.0, x1: x + wide, y1: y + tall }));
             }
         }
-        let patches: Vec<Patch> = options
-            .iter()
-            .map(|&(x, y, _)| Patch { x0: x, y0: y - 12.0, x1: x + wide, y1: y + 40.0 })
-            .collect();
+        let patches: Vec<Patch> = options.iter().map(|o| o.2).collect();
         if let Some(found) = placer.first_clear(&patches) {
-            let (x, y, before) = options[found];
-            for (k, line) in lines.iter().enumerate() {
+            let (count_of_lines, before, patch) = options[found];
+            for (k, line) in lines[..count_of_lines].iter().enumerate() {
                 let look = look.bold_if(k == 0);
-                let at = (if before { x + wide } else { x }, y + 18.0 * k as f64);
+                let at = (if before { patch.x1 } else { patch.x0 }, patch.y0 + 12.0 + 18.0 * k as f64);
                 pen.text(at, line, if before { look.end() } else { look });
             }
         }

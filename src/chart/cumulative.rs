@@ -142,7 +142,7 @@ fn dimensions<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, c: &Critical, lin
     pen.across((left, from < x0), (right, to > x1), base);
 
     let look = Text::label(pen.palette.ink).bold();
-    let mut placer = Placer::new(Patch { x0: 2.0, y0: y0 - 10.0, x1: pen.width - 1.0, y1: y1 - 16.0 });
+    let mut placer = Placer::new(Patch { x0: x0 - 2.0, y0: y0 - 10.0, x1: pen.width - 1.0, y1: y1 - 16.0 });
     placer.avoid(line);
     let energy = people::energy(c.delivered_kwh);
     let words = [format!("the fall, {energy} delivered, is the capacity"), format!("{energy} delivered"), energy.to_string()];

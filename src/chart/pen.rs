@@ -191,7 +191,6 @@ pub(super) struct Pen<'p, S: Surface> {
     surface: S,
     pub(super) palette: &'p Palette,
     pub(super) width: f64,
-    pub(super) height: f64,
     failed: Option<String>,
 }
 
@@ -199,7 +198,7 @@ impl<'p, S: Surface> Pen<'p, S> {
     /// Takes a surface of a size in px and lays the paper.
     pub(super) fn new(surface: S, size: (u32, u32), palette: &'p Palette) -> Self {
         let (width, height) = (f64::from(size.0), f64::from(size.1));
-        let mut pen = Self { surface, palette, width, height, failed: None };
+        let mut pen = Self { surface, palette, width, failed: None };
         let prepared = pen.surface.ensure_prepared();
         pen.note(prepared);
         pen.rect((0.0, 0.0, width, height), palette.paper, 1.0);

@@ -79,7 +79,7 @@ fn lower(text: &str) -> String {
 pub fn plane<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: &Plane) -> Result<Hits> {
     let mut pen = Pen::new(surface, size, palette);
     let narrow = size.0 < NARROW;
-    let right = if narrow { 10.0 } else { 62.0 };
+    let right = if narrow { 36.0 } else { 62.0 };
     let plot = (if narrow { 46.0 } else { 54.0 }, TOP, pen.width - right, TOP + plot_height(size.0));
     let frame = ends(plot, data);
     axes(&mut pen, &frame, data.basis, narrow);
@@ -202,6 +202,8 @@ fn equal_times<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, narrow: bool) ->
     let look = Text::tick(pen.palette);
     let mut taken = Vec::new();
     for (hours, name) in TIMES {
+        // The month's name is too wide for a phone's margin.
+        let (hours, name) = if narrow && hours > 700.0 { (720.0, "30\u{202f}d") } else { (hours, name) };
         let Some((a, b)) = time_line(frame, hours) else { continue };
         if libm::hypot(a.0 - b.0, a.1 - b.1) < 20.0 {
             continue;
@@ -210,8 +212,6 @@ fn equal_times<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, narrow: bool) ->
         let (at, look) = if b.1 < y0 + 1.0 {
             let half = look.width(name) / 2.0;
             ((b.0.min(pen.width - half), y0 - 6.0), look.middle())
-        } else if narrow {
-            ((x1 - 3.0, b.1 - 5.0), look.end().halo())
         } else {
             ((x1 + 5.0, b.1 + 4.5), look)
         };

@@ -261,3 +261,49 @@ fn every_picture_is_drawn_at_every_width_and_in_every_scheme() {
         }
     }
 }
+
+/// Every text of a picture with the patch that it takes, haloes left out.
+fn texts(picture: &str) -> Vec<(String, label::Patch)> {
+    let value = |tag: &str, name: &str| -> Option<String> {
+        Some(tag.split_once(&format!(" {name}=\""))?.1.split_once('"')?.0.to_owned())
+    };
+    picture
+        .lines()
+        .filter(|l| l.starts_with("<text") && !l.contains(" stroke="))
+        .map(|line| {
+            let (tag, rest) = line.split_once('>').unwrap();
+            let text = rest.strip_suffix("</text>").unwrap().to_owned();
+            let number = |name: &str| value(tag, name).unwrap().parse::<f64>().unwrap() / FINE;
+            let (x, size) = (number("x"), number("font-size"));
+            let base = number("y") + 0.76 * size;
+            let width = metrics::width(&text, size, tag.contains("font-weight"));
+            let x0 = match value(tag, "text-anchor").as_deref() {
+                Some("end") => x - width,
+                Some("middle") => x - width / 2.0,
+                _ => x,
+            };
+            // Figures and most letters: from the height of capitals to just under the baseline.
+            (text, label::Patch { x0, y0: base - 0.66 * size, x1: x0 + width, y1: base + 0.1 * size })
+        })
+        .collect()
+}
+
+#[test]
+fn no_text_overlaps_another_or_leaves_the_picture_at_any_width() {
+    for width in [300, 320, 344, 390, 430, 520, 560, 640, 712, 742, 1040] {
+        for (name, picture) in all(width, &LIGHT) {
+            let texts = texts(&picture);
+            assert!(texts.len() > 6, "{name} at {width} has hardly a text");
+            let size = |attribute: &str| -> f64 {
+                picture.split_once(&format!("{attribute}=\"")).unwrap().1.split_once('"').unwrap().0.parse().unwrap()
+            };
+            let page = label::Patch { x0: -0.5, y0: 0.0, x1: size("width") + 0.5, y1: size("height") };
+            for (i, (text, patch)) in texts.iter().enumerate() {
+                assert!(patch.within(&page), "{name} at {width}: {text} leaves the picture, {patch:?}");
+                for (other, taken) in &texts[i + 1..] {
+                    assert!(!patch.overlaps(taken), "{name} at {width}: {text} overlaps {other}");
+                }
+            }
+        }
+    }
+}

@@ -220,7 +220,8 @@ pub fn time(from_us: f64, to_us: f64, px: f64) -> Vec<TimeTick> {
         return ticks;
     }
     let per_month = per_day * 30.4;
-    let many_years = from.date().year() != to.date().year();
+    // A span that ends with its year lies in one.
+    let many_years = civil(to_us - 1.0).is_some_and(|last| last.date().year() != from.date().year());
     if per_month >= 8.0 {
         let every = [1, 2, 3, 6, 12].into_iter().find(|n| per_month * f64::from(*n) >= 40.0).unwrap_or(12);
         for date in months(from.date(), to.date()) {

@@ -200,8 +200,10 @@ fn labels<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Week, lines: [
         a.iter()
             .zip(b)
             .filter(|(p, q)| (p.1 - q.1).is_finite() && (p.1 - q.1).abs() > 3.0)
-            .max_by(|(p, q), (r, s)| (p.1 - q.1).abs().total_cmp(&(r.1 - s.1).abs()))
-            .map(|(p, q)| (*p, *q))
+            .fold(None, |best: Option<(Point, Point)>, (p, q)| match best {
+                Some((r, s)) if (r.1 - s.1).abs() >= (p.1 - q.1).abs() => best,
+                _ => Some((*p, *q)),
+            })
     };
     let flat: Vec<Point> = carried.iter().map(|p| (p.0, if p.1.is_finite() { zero } else { f64::NAN })).collect();
     let named = [
