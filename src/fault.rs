@@ -31,7 +31,8 @@ pub type Result<T> = std::result::Result<T, Fault>;
 /// A text from a file or a person, quoted and cut to a length that fits in a message.
 pub fn quote(text: &str) -> String {
     const MOST: usize = 60;
-    let mut short: String = text.chars().take(MOST).map(|c| if c.is_control() { '\u{fffd}' } else { c }).collect();
+    let mut short: String =
+        text.chars().take(MOST).map(|c| if c.is_control() { '\u{fffd}' } else { c }).collect();
     if text.chars().count() > MOST {
         short.push('…');
     }

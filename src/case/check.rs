@@ -127,7 +127,10 @@ fn optional(field: &str, value: Option<f64>, least: f64, greatest: f64, unit: &s
 
 fn list(field: &str, values: &[f64], least: f64, greatest: f64, unit: &str) -> Result<()> {
     count(field, values.len())?;
-    values.iter().enumerate().try_for_each(|(i, value)| number(&format!("{field}[{i}]"), *value, least, greatest, unit))
+    values
+        .iter()
+        .enumerate()
+        .try_for_each(|(i, value)| number(&format!("{field}[{i}]"), *value, least, greatest, unit))
 }
 
 fn count(field: &str, entries: usize) -> Result<()> {

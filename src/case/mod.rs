@@ -402,7 +402,11 @@ impl Case {
             )
         })?;
         reader.end().map_err(|error| {
-            Fault::new(format!("text follows the case: {error}"), "case file", "Remove what follows the closing brace.")
+            Fault::new(
+                format!("text follows the case: {error}"),
+                "case file",
+                "Remove what follows the closing brace.",
+            )
         })?;
         case.check()?;
         Ok(case)
@@ -413,8 +417,9 @@ impl Case {
     /// # Errors
     /// If it cannot be written.
     pub fn to_json(&self) -> Result<String> {
-        serde_json::to_string_pretty(self)
-            .map_err(|error| Fault::new(format!("the case cannot be written: {error}"), "case", "Report this as a defect."))
+        serde_json::to_string_pretty(self).map_err(|error| {
+            Fault::new(format!("the case cannot be written: {error}"), "case", "Report this as a defect.")
+        })
     }
 
     /// Checks every number of the case for its range.

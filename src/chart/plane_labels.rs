@@ -35,8 +35,8 @@ impl Cover {
         let px = |c: &[(f64, f64)]| c.iter().map(|&(e, p)| frame.px(e, p)).collect::<Vec<Point>>();
         let faint = named.iter().flat_map(|n| &n.strand.others).map(|c| (px(c), 1));
         for (line, weight) in faint.chain(named.iter().map(|n| (n.line.clone(), TYPICAL))) {
-            for run in shape::runs(&line) {
-                for (part, _) in shape::dashes(run, &[CELL * 0.5, CELL * 0.5]) {
+            for run in shape::clip_line(&line, frame.plot) {
+                for (part, _) in shape::dashes(&run, &[CELL * 0.5, CELL * 0.5]) {
                     if let Some(cell) = cover.index(part[0]).and_then(|i| cover.cells.get_mut(i)) {
                         *cell = (*cell).max(weight);
                     }
@@ -118,7 +118,9 @@ pub(super) fn draw<S: Surface>(
         let limit = if kind.strand.candidate.is_some() { f64::INFINITY } else { DEAREST };
         for place in places(&kind.line, look.width(&text), (x0, x1)) {
             let patch = look.patch(place.at, &text).grown(2.0);
-            if !placer.clear(&patch) || leaders.iter().any(|(a, b)| shape::clip(*a, *b, patch.area()).is_some()) {
+            if !placer.clear(&patch)
+                || leaders.iter().any(|(a, b)| shape::clip(*a, *b, patch.area()).is_some())
+            {
                 continue;
             }
             if leaders.iter().any(|(a, b)| cross(*a, *b, place.from, place.to)) {
@@ -161,12 +163,13 @@ pub(super) fn draw<S: Surface>(
 fn places(line: &[Point], wide: f64, ends: (f64, f64)) -> Vec<Place> {
     let (top, bottom) = (line[0].1, line[line.len() - 1].1);
     let mut places = Vec::new();
-    for (share, low) in [(0.12, 8.0), (0.18, 2.0), (0.25, 0.0), (0.33, 0.0), (0.42, 4.0), (0.55, 14.0), (0.7, 26.0)] {
+    for (share, low) in
+        [(0.12, 8.0), (0.18, 2.0), (0.25, 0.0), (0.33, 0.0), (0.42, 4.0), (0.55, 14.0), (0.7, 26.0)]
+    {
         let y = top + share * (bottom - top);
         let Some(to) = line.windows(2).find_map(|w| {
             let (a, b) = (w[0], w[1]);
-            (a.1 <= y && y <= b.1 && b.1 > a.1)
-                .then(|| (a.0 + (y - a.1) / (b.1 - a.1) * (b.0 - a.0), y))
+            (a.1 <= y && y <= b.1 && b.1 > a.1).then(|| (a.0 + (y - a.1) / (b.1 - a.1) * (b.0 - a.0), y))
         }) else {
             continue;
         };
@@ -183,7 +186,12 @@ fn places(line: &[Point], wide: f64, ends: (f64, f64)) -> Vec<Place> {
             for up in [0.0, 16.0, -16.0, 34.0, -34.0, 58.0, -58.0, 90.0, -90.0, 130.0, -130.0] {
                 let base = to.1 - up + 4.5;
                 places.push(Place { at: (to.0 + out + 5.0, base), from: (to.0 + out, base - 4.5), to, low });
-                places.push(Place { at: (to.0 - out - 5.0 - wide, base), from: (to.0 - out, base - 4.5), to, low });
+                places.push(Place {
+                    at: (to.0 - out - 5.0 - wide, base),
+                    from: (to.0 - out, base - 4.5),
+                    to,
+                    low,
+                });
             }
         }
     }

@@ -30,7 +30,9 @@ pub(super) fn island() -> Vec<f64> {
             let wind = (60.0 + 18.0 * season + 62.0 * slow + 14.0 * fast).clamp(0.0, 172.0) * calm;
             let height = libm::sin(std::f64::consts::PI * (hour - 6.0) / 12.0).max(0.0);
             let sun = 60.0 * height * (0.7 - 0.3 * season);
-            let demand = 48.0 + 8.0 * season + if (6.0..16.0).contains(&hour) && libm::floor(day) % 7.0 < 6.0 { 24.0 } else { 0.0 };
+            let demand = 48.0
+                + 8.0 * season
+                + if (6.0..16.0).contains(&hour) && libm::floor(day) % 7.0 < 6.0 { 24.0 } else { 0.0 };
             wind + sun - demand
         })
         .collect()
@@ -90,7 +92,10 @@ pub(super) fn coverage_curves() -> Coverage {
     let energy: Vec<f64> = (0..70).map(|i| 200.0 * f64::from(i)).collect();
     let curve = |power: f64, top: f64, scale: f64| CoverageCurve {
         power_kw: Some(power),
-        value: energy.iter().map(|e| (top * (1.0 - libm::exp(-e / scale)) + 0.25 * e / 14_000.0).min(top)).collect(),
+        value: energy
+            .iter()
+            .map(|e| (top * (1.0 - libm::exp(-e / scale)) + 0.25 * e / 14_000.0).min(top))
+            .collect(),
         energy_kwh: energy.clone(),
     };
     Coverage {
@@ -241,23 +246,37 @@ pub(super) fn all(width: u32, palette: &Palette) -> Vec<Drawn> {
     let data = kinds();
     let size = (full, plane::height(full));
     let ragone = svg(size, &plane::sentence(&data), |s| plane(s, size, palette, &data));
-    [("year", year), ("net", net), ("coverage", covered), ("cumulative", fallen), ("week", carried), ("plane", ragone)]
-        .map(|(name, text)| (name, text.unwrap()))
-        .to_vec()
+    [
+        ("year", year),
+        ("net", net),
+        ("coverage", covered),
+        ("cumulative", fallen),
+        ("week", carried),
+        ("plane", ragone),
+    ]
+    .map(|(name, text)| (name, text.unwrap()))
+    .to_vec()
 }
 
 #[test]
 fn every_picture_is_drawn_at_every_width_and_in_every_scheme() {
     let folder = std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("target").join("pictures");
     std::fs::create_dir_all(&folder).unwrap();
-    for (width, scheme) in [(742, Scheme::Light), (742, Scheme::Dark), (320, Scheme::Light), (320, Scheme::Dark),
-        (742, Scheme::High), (742, Scheme::Print), (520, Scheme::Light)]
-    {
+    for (width, scheme) in [
+        (742, Scheme::Light),
+        (742, Scheme::Dark),
+        (320, Scheme::Light),
+        (320, Scheme::Dark),
+        (742, Scheme::High),
+        (742, Scheme::Print),
+        (520, Scheme::Light),
+    ] {
         for (name, text) in all(width, scheme.palette()) {
             for bad in ["NaN", "inf"] {
                 assert!(!text.contains(bad), "{name} at {width} holds {bad}");
             }
-            std::fs::write(folder.join(format!("{name}-{width}-{scheme:?}.svg").to_lowercase()), text).unwrap();
+            std::fs::write(folder.join(format!("{name}-{width}-{scheme:?}.svg").to_lowercase()), text)
+                .unwrap();
         }
     }
 }
@@ -295,7 +314,15 @@ fn no_text_overlaps_another_or_leaves_the_picture_at_any_width() {
             let texts = texts(&picture);
             assert!(texts.len() > 6, "{name} at {width} has hardly a text");
             let size = |attribute: &str| -> f64 {
-                picture.split_once(&format!("{attribute}=\"")).unwrap().1.split_once('"').unwrap().0.parse().unwrap()
+                picture
+                    .split_once(&format!("{attribute}=\""))
+                    .unwrap()
+                    .1
+                    .split_once('"')
+                    .unwrap()
+                    .0
+                    .parse()
+                    .unwrap()
             };
             let page = label::Patch { x0: -0.5, y0: 0.0, x1: size("width") + 0.5, y1: size("height") };
             for (i, (text, patch)) in texts.iter().enumerate() {

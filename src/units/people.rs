@@ -18,7 +18,11 @@ pub struct Scaled {
 
 impl std::fmt::Display for Scaled {
     fn fmt(&self, f: &mut std::fmt::Formatter<'_>) -> std::fmt::Result {
-        if self.unit.is_empty() { write!(f, "{}", self.number) } else { write!(f, "{}{NARROW}{}", self.number, self.unit) }
+        if self.unit.is_empty() {
+            write!(f, "{}", self.number)
+        } else {
+            write!(f, "{}{NARROW}{}", self.number, self.unit)
+        }
     }
 }
 
@@ -61,7 +65,8 @@ pub fn duration(s: f64) -> Scaled {
     if s == 0.0 {
         return Scaled { number: "0".to_owned(), unit: "s" };
     }
-    let (_, size, unit) = steps.iter().find(|(below, _, _)| s.abs() < *below).copied().unwrap_or((0.0, 1.0, "s"));
+    let (_, size, unit) =
+        steps.iter().find(|(below, _, _)| s.abs() < *below).copied().unwrap_or((0.0, 1.0, "s"));
     Scaled { number: significant(s / size, 3), unit }
 }
 
@@ -125,7 +130,13 @@ fn scaled(value: f64, steps: &[(f64, &'static str)]) -> Scaled {
         base
     } else {
         // The largest unit in which the number, rounded to three places, is at least 1.
-        steps.iter().rev().find(|(size, _)| value.abs() / size >= 0.9995).or(steps.first()).copied().unwrap_or(base)
+        steps
+            .iter()
+            .rev()
+            .find(|(size, _)| value.abs() / size >= 0.9995)
+            .or(steps.first())
+            .copied()
+            .unwrap_or(base)
     };
     Scaled { number: significant(value / size, 3), unit }
 }
@@ -142,7 +153,11 @@ fn round_to(value: f64, decimals: i32) -> f64 {
 
 /// Drops trailing zeros after the point, so that a measured 4.70 is not mistaken for more than it is.
 fn trimmed(text: &str) -> String {
-    if text.contains('.') { text.trim_end_matches('0').trim_end_matches('.').to_owned() } else { text.to_owned() }
+    if text.contains('.') {
+        text.trim_end_matches('0').trim_end_matches('.').to_owned()
+    } else {
+        text.to_owned()
+    }
 }
 
 #[cfg(test)]
