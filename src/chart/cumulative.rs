@@ -63,8 +63,7 @@ pub fn cumulative<S: Surface>(
 ) -> Result<Hits> {
     let size = roomy(size);
     let mut pen = Pen::new(surface, size, palette);
-    let narrow = size.0 < NARROW;
-    let plot = (if narrow { 38.0 } else { 40.0 }, TOP, pen.width - 6.0, TOP + plot_height(size.0));
+    let plot = (44.0, TOP, pen.width - 6.0, TOP + plot_height(size.0));
     let (x0, y0, x1, y1) = plot;
     let critical = data
         .critical
