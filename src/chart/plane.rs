@@ -197,7 +197,11 @@ fn axes<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, basis: Basis, narrow: b
         pen.text((x, y1 + 18.0), &decade(e), tick.middle());
     }
     for &e in &between {
-        pen.upright(frame.x.px(e), y1 - 3.0, y1, pen.hair_ink());
+        let x = frame.x.px(e);
+        pen.upright(x, y1 - 3.0, y1, pen.hair_ink());
+        if decades.len() < 2 && names_too(e) {
+            pen.text((x, y1 + 18.0), &decade(e), tick.middle());
+        }
     }
     let (decades, between) = ticks::log(frame.y.from, frame.y.to);
     for &p in &decades {
@@ -206,13 +210,23 @@ fn axes<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, basis: Basis, narrow: b
         pen.text((x0 - 7.0, y + 4.5), &decade(p), tick.end());
     }
     for &p in &between {
-        pen.level(x0, x0 + 3.0, frame.y.px(p), pen.hair_ink());
+        let y = frame.y.px(p);
+        pen.level(x0, x0 + 3.0, y, pen.hair_ink());
+        if decades.len() < 2 && names_too(p) {
+            pen.text((x0 - 7.0, y + 4.5), &decade(p), tick.end());
+        }
     }
     pen.level(x0, x1, y1, pen.axis_ink());
     pen.upright(x0, y0, y1, pen.axis_ink());
     let (across, up) = units(basis);
     pen.text((if narrow { pen.width } else { x1 }, y1 + 38.0), across, tick.end());
     pen.text((0.0, 14.0), up, tick);
+}
+
+/// Whether a tick between decades is named where there are too few decades for a scale: at 2 and 5.
+fn names_too(value: f64) -> bool {
+    let lead = value / libm::pow(10.0, libm::floor(libm::log10(value) + 1e-9));
+    (lead - 2.0).abs() < 1e-6 || (lead - 5.0).abs() < 1e-6
 }
 
 fn decade(value: f64) -> String {

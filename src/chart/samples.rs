@@ -268,6 +268,21 @@ pub(super) fn all(width: u32, palette: &Palette) -> Vec<Drawn> {
     data.marks = vec![CoverageMark { name: "asked".to_owned(), energy_kwh: 4740.0, value: 32.0 }];
     let size = (width, coverage::height(width));
     let held = svg(size, "", |s| coverage(s, size, palette, &data));
+    // Every kind of a full catalogue at once.
+    let mut data = kinds();
+    for (factor, word) in [(0.7, "light"), (1.4, "heavy")] {
+        for mut strand in kinds().strands {
+            let moved = |c: &(f64, f64)| (c.0 * factor, c.1 * factor * factor);
+            strand.typical = strand.typical.iter().map(moved).collect();
+            strand.others = strand.others.iter().map(|o| o.iter().map(moved).collect()).collect();
+            strand.technology = format!("{}-{word}", strand.technology);
+            strand.name = format!("{}, {word}", strand.name);
+            (strand.candidate, strand.meets) = (None, None);
+            data.strands.push(strand);
+        }
+    }
+    let size = (full, plane::height(full));
+    let crowded = svg(size, "", |s| plane(s, size, palette, &data));
     let mut data = kinds();
     data.basis = Basis::Absolute;
     (data.point, data.budget) = (Some((4740.0, 87.0)), String::new());
@@ -290,6 +305,7 @@ pub(super) fn all(width: u32, palette: &Palette) -> Vec<Drawn> {
         ("week", carried),
         ("plane", ragone),
         ("plane-built", built),
+        ("plane-all", crowded),
     ]
     .map(|(name, text)| (name, text.unwrap()))
     .to_vec()

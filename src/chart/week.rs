@@ -71,7 +71,7 @@ pub fn week<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: &
     let powers = extent([&data.asked_kw, &data.carried_kw]).unwrap_or((0.0, 1.0));
     let (kw, unit) = power_unit(most(powers));
     let ((low, high), marks) = ticks::roomy(in_unit(powers, kw), 0.14, 6);
-    let span = extent([&data.t_us]).unwrap_or((0.0, 1.0));
+    let span = held_span(&data.t_us);
     let frame = Frame::new(plot, span, (low * kw, high * kw));
     let tick = Text::tick(palette);
     let long = format!("Power, {unit}, charge above and discharge below the line");
@@ -98,6 +98,13 @@ pub fn week<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: &
     time_axis(&mut pen, &band, band.plot.3);
     pen.lift()?;
     Ok(Hits { main: frame, second: Some(band), spots: Vec::new() })
+}
+
+/// From the first sample to the end of the last, which holds as long as the one before it (alone: an hour).
+fn held_span(t_us: &[f64]) -> (f64, f64) {
+    let (Some(&from), Some(&last)) = (t_us.first(), t_us.last()) else { return (0.0, 1.0) };
+    let step = if t_us.len() > 1 { last - t_us[t_us.len() - 2] } else { 3600e6 };
+    (from, last + step.max(0.0))
 }
 
 /// Areas between two lines over the runs where both have numbers.
@@ -131,7 +138,7 @@ fn draw_powers<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Week) {
         let mut line = Vec::with_capacity(2 * count);
         for i in 0..count {
             let y = frame.y.px(value(data.asked_kw[i], data.carried_kw[i]));
-            let next = if i + 1 < count { data.t_us[i + 1] } else { data.t_us[i] };
+            let next = if i + 1 < count { data.t_us[i + 1] } else { frame.x.to };
             line.extend([(frame.x.px(data.t_us[i]), y), (frame.x.px(next), y)]);
         }
         line
