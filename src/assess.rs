@@ -3,7 +3,7 @@
 use std::rc::Rc;
 
 use crate::case::{Case, Store};
-use crate::duty::{self, Duty};
+use crate::duty::{self, Duty, Kind};
 use crate::fault::{Fault, Result};
 use crate::record::Record;
 use crate::requirement::{self, Requirement};
@@ -50,13 +50,15 @@ pub fn screen(
             requirement.result.criteria.iter().find(|line| line.quantity == quantity).map(|line| line.value)
         };
         let site = &case.site;
+        let topped_up = matches!(duty.kind, Kind::Limits(limits) if limits.recharge);
         Need {
             discharge_kw: asked.point.power_kw,
             charge_kw: asked.point.power_kw,
             energy_kwh: asked.point.delivered_kwh,
             round_trip_efficiency: criterion("round_trip_efficiency"),
             ramp_kw_per_s: duty.result.steepest_ramp_kw_per_s,
-            mean_hold_s: asked.run.mean_hold_s,
+            // A store that may be topped up from the grid need not keep its charge.
+            mean_hold_s: asked.run.mean_hold_s.filter(|_| !topped_up),
             cycles_per_year: criterion("cycles"),
             service_life_years: site.service_life_years,
             response_s: site.response_s,

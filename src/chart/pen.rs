@@ -121,10 +121,6 @@ impl Text {
         Self { anchor: HPos::Right, ..self }
     }
 
-    pub(super) fn halo(self) -> Self {
-        Self { halo: true, ..self }
-    }
-
     /// Width of a text, px.
     pub(super) fn width(&self, text: &str) -> f64 {
         metrics::width(text, self.size, self.bold)
@@ -193,7 +189,6 @@ pub(super) struct Pen<'p, S: Surface> {
     surface: S,
     pub(super) palette: &'p Palette,
     pub(super) width: f64,
-    pub(super) height: f64,
     failed: Option<String>,
 }
 
@@ -201,7 +196,7 @@ impl<'p, S: Surface> Pen<'p, S> {
     /// Takes a surface of a size in px and lays the paper.
     pub(super) fn new(surface: S, size: (u32, u32), palette: &'p Palette) -> Self {
         let (width, height) = (f64::from(size.0), f64::from(size.1));
-        let mut pen = Self { surface, palette, width, height, failed: None };
+        let mut pen = Self { surface, palette, width, failed: None };
         let prepared = pen.surface.ensure_prepared();
         pen.note(prepared);
         pen.rect((0.0, 0.0, width, height), palette.paper, 1.0);
@@ -254,9 +249,13 @@ impl<'p, S: Surface> Pen<'p, S> {
 
     /// A line cut into dashes (drawn, left out, ...), px.
     pub(super) fn dashed(&mut self, points: &[Point], ink: Ink, pattern: &[f64]) {
+        // Cut to the page first, so that a line to far outside is not dashed all the way.
+        let page = (-20.0, -20.0, self.width + 20.0, 1e4);
         for run in shape::runs(points) {
-            for (part, _) in shape::dashes(run, pattern) {
-                self.line(&part, ink);
+            for visible in shape::clip_line(run, page) {
+                for (part, _) in shape::dashes(&visible, pattern) {
+                    self.line(&part, ink);
+                }
             }
         }
     }
@@ -433,7 +432,13 @@ pub(super) fn crisp(at: f64) -> f64 {
 }
 
 fn fine(px: f64) -> i32 {
-    libm::round(px * FINE) as i32
+    // Far outside every picture, and still far from the ends of the type.
+    libm::round(px.clamp(-1e5, 1e5) * FINE) as i32
+}
+
+/// The size that a picture is laid out for: at least one in which its parts have room.
+pub(super) fn roomy((width, height): (u32, u32)) -> (u32, u32) {
+    (width.max(240), height.max(160))
 }
 
 fn coord((x, y): Point) -> BackendCoord {

@@ -1,11 +1,13 @@
 //! The year at a glance: a row per week, Monday to Sunday to the right, beside the duration curve, whose power axis is the
 //! colour bar of the sheet.
 
+use std::fmt::Write as _;
+
 use super::data::{DurationCurve, YearSheet};
 use super::frame::{Frame, Hits};
 use super::label::{Patch, Placer};
 use super::palette::{Palette, Rgb};
-use super::pen::{Ink, Pen, Surface, Text};
+use super::pen::{Ink, Pen, Surface, Text, roomy};
 use super::shape::{Lie, Point};
 use super::ticks::{self, DAY_US};
 use super::words::extent;
@@ -48,11 +50,8 @@ pub fn sentence(data: &YearSheet, curve: &DurationCurve) -> String {
         word(curve),
     );
     if let Some((from, to)) = data.critical_us {
-        text.push_str(&format!(
-            " The critical period runs from {} to {}.",
-            ticks::moment(from),
-            ticks::moment(to)
-        ));
+        let _ =
+            write!(text, " The critical period runs from {} to {}.", ticks::moment(from), ticks::moment(to));
     }
     text
 }
@@ -81,6 +80,7 @@ pub fn year_sheet<S: Surface>(
     data: &YearSheet,
     curve: &DurationCurve,
 ) -> Result<Hits> {
+    let size = roomy(size);
     let mut pen = Pen::new(surface, size, palette);
     let narrow = size.0 < NARROW;
     let width = f64::from(size.0);
