@@ -83,24 +83,13 @@ pub(super) struct Scanned {
 }
 
 impl Scan {
-    pub(super) fn new(
-        timing: Timing,
-        marks: Marks,
-        resolver: Resolver,
-        stated: Option<DateOrder>,
-    ) -> Self {
+    pub(super) fn new(timing: Timing, marks: Marks, resolver: Resolver, stated: Option<DateOrder>) -> Self {
         let order = stated.unwrap_or(DateOrder::DayFirst);
         let open = match stated {
             None if timing.dated() => vec![DateOrder::MonthFirst, DateOrder::YearFirst],
             _ => Vec::new(),
         };
-        let candidate = Candidate {
-            order,
-            resolver,
-            stats: Stats::new(),
-            refuted: 0,
-            refuted_by: None,
-        };
+        let candidate = Candidate { order, resolver, stats: Stats::new(), refuted: 0, refuted_by: None };
         Self {
             timing,
             marks,

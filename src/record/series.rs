@@ -74,8 +74,16 @@ impl Series {
                 *slot = value;
                 Ok(())
             }
-            Some(_) => Err(Fault::new("a value is not a finite number", format!("interval {i}"), "Correct the cell in the file.")),
-            None => Err(Fault::new("an interval lies outside the record", format!("interval {i}"), "Report this as a defect.")),
+            Some(_) => Err(Fault::new(
+                "a value is not a finite number",
+                format!("interval {i}"),
+                "Correct the cell in the file.",
+            )),
+            None => Err(Fault::new(
+                "an interval lies outside the record",
+                format!("interval {i}"),
+                "Report this as a defect.",
+            )),
         }
     }
 

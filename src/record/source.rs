@@ -72,7 +72,9 @@ impl Disk {
         let failed = |error: std::io::Error| cannot_read(&path.display().to_string(), &error);
         let file = std::fs::File::open(path).map_err(failed)?;
         let len = file.metadata().map_err(failed)?.len();
-        let name = path.file_name().map_or_else(|| path.display().to_string(), |name| name.to_string_lossy().into_owned());
+        let name = path
+            .file_name()
+            .map_or_else(|| path.display().to_string(), |name| name.to_string_lossy().into_owned());
         Ok(Self { name, file, len })
     }
 }

@@ -194,7 +194,8 @@ pub(super) fn choose(
 ) -> Result<Timing> {
     let width = dialect.headers.len();
     let profiles: Vec<Profile> = (0..width).map(|column| Profile::new(dialect, column)).collect();
-    let by_day = dialect.headers.iter().filter(|header| stamp::time_of_day(header.as_bytes()).is_some()).count();
+    let by_day =
+        dialect.headers.iter().filter(|header| stamp::time_of_day(header.as_bytes()).is_some()).count();
     if by_day >= 20 && by_day * 3 >= width * 2 {
         return Err(Fault::new(
             format!("the table has one row per day and {by_day} columns for the times of day"),

@@ -42,7 +42,10 @@ impl Resolver {
     }
 }
 
-fn ambiguous(zone: &TimeZone, us: i64, before: Option<i64>,
+fn ambiguous(
+    zone: &TimeZone,
+    us: i64,
+    before: Option<i64>,
     falling: bool,
 ) -> Option<(i64, Option<(i64, i64, i64)>)> {
     let read =
