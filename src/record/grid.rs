@@ -84,7 +84,7 @@ impl Grid {
         let intervals = i64::try_from(self.clock.intervals).unwrap_or(i64::MAX);
         let bytes = intervals.saturating_mul(8).saturating_mul(i64::try_from(series).unwrap_or(i64::MAX));
         let rows = i64::try_from(rows).unwrap_or(i64::MAX);
-        let hollow = intervals > 5_000_000 && intervals / 1000 > rows;
+        let hollow = intervals > 1_000_000 && intervals / 1000 > rows;
         if intervals <= MOST_INTERVALS && bytes <= MOST_BYTES && !hollow {
             return Ok(());
         }

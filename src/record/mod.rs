@@ -20,6 +20,7 @@ mod stamp;
 #[cfg(test)]
 mod tests;
 mod timing;
+mod unit;
 mod words;
 mod zone;
 
