@@ -37,7 +37,7 @@ fn sentence(done: &Assessment, pictures: &Pictures) -> String {
             (_, Kind::Limits(_)) if done.requirement.infeasible.is_none() => {
                 "The limits are never exceeded: no store is needed to hold them.".to_owned()
             }
-            (Some(infeasible), _) => format!("What is asked is out of reach. {}", infeasible.why),
+            (Some(infeasible), _) => infeasible.why.clone(),
             (None, _) => {
                 "What is asked is out of reach with this power: allow more power, or ask for less.".to_owned()
             }
