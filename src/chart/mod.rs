@@ -1,6 +1,42 @@
 //! Pictures: one function each, over any plotters backend, so that the canvas on screen, the SVG in a document and the
 //! picture in a test are the same drawing.
+//!
+//! A picture is drawn at 1:1 px for the width it is given and redrawn for another, never scaled. Its surface takes
+//! [`FINE`] steps per px, so a canvas context is scaled by `devicePixelRatio / FINE` before it is handed over. Each module
+//! of a picture gives its height for a width and a sentence that says in words what it shows.
 
+pub mod coverage;
+pub mod cumulative;
 mod data;
+pub mod frame;
+mod label;
+pub mod metrics;
+pub mod net;
+pub mod palette;
+mod pen;
+pub mod plane;
+mod plane_labels;
+#[cfg(test)]
+mod samples;
+mod shape;
+mod svg;
+pub mod ticks;
+pub mod week;
+mod words;
+pub mod year;
+mod year_curve;
 
+pub use coverage::coverage;
+pub use cumulative::cumulative;
 pub use data::*;
+pub use frame::{Axis, Frame, Hits, Spot, nearest};
+pub use net::net_power;
+pub use palette::{DARK, HIGH, HIGH_DARK, LIGHT, PRINT, Palette, Rgb, Scheme, tokens};
+pub use pen::{FINE, Surface};
+pub use plane::plane;
+pub use svg::svg;
+pub use week::week;
+pub use year::year_sheet;
+
+/// Width in px under which a picture is drawn for a phone.
+pub const NARROW: u32 = 560;

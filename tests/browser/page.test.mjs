@@ -1,0 +1,87 @@
+// The page as such: its policy, its stations, its fitness for readers and for narrow and dark screens.
+import assert from "node:assert/strict";
+import { readFileSync } from "node:fs";
+import { createRequire } from "node:module";
+import { after, before, test } from "node:test";
+import { assertQuiet, chooseFiles, demoFile, demos, setUp, settled, shot } from "./helpers.mjs";
+
+const axe = readFileSync(createRequire(import.meta.url).resolve("axe-core/axe.min.js"), "utf8");
+const STATIONS = ["record", "duty", "requirement", "plane", "simulation", "outlook", "statement"];
+
+let site;
+before(async () => {
+  site = await setUp();
+});
+after(() => site.close());
+
+/** Violations by axe's rules, as one line each. */
+async function violations(page) {
+  await page.evaluate(`${axe}; undefined`);
+  const found = await page.evaluate(() => globalThis.axe.run(document, { resultTypes: ["violations"] }));
+  return found.violations.flatMap(({ id, help, nodes }) => nodes.map(({ target }) => `${id} (${help}): ${target}`));
+}
+
+test("the policy forbids every other origin and every script in the document", async () => {
+  const page = await site.open();
+  const policy = await page.getAttribute("meta[http-equiv=Content-Security-Policy]", "content");
+  assert.match(policy, /default-src 'none'/);
+  assert.match(policy, /script-src 'self' 'wasm-unsafe-eval';/);
+  assert.match(policy, /connect-src 'self';/);
+  assert.equal(await page.locator("script:not([src])").count(), 0);
+  const reached = await page.evaluate(() => fetch("http://127.0.0.1:9/").then(() => "reached", () => "refused"));
+  assert.equal(reached, "refused");
+  assert.match(page.faults.join("\n"), /Content Security Policy/, "refused by the policy, not by chance");
+  await page.closeAll();
+});
+
+test("the empty page has its stations in order and is fit for readers", async () => {
+  const page = await site.open();
+  assert.deepEqual(await page.$$eval("section[data-station]", (all) => all.map((one) => one.dataset.station)), STATIONS);
+  assert.equal(await page.getAttribute("html", "data-settled"), "true", "an empty page has nothing left to compute");
+  assert.deepEqual(await violations(page), []);
+  await shot(page, "empty-1280-light");
+  assertQuiet(page);
+  await page.closeAll();
+});
+
+for (const [name, options] of Object.entries({
+  "1280-light": { width: 1280, colorScheme: "light" },
+  "1280-dark": { width: 1280, colorScheme: "dark" },
+  "1920-light": { width: 1920, height: 1080, colorScheme: "light" },
+  "390-light": { width: 390, height: 844, colorScheme: "light", hasTouch: true },
+  "360-dark": { width: 360, height: 740, colorScheme: "dark", hasTouch: true },
+})) {
+  test(`a full page at ${name} fits its width and is fit for readers`, async () => {
+    const page = await site.open(options);
+    await chooseFiles(page, demoFile(demos[1]));
+    await settled(page);
+    await shot(page, `full-${name}`);
+    const [content, window] = await page.evaluate(() => [document.documentElement.scrollWidth, document.documentElement.clientWidth]);
+    assert.ok(content <= window, `the page is ${content} px wide in a window of ${window} px`);
+    assert.deepEqual(await violations(page), []);
+    assertQuiet(page);
+    await page.closeAll();
+  });
+}
+
+test("the page prints on paper's own terms", async () => {
+  const page = await site.open({ colorScheme: "dark" });
+  await chooseFiles(page, demoFile(demos[1]));
+  await settled(page);
+  const pdf = await page.pdf({ format: "A4", preferCSSPageSize: false, printBackground: false });
+  assert.equal(pdf.subarray(0, 5).toString(), "%PDF-");
+  await page.emulateMedia({ media: "print" });
+  assert.equal(await page.evaluate(() => getComputedStyle(document.documentElement).getPropertyValue("--paper").trim()), "#ffffff");
+  assert.equal(await page.locator(".rail").isVisible(), false);
+  await shot(page, "print");
+  await page.closeAll();
+});
+
+test("a broken page says so, whatever broke", async () => {
+  const page = await site.open();
+  await page.evaluate(() => setTimeout(() => { throw new Error("tried on purpose"); }));
+  const notice = page.locator(".notice[role=alert]");
+  await notice.waitFor();
+  assert.match(await notice.innerText(), /Millpond stopped: .*tried on purpose/);
+  await page.closeAll();
+});

@@ -1,0 +1,92 @@
+// Starts the page. The wasm is compiled once; the page and every worker run from that one compiled module.
+//
+// What the page (src/main.rs, src/bridge) uses, as properties of globalThis.millpond:
+//   module           the compiled WebAssembly.Module
+//   spawn()          a new Worker that runs the same wasm, already on its way
+//   notice(text)     shows that something is broken, by plain DOM, since the page's own code may be what broke
+//
+// The build writes the hashed names of the two files into this script's own element (www/after-build.mjs).
+"use strict";
+(() => {
+  const { glue, wasm } = document.currentScript.dataset;
+  const millpond = (globalThis.millpond = { module: null, spawn: null, notice });
+
+  // The worker is a classic one made from a Blob, because that also starts in a file opened from disk. Its first message
+  // brings the module; the start is synchronous, so a message that follows at once finds the listener that main() has set.
+  const START = `
+;self.addEventListener("message", (event) => { wasm_bindgen.initSync({ module: event.data.module }); }, { once: true });`;
+
+  let noticed = false;
+
+  /** Shows one notice above everything else; the first one stands, since what follows is its consequence. */
+  function notice(text) {
+    if (noticed) return;
+    noticed = true;
+    const box = document.createElement("div");
+    box.className = "error notice";
+    box.setAttribute("role", "alert");
+    const [what, ...rest] = text.split("\n");
+    box.append(Object.assign(document.createElement("b"), { textContent: what }));
+    for (const line of rest) box.append(Object.assign(document.createElement("span"), { textContent: line }));
+    const again = Object.assign(document.createElement("button"), { textContent: "Reload the page" });
+    again.addEventListener("click", () => location.reload());
+    box.append(again);
+    document.body.prepend(box);
+    document.documentElement.dataset.settled = "true";
+  }
+
+  function stopped(error) {
+    const kept = document.documentElement.dataset.kept === "true" ? "Your case is kept. " : "";
+    notice(`Millpond stopped: ${error?.message ?? error}\n${kept}Reload the page to go on. No file has left this computer.`);
+  }
+
+  // An event without an error is the browser's own remark (such as a resize observer's), not a failure of the page.
+  addEventListener("error", (event) => event.error && stopped(event.error));
+  addEventListener("unhandledrejection", (event) => stopped(event.reason));
+
+  async function get(name) {
+    const answer = await fetch(name);
+    if (!answer.ok) throw new Error(`${name} was not found (${answer.status})`);
+    return answer;
+  }
+
+  async function compile() {
+    const answer = await get(wasm);
+    if (answer.headers.get("Content-Type")?.startsWith("application/wasm")) return WebAssembly.compileStreaming(answer);
+    return WebAssembly.compile(await answer.arrayBuffer());
+  }
+
+  /** The glue as a script of the page: defines the global wasm_bindgen. */
+  function runGlue() {
+    return new Promise((done, failed) => {
+      const script = Object.assign(document.createElement("script"), { src: glue, onload: done });
+      script.onerror = () => failed(new Error(`${glue} was not found`));
+      document.head.append(script);
+    });
+  }
+
+  async function start() {
+    if (typeof WebAssembly !== "object") {
+      return notice("This browser has no WebAssembly.\nOpen the page in a browser of the last few years, or allow WebAssembly in its settings.");
+    }
+    if (location.protocol === "file:") {
+      return notice("This page cannot start from a folder on disk.\nServe the folder (www/start does), or use the one-file build.");
+    }
+    try {
+      const [module, text] = await Promise.all([compile(), get(glue).then((answer) => answer.text()), runGlue()]);
+      const script = URL.createObjectURL(new Blob([text, START], { type: "text/javascript" }));
+      millpond.module = module;
+      millpond.spawn = () => {
+        const worker = new Worker(script);
+        worker.postMessage({ module });
+        return worker;
+      };
+      await wasm_bindgen({ module_or_path: module });
+    } catch (error) {
+      if (error instanceof WebAssembly.RuntimeError) return stopped(error);
+      notice(`Millpond could not be loaded: ${error?.message ?? error}\nCheck the connection and reload the page.`);
+    }
+  }
+
+  start();
+})();
