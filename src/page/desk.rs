@@ -70,19 +70,24 @@ impl Desk {
         Self { files, case, view, sheet, status, scheme, bridge: StoredValue::new_local(made), typing }
     }
 
-    /// Opens files in place of those that are open; the case stays, but for what was corrected of the old files' reading.
+    /// Opens files in place of those that are open; the case stays, but for what was corrected of other files' reading.
     pub(crate) fn open(self, files: Vec<File>) {
+        let again = self.files.with_untracked(|open| open.iter().eq(files.iter().map(File::name).collect::<Vec<_>>().iter()));
+        let case = self.case.with_untracked(|case| if again { case.clone() } else { afresh(case) });
+        self.open_with(files, case);
+    }
+
+    /// Opens files with a case of their own.
+    pub(crate) fn open_with(self, files: Vec<File>, case: Case) {
         if files.is_empty() {
             return;
         }
         let names: Vec<String> = files.iter().map(File::name).collect();
         let site = site_name(&names);
-        let again = self.files.with_untracked(|open| *open == names);
         self.files.set(names);
-        if !again {
-            self.case.update(|case| *case = afresh(case));
-            self.view.update(|view| view.window_us = None);
-        }
+        self.case.set(case);
+        self.view.update(|view| view.window_us = None);
+        self.typing.set_value(None);
         self.begin();
         self.bridge.with_value(|bridge| {
             bridge.open(files, site, self.case.get_untracked(), self.view.get_untracked());

@@ -20,8 +20,9 @@ pub(crate) fn figures(desk: Desk, of: fn(&Sheet) -> &Station, group: usize) -> i
 }
 
 fn figure(figure: Figure) -> impl IntoView {
-    let path = (!figure.path.is_empty()).then_some(figure.path);
-    let value = path.is_some().then(|| figure.value.map(|value| value.to_string()).unwrap_or_default());
+    // A figure that does not exist for this record has no number to be read.
+    let value = figure.value.filter(|_| !figure.path.is_empty()).map(|value| value.to_string());
+    let path = value.is_some().then_some(figure.path);
     view! {
         <div>
             <dt>{figure.label}</dt>

@@ -31,6 +31,12 @@ pub(crate) fn method(desk: Desk, of: fn(&Sheet) -> &Station, index: usize) -> im
     })
 }
 
+/// The methods from the `first`-th on: those of tables, after those of the pictures.
+pub(crate) fn methods_from(desk: Desk, of: fn(&Sheet) -> &Station, first: usize) -> impl IntoView {
+    let count = Memo::new(move |_| desk.of(|sheet| of(sheet).method.len()));
+    move || (first..count.get()).map(|index| method(desk, of, index)).collect_view()
+}
+
 fn explanation(method: &Method) -> impl IntoView + use<> {
     let paragraph = |text: &str| (!text.is_empty()).then(|| view! { <p>{text.to_owned()}</p> });
     let source = (!method.source.is_empty()).then(|| format!("Source: {}", method.source));
