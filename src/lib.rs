@@ -12,10 +12,14 @@
 
 pub mod case;
 pub mod chart;
+pub mod duty;
 pub mod fault;
 pub mod job;
+pub mod numeric;
 pub mod record;
+pub mod requirement;
 pub mod result;
 pub mod sheet;
+pub mod simulation;
 pub mod technology;
 pub mod units;

@@ -249,7 +249,7 @@ pub struct PlaneResult {
     /// Delivered energy over discharge power, s; null if no power is asked.
     pub duration_s: Option<f64>,
     /// Points set by mass and volume budgets.
-    pub points: Vec<crate::technology::PlanePoint>,
+    pub points: Vec<crate::technology::Point>,
 }
 
 /// A store run on the duty.

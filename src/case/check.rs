@@ -64,7 +64,8 @@ pub(super) fn ranges(case: &Case) -> Result<()> {
     number("requirement.discharge_efficiency", requirement.discharge_efficiency, 1e-3, 1.0, "")?;
     number("requirement.self_discharge_per_h", requirement.self_discharge_per_h, 0.0, 1e3, "1/h")?;
     number("requirement.standing_kw", requirement.standing_kw, 0.0, MOST, "kW")?;
-    number("requirement.served_share", requirement.served_share, 0.0, 1.0, "")?;
+    optional("requirement.served_share", requirement.served_share, 0.0, 1.0, "")?;
+    optional("requirement.served_power_kw", requirement.served_power_kw, 0.0, MOST, "kW")?;
     number("requirement.depth", requirement.depth, 1e-2, 1.0, "")?;
     number("requirement.end_of_life", requirement.end_of_life, 1e-2, 1.0, "")?;
     number("requirement.margin", requirement.margin, 0.0, 10.0, "")?;

@@ -228,8 +228,10 @@ pub struct RequirementCase {
     pub powers_kw: Vec<f64>,
     /// Edges of the time-scale bands, s.
     pub band_edges_s: Vec<f64>,
-    /// Share of the deficit to be served, 0 to 1, of the asked point on the page (islanded sites and balance).
-    pub served_share: f64,
+    /// Share of the deficit to be served, 0 to 1; none = nine tenths at an islanded site, the knee at a connected one.
+    pub served_share: Option<f64>,
+    /// Power both ways with which it is served, kW; none = chosen from the record.
+    pub served_power_kw: Option<f64>,
     /// Usable depth of discharge, share of nameplate.
     pub depth: f64,
     /// Capacity left at end of life, share of nameplate.
@@ -249,7 +251,8 @@ impl Default for RequirementCase {
             unserved_shares: vec![0.01, 0.05],
             powers_kw: Vec::new(),
             band_edges_s: vec![3600.0, 86_400.0, 604_800.0],
-            served_share: 0.9,
+            served_share: None,
+            served_power_kw: None,
             depth: 0.9,
             end_of_life: 0.8,
             margin: 0.0,

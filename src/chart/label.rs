@@ -66,6 +66,11 @@ impl Placer {
         self.free(patch) && self.lines.iter().all(|(a, b)| super::shape::clip(*a, *b, patch.area()).is_none())
     }
 
+    /// Whether a segment runs over something taken.
+    pub(super) fn crossed(&self, a: Point, b: Point) -> bool {
+        self.taken.iter().any(|t| super::shape::clip(a, b, t.area()).is_some())
+    }
+
     pub(super) fn take(&mut self, patch: Patch) {
         self.taken.push(patch);
     }

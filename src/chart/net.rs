@@ -72,7 +72,7 @@ pub fn net_power<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, da
     for limit in data.limits_kw.iter().filter(|l| l.is_finite()) {
         powers = (powers.0.min(*limit), powers.1.max(*limit));
     }
-    let ((low, high), marks) = ticks::rounded(powers, true, if narrow { 5 } else { 6 });
+    let ((low, high), marks) = ticks::roomy(powers, 0.05, 6);
     let shown = extent([&data.t_us]).unwrap_or((0.0, 1.0));
     let window = if data.window_us.1 > data.window_us.0 { data.window_us } else { shown };
     let frame = Frame::new(plot, window, (low, high));

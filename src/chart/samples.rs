@@ -110,7 +110,7 @@ pub(super) fn fall() -> Cumulative {
         all.push(sum);
         sum += if *p > 0.0 { 0.94 * p } else { p / 0.94 };
     }
-    let (from, to) = (22 * 24, 66 * 24);
+    let (from, to) = (22 * 24, 84 * 24);
     let (mut best, mut peak, mut c) = (0.0, from, (from, from));
     for i in from..to {
         if all[i] > all[peak] {
@@ -137,19 +137,19 @@ pub(super) fn fall() -> Cumulative {
 
 pub(super) fn deciding_week() -> Week {
     let net = island();
-    let (from, to) = (43 * 24, 50 * 24);
-    let (mut level, mut data) = (0.9, Week::default());
+    let (from, to) = (50 * 24, 57 * 24);
+    let (mut level, mut data) = (0.2, Week::default());
     for h in from..to {
         let asked = net[h];
         let room = if asked > 0.0 { (1.0 - level) * 2700.0 } else { level * 2700.0 };
-        let carried = asked.signum() * asked.abs().min(60.0).min(room);
+        let carried = asked.signum() * asked.abs().min(42.0).min(room);
         data.t_us.push(MONDAY_2024 + h as f64 * HOUR);
         data.asked_kw.push(asked);
         data.carried_kw.push(carried);
         data.level.push(level);
         level = (level + carried / 2700.0).clamp(0.0, 1.0);
     }
-    data.store = "2.7\u{202f}MWh delivered, 60\u{202f}kW".to_owned();
+    data.store = "2.7\u{202f}MWh delivered, 42\u{202f}kW".to_owned();
     data.unserved_word = "unserved".to_owned();
     data
 }

@@ -1,11 +1,11 @@
 //! Plane geometry of the pen: cutting lines into dashes, and hatching areas with clipped lines.
 
 /// A position on the picture, px, y downwards.
-pub type Point = (f64, f64);
+pub(super) type Point = (f64, f64);
 
 /// Direction of a hatch.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub enum Lie {
+pub(super) enum Lie {
     /// Level lines: water.
     Level,
     /// At 45 degrees, rising to the right: ground.

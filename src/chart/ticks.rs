@@ -84,6 +84,18 @@ pub fn rounded((low, high): (f64, f64), zero: bool, most: usize) -> ((f64, f64),
     ((low, high), linear(low, high, libm::round((high - low) / step).max(1.0) as usize))
 }
 
+/// The two ends with zero kept in and a little room beyond each, and the ticks between them.
+pub fn roomy((low, high): (f64, f64), room: f64, most: usize) -> ((f64, f64), Ticks) {
+    let (low, high) = if low < high && low.is_finite() && high.is_finite() {
+        (low.min(0.0), high.max(0.0))
+    } else {
+        rounded((low, high), true, most).0
+    };
+    let pad = room * (high - low);
+    let ends = (if low < 0.0 { low - pad } else { low }, if high > 0.0 { high + pad } else { high });
+    (ends, linear(ends.0, ends.1, most))
+}
+
 /// Ticks of a logarithmic axis: the decades, and the values 2 to 9 times each, within the ends.
 pub fn log(from: f64, to: f64) -> (Vec<f64>, Vec<f64>) {
     if !(from > 0.0 && to > from && to.is_finite()) {

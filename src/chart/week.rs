@@ -62,7 +62,7 @@ pub fn week<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: &
     let (x0, x1) = (if narrow { 36.0 } else { 40.0 }, pen.width - 6.0);
     let plot = (x0, TOP, x1, TOP + plot_height(size.0));
     let powers = extent([&data.asked_kw, &data.carried_kw]).unwrap_or((0.0, 1.0));
-    let ((low, high), marks) = ticks::rounded(powers, true, 6);
+    let ((low, high), marks) = ticks::roomy(powers, 0.14, 6);
     let span = extent([&data.t_us]).unwrap_or((0.0, 1.0));
     let frame = Frame::new(plot, span, (low, high));
     let tick = Text::tick(palette);
@@ -184,11 +184,17 @@ fn labels<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Week, lines: [
     let palette = pen.palette;
     let (x0, y0, x1, y1) = frame.plot;
     let zero = frame.y.px(0.0);
-    let mut placer = Placer::new(Patch { x0: x0 + 2.0, y0: y0 - 12.0, x1, y1: y1 + 20.0 });
-    placer.take(Patch { x0, y0: zero - 1.0, x1, y1: zero + 1.0 });
-    placer.avoid(asked_down);
-    placer.avoid(asked_up);
-    placer.avoid(carried);
+    let mut placer = Placer::new(Patch { x0: x0 + 2.0, y0: y0 - 8.0, x1, y1: y1 + 8.0 });
+    placer.take(Patch { x0, y0: zero - 2.0, x1, y1: zero + 2.0 });
+    // Names stand on paper, off the areas between the axis and what was asked or carried.
+    let off = |patch: &Patch| {
+        [asked_down, asked_up, carried].into_iter().all(|line| {
+            line.iter().filter(|p| p.0 > patch.x0 - 3.0 && p.0 < patch.x1 + 3.0 && p.1.is_finite()).all(|p| {
+                let (top, bottom) = (p.1.min(zero), p.1.max(zero));
+                bottom <= patch.y0 || top >= patch.y1
+            })
+        })
+    };
     // Where the two lines stand furthest apart, most of all for long.
     let widest = |a: &[Point], b: &[Point]| -> Option<(Point, Point)> {
         a.iter()
@@ -205,29 +211,27 @@ fn labels<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Week, lines: [
     ];
     for (place, name, colour) in named {
         let Some((p, q)) = place else { continue };
-        let thing = (p.0, f64::midpoint(p.1, q.1));
+        let thing = (p.0 + 1.0, f64::midpoint(p.1, q.1));
         let look = Text::label(colour).bold();
         let wide = look.width(name);
-        let down = thing.1 > zero;
         let mut options = Vec::new();
-        for dy in [26.0, 44.0, 12.0, 66.0, 90.0] {
-            for dx in [14.0, 40.0, -14.0 - wide, -40.0 - wide, 80.0, -80.0 - wide, 120.0, -120.0 - wide, 170.0, -170.0 - wide] {
-                // Outwards first, then across the axis.
-                for sign in [1.0, -1.0] {
-                    let y = thing.1 + if down { sign * dy } else { -sign * dy };
-                    options.push((thing.0 + dx, y + 5.0));
-                }
+        for dx in [12.0, 30.0, 50.0, 80.0, 120.0, 170.0, 230.0] {
+            for dy in [-14.0, 0.0, 14.0, 28.0, -28.0, 44.0, -44.0, 62.0, -62.0, 82.0, -82.0, 104.0, -104.0] {
+                options.extend([(thing.0 + dx, thing.1 + dy + 5.0), (thing.0 - dx - wide, thing.1 + dy + 5.0)]);
             }
         }
-        let patches: Vec<Patch> = options.iter().map(|o| look.patch(*o, name).grown(2.0)).collect();
-        let Some(found) = patches.iter().position(|p| placer.clear(p)) else {
-            if let Some(found) = placer.first_free(patches.iter().copied()) {
-                pen.text(options[found], name, look);
-            }
-            continue;
+        let far = |o: &Point| {
+            let near = if o.0 > thing.0 { o.0 } else { o.0 + wide };
+            libm::hypot(near - thing.0, o.1 - 5.0 - thing.1)
         };
-        placer.take(patches[found]);
-        let (x, y) = options[found];
+        options.sort_by(|a, b| far(a).total_cmp(&far(b)));
+        let fits = |o: &&Point| {
+            let patch = look.patch(**o, name).grown(3.0);
+            placer.free(&patch) && off(&patch)
+        };
+        let Some(&(x, y)) = options.iter().find(fits) else { continue };
+        let patch = look.patch((x, y), name);
+        placer.take(patch.grown(3.0));
         let end = if x > thing.0 { x - 4.0 } else { x + wide + 4.0 };
         pen.leader((end, y - 4.5), thing);
         pen.text((x, y), name, look);

@@ -2,18 +2,25 @@
 //!
 //! [`screen`] is the stage's door.
 
-use serde::{Deserialize, Serialize};
+mod catalogue;
+mod curve;
+mod family;
+mod hazards;
+mod judge;
+mod need;
+mod pace;
+mod plane;
+mod rows;
+mod screen;
+mod site;
+mod size;
 
-/// A requirement's point on the Ragone plane.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-pub struct PlanePoint {
-    /// Its name.
-    pub name: String,
-}
-
-/// A technology's verdict.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
-pub struct Screened {
-    /// Identifier in the catalogue.
-    pub technology: String,
-}
+pub use catalogue::{
+    Catalogue, CircuitData, Indoors, Market, MassBasis, Model, Quantity, Range, Siting, Technology,
+};
+pub use curve::{Circuit, Meeting};
+pub use family::{Design, PLACES, Per};
+pub use hazards::{caution, hazard_words};
+pub use need::{Criterion, Judged, Need, Pair, Screened, Screening};
+pub use plane::{Point, plane, points};
+pub use screen::screen;
