@@ -5,14 +5,14 @@ use super::data::{Coverage, CoverageCurve, CoverageMark, Measure};
 use super::frame::{Frame, Hits, Spot};
 use super::label::{Patch, Placer, spread};
 use super::palette::Palette;
-use super::pen::{Ink, Pen, Surface, Text};
+use super::pen::{Ink, Pen, Surface, Text, roomy};
 use super::shape::Point;
 use super::ticks::{self, Ticks};
 use super::words::{at, energy_unit, extent};
 use crate::fault::Result;
 use crate::units::people;
 
-const TOP: f64 = 28.0;
+const TOP: f64 = 34.0;
 
 /// Height for a width, px.
 pub fn height(width: u32) -> u32 {
@@ -65,17 +65,26 @@ fn power_text(curve: &CoverageCurve) -> String {
 /// Draws what is served against delivered energy.
 ///
 /// In the result, `main` has x in kWh delivered and y in the measure (shares from 0 to 1, or kW); each mark is a spot.
-pub fn coverage<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: &Coverage) -> Result<Hits> {
+pub fn coverage<S: Surface>(
+    surface: S,
+    size: (u32, u32),
+    palette: &Palette,
+    data: &Coverage,
+) -> Result<Hits> {
+    let size = roomy(size);
     let mut pen = Pen::new(surface, size, palette);
     let narrow = size.0 < NARROW;
-    let names = data.curves.iter().map(|c| Text::label(palette.ink).bold().width(&power_text(c))).fold(0.0, f64::max);
+    let names =
+        data.curves.iter().map(|c| Text::label(palette.ink).bold().width(&power_text(c))).fold(0.0, f64::max);
     let right = if narrow { 10.0 } else { names + 18.0 };
     let plot = (if narrow { 36.0 } else { 40.0 }, TOP, pen.width - right, TOP + plot_height(size.0));
     let frame = axes(&mut pen, plot, data);
-    let mut placer = Placer::new(Patch { x0: plot.0 + 2.0, y0: plot.1 - 12.0, x1: pen.width, y1: plot.3 - 4.0 });
+    let mut placer =
+        Placer::new(Patch { x0: plot.0 + 2.0, y0: plot.1 - 18.0, x1: pen.width, y1: plot.3 - 4.0 });
     let mut lines = Vec::new();
     for (i, curve) in data.curves.iter().take(3).enumerate().rev() {
-        let line: Vec<Point> = curve.energy_kwh.iter().zip(&curve.value).map(|(&e, &v)| frame.px(e, v)).collect();
+        let line: Vec<Point> =
+            curve.energy_kwh.iter().zip(&curve.value).map(|(&e, &v)| frame.px(e, v)).collect();
         let pens = palette.pens;
         match i {
             0 => pen.line(&line, Ink::new(palette.requirement, pens.requirement)),
@@ -109,7 +118,7 @@ fn axes<S: Surface>(pen: &mut Pen<'_, S>, plot: (f64, f64, f64, f64), data: &Cov
     let marked = data.marks.iter().map(|m| m.energy_kwh).filter(|e| e.is_finite()).fold(0.0, f64::max);
     let most = if most.max(marked) > 0.0 { most.max(marked) } else { 1.0 };
     let frame = Frame::new(plot, (0.0, most), (low, high));
-    let (x0, y0, x1, y1) = plot;
+    let (x0, _, x1, y1) = plot;
     let tick = Text::tick(pen.palette);
     let percent = Ticks { step: upright.step * 100.0, values: Vec::new() };
     for &v in &upright.values {
@@ -137,7 +146,12 @@ fn axes<S: Surface>(pen: &mut Pen<'_, S>, plot: (f64, f64, f64, f64), data: &Cov
 }
 
 /// Dotted drops with ticks at both ends and three short lines each; marks at one place share them.
-fn draw_marks<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Coverage, placer: &mut Placer) -> Vec<Spot> {
+fn draw_marks<S: Surface>(
+    pen: &mut Pen<'_, S>,
+    frame: &Frame,
+    data: &Coverage,
+    placer: &mut Placer,
+) -> Vec<Spot> {
     let base = frame.plot.3;
     let mut groups: Vec<(String, &CoverageMark, Point)> = Vec::new();
     for mark in &data.marks {
@@ -161,37 +175,58 @@ fn draw_marks<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Coverage, 
     let count = groups.len();
     for (i, (names, mark, at)) in groups.into_iter().enumerate() {
         let look = Text::label(pen.palette.ink);
-        let lines = [names, people::energy(mark.energy_kwh).to_string(), value_text(data.measure, mark.value)];
-        let wide =
-            lines.iter().enumerate().map(|(k, l)| look.bold_if(k == 0).width(l)).fold(0.0, f64::max);
+        let lines =
+            [names, people::energy(mark.energy_kwh).to_string(), value_text(data.measure, mark.value)];
+        // All three lines where they stay clear, or else the name alone.
         let mut options = Vec::new();
-        for share in [0.44, 0.36, 0.52, 0.28, 0.6, 0.7, 0.2, 0.8, 0.9] {
+        for (count_of_lines, share) in [0.44, 0.36, 0.52, 0.28, 0.6, 0.7, 0.2, 0.8, 0.9]
+            .map(|s| (3, s))
+            .into_iter()
+            .chain([0.44, 0.36, 0.28, 0.2, 0.14, 0.1, 0.06].map(|s| (1, s)))
+        {
+            let wide = lines[..count_of_lines]
+                .iter()
+                .enumerate()
+                .map(|(k, l)| look.bold_if(k == 0).width(l))
+                .fold(0.0, f64::max);
             // The first and the last stand before their drop, the one between after it, if they can.
-            let before = count < 3 || i != 1;
+            let before = if count < 3 { i == 0 } else { i != 1 };
             for side in [before, !before] {
                 let y = frame.plot.3 - share * (frame.plot.3 - frame.plot.1);
-                options.push((if side { at.0 - 8.0 - wide } else { at.0 + 8.0 }, y, side));
+                let x = if side { at.0 - 8.0 - wide } else { at.0 + 8.0 };
+                let tall = if count_of_lines == 1 { 4.0 } else { 40.0 };
+                options.push((
+                    count_of_lines,
+                    side,
+                    Patch { x0: x, y0: y - 12.0, x1: x + wide, y1: y + tall },
+                ));
             }
         }
-        let patches: Vec<Patch> = options
-            .iter()
-            .map(|&(x, y, _)| Patch { x0: x, y0: y - 12.0, x1: x + wide, y1: y + 40.0 })
-            .collect();
+        let patches: Vec<Patch> = options.iter().map(|o| o.2).collect();
         if let Some(found) = placer.first_clear(&patches) {
-            let (x, y, before) = options[found];
-            for (k, line) in lines.iter().enumerate() {
+            let (count_of_lines, before, patch) = options[found];
+            for (k, line) in lines[..count_of_lines].iter().enumerate() {
                 let look = look.bold_if(k == 0);
-                let at = (if before { x + wide } else { x }, y + 18.0 * k as f64);
+                let at = (if before { patch.x1 } else { patch.x0 }, patch.y0 + 12.0 + 18.0 * k as f64);
                 pen.text(at, line, if before { look.end() } else { look });
             }
         }
-        spots.push(Spot { name: mark.name.clone(), area: (at.0 - 12.0, at.1 - 12.0, at.0 + 12.0, base + 8.0) });
+        spots.push(Spot {
+            name: mark.name.clone(),
+            area: (at.0 - 12.0, at.1 - 12.0, at.0 + 12.0, base + 8.0),
+        });
     }
     spots
 }
 
 /// Names of the powers, at the right ends or, on a phone, beside the curves.
-fn draw_names<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Coverage, placer: &mut Placer, narrow: bool) {
+fn draw_names<S: Surface>(
+    pen: &mut Pen<'_, S>,
+    frame: &Frame,
+    data: &Coverage,
+    placer: &mut Placer,
+    narrow: bool,
+) {
     let curves: Vec<&CoverageCurve> = data.curves.iter().take(3).collect();
     if narrow {
         for (i, curve) in curves.iter().enumerate() {
@@ -223,6 +258,10 @@ fn draw_names<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Coverage, 
     let wanted: Vec<f64> = ends.iter().map(|e| e.1).collect();
     let placed = spread(&wanted, 18.0, (frame.plot.1, frame.plot.3 + 4.0));
     for ((i, _), y) in ends.iter().zip(placed) {
-        pen.text((frame.plot.2 + 8.0, y), &power_text(curves[*i]), Text::label(pen.palette.ink).bold_if(*i == 0));
+        pen.text(
+            (frame.plot.2 + 8.0, y),
+            &power_text(curves[*i]),
+            Text::label(pen.palette.ink).bold_if(*i == 0),
+        );
     }
 }

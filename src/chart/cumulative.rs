@@ -6,7 +6,7 @@ use super::frame::{Frame, Hits};
 use super::label::{Patch, Placer};
 use super::net::time_axis;
 use super::palette::Palette;
-use super::pen::{Ink, Pen, Surface, Text};
+use super::pen::{Ink, Pen, Surface, Text, roomy};
 use super::shape::Point;
 use super::ticks;
 use super::words::{at, energy_unit, extent};
@@ -30,7 +30,9 @@ pub fn sentence(data: &Cumulative) -> String {
         return "Net energy since the start, after losses: no data.".to_owned();
     }
     match &data.critical {
-        None => "Net energy since the start, after losses, never falls: no store is needed for energy.".to_owned(),
+        None => {
+            "Net energy since the start, after losses, never falls: no store is needed for energy.".to_owned()
+        }
         Some(c) => format!(
             "Net energy since the start, after losses, falls furthest from {} to {}, {}; the fall is {} delivered.",
             ticks::moment(c.from_us),
@@ -53,12 +55,20 @@ fn period(c: &Critical) -> String {
 }
 
 /// Draws the cumulative energy curve. In the result, `main` has x in microseconds of clock reading and y in kWh.
-pub fn cumulative<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: &Cumulative) -> Result<Hits> {
+pub fn cumulative<S: Surface>(
+    surface: S,
+    size: (u32, u32),
+    palette: &Palette,
+    data: &Cumulative,
+) -> Result<Hits> {
+    let size = roomy(size);
     let mut pen = Pen::new(surface, size, palette);
     let narrow = size.0 < NARROW;
     let plot = (if narrow { 38.0 } else { 40.0 }, TOP, pen.width - 6.0, TOP + plot_height(size.0));
     let (x0, y0, x1, y1) = plot;
-    let critical = data.critical.filter(|c| (c.from_us + c.to_us + c.from_kwh + c.to_kwh).is_finite() && c.to_us > c.from_us);
+    let critical = data
+        .critical
+        .filter(|c| (c.from_us + c.to_us + c.from_kwh + c.to_kwh).is_finite() && c.to_us > c.from_us);
     let levels = extent([&data.energy_kwh]).unwrap_or((0.0, 1.0));
     let levels = critical.map_or(levels, |c| (levels.0.min(c.to_kwh), levels.1.max(c.from_kwh)));
     // Room below the fall for the period's dimension, and above it for its words.
@@ -142,14 +152,25 @@ fn dimensions<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, c: &Critical, lin
     pen.across((left, from < x0), (right, to > x1), base);
 
     let look = Text::label(pen.palette.ink).bold();
-    let mut placer = Placer::new(Patch { x0: 2.0, y0: y0 - 10.0, x1: pen.width - 1.0, y1: y1 - 16.0 });
+    let mut placer = Placer::new(Patch { x0: x0 - 2.0, y0: y0 - 10.0, x1: pen.width - 1.0, y1: y1 - 16.0 });
     placer.avoid(line);
     let energy = people::energy(c.delivered_kwh);
-    let words = [format!("the fall, {energy} delivered, is the capacity"), format!("{energy} delivered"), energy.to_string()];
+    let words = [
+        format!("the fall, {energy} delivered, is the capacity"),
+        format!("{energy} delivered"),
+        energy.to_string(),
+    ];
     let mut options = Vec::new();
     for text in &words {
         let wide = look.width(text);
-        for at in [upright + 4.0 - wide, right - wide, f64::midpoint(left, right) - wide / 2.0, left, x1 - wide, x0 + 4.0] {
+        for at in [
+            upright + 4.0 - wide,
+            right - wide,
+            f64::midpoint(left, right) - wide / 2.0,
+            left,
+            x1 - wide,
+            x0 + 4.0,
+        ] {
             if at + wide <= x1 {
                 options.push(((at, top - 8.0), text));
             }
@@ -165,7 +186,8 @@ fn dimensions<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, c: &Critical, lin
         let half = look.width(text) / 2.0;
         options.push((f64::midpoint(left, right).clamp(x0 + half, (x1 - half).max(x0 + half)), text));
     }
-    let patches: Vec<Patch> = options.iter().map(|(x, text)| look.middle().patch((*x, base - 7.0), text)).collect();
+    let patches: Vec<Patch> =
+        options.iter().map(|(x, text)| look.middle().patch((*x, base - 7.0), text)).collect();
     if let Some(found) = placer.first_clear(&patches) {
         pen.text((options[found].0, base - 7.0), options[found].1, look.middle());
     }

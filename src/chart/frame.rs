@@ -137,7 +137,8 @@ mod tests {
 
     #[test]
     fn pixel_and_value_are_inverse() {
-        for axis in [Axis::linear((-100.0, 200.0), (300.0, 10.0)), Axis::log((0.01, 20_000.0), (600.0, 30.0))] {
+        for axis in [Axis::linear((-100.0, 200.0), (300.0, 10.0)), Axis::log((0.01, 20_000.0), (600.0, 30.0))]
+        {
             for value in [0.02, 1.0, 150.0] {
                 assert!((axis.at(axis.px(value)) - value).abs() < 1e-9 * value.max(1.0), "{axis:?} {value}");
             }
@@ -146,8 +147,11 @@ mod tests {
 
     #[test]
     fn an_axis_of_nothing_still_maps() {
-        for axis in [Axis::linear((5.0, 5.0), (0.0, 100.0)), Axis::linear((f64::NAN, 1.0), (0.0, 100.0)),
-            Axis::log((0.0, -1.0), (0.0, 100.0))] {
+        for axis in [
+            Axis::linear((5.0, 5.0), (0.0, 100.0)),
+            Axis::linear((f64::NAN, 1.0), (0.0, 100.0)),
+            Axis::log((0.0, -1.0), (0.0, 100.0)),
+        ] {
             assert!(axis.px(5.0).is_finite(), "{axis:?}");
         }
         assert!(Axis::log((1.0, 10.0), (0.0, 1.0)).px(-1.0).is_nan());

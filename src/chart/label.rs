@@ -77,7 +77,9 @@ impl Placer {
 
     /// A line that labels keep clear of.
     pub(super) fn avoid(&mut self, line: &[Point]) {
-        self.lines.extend(line.windows(2).map(|w| (w[0], w[1])).filter(|(a, b)| (a.0 + a.1 + b.0 + b.1).is_finite()));
+        self.lines.extend(
+            line.windows(2).map(|w| (w[0], w[1])).filter(|(a, b)| (a.0 + a.1 + b.0 + b.1).is_finite()),
+        );
     }
 
     /// Takes the first free patch, with 2 px around it.

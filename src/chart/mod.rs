@@ -8,6 +8,8 @@
 pub mod coverage;
 pub mod cumulative;
 mod data;
+#[cfg(test)]
+mod edges;
 pub mod frame;
 mod label;
 pub mod metrics;

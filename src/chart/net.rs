@@ -6,7 +6,7 @@ use super::data::{EpisodeMark, NetPower};
 use super::frame::{Axis, Frame, Hits, Spot};
 use super::label::{Patch, Placer};
 use super::palette::Palette;
-use super::pen::{Ink, Pen, Surface, Text, crisp};
+use super::pen::{Ink, Pen, Surface, Text, crisp, roomy};
 use super::shape::{self, Point};
 use super::ticks::{self, TimeTick};
 use super::words::extent;
@@ -27,7 +27,8 @@ fn plot_height(width: u32) -> f64 {
 
 /// What it shows, in a sentence.
 pub fn sentence(data: &NetPower) -> String {
-    let (Some((least, _)), Some((_, greatest))) = (extent([&data.least_kw]), extent([&data.greatest_kw])) else {
+    let (Some((least, _)), Some((_, greatest))) = (extent([&data.least_kw]), extent([&data.greatest_kw]))
+    else {
         return "Net power over a window of the record: no data.".to_owned();
     };
     let (from, to) = data.window_us;
@@ -39,9 +40,10 @@ pub fn sentence(data: &NetPower) -> String {
         people::power(greatest),
     );
     let largest = |sign: f64| {
-        data.episodes.iter().filter(|e| e.energy_kwh * sign > 0.0).max_by(|a, b| {
-            (a.energy_kwh * sign).total_cmp(&(b.energy_kwh * sign))
-        })
+        data.episodes
+            .iter()
+            .filter(|e| e.energy_kwh * sign > 0.0)
+            .max_by(|a, b| (a.energy_kwh * sign).total_cmp(&(b.energy_kwh * sign)))
     };
     for (sign, word) in [(-1.0, "deficit"), (1.0, "surplus")] {
         if let Some(episode) = largest(sign) {
@@ -64,7 +66,13 @@ fn hours(episode: &EpisodeMark) -> people::Scaled {
 ///
 /// In the result, `main` is the power (x in microseconds of clock reading, y in kW), `second` the strip; the spots "from"
 /// and "to" are the window's grips.
-pub fn net_power<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: &NetPower) -> Result<Hits> {
+pub fn net_power<S: Surface>(
+    surface: S,
+    size: (u32, u32),
+    palette: &Palette,
+    data: &NetPower,
+) -> Result<Hits> {
+    let size = roomy(size);
     let mut pen = Pen::new(surface, size, palette);
     let narrow = size.0 < NARROW;
     let plot = (if narrow { 36.0 } else { 40.0 }, TOP, pen.width - 6.0, TOP + plot_height(size.0));
@@ -96,7 +104,8 @@ pub fn net_power<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, da
     draw_episodes(&mut pen, &frame, &data.episodes, narrow);
     let base = plot.3 + 30.0;
     time_axis(&mut pen, &frame, base);
-    let (second, spots) = draw_strip(&mut pen, (plot.0, base + 36.0, plot.2, base + 36.0 + STRIP), data, window);
+    let (second, spots) =
+        draw_strip(&mut pen, (plot.0, base + 36.0, plot.2, base + 36.0 + STRIP), data, window);
     pen.lift()?;
     Ok(Hits { main: frame, second, spots })
 }
@@ -146,7 +155,9 @@ fn draw_areas<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &NetPower) 
             .iter()
             .map(|run| {
                 run.iter()
-                    .map(|&(x, least, greatest)| (x, frame.y.px(if up { greatest.max(0.0) } else { least.min(0.0) })))
+                    .map(|&(x, least, greatest)| {
+                        (x, frame.y.px(if up { greatest.max(0.0) } else { least.min(0.0) }))
+                    })
                     .collect()
             })
             .collect();
@@ -218,14 +229,21 @@ fn draw_episodes<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, episodes: &[Ep
         let mut placer = Placer::new(Patch { x0, y0: base - 16.0, x1, y1: base + 8.0 });
         if up {
             // The axis title stands at the left.
-            placer.take(Patch { x0: 0.0, y0: 0.0, x1: Text::tick(palette).width("Net power, kW") + 8.0, y1: 18.0 });
+            placer.take(Patch {
+                x0: 0.0,
+                y0: 0.0,
+                x1: Text::tick(palette).width("Net power, kW") + 8.0,
+                y1: 18.0,
+            });
         }
         let mut order: Vec<&EpisodeMark> = episodes
             .iter()
             .filter(|e| (e.energy_kwh > 0.0) == up && e.energy_kwh != 0.0 && e.from_us < e.to_us)
             .filter(|e| e.to_us > frame.x.from && e.from_us < frame.x.to)
             .collect();
-        order.sort_by(|a, b| b.energy_kwh.abs().total_cmp(&a.energy_kwh.abs()).then(a.from_us.total_cmp(&b.from_us)));
+        order.sort_by(|a, b| {
+            b.energy_kwh.abs().total_cmp(&a.energy_kwh.abs()).then(a.from_us.total_cmp(&b.from_us))
+        });
         let mut drawn = 0;
         for episode in order {
             let (from, to) = (frame.x.px(episode.from_us), frame.x.px(episode.to_us));
@@ -260,10 +278,13 @@ fn draw_strip<S: Surface>(
 ) -> (Option<Frame>, Vec<Spot>) {
     let (x0, y0, x1, y1) = area;
     let count = data.strip_us.len().min(data.strip_kw.len());
-    let (Some((least, greatest)), true) = (extent([&data.strip_kw]), count > 1) else { return (None, Vec::new()) };
+    let (Some((least, greatest)), true) = (extent([&data.strip_kw]), count > 1) else {
+        return (None, Vec::new());
+    };
     let cell = (data.strip_us[count - 1] - data.strip_us[0]) / (count - 1) as f64;
     let x = Axis::linear((data.strip_us[0], data.strip_us[count - 1] + cell), (x0, x1));
-    let y = Axis::linear((least.min(0.0), greatest.max(0.0).max(least.min(0.0) + 1e-9)), (y1 - 1.0, y0 + 1.0));
+    let y =
+        Axis::linear((least.min(0.0), greatest.max(0.0).max(least.min(0.0) + 1e-9)), (y1 - 1.0, y0 + 1.0));
     let palette = pen.palette;
     let (from, to) = (x.px(window.0).clamp(x0, x1), x.px(window.1).clamp(x0, x1));
     pen.rect((from, y0 - 2.0, to, y1 + 2.0), palette.selection, 1.0);
@@ -275,7 +296,10 @@ fn draw_strip<S: Surface>(
             let mut side: Vec<Point> =
                 run.iter().map(|p| (p.0, if up { p.1.min(zero) } else { p.1.max(zero) })).collect();
             side.insert(0, (run[0].0 - cell * 0.5 * (x1 - x0) / (x.to - x.from), side[0].1));
-            side.push((run[run.len() - 1].0 + cell * 0.5 * (x1 - x0) / (x.to - x.from), side[side.len() - 1].1));
+            side.push((
+                run[run.len() - 1].0 + cell * 0.5 * (x1 - x0) / (x.to - x.from),
+                side[side.len() - 1].1,
+            ));
             side.extend([(side[side.len() - 1].0, zero), (side[0].0, zero)]);
             pen.fill(&side, colour, alpha);
         }
@@ -288,7 +312,8 @@ fn draw_strip<S: Surface>(
         let middle = f64::midpoint(y0, y1);
         let grip = (at - 2.5, middle - 7.0, at + 2.5, middle + 7.0);
         pen.rect(grip, palette.paper, 1.0);
-        let outline = [(grip.0, grip.1), (grip.2, grip.1), (grip.2, grip.3), (grip.0, grip.3), (grip.0, grip.1)];
+        let outline =
+            [(grip.0, grip.1), (grip.2, grip.1), (grip.2, grip.3), (grip.0, grip.3), (grip.0, grip.1)];
         pen.line(&outline, Ink::new(palette.selection_edge, 1.25));
         spots.push(Spot { name: name.to_owned(), area: (at - 12.0, y0 - 4.0, at + 12.0, y1 + 4.0) });
     }

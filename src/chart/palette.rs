@@ -363,8 +363,11 @@ impl Palette {
 /// The colour part of the page's style tokens: every scheme under the conditions that choose it.
 pub fn tokens() -> String {
     let block = |media: &str, selector: &str, scheme: &str, palette: &Palette| {
-        let (indent, open, close) =
-            if media.is_empty() { ("  ", String::new(), "") } else { ("    ", format!("@media {media} {{\n  "), "}\n") };
+        let (indent, open, close) = if media.is_empty() {
+            ("  ", String::new(), "")
+        } else {
+            ("    ", format!("@media {media} {{\n  "), "}\n")
+        };
         let end = if media.is_empty() { "}\n" } else { "  }\n" };
         format!(
             "{open}{selector} {{\n{indent}color-scheme: {scheme};\n{}{end}{close}\n",
@@ -432,10 +435,33 @@ mod tests {
 
     #[test]
     fn text_and_lines_hold_their_contrast_in_every_scheme() {
-        let text = ["ink", "muted", "link", "error", "surplus-text", "deficit-text", "level-text", "candidate-a-text",
-            "candidate-b-text", "candidate-c-text", "candidate-d-text"];
-        let lines = ["rule-strong", "surplus", "deficit", "level", "strand", "focus", "requirement", "selection-edge",
-            "candidate-a", "candidate-b", "candidate-c", "candidate-d"];
+        let text = [
+            "ink",
+            "muted",
+            "link",
+            "error",
+            "surplus-text",
+            "deficit-text",
+            "level-text",
+            "candidate-a-text",
+            "candidate-b-text",
+            "candidate-c-text",
+            "candidate-d-text",
+        ];
+        let lines = [
+            "rule-strong",
+            "surplus",
+            "deficit",
+            "level",
+            "strand",
+            "focus",
+            "requirement",
+            "selection-edge",
+            "candidate-a",
+            "candidate-b",
+            "candidate-c",
+            "candidate-d",
+        ];
         for scheme in Scheme::ALL {
             let palette = scheme.palette();
             let least = if matches!(scheme, Scheme::High | Scheme::HighDark) { 7.0 } else { 4.5 };

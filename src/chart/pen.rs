@@ -6,7 +6,8 @@
 
 use plotters_backend::text_anchor::{HPos, Pos, VPos};
 use plotters_backend::{
-    BackendColor, BackendCoord, BackendStyle, BackendTextStyle, DrawingBackend, DrawingErrorKind, FontFamily, FontStyle,
+    BackendColor, BackendCoord, BackendStyle, BackendTextStyle, DrawingBackend, DrawingErrorKind, FontFamily,
+    FontStyle,
 };
 
 use super::label::Patch;
@@ -23,7 +24,8 @@ pub(super) const TICK: f64 = 13.0;
 /// Size of labels in pictures, px.
 pub(super) const LABEL: f64 = 14.0;
 /// Typefaces, the one that the metrics are of first.
-pub(super) const FAMILY: &str = "'Source Sans 3', 'Segoe UI', 'Noto Sans', 'Liberation Sans', Arial, sans-serif";
+pub(super) const FAMILY: &str =
+    "'Source Sans 3', 'Segoe UI', 'Noto Sans', 'Liberation Sans', Arial, sans-serif";
 /// Opacity that marks a text to be outlined in its own colour, on surfaces that can (see [`Surface::OUTLINES`]).
 pub(super) const OUTLINED: f64 = 0.999;
 
@@ -191,7 +193,6 @@ pub(super) struct Pen<'p, S: Surface> {
     surface: S,
     pub(super) palette: &'p Palette,
     pub(super) width: f64,
-    pub(super) height: f64,
     failed: Option<String>,
 }
 
@@ -199,7 +200,7 @@ impl<'p, S: Surface> Pen<'p, S> {
     /// Takes a surface of a size in px and lays the paper.
     pub(super) fn new(surface: S, size: (u32, u32), palette: &'p Palette) -> Self {
         let (width, height) = (f64::from(size.0), f64::from(size.1));
-        let mut pen = Self { surface, palette, width, height, failed: None };
+        let mut pen = Self { surface, palette, width, failed: None };
         let prepared = pen.surface.ensure_prepared();
         pen.note(prepared);
         pen.rect((0.0, 0.0, width, height), palette.paper, 1.0);
@@ -252,9 +253,13 @@ impl<'p, S: Surface> Pen<'p, S> {
 
     /// A line cut into dashes (drawn, left out, ...), px.
     pub(super) fn dashed(&mut self, points: &[Point], ink: Ink, pattern: &[f64]) {
+        // Cut to the page first, so that a line to far outside is not dashed all the way.
+        let page = (-20.0, -20.0, self.width + 20.0, 1e4);
         for run in shape::runs(points) {
-            for (part, _) in shape::dashes(run, pattern) {
-                self.line(&part, ink);
+            for visible in shape::clip_line(run, page) {
+                for (part, _) in shape::dashes(&visible, pattern) {
+                    self.line(&part, ink);
+                }
             }
         }
     }
@@ -271,8 +276,12 @@ impl<'p, S: Surface> Pen<'p, S> {
     /// A filled rectangle (left, top, right, bottom).
     pub(super) fn rect(&mut self, (x0, y0, x1, y1): (f64, f64, f64, f64), colour: Rgb, alpha: f64) {
         if (x0 + y0 + x1 + y1).is_finite() && x1 > x0 && y1 > y0 {
-            let drawn =
-                self.surface.draw_rect(coord((x0, y0)), coord((x1, y1)), &backend_colour(colour, alpha), true);
+            let drawn = self.surface.draw_rect(
+                coord((x0, y0)),
+                coord((x1, y1)),
+                &backend_colour(colour, alpha),
+                true,
+            );
             self.note(drawn);
         }
     }
@@ -330,9 +339,16 @@ impl<'p, S: Surface> Pen<'p, S> {
             if S::OUTLINES {
                 self.write(at, &text, paper, OUTLINED);
             } else {
-                for (dx, dy) in
-                    [(2.0, 0.0), (-2.0, 0.0), (0.0, 2.0), (0.0, -2.0), (1.4, 1.4), (-1.4, 1.4), (1.4, -1.4), (-1.4, -1.4)]
-                {
+                for (dx, dy) in [
+                    (2.0, 0.0),
+                    (-2.0, 0.0),
+                    (0.0, 2.0),
+                    (0.0, -2.0),
+                    (1.4, 1.4),
+                    (-1.4, 1.4),
+                    (1.4, -1.4),
+                    (-1.4, -1.4),
+                ] {
                     self.write((at.0 + dx, at.1 + dy), &text, paper, 1.0);
                 }
             }
@@ -341,8 +357,12 @@ impl<'p, S: Surface> Pen<'p, S> {
     }
 
     fn write(&mut self, (x, y): Point, text: &str, look: Text, alpha: f64) {
-        let style =
-            Type { text: look, shrinks: S::SHRINKS, stands: S::STANDS, colour: backend_colour(look.colour, alpha) };
+        let style = Type {
+            text: look,
+            shrinks: S::SHRINKS,
+            stands: S::STANDS,
+            colour: backend_colour(look.colour, alpha),
+        };
         let drawn = self.surface.draw_text(text, &style, coord((x, y - S::RISE * look.size)));
         self.note(drawn);
     }
@@ -416,7 +436,13 @@ pub(super) fn crisp(at: f64) -> f64 {
 }
 
 fn fine(px: f64) -> i32 {
-    libm::round(px * FINE) as i32
+    // Far outside every picture, and still far from the ends of the type.
+    libm::round(px.clamp(-1e5, 1e5) * FINE) as i32
+}
+
+/// The size that a picture is laid out for: at least one in which its parts have room.
+pub(super) fn roomy((width, height): (u32, u32)) -> (u32, u32) {
+    (width.max(240), height.max(160))
 }
 
 fn coord((x, y): Point) -> BackendCoord {

@@ -6,7 +6,7 @@ use super::data::{Basis, Plane, Strand, Verdict};
 use super::frame::{Axis, Frame, Hits, Spot};
 use super::label::Patch;
 use super::palette::Palette;
-use super::pen::{Ink, Pen, Surface, Text};
+use super::pen::{Ink, Pen, Surface, Text, roomy};
 use super::plane_labels::{self, Named};
 use super::shape::{self, Lie, Point};
 use super::ticks;
@@ -19,7 +19,13 @@ const MARK: f64 = 9.0;
 /// Dashes of the candidates, A to D.
 const DASHES: [&[f64]; 4] = [&[], &[12.0, 5.0], &[10.0, 3.0, 1.5, 3.0], &[4.0, 2.5]];
 /// Lines of equal time: hours and name.
-const TIMES: [(f64, &str); 5] = [(1.0 / 3600.0, "1\u{202f}s"), (1.0 / 60.0, "1\u{202f}min"), (1.0, "1\u{202f}h"), (24.0, "1\u{202f}d"), (730.0, "1\u{202f}month")];
+const TIMES: [(f64, &str); 5] = [
+    (1.0 / 3600.0, "1\u{202f}s"),
+    (1.0 / 60.0, "1\u{202f}min"),
+    (1.0, "1\u{202f}h"),
+    (24.0, "1\u{202f}d"),
+    (730.0, "1\u{202f}month"),
+];
 /// Decades that are shown at most, from the top.
 const MOST_DECADES: f64 = 7.0;
 
@@ -43,7 +49,12 @@ fn units(basis: Basis) -> (&'static str, &'static str) {
 /// What it shows, in a sentence.
 pub fn sentence(data: &Plane) -> String {
     let (across, up) = units(data.basis);
-    let mut text = format!("Ragone plane, {} against {}: {} kinds of storage", lower(up), lower(across), data.strands.len());
+    let mut text = format!(
+        "Ragone plane, {} against {}: {} kinds of storage",
+        lower(up),
+        lower(across),
+        data.strands.len()
+    );
     if let Some((power, energy)) = data.requirement {
         text.push_str(&format!(
             "; the requirement is {} at {}, {}",
@@ -77,9 +88,10 @@ fn lower(text: &str) -> String {
 /// In the result, `main` has logarithmic axes in the units of the basis; spots are the names and marks of the kinds, by the
 /// identifier of the technology, and "point" for the tick of the requirement.
 pub fn plane<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: &Plane) -> Result<Hits> {
+    let size = roomy(size);
     let mut pen = Pen::new(surface, size, palette);
     let narrow = size.0 < NARROW;
-    let right = if narrow { 10.0 } else { 62.0 };
+    let right = if narrow { 36.0 } else { 62.0 };
     let plot = (if narrow { 46.0 } else { 54.0 }, TOP, pen.width - right, TOP + plot_height(size.0));
     let frame = ends(plot, data);
     axes(&mut pen, &frame, data.basis, narrow);
@@ -99,7 +111,7 @@ pub fn plane<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: 
         pen.nothing(plot);
     }
     let mut lines: Vec<Vec<Point>> = Vec::new();
-    if let Some(line) = requirement(&mut pen, &frame, data, &mut taken, &mut spots) {
+    if let Some(line) = requirement(&mut pen, &frame, data, &named, &mut taken, &mut spots) {
         lines.push(line);
     }
     for strand in &data.strands {
@@ -114,7 +126,12 @@ pub fn plane<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: 
     }
     // The first named keeps its place: candidates, then the others as they were given.
     named.reverse();
-    named.sort_by_key(|n| (n.strand.candidate.unwrap_or(u8::MAX), data.strands.iter().position(|s| s.technology == n.strand.technology)));
+    named.sort_by_key(|n| {
+        (
+            n.strand.candidate.unwrap_or(u8::MAX),
+            data.strands.iter().position(|s| s.technology == n.strand.technology),
+        )
+    });
     spots.extend(plane_labels::draw(&mut pen, &frame, &named, &taken, &lines));
     pen.lift()?;
     Ok(Hits { main: frame, second: None, spots })
@@ -202,6 +219,8 @@ fn equal_times<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, narrow: bool) ->
     let look = Text::tick(pen.palette);
     let mut taken = Vec::new();
     for (hours, name) in TIMES {
+        // The month's name is too wide for a phone's margin.
+        let (hours, name) = if narrow && hours > 700.0 { (720.0, "30\u{202f}d") } else { (hours, name) };
         let Some((a, b)) = time_line(frame, hours) else { continue };
         if libm::hypot(a.0 - b.0, a.1 - b.1) < 20.0 {
             continue;
@@ -210,8 +229,6 @@ fn equal_times<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, narrow: bool) ->
         let (at, look) = if b.1 < y0 + 1.0 {
             let half = look.width(name) / 2.0;
             ((b.0.min(pen.width - half), y0 - 6.0), look.middle())
-        } else if narrow {
-            ((x1 - 3.0, b.1 - 5.0), look.end().halo())
         } else {
             ((x1 + 5.0, b.1 + 4.5), look)
         };
@@ -240,7 +257,8 @@ fn draw_strand<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, strand: &Strand)
     let line = visible(&strand.typical);
     let width = if strand.fluid_only { 2.6 } else { 2.1 };
     fading(pen, &line, Ink::new(colour, width * pen.palette.pens.thin), dash, strand.fluid_only);
-    (line.len() > 1).then(|| if line[0].1 <= line[line.len() - 1].1 { line } else { line.into_iter().rev().collect() })
+    (line.len() > 1)
+        .then(|| if line[0].1 <= line[line.len() - 1].1 { line } else { line.into_iter().rev().collect() })
 }
 
 /// A curve whose two ends fade to nothing over the last sixth of its height, its dashes carried on.
@@ -249,7 +267,8 @@ fn fading<S: Surface>(pen: &mut Pen<'_, S>, line: &[Point], ink: Ink, dash: &[f6
     if line.len() < 2 {
         return;
     }
-    let (top, bottom) = line.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(a, b), p| (a.min(p.1), b.max(p.1)));
+    let (top, bottom) =
+        line.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(a, b), p| (a.min(p.1), b.max(p.1)));
     let sixth = (bottom - top) / 6.0;
     // Opacity in steps, so that the middle of a curve stays one line.
     let alpha = |y: f64| {
@@ -293,6 +312,7 @@ fn requirement<S: Surface>(
     pen: &mut Pen<'_, S>,
     frame: &Frame,
     data: &Plane,
+    named: &[Named<'_>],
     taken: &mut Vec<Patch>,
     spots: &mut Vec<Spot>,
 ) -> Option<Vec<Point>> {
@@ -312,7 +332,9 @@ fn requirement<S: Surface>(
         let square = (-libm::sin(slope), libm::cos(slope));
         let ends = [-20.0, 20.0].map(|r| (at.0 + square.0 * r, at.1 + square.1 * r));
         pen.line(&ends, ink);
-        taken.push(Patch::around(at, 1.0).joined(Patch::around(ends[0], 2.0)).joined(Patch::around(ends[1], 2.0)));
+        taken.push(
+            Patch::around(at, 1.0).joined(Patch::around(ends[0], 2.0)).joined(Patch::around(ends[1], 2.0)),
+        );
         spots.push(Spot { name: "point".to_owned(), area: Patch::around(at, 20.0).area() });
         let words = look.bold();
         let wide = words.width(&data.budget);
@@ -329,7 +351,7 @@ fn requirement<S: Surface>(
         }
     }
     let (a, b) = line?;
-    name_line(pen, frame, (a, b), (power, energy), taken);
+    name_line(pen, frame, (a, b), (power, energy), named, taken);
     Some(vec![a, b])
 }
 
@@ -344,17 +366,17 @@ fn name_line<S: Surface>(
     frame: &Frame,
     (a, b): (Point, Point),
     (power, energy): (f64, f64),
+    named: &[Named<'_>],
     taken: &mut Vec<Patch>,
 ) {
     let look = Text::label(pen.palette.ink).end();
     let time = people::duration(energy / power * 3600.0);
-    let lines = [
-        "requirement".to_owned(),
-        format!("{} at {}, {time}", people::energy(energy), people::power(power)),
-    ];
+    let lines =
+        ["requirement".to_owned(), format!("{} at {}, {time}", people::energy(energy), people::power(power))];
     let wide = look.width(&lines[1]).max(look.bold().width(&lines[0]));
     let slope = (b.1 - a.1) / (b.0 - a.0).max(1.0);
-    for share in [0.0, 0.05, 0.1, 0.2, 0.3, 0.4, 0.5, 0.6, 0.7] {
+    let mut places = Vec::new();
+    for share in [0.0, 0.05, 0.1, 0.15, 0.2, 0.25, 0.3, 0.35, 0.4, 0.5, 0.6, 0.7] {
         let right = b.0 - 6.0 - share * (b.0 - a.0);
         // Below the line at the text's left end, where it is lowest.
         let below = b.1 + slope * (right - wide - b.0) + 22.0;
@@ -362,12 +384,18 @@ fn name_line<S: Surface>(
         for y in [below, above] {
             let patch = Patch { x0: right - wide, y0: y - 11.0, x1: right, y1: y + 22.0 };
             if within(patch, frame) && taken.iter().all(|t| !t.overlaps(&patch)) {
-                pen.text((right, y), &lines[0], look.bold());
-                pen.text((right, y + 18.0), &lines[1], look);
-                taken.push(patch.grown(3.0));
-                return;
+                places.push(((right, y), patch));
             }
         }
+    }
+    // The place that covers the fewest typical curves; of several the one nearest to the right end.
+    let covered = |patch: &Patch| {
+        named.iter().filter(|n| !shape::clip_line(&n.line, patch.grown(3.0).area()).is_empty()).count()
+    };
+    if let Some(((x, y), patch)) = places.into_iter().min_by_key(|(_, patch)| covered(patch)) {
+        pen.text((x, y), &lines[0], look.bold());
+        pen.text((x, y + 18.0), &lines[1], look);
+        taken.push(patch.grown(3.0));
     }
 }
 

@@ -15,6 +15,8 @@ pub(super) struct Named<'d> {
 
 /// Side of a cell of the ground on which curves are counted, px.
 const CELL: f64 = 5.0;
+/// Cost at which a name that is not a candidate's yields: it would cover the drawing and help nobody.
+const DEAREST: f64 = 420.0;
 
 /// How much of each cell is covered by typical curves.
 struct Cover {
@@ -25,14 +27,19 @@ struct Cover {
 
 impl Cover {
     fn new(frame: &Frame, named: &[Named<'_>]) -> Self {
+        const TYPICAL: u8 = 4;
         let (x0, y0, x1, y1) = frame.plot;
         let count = |a: f64, b: f64| ((b - a) / CELL).max(1.0) as usize + 1;
         let (columns, rows) = (count(x0, x1), count(y0, y1));
         let mut cover = Self { columns, cells: vec![0; columns * rows], origin: (x0, y0) };
-        for line in named.iter().map(|n| &n.line) {
-            for (part, _) in shape::dashes(line, &[CELL * 0.5, CELL * 0.5]) {
-                if let Some(cell) = cover.index(part[0]).and_then(|i| cover.cells.get_mut(i)) {
-                    *cell = 1;
+        let px = |c: &[(f64, f64)]| c.iter().map(|&(e, p)| frame.px(e, p)).collect::<Vec<Point>>();
+        let faint = named.iter().flat_map(|n| &n.strand.others).map(|c| (px(c), 1));
+        for (line, weight) in faint.chain(named.iter().map(|n| (n.line.clone(), TYPICAL))) {
+            for run in shape::clip_line(&line, frame.plot) {
+                for (part, _) in shape::dashes(&run, &[CELL * 0.5, CELL * 0.5]) {
+                    if let Some(cell) = cover.index(part[0]).and_then(|i| cover.cells.get_mut(i)) {
+                        *cell = (*cell).max(weight);
+                    }
                 }
             }
         }
@@ -80,6 +87,8 @@ struct Place {
     at: Point,
     from: Point,
     to: Point,
+    /// Cost of a point on the faded or lower part of the strand.
+    low: f64,
 }
 
 /// Draws the names, the most important first; a kind that finds no place stays without.
@@ -106,9 +115,12 @@ pub(super) fn draw<S: Surface>(
         let colour = kind.strand.candidate.map_or(pen.palette.ink, |c| pen.palette.candidate_text(c));
         let look = Text::label(colour).bold_if(kind.strand.candidate.is_some());
         let mut best: Option<(f64, Place, Patch)> = None;
-        for place in places(&kind.line, look.width(&text)) {
+        let limit = if kind.strand.candidate.is_some() { f64::INFINITY } else { DEAREST };
+        for place in places(&kind.line, look.width(&text), (x0, x1)) {
             let patch = look.patch(place.at, &text).grown(2.0);
-            if !placer.clear(&patch) || leaders.iter().any(|(a, b)| shape::clip(*a, *b, patch.area()).is_some()) {
+            if !placer.clear(&patch)
+                || leaders.iter().any(|(a, b)| shape::clip(*a, *b, patch.area()).is_some())
+            {
                 continue;
             }
             if leaders.iter().any(|(a, b)| cross(*a, *b, place.from, place.to)) {
@@ -119,11 +131,12 @@ pub(super) fn draw<S: Surface>(
             }
             let length = libm::hypot(place.from.0 - place.to.0, place.from.1 - place.to.1);
             let steep = (place.from.1 - place.to.1).abs() / length.max(1.0);
-            let cost = 14.0 * f64::from(cover.under(&patch))
-                + 9.0 * f64::from(cover.along(place.from, place.to))
-                + 0.45 * length
-                + 14.0 * (steep - 0.6).max(0.0);
-            if best.as_ref().is_none_or(|(least, ..)| cost < *least) {
+            let cost = 3.5 * f64::from(cover.under(&patch))
+                + 2.2 * f64::from(cover.along(place.from, place.to))
+                + 0.6 * length
+                + 14.0 * (steep - 0.6).max(0.0)
+                + place.low;
+            if cost < limit && best.as_ref().is_none_or(|(least, ..)| cost < *least) {
                 best = Some((cost, place, patch));
             }
         }
@@ -145,24 +158,40 @@ pub(super) fn draw<S: Surface>(
     spots
 }
 
-/// Places to try around a curve: at heights down its upper half and its lower part, to either side, near and far.
-fn places(line: &[Point], wide: f64) -> Vec<Place> {
+/// Places to try around a curve: at heights down its upper half and its lower part, above and to either side, near and
+/// far. `ends` are the frame's left and right.
+fn places(line: &[Point], wide: f64, ends: (f64, f64)) -> Vec<Place> {
     let (top, bottom) = (line[0].1, line[line.len() - 1].1);
     let mut places = Vec::new();
-    for share in [0.12, 0.2, 0.3, 0.4, 0.55, 0.72, 0.85] {
+    for (share, low) in
+        [(0.12, 8.0), (0.18, 2.0), (0.25, 0.0), (0.33, 0.0), (0.42, 4.0), (0.55, 14.0), (0.7, 26.0)]
+    {
         let y = top + share * (bottom - top);
         let Some(to) = line.windows(2).find_map(|w| {
             let (a, b) = (w[0], w[1]);
-            (a.1 <= y && y <= b.1 && b.1 > a.1)
-                .then(|| (a.0 + (y - a.1) / (b.1 - a.1) * (b.0 - a.0), y))
+            (a.1 <= y && y <= b.1 && b.1 > a.1).then(|| (a.0 + (y - a.1) / (b.1 - a.1) * (b.0 - a.0), y))
         }) else {
             continue;
         };
+        // Above it, moved sideways where it would leave the frame.
+        for up in [24.0, 40.0, 60.0, 85.0, 115.0, 150.0] {
+            for part in [0.5, 0.2, 0.8] {
+                let base = to.1 - up;
+                let left = (to.0 - part * wide).clamp(ends.0 + 5.0, (ends.1 - 4.0 - wide).max(ends.0 + 5.0));
+                let from = (to.0.clamp(left + 2.0, left + wide - 2.0), base + 5.0);
+                places.push(Place { at: (left, base), from, to, low });
+            }
+        }
         for out in [14.0, 30.0, 55.0, 85.0, 120.0, 165.0, 220.0, 290.0] {
             for up in [0.0, 16.0, -16.0, 34.0, -34.0, 58.0, -58.0, 90.0, -90.0, 130.0, -130.0] {
                 let base = to.1 - up + 4.5;
-                places.push(Place { at: (to.0 + out + 5.0, base), from: (to.0 + out, base - 4.5), to });
-                places.push(Place { at: (to.0 - out - 5.0 - wide, base), from: (to.0 - out, base - 4.5), to });
+                places.push(Place { at: (to.0 + out + 5.0, base), from: (to.0 + out, base - 4.5), to, low });
+                places.push(Place {
+                    at: (to.0 - out - 5.0 - wide, base),
+                    from: (to.0 - out, base - 4.5),
+                    to,
+                    low,
+                });
             }
         }
     }
@@ -187,6 +216,6 @@ mod tests {
 
     #[test]
     fn a_curve_without_height_has_no_place() {
-        assert!(places(&[(0.0, 5.0), (9.0, 5.0)], 40.0).is_empty());
+        assert!(places(&[(0.0, 5.0), (9.0, 5.0)], 40.0, (0.0, 100.0)).is_empty());
     }
 }

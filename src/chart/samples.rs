@@ -30,7 +30,9 @@ pub(super) fn island() -> Vec<f64> {
             let wind = (60.0 + 18.0 * season + 62.0 * slow + 14.0 * fast).clamp(0.0, 172.0) * calm;
             let height = libm::sin(std::f64::consts::PI * (hour - 6.0) / 12.0).max(0.0);
             let sun = 60.0 * height * (0.7 - 0.3 * season);
-            let demand = 48.0 + 8.0 * season + if (6.0..16.0).contains(&hour) && libm::floor(day) % 7.0 < 6.0 { 24.0 } else { 0.0 };
+            let demand = 48.0
+                + 8.0 * season
+                + if (6.0..16.0).contains(&hour) && libm::floor(day) % 7.0 < 6.0 { 24.0 } else { 0.0 };
             wind + sun - demand
         })
         .collect()
@@ -90,7 +92,10 @@ pub(super) fn coverage_curves() -> Coverage {
     let energy: Vec<f64> = (0..70).map(|i| 200.0 * f64::from(i)).collect();
     let curve = |power: f64, top: f64, scale: f64| CoverageCurve {
         power_kw: Some(power),
-        value: energy.iter().map(|e| (top * (1.0 - libm::exp(-e / scale)) + 0.25 * e / 14_000.0).min(top)).collect(),
+        value: energy
+            .iter()
+            .map(|e| (top * (1.0 - libm::exp(-e / scale)) + 0.25 * e / 14_000.0).min(top))
+            .collect(),
         energy_kwh: energy.clone(),
     };
     Coverage {
@@ -241,23 +246,91 @@ pub(super) fn all(width: u32, palette: &Palette) -> Vec<Drawn> {
     let data = kinds();
     let size = (full, plane::height(full));
     let ragone = svg(size, &plane::sentence(&data), |s| plane(s, size, palette, &data));
-    [("year", year), ("net", net), ("coverage", covered), ("cumulative", fallen), ("week", carried), ("plane", ragone)]
-        .map(|(name, text)| (name, text.unwrap()))
-        .to_vec()
+    [
+        ("year", year),
+        ("net", net),
+        ("coverage", covered),
+        ("cumulative", fallen),
+        ("week", carried),
+        ("plane", ragone),
+    ]
+    .map(|(name, text)| (name, text.unwrap()))
+    .to_vec()
 }
 
 #[test]
 fn every_picture_is_drawn_at_every_width_and_in_every_scheme() {
     let folder = std::path::Path::new(env!("CARGO_MANIFEST_DIR")).join("target").join("pictures");
     std::fs::create_dir_all(&folder).unwrap();
-    for (width, scheme) in [(742, Scheme::Light), (742, Scheme::Dark), (320, Scheme::Light), (320, Scheme::Dark),
-        (742, Scheme::High), (742, Scheme::Print), (520, Scheme::Light)]
-    {
+    for (width, scheme) in [
+        (742, Scheme::Light),
+        (742, Scheme::Dark),
+        (320, Scheme::Light),
+        (320, Scheme::Dark),
+        (742, Scheme::High),
+        (742, Scheme::Print),
+        (520, Scheme::Light),
+    ] {
         for (name, text) in all(width, scheme.palette()) {
             for bad in ["NaN", "inf"] {
                 assert!(!text.contains(bad), "{name} at {width} holds {bad}");
             }
-            std::fs::write(folder.join(format!("{name}-{width}-{scheme:?}.svg").to_lowercase()), text).unwrap();
+            std::fs::write(folder.join(format!("{name}-{width}-{scheme:?}.svg").to_lowercase()), text)
+                .unwrap();
+        }
+    }
+}
+
+/// Every text of a picture with the patch that it takes, haloes left out.
+fn texts(picture: &str) -> Vec<(String, label::Patch)> {
+    let value = |tag: &str, name: &str| -> Option<String> {
+        Some(tag.split_once(&format!(" {name}=\""))?.1.split_once('"')?.0.to_owned())
+    };
+    picture
+        .lines()
+        .filter(|l| l.starts_with("<text") && !l.contains(" stroke="))
+        .map(|line| {
+            let (tag, rest) = line.split_once('>').unwrap();
+            let text = rest.strip_suffix("</text>").unwrap().to_owned();
+            let number = |name: &str| value(tag, name).unwrap().parse::<f64>().unwrap() / FINE;
+            let (x, size) = (number("x"), number("font-size"));
+            let base = number("y") + 0.76 * size;
+            let width = metrics::width(&text, size, tag.contains("font-weight"));
+            let x0 = match value(tag, "text-anchor").as_deref() {
+                Some("end") => x - width,
+                Some("middle") => x - width / 2.0,
+                _ => x,
+            };
+            // Figures and most letters: from the height of capitals to just under the baseline.
+            (text, label::Patch { x0, y0: base - 0.66 * size, x1: x0 + width, y1: base + 0.1 * size })
+        })
+        .collect()
+}
+
+#[test]
+fn no_text_overlaps_another_or_leaves_the_picture_at_any_width() {
+    for width in [300, 320, 344, 390, 430, 520, 560, 640, 712, 742, 1040] {
+        for (name, picture) in all(width, &LIGHT) {
+            let texts = texts(&picture);
+            assert!(texts.len() > 6, "{name} at {width} has hardly a text");
+            let size = |attribute: &str| -> f64 {
+                picture
+                    .split_once(&format!("{attribute}=\""))
+                    .unwrap()
+                    .1
+                    .split_once('"')
+                    .unwrap()
+                    .0
+                    .parse()
+                    .unwrap()
+            };
+            let page = label::Patch { x0: -0.5, y0: 0.0, x1: size("width") + 0.5, y1: size("height") };
+            for (i, (text, patch)) in texts.iter().enumerate() {
+                assert!(patch.within(&page), "{name} at {width}: {text} leaves the picture, {patch:?}");
+                for (other, taken) in &texts[i + 1..] {
+                    assert!(!patch.overlaps(taken), "{name} at {width}: {text} overlaps {other}");
+                }
+            }
         }
     }
 }

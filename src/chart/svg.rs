@@ -118,7 +118,11 @@ fn steps(points: &str, close: &str) -> Option<String> {
 }
 
 fn escape(text: &str) -> String {
-    text.replace('&', "&amp;").replace('<', "&lt;").replace('>', "&gt;").replace('"', "&quot;").replace('\'', "&apos;")
+    text.replace('&', "&amp;")
+        .replace('<', "&lt;")
+        .replace('>', "&gt;")
+        .replace('"', "&quot;")
+        .replace('\'', "&apos;")
 }
 
 #[cfg(test)]
@@ -130,7 +134,9 @@ mod tests {
         let raw = "<svg>\n<polyline fill=\"none\" opacity=\"1\" stroke=\"#000000\" stroke-width=\"20\" points=\"0,0 20,0 \"/>\n\
                    <polyline fill=\"none\" opacity=\"1\" stroke=\"#000000\" stroke-width=\"20\" points=\"0,40 20,40 \"/>\n</svg>\n";
         let text = finish(raw, (1, 2), (20, 40), "a \"line\"");
-        assert!(text.contains("<path fill=\"none\" stroke=\"#000000\" stroke-width=\"20\" d=\"M0,0L20,0M0,40L20,40\"/>"));
+        assert!(text.contains(
+            "<path fill=\"none\" stroke=\"#000000\" stroke-width=\"20\" d=\"M0,0L20,0M0,40L20,40\"/>"
+        ));
         assert!(text.contains("aria-label=\"a &quot;line&quot;\""), "{text}");
     }
 

@@ -62,12 +62,19 @@ pub fn linear(from: f64, to: f64, most: usize) -> Ticks {
     // Dividing by a whole number gives the double nearest to the tick.
     let value = |k: f64| if step < 1.0 { k / libm::round(scale) } else { k * step };
     let exact = step >= 1.0 || (scale - libm::round(scale)).abs() < 1e-9 * scale;
-    Ticks { step, values: (0..count).map(|k| first + k as f64).map(|k| if exact { value(k) } else { k * step }).collect() }
+    Ticks {
+        step,
+        values: (0..count)
+            .map(|k| first + k as f64)
+            .map(|k| if exact { value(k) } else { k * step })
+            .collect(),
+    }
 }
 
 /// The two ends moved outwards to whole steps, and the ticks between them; zero is kept in when `zero` is set.
 pub fn rounded((low, high): (f64, f64), zero: bool, most: usize) -> ((f64, f64), Ticks) {
-    let (mut low, mut high) = if low.is_finite() && high.is_finite() && low <= high { (low, high) } else { (0.0, 1.0) };
+    let (mut low, mut high) =
+        if low.is_finite() && high.is_finite() && low <= high { (low, high) } else { (0.0, 1.0) };
     if zero {
         low = low.min(0.0);
         high = high.max(0.0);
@@ -156,7 +163,8 @@ pub fn moment(us: f64) -> String {
 
 /// The short name of a date's month.
 pub fn month(date: Date) -> &'static str {
-    const NAMES: [&str; 12] = ["Jan", "Feb", "Mar", "Apr", "May", "Jun", "Jul", "Aug", "Sep", "Oct", "Nov", "Dec"];
+    const NAMES: [&str; 12] =
+        ["Jan", "Feb", "Mar", "Apr", "May", "Jun", "Jul", "Aug", "Sep", "Oct", "Nov", "Dec"];
     NAMES[usize::from(date.month().unsigned_abs() - 1)]
 }
 
@@ -197,7 +205,8 @@ pub fn time(from_us: f64, to_us: f64, px: f64) -> Vec<TimeTick> {
     if per_day >= 4.0 {
         // Days; the Mondays are named, or, where they stand wide apart, more days.
         let narrow = 62.0;
-        let every = if per_day >= 76.0 { 1 } else { 7 * libm::ceil(narrow / (7.0 * per_day)).max(1.0) as i32 };
+        let every =
+            if per_day >= 76.0 { 1 } else { 7 * libm::ceil(narrow / (7.0 * per_day)).max(1.0) as i32 };
         let mut date = from.date();
         let mut mondays = 0;
         while date <= to.date() {
@@ -205,7 +214,8 @@ pub fn time(from_us: f64, to_us: f64, px: f64) -> Vec<TimeTick> {
             let named = every == 1 || monday && mondays % (every / 7).max(1) == 0;
             mondays += i32::from(monday);
             let full = every == 1 || per_day * f64::from(every) >= 84.0;
-            let label = named.then(|| if full { format!("{} {}", weekday(date), day(date)) } else { day(date) });
+            let label =
+                named.then(|| if full { format!("{} {}", weekday(date), day(date)) } else { day(date) });
             push(&mut ticks, date, monday || every == 1, label);
             let Ok(next) = date.tomorrow() else { break };
             date = next;
@@ -220,7 +230,8 @@ pub fn time(from_us: f64, to_us: f64, px: f64) -> Vec<TimeTick> {
         return ticks;
     }
     let per_month = per_day * 30.4;
-    let many_years = from.date().year() != to.date().year();
+    // A span that ends with its year lies in one.
+    let many_years = civil(to_us - 1.0).is_some_and(|last| last.date().year() != from.date().year());
     if per_month >= 8.0 {
         let every = [1, 2, 3, 6, 12].into_iter().find(|n| per_month * f64::from(*n) >= 40.0).unwrap_or(12);
         for date in months(from.date(), to.date()) {
@@ -247,7 +258,8 @@ pub fn time(from_us: f64, to_us: f64, px: f64) -> Vec<TimeTick> {
 }
 
 fn months(from: Date, to: Date) -> impl Iterator<Item = Date> {
-    std::iter::successors(Some(from.first_of_month()), |d| d.last_of_month().tomorrow().ok()).take_while(move |d| *d <= to)
+    std::iter::successors(Some(from.first_of_month()), |d| d.last_of_month().tomorrow().ok())
+        .take_while(move |d| *d <= to)
 }
 
 /// Ticks at round hours, midnight long with its date.
@@ -255,7 +267,8 @@ fn hours(first: Date, (from_us, to_us): (f64, f64), per_day: f64) -> Vec<TimeTic
     const HOUR_US: f64 = 3600e6;
     let per_hour = per_day / 24.0;
     // Down to a minute, so that a record of an hour still has a scale.
-    let steps = [60.0, 120.0, 300.0, 600.0, 900.0, 1800.0, 3600.0, 7200.0, 10_800.0, 21_600.0, 43_200.0, 86_400.0];
+    let steps =
+        [60.0, 120.0, 300.0, 600.0, 900.0, 1800.0, 3600.0, 7200.0, 10_800.0, 21_600.0, 43_200.0, 86_400.0];
     let every_s = steps.into_iter().find(|s| s / 3600.0 * per_hour >= 52.0).unwrap_or(86_400.0);
     let Some(midnight) = reading(first) else { return Vec::new() };
     let every_us = every_s / 3600.0 * HOUR_US;
@@ -290,7 +303,9 @@ mod tests {
 
     #[test]
     fn steps_are_one_two_or_five() {
-        for (span, most, expected) in [(300.0, 6, 50.0), (100.0, 4, 50.0), (0.7, 7, 0.1), (14.0, 7, 2.0), (0.0, 5, 1.0)] {
+        for (span, most, expected) in
+            [(300.0, 6, 50.0), (100.0, 4, 50.0), (0.7, 7, 0.1), (14.0, 7, 2.0), (0.0, 5, 1.0)]
+        {
             assert_eq!(step(span, most), expected, "{span} in {most}");
         }
     }
@@ -321,7 +336,14 @@ mod tests {
         assert_eq!(labels(FEB_5_2024, 3.0, 300.0), ["Mon 5 Feb", "Tue 6 Feb", "Wed 7 Feb", "Thu 8 Feb"]);
         assert_eq!(labels(FEB_5_2024, 1.0, 300.0), ["5 Feb", "06:00", "12:00", "18:00", "6 Feb"]);
         assert_eq!(labels(FEB_5_2024, 180.0, 300.0), ["Mar", "Apr", "May", "Jun", "Jul", "Aug"]);
-        assert_eq!(labels(FEB_5_2024, 3000.0, 300.0), ["2025", "2026", "2027", "2028", "2029", "2030", "2031", "2032"][..].iter().filter(|y| y.parse::<i32>().unwrap() % 2 == 0).copied().collect::<Vec<_>>());
+        assert_eq!(
+            labels(FEB_5_2024, 3000.0, 300.0),
+            ["2025", "2026", "2027", "2028", "2029", "2030", "2031", "2032"][..]
+                .iter()
+                .filter(|y| y.parse::<i32>().unwrap() % 2 == 0)
+                .copied()
+                .collect::<Vec<_>>()
+        );
     }
 
     #[test]

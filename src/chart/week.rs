@@ -6,7 +6,7 @@ use super::frame::{Frame, Hits};
 use super::label::{Patch, Placer};
 use super::net::time_axis;
 use super::palette::Palette;
-use super::pen::{Ink, Pen, Surface, Text};
+use super::pen::{Ink, Pen, Surface, Text, roomy};
 use super::shape::{self, Point};
 use super::ticks;
 use super::words::extent;
@@ -41,13 +41,21 @@ pub fn sentence(data: &Week) -> String {
             unserved += missing;
         }
     }
-    let mut text = format!("Power asked of the store and carried by it from {} to {}", ticks::moment(from), ticks::moment(to));
+    let mut text = format!(
+        "Power asked of the store and carried by it from {} to {}",
+        ticks::moment(from),
+        ticks::moment(to)
+    );
     if !data.store.is_empty() {
         text.push_str(&format!(" ({})", data.store));
     }
     text.push_str(&format!(": {} {}", people::energy(unserved), unserved_word(data)));
     if let Some((low, high)) = extent([&data.level]) {
-        text.push_str(&format!("; its level runs between {} and {}", people::percent(low), people::percent(high)));
+        text.push_str(&format!(
+            "; its level runs between {} and {}",
+            people::percent(low),
+            people::percent(high)
+        ));
     }
     text + "."
 }
@@ -57,6 +65,7 @@ pub fn sentence(data: &Week) -> String {
 /// In the result, `main` is the power (x in microseconds of clock reading, y in kW, charge positive), `second` the level
 /// (a share).
 pub fn week<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: &Week) -> Result<Hits> {
+    let size = roomy(size);
     let mut pen = Pen::new(surface, size, palette);
     let narrow = size.0 < NARROW;
     let (x0, x1) = (if narrow { 36.0 } else { 40.0 }, pen.width - 6.0);
@@ -66,7 +75,8 @@ pub fn week<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: &
     let span = extent([&data.t_us]).unwrap_or((0.0, 1.0));
     let frame = Frame::new(plot, span, (low, high));
     let tick = Text::tick(palette);
-    let (long, short) = ("Power, kW, charge above and discharge below the line", "Power, kW, charge above the line");
+    let (long, short) =
+        ("Power, kW, charge above and discharge below the line", "Power, kW, charge above the line");
     let title = if tick.width(long) + tick.width(&data.store) + 24.0 < pen.width { long } else { short };
     pen.text((0.0, 13.0), title, tick);
     if tick.width(title) + tick.width(&data.store) + 16.0 < pen.width {
@@ -197,13 +207,16 @@ fn labels<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Week, lines: [
     };
     // Where the two lines stand furthest apart, most of all for long.
     let widest = |a: &[Point], b: &[Point]| -> Option<(Point, Point)> {
-        a.iter()
-            .zip(b)
-            .filter(|(p, q)| (p.1 - q.1).is_finite() && (p.1 - q.1).abs() > 3.0)
-            .max_by(|(p, q), (r, s)| (p.1 - q.1).abs().total_cmp(&(r.1 - s.1).abs()))
-            .map(|(p, q)| (*p, *q))
+        a.iter().zip(b).filter(|(p, q)| (p.1 - q.1).is_finite() && (p.1 - q.1).abs() > 3.0).fold(
+            None,
+            |best: Option<(Point, Point)>, (p, q)| match best {
+                Some((r, s)) if (r.1 - s.1).abs() >= (p.1 - q.1).abs() => best,
+                _ => Some((*p, *q)),
+            },
+        )
     };
-    let flat: Vec<Point> = carried.iter().map(|p| (p.0, if p.1.is_finite() { zero } else { f64::NAN })).collect();
+    let flat: Vec<Point> =
+        carried.iter().map(|p| (p.0, if p.1.is_finite() { zero } else { f64::NAN })).collect();
     let named = [
         (widest(served_down, asked_down), unserved_word(data), palette.deficit_text),
         (widest(asked_up, served_up), "curtailed", palette.surplus_text),
@@ -217,7 +230,8 @@ fn labels<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Week, lines: [
         let mut options = Vec::new();
         for dx in [12.0, 30.0, 50.0, 80.0, 120.0, 170.0, 230.0] {
             for dy in [-14.0, 0.0, 14.0, 28.0, -28.0, 44.0, -44.0, 62.0, -62.0, 82.0, -82.0, 104.0, -104.0] {
-                options.extend([(thing.0 + dx, thing.1 + dy + 5.0), (thing.0 - dx - wide, thing.1 + dy + 5.0)]);
+                options
+                    .extend([(thing.0 + dx, thing.1 + dy + 5.0), (thing.0 - dx - wide, thing.1 + dy + 5.0)]);
             }
         }
         let far = |o: &Point| {

@@ -9,7 +9,11 @@ pub(super) fn energy_unit(most: f64) -> (f64, &'static str) {
 
 fn unit(most: f64, rising: &[(f64, &'static str)], least: (f64, &'static str)) -> (f64, &'static str) {
     let fits = |size: f64| most.abs() >= size * if size == 1.0 { 0.3 } else { 1.5 };
-    rising.iter().rev().find(|(size, _)| fits(*size)).copied().unwrap_or(if most == 0.0 { rising[0] } else { least })
+    rising.iter().rev().find(|(size, _)| fits(*size)).copied().unwrap_or(if most == 0.0 {
+        rising[0]
+    } else {
+        least
+    })
 }
 
 /// Least and greatest number of some series; none without a number.

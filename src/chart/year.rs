@@ -5,7 +5,7 @@ use super::data::{DurationCurve, YearSheet};
 use super::frame::{Frame, Hits};
 use super::label::{Patch, Placer};
 use super::palette::{Palette, Rgb};
-use super::pen::{Ink, Pen, Surface, Text};
+use super::pen::{Ink, Pen, Surface, Text, roomy};
 use super::shape::{Lie, Point};
 use super::ticks::{self, DAY_US};
 use super::words::extent;
@@ -48,7 +48,11 @@ pub fn sentence(data: &YearSheet, curve: &DurationCurve) -> String {
         word(curve),
     );
     if let Some((from, to)) = data.critical_us {
-        text.push_str(&format!(" The critical period runs from {} to {}.", ticks::moment(from), ticks::moment(to)));
+        text.push_str(&format!(
+            " The critical period runs from {} to {}.",
+            ticks::moment(from),
+            ticks::moment(to)
+        ));
     }
     text
 }
@@ -77,6 +81,7 @@ pub fn year_sheet<S: Surface>(
     data: &YearSheet,
     curve: &DurationCurve,
 ) -> Result<Hits> {
+    let size = roomy(size);
     let mut pen = Pen::new(surface, size, palette);
     let narrow = size.0 < NARROW;
     let width = f64::from(size.0);
@@ -196,7 +201,9 @@ fn draw_sheet<S: Surface>(
     let mut runs: Vec<(i8, (f64, f64, f64, f64))> = Vec::new();
     for (row, cells) in data.net_kw.chunks(per_row).enumerate() {
         let mut from = 0;
-        for group in cells.chunk_by(|a, b| a.is_finite() == b.is_finite() && scale.class(*a) == scale.class(*b)) {
+        for group in
+            cells.chunk_by(|a, b| a.is_finite() == b.is_finite() && scale.class(*a) == scale.class(*b))
+        {
             let to = from + group.len();
             if group[0].is_finite() {
                 runs.push((scale.class(group[0]), (x(from), y(row), x(to), y(row + 1))));
@@ -261,7 +268,12 @@ fn heads<S: Surface>(pen: &mut Pen<'_, S>, (x0, y0, x1, y1): (f64, f64, f64, f64
 }
 
 /// Months at the left, or the date of each row where there are few.
-fn sides<S: Surface>(pen: &mut Pen<'_, S>, (x0, y0, _, y1): (f64, f64, f64, f64), data: &YearSheet, rows: usize) {
+fn sides<S: Surface>(
+    pen: &mut Pen<'_, S>,
+    (x0, y0, _, y1): (f64, f64, f64, f64),
+    data: &YearSheet,
+    rows: usize,
+) {
     let look = Text::tick(pen.palette).end();
     let tall = (y1 - y0) / rows.max(1) as f64;
     let mut placer = Placer::new(Patch { x0: 0.0, y0: y0 - 4.0, x1: x0, y1: y1 + 6.0 });
@@ -269,7 +281,9 @@ fn sides<S: Surface>(pen: &mut Pen<'_, S>, (x0, y0, _, y1): (f64, f64, f64, f64)
     let mut before = None;
     for row in 0..rows {
         let from = data.start_us + row as f64 * row_us(data);
-        let (Some(first), Some(last)) = (ticks::civil(from), ticks::civil(from + row_us(data) - 1.0)) else { continue };
+        let (Some(first), Some(last)) = (ticks::civil(from), ticks::civil(from + row_us(data) - 1.0)) else {
+            continue;
+        };
         let y = y0 + tall * row as f64;
         if tall >= 15.0 {
             pen.text((x0 - 8.0, y + tall / 2.0 + 4.5), &ticks::day(first.date()), look);
@@ -291,7 +305,12 @@ fn sides<S: Surface>(pen: &mut Pen<'_, S>, (x0, y0, _, y1): (f64, f64, f64, f64)
 }
 
 /// The critical period as a bracket at the right edge, open where it runs past the record's end.
-fn bracket<S: Surface>(pen: &mut Pen<'_, S>, (_, y0, x1, y1): (f64, f64, f64, f64), data: &YearSheet, rows: usize) {
+fn bracket<S: Surface>(
+    pen: &mut Pen<'_, S>,
+    (_, y0, x1, y1): (f64, f64, f64, f64),
+    data: &YearSheet,
+    rows: usize,
+) {
     let Some((from, to)) = data.critical_us else { return };
     let row = |us: f64| (us - data.start_us) / row_us(data);
     let (first, last) = (libm::floor(row(from)), libm::floor(row(to - 1.0)) + 1.0);

@@ -123,11 +123,8 @@ fn hour_ticks<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame) {
         let x = frame.x.px(h);
         pen.upright(x, y1, y1 + 4.0, pen.axis_ink());
         let text = if i == last { format!("{}{NARROW}h", marks.text(h)) } else { marks.text(h) };
-        let look = if i == last && x + look.width(&text) / 2.0 > pen.width {
-            look.end()
-        } else {
-            look.middle()
-        };
+        let look =
+            if i == last && x + look.width(&text) / 2.0 > pen.width { look.end() } else { look.middle() };
         let at = (if i == last { x.min(pen.width) } else { x }, y1 + 18.0);
         if placer.first_free([look.patch(at, &text)]).is_some() {
             pen.text(at, &text, look);
@@ -163,7 +160,10 @@ fn labels<S: Surface>(
         }
     }
     let (heard, short) = (curve.surplus_kwh, curve.deficit_kwh.abs());
-    let sides = [(above, "surplus", heard, palette.surplus_text, true), (below, word(curve), short, palette.deficit_text, false)];
+    let sides = [
+        (above, "surplus", heard, palette.surplus_text, true),
+        (below, word(curve), short, palette.deficit_text, false),
+    ];
     for (line, name, energy, colour, up) in sides {
         if line.len() < 2 || energy == 0.0 {
             continue;
@@ -177,14 +177,15 @@ fn labels<S: Surface>(
         for across in [0.5, 0.62, 0.4, 0.75, 0.9, 0.3, 0.2] {
             for share in [0.55, 0.42, 0.68, 0.3, 0.8, 0.18] {
                 let x = x0 + across * (x1 - x0) - if up { 0.0 } else { wide };
-                options.push((x.clamp(x0 + 6.0, (x1 - wide - 2.0).max(x0 + 6.0)), from + share * (to - from)));
+                options
+                    .push((x.clamp(x0 + 6.0, (x1 - wide - 2.0).max(x0 + 6.0)), from + share * (to - from)));
             }
         }
         let empty = |o: &Point| {
             let (xs, ys): (Vec<f64>, Vec<f64>) = line.iter().copied().unzip();
-            [o.0 - 5.0, o.0 + wide + 5.0].iter().all(|x| {
-                at(&xs, &ys, *x).is_none_or(|y| if up { y > o.1 + 22.0 } else { y < o.1 - 14.0 })
-            })
+            [o.0 - 5.0, o.0 + wide + 5.0]
+                .iter()
+                .all(|x| at(&xs, &ys, *x).is_none_or(|y| if up { y > o.1 + 22.0 } else { y < o.1 - 14.0 }))
         };
         options.sort_by_key(|o| !empty(o));
         let patches: Vec<Patch> = options
