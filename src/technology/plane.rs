@@ -200,3 +200,91 @@ fn budget_point(need: &Need, basis: Basis) -> (Option<(f64, f64)>, String) {
         Basis::Absolute => (Some((need.energy_kwh(), need.power_kw())), String::new()),
     }
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::technology::screen;
+
+    fn need() -> Need {
+        Need {
+            discharge_kw: 87.0,
+            energy_kwh: 4740.0,
+            mass_budget_kg: Some(80_000.0),
+            volume_budget_l: Some(40_000.0),
+            ..Need::default()
+        }
+    }
+
+    #[test]
+    fn kinds_on_at_first_and_picks_are_drawn() {
+        let catalogue = Catalogue::published().unwrap();
+        let picks = ["smes".to_owned(), "li_ion_lfp".to_owned()];
+        let few = plane(&catalogue, None, None, Basis::Mass, false, &picks);
+        assert_eq!(few.strands.len(), 9);
+        let letter = |id: &str| few.strands.iter().find(|strand| strand.technology == id).unwrap().candidate;
+        assert_eq!((letter("smes"), letter("li_ion_lfp"), letter("edlc")), (Some(0), Some(1), None));
+        assert!(few.requirement.is_none() && few.point.is_none() && few.budget.is_empty());
+        assert_eq!(plane(&catalogue, None, None, Basis::Volume, true, &[]).strands.len(), 27);
+    }
+
+    #[test]
+    fn every_curve_can_be_drawn_on_logarithmic_axes() {
+        let catalogue = Catalogue::published().unwrap();
+        let need = need();
+        for basis in [Basis::Mass, Basis::Volume, Basis::Absolute] {
+            for strand in plane(&catalogue, Some(&need), None, basis, true, &[]).strands {
+                assert_eq!(strand.others.len(), 6);
+                for curve in strand.others.iter().chain([&strand.typical]) {
+                    assert!(curve.len() > 50, "{}", strand.technology);
+                    assert!(
+                        curve.iter().all(|(e, p)| *e > 0.0 && *p > 0.0 && e.is_finite() && p.is_finite())
+                    );
+                    assert!(curve.windows(2).all(|pair| pair[1].1 < pair[0].1), "power falls along a curve");
+                }
+                assert_eq!(
+                    strand.fluid_only,
+                    basis != Basis::Absolute && fluid_only(catalogue.find(&strand.technology).unwrap())
+                );
+            }
+        }
+    }
+
+    #[test]
+    fn a_mark_lies_on_the_requirement_and_agrees_with_the_mass() {
+        let catalogue = Catalogue::published().unwrap();
+        let need = need();
+        let screening = screen(&catalogue, &need);
+        let plane = plane(&catalogue, Some(&need), Some(&screening), Basis::Mass, true, &[]);
+        let hours = 4740.0 / 87.0;
+        let mut met = 0;
+        for strand in &plane.strands {
+            if let Some((energy, power)) = strand.meets {
+                met += 1;
+                assert!((energy / power / hours - 1.0).abs() < 1e-9, "{}", strand.technology);
+            }
+        }
+        assert!(met > 15, "{met}");
+        let lfp = plane.strands.iter().find(|strand| strand.technology == "li_ion_lfp").unwrap();
+        let kind = screening.find("li_ion_lfp").unwrap();
+        assert_eq!(lfp.verdict, Some(kind.verdict));
+        // Slow discharge loses less than the reference hour does: 7 % less mass than the box.
+        let by_curve = 4740e3 / lfp.meets.unwrap().0;
+        let by_box = kind.mass_kg.unwrap().typical;
+        assert!(by_curve < by_box && by_curve > 0.9 * by_box, "{by_curve} {by_box}");
+        assert_eq!(plane.requirement, Some((87.0, 4740.0)));
+        assert_eq!(plane.budget.replace('\u{202f}', " "), "80 t");
+    }
+
+    #[test]
+    fn each_budget_sets_a_point() {
+        let points = points(&need());
+        assert_eq!(points.len(), 2);
+        assert_eq!((points[0].energy_wh_per_kg, points[0].power_w_per_kg), (Some(59.25), Some(1.0875)));
+        assert_eq!((points[1].energy_wh_per_l, points[1].power_w_per_l), (Some(118.5), Some(2.175)));
+        let json = serde_json::to_value(&points[0]).unwrap();
+        assert_eq!(json["basis"], "mass");
+        assert!(json.get("energy_wh_per_l").is_none());
+        assert!(super::points(&Need { mass_budget_kg: Some(5.0), ..Need::default() }).is_empty());
+    }
+}
