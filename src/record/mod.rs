@@ -4,10 +4,27 @@
 //! [`Finding`] with its rows and the remedy chosen.
 
 mod clock;
+mod decode;
+mod dialect;
+mod fill;
+mod grid;
+mod number;
+mod read;
+mod roles;
+mod rows;
+mod scan;
 mod series;
+mod settle;
 mod source;
+mod stamp;
+#[cfg(test)]
+mod tests;
+mod timing;
+mod words;
+mod zone;
 
 pub use clock::{Civil, Clock, Zone};
+pub use read::{Reader, read};
 pub use series::Series;
 #[cfg(not(target_arch = "wasm32"))]
 pub use source::Disk;
@@ -220,6 +237,8 @@ pub enum FindingKind {
     MixedSteps,
     /// Traces of a change to or from summer time.
     ClockChange,
+    /// The reading of the stamps is a guess, or they carry no date.
+    StampDoubt,
     /// The unit is a guess.
     UnitDoubt,
     /// The sign convention is a guess.

@@ -1,0 +1,476 @@
+//! Bytes of a file to text: containers and encodings told by content, never by the file's ending.
+
+use std::io::{self, BufReader, Read};
+
+use flate2::bufread::MultiGzDecoder;
+
+use super::Source;
+use crate::fault::{Fault, Result};
+
+/// Most bytes that a gzipped file may hold.
+const MOST_BYTES: u64 = 4 << 30;
+
+/// Longest row in bytes: past it a quote was opened and never closed.
+const LONGEST_ROW: u64 = 4 << 20;
+
+/// Bytes looked at before the whole file is read.
+pub(super) const HEAD: usize = 256 << 10;
+
+/// What a file is, decided on its first bytes.
+#[derive(Debug, Clone, PartialEq, Eq)]
+pub(super) struct Container {
+    gzip: bool,
+    encoding: Encoding,
+    bom: usize,
+    carriage_returns: Returns,
+    /// In words, for people.
+    pub(super) words: String,
+}
+
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Encoding {
+    /// UTF-8, or single bytes of Windows-1252: digits and marks are the same, [`text`] tells them apart cell by cell.
+    Bytes,
+    Utf16 {
+        big: bool,
+    },
+}
+
+/// How lines end: all endings become a single line feed, so that rows can be counted.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+enum Returns {
+    None,
+    BeforeLineFeed,
+    Alone,
+}
+
+/// The text of a file as a stream of UTF-8 (or Windows-1252) bytes with line feeds, ending in a line feed.
+pub(super) struct Decoded {
+    feed: Feed,
+    container: Container,
+    name: String,
+    total: u64,
+    most: u64,
+    allowance: u64,
+    skip: usize,
+    /// Bytes of the feed not yet handed on.
+    raw: Vec<u8>,
+    at: usize,
+    last: u8,
+    carry: Vec<u8>,
+    ended: bool,
+}
+
+enum Feed {
+    Plain(Raw),
+    Gzip(Box<MultiGzDecoder<BufReader<Raw>>>),
+}
+
+/// A source as a reader from its start.
+struct Raw {
+    source: Box<dyn Source>,
+    offset: u64,
+}
+
+impl Read for Raw {
+    fn read(&mut self, buffer: &mut [u8]) -> io::Result<usize> {
+        let count = self.source.read_at(self.offset, buffer).map_err(io::Error::other)?;
+        self.offset += count as u64;
+        Ok(count.min(buffer.len()))
+    }
+}
+
+impl Feed {
+    fn new(source: Box<dyn Source>, gzip: bool) -> Self {
+        let raw = Raw { source, offset: 0 };
+        if gzip {
+            Self::Gzip(Box::new(MultiGzDecoder::new(BufReader::with_capacity(1 << 16, raw))))
+        } else {
+            Self::Plain(raw)
+        }
+    }
+
+    fn into_source(self) -> Box<dyn Source> {
+        match self {
+            Self::Plain(raw) => raw.source,
+            Self::Gzip(decoder) => decoder.into_inner().into_inner().source,
+        }
+    }
+
+    fn read(&mut self, buffer: &mut [u8]) -> io::Result<usize> {
+        match self {
+            Self::Plain(raw) => raw.read(buffer),
+            Self::Gzip(decoder) => decoder.read(buffer),
+        }
+    }
+
+    /// Bytes of the source taken so far.
+    fn offset(&self) -> u64 {
+        match self {
+            Self::Plain(raw) => raw.offset,
+            Self::Gzip(decoder) => decoder.get_ref().get_ref().offset,
+        }
+    }
+}
+
+/// Looks at the first bytes of a source: what it is, and its first text. The source comes back in any case.
+pub(super) fn look(source: Box<dyn Source>) -> (Box<dyn Source>, Result<(Container, Vec<u8>)>) {
+    let name = source.name().to_owned();
+    if source.is_empty() {
+        let fault = Fault::new("the file is empty", name, "Choose the file that holds the readings.");
+        return (source, Err(fault));
+    }
+    let mut source = source;
+    let mut first = [0_u8; 8];
+    let count = match source.read_at(0, &mut first) {
+        Ok(count) => count,
+        Err(fault) => return (source, Err(fault)),
+    };
+    let gzip = first[..count].starts_with(&[0x1f, 0x8b]);
+    let mut feed = Feed::new(source, gzip);
+    let mut head = vec![0; HEAD];
+    let filled = fill(&mut feed, &mut head);
+    let source = feed.into_source();
+    let found = match filled {
+        Ok(count) => {
+            head.truncate(count);
+            container(&name, gzip, &head)
+        }
+        Err(error) => Err(fault(&error_to_io(error), &name, gzip)),
+    };
+    match found {
+        Ok(container) => {
+            let mut decoded = Decoded::open(source, &container);
+            let mut text = vec![0; HEAD];
+            let read = decoded.read_full(&mut text);
+            let name = decoded.name.clone();
+            let source = decoded.into_source();
+            let text = read.map(|count| {
+                text.truncate(count);
+                text
+            });
+            let text = text.map_err(|error| fault(&error_to_io(error), &name, gzip));
+            (source, text.map(|text| (container, text)))
+        }
+        Err(fault) => (source, Err(fault)),
+    }
+}
+
+fn fill(feed: &mut Feed, buffer: &mut [u8]) -> io::Result<usize> {
+    let mut count = 0;
+    while count < buffer.len() {
+        match feed.read(&mut buffer[count..])? {
+            0 => break,
+            more => count += more,
+        }
+    }
+    Ok(count)
+}
+
+fn container(name: &str, gzip: bool, head: &[u8]) -> Result<Container> {
+    if head.is_empty() {
+        return Err(Fault::new(
+            "the compressed file holds nothing",
+            name,
+            "Choose the file that holds the readings.",
+        ));
+    }
+    let refuse = |what: &str, remedy: &str| {
+        Err(Fault::new(format!("the file is {what}, not a text table"), name, remedy))
+    };
+    let sheet = "Export the sheet as CSV and choose that file.";
+    let table =
+        "Choose a text table (CSV): one row per reading, columns separated by comma, semicolon or tab.";
+    let starts = |magic: &[u8]| head.starts_with(magic);
+    if starts(b"PK\x03\x04") || starts(b"PK\x05\x06") {
+        let holds = |part: &[u8]| head.windows(part.len()).take(1 << 14).any(|window| window == part);
+        return if holds(b"xl/") || holds(b"[Content_Types].xml") {
+            refuse("an Excel workbook (.xlsx)", sheet)
+        } else if holds(b"opendocument.spreadsheet") {
+            refuse("an OpenDocument spreadsheet (.ods)", sheet)
+        } else {
+            refuse("a zip archive", "Unpack the archive and choose the text table (CSV) inside.")
+        };
+    }
+    for (magic, what, remedy) in [
+        (&b"\xd0\xcf\x11\xe0"[..], "an old Excel workbook (.xls)", sheet),
+        (
+            b"%PDF",
+            "a PDF document",
+            "Ask for the readings as a text table (CSV); a PDF is a picture of them.",
+        ),
+        (b"\x89PNG", "a PNG picture", table),
+        (b"\xff\xd8\xff", "a JPEG picture", table),
+        (b"GIF8", "a GIF picture", table),
+        (b"{\\rtf", "a rich text document", table),
+        (b"7z\xbc\xaf", "a 7z archive", "Unpack the archive and choose the text table (CSV) inside."),
+        (b"Rar!", "a RAR archive", "Unpack the archive and choose the text table (CSV) inside."),
+        (
+            b"\x28\xb5\x2f\xfd",
+            "compressed with zstd",
+            "Unpack the file and choose the text table (CSV) inside.",
+        ),
+        (b"BZh", "compressed with bzip2", "Unpack the file and choose the text table (CSV) inside."),
+        (b"\xfd7zXZ", "compressed with xz", "Unpack the file and choose the text table (CSV) inside."),
+        (b"PAR1", "a Parquet file", "Export the table as CSV and choose that file."),
+        (b"SQLite format 3", "a SQLite database", "Export the table as CSV and choose that file."),
+        (b"\x1f\x8b", "gzipped twice", "Unpack the file once and choose the result."),
+    ] {
+        if starts(magic) {
+            return refuse(what, remedy);
+        }
+    }
+    let (encoding, bom, mut words) = if starts(b"\xef\xbb\xbf") {
+        (Encoding::Bytes, 3, "UTF-8 with byte order mark")
+    } else if starts(b"\xff\xfe") {
+        (Encoding::Utf16 { big: false }, 2, "UTF-16 (little-endian)")
+    } else if starts(b"\xfe\xff") {
+        (Encoding::Utf16 { big: true }, 2, "UTF-16 (big-endian)")
+    } else if let Some(big) = bare_utf16(head) {
+        (Encoding::Utf16 { big }, 0, "UTF-16 without byte order mark")
+    } else {
+        (Encoding::Bytes, 0, "UTF-8")
+    };
+    if encoding == Encoding::Bytes {
+        if head.contains(&0) {
+            return refuse("binary (it holds bytes that no text has)", table);
+        }
+        let strange = head
+            .iter()
+            .filter(|byte| **byte < 32 && !matches!(**byte, b'\t' | b'\n' | b'\r' | 12 | 26))
+            .count();
+        if strange * 50 > head.len() {
+            return refuse("binary (it holds bytes that no text has)", table);
+        }
+        let trimmed = head.trim_ascii_start();
+        let begins = trimmed.get(..trimmed.len().min(9)).unwrap_or(&[]).to_ascii_lowercase();
+        if begins.starts_with(b"<!doctype") || begins.starts_with(b"<html") || begins.starts_with(b"<?xml") {
+            return refuse(
+                "a page or XML document",
+                "Export the readings as a text table (CSV) and choose that file.",
+            );
+        }
+        if trimmed.starts_with(b"{") || trimmed.starts_with(b"[{") || trimmed.starts_with(b"[[") {
+            return refuse("JSON", "Export the readings as a text table (CSV) and choose that file.");
+        }
+        // The head may end within a character: only an error before its last bytes counts.
+        if let Err(error) = std::str::from_utf8(head)
+            && (error.error_len().is_some() || error.valid_up_to() + 4 < head.len())
+        {
+            words = "Windows-1252 (the bytes are not UTF-8)";
+        }
+    }
+    let plain = |byte: u8| head.contains(&byte);
+    let carriage_returns = match (plain(b'\r'), plain(b'\n')) {
+        (false, _) => Returns::None,
+        (true, true) => Returns::BeforeLineFeed,
+        (true, false) => Returns::Alone,
+    };
+    let words = if gzip { format!("{words}, gzip") } else { words.to_owned() };
+    Ok(Container { gzip, encoding, bom, carriage_returns, words })
+}
+
+/// Whether nearly every second byte is zero, as in ASCII text written as UTF-16; true for big-endian.
+fn bare_utf16(head: &[u8]) -> Option<bool> {
+    let pairs = head.len() / 2;
+    let zero = |at: usize| head.iter().skip(at).step_by(2).filter(|byte| **byte == 0).count();
+    let (even, odd) = (zero(0), zero(1));
+    (pairs > 4).then_some(())?;
+    if odd * 10 > pairs * 8 && even * 20 < pairs {
+        Some(false)
+    } else if even * 10 > pairs * 8 && odd * 20 < pairs {
+        Some(true)
+    } else {
+        None
+    }
+}
+
+impl Decoded {
+    /// The text of a source from its start.
+    pub(super) fn open(source: Box<dyn Source>, container: &Container) -> Self {
+        let name = source.name().to_owned();
+        Self {
+            feed: Feed::new(source, container.gzip),
+            container: container.clone(),
+            name,
+            total: 0,
+            most: MOST_BYTES,
+            allowance: LONGEST_ROW,
+            skip: container.bom,
+            raw: Vec::new(),
+            at: 0,
+            last: b'\n',
+            carry: Vec::new(),
+            ended: false,
+        }
+    }
+
+    /// The source again.
+    pub(super) fn into_source(self) -> Box<dyn Source> {
+        self.feed.into_source()
+    }
+
+    /// Says that a row was completed: the next may be as long again.
+    pub(super) fn row_done(&mut self) {
+        self.allowance = LONGEST_ROW;
+    }
+
+    /// Bytes of the file taken so far.
+    pub(super) fn offset(&self) -> u64 {
+        self.feed.offset()
+    }
+
+    fn read_full(&mut self, buffer: &mut [u8]) -> io::Result<usize> {
+        let mut count = 0;
+        while count < buffer.len() {
+            match self.read(&mut buffer[count..])? {
+                0 => break,
+                more => count += more,
+            }
+        }
+        Ok(count)
+    }
+
+    /// Takes the next bytes of the feed and turns them into text with line feeds.
+    fn refill(&mut self) -> io::Result<()> {
+        self.raw.resize(1 << 16, 0);
+        self.at = 0;
+        let count = self.feed.read(&mut self.raw)?;
+        self.raw.truncate(count);
+        self.total += count as u64;
+        if self.total > self.most {
+            return Err(io::Error::other(Fault::new(
+                format!("the file holds more than {} GB of text", self.most >> 30),
+                self.name.clone(),
+                "Cut the file into shorter spans.",
+            )));
+        }
+        if self.total > 1 << 20 && self.total / 500 > self.feed.offset() + (1 << 16) {
+            return Err(io::Error::other(Fault::new(
+                "the compressed file unpacks to more than five hundred times its size; no meter file does",
+                self.name.clone(),
+                "Choose the file that holds the readings.",
+            )));
+        }
+        if count == 0 {
+            self.ended = true;
+            self.raw.clear();
+            if self.last != b'\n' {
+                self.raw.push(b'\n');
+                self.last = b'\n';
+            }
+            return Ok(());
+        }
+        if self.skip > 0 {
+            let skipped = self.skip.min(self.raw.len());
+            self.raw.drain(..skipped);
+            self.skip -= skipped;
+        }
+        if let Encoding::Utf16 { big } = self.container.encoding {
+            self.from_utf16(big);
+        }
+        match self.container.carriage_returns {
+            Returns::None => {}
+            // A return without a line feed after it is left to the row splitter, which takes it as a row's end too.
+            Returns::BeforeLineFeed => self.raw.retain(|byte| *byte != b'\r'),
+            Returns::Alone => {
+                for byte in &mut self.raw {
+                    if *byte == b'\r' {
+                        *byte = b'\n';
+                    }
+                }
+            }
+        }
+        if let Some(last) = self.raw.last() {
+            self.last = *last;
+        }
+        Ok(())
+    }
+
+    fn from_utf16(&mut self, big: bool) {
+        let mut bytes = std::mem::take(&mut self.carry);
+        bytes.append(&mut self.raw);
+        // A half unit, or the first half of a pair, waits for the next bytes.
+        let mut whole = bytes.len() & !1;
+        let unit = |pair: &[u8]| {
+            let pair = [pair[0], pair[1]];
+            if big { u16::from_be_bytes(pair) } else { u16::from_le_bytes(pair) }
+        };
+        if whole >= 2 && (0xd800..0xdc00).contains(&unit(&bytes[whole - 2..whole])) {
+            whole -= 2;
+        }
+        self.carry = bytes.split_off(whole);
+        let units = bytes.chunks_exact(2).map(unit);
+        let text: String =
+            char::decode_utf16(units).map(|c| c.unwrap_or(char::REPLACEMENT_CHARACTER)).collect();
+        self.raw = text.into_bytes();
+    }
+}
+
+impl Read for Decoded {
+    fn read(&mut self, buffer: &mut [u8]) -> io::Result<usize> {
+        while self.at >= self.raw.len() && !self.ended {
+            self.refill()?;
+        }
+        let count = (self.raw.len() - self.at).min(buffer.len());
+        if count as u64 > self.allowance {
+            return Err(io::Error::other(Fault::new(
+                format!(
+                    "a row is longer than {} MB: probably a quotation mark is opened and never closed",
+                    LONGEST_ROW >> 20
+                ),
+                self.name.clone(),
+                "Remove the stray quotation mark, or choose a text table.",
+            )));
+        }
+        self.allowance -= count as u64;
+        buffer[..count].copy_from_slice(&self.raw[self.at..self.at + count]);
+        self.at += count;
+        Ok(count)
+    }
+}
+
+fn error_to_io(error: io::Error) -> Box<io::Error> {
+    Box::new(error)
+}
+
+/// The fault behind a reading error, at row `row` if that is known.
+#[cold]
+pub(super) fn fault(error: &io::Error, name: &str, gzip: bool) -> Fault {
+    if let Some(fault) = error.get_ref().and_then(|inner| inner.downcast_ref::<Fault>()) {
+        return fault.clone();
+    }
+    let what = if gzip { "the compressed file is damaged" } else { "the file cannot be read" };
+    Fault::new(format!("{what}: {error}"), name, "Copy or unpack the file again and choose the copy.")
+}
+
+/// The fault behind an error of the row splitter.
+#[cold]
+pub(super) fn row_fault(error: &csv::Error, name: &str) -> Fault {
+    match error.kind() {
+        csv::ErrorKind::Io(error) => fault(error, name, true),
+        _ => {
+            Fault::new(format!("the rows cannot be told apart: {error}"), name, "Choose a text table (CSV).")
+        }
+    }
+}
+
+/// A cell as text: UTF-8, or else Windows-1252.
+pub(super) fn text(bytes: &[u8]) -> String {
+    match std::str::from_utf8(bytes) {
+        Ok(text) => text.trim().to_owned(),
+        Err(_not_utf8) => bytes.iter().map(|byte| windows_1252(*byte)).collect::<String>().trim().to_owned(),
+    }
+}
+
+/// The character of a byte in Windows-1252 (WHATWG Encoding Standard, index windows-1252).
+fn windows_1252(byte: u8) -> char {
+    const HIGH: [char; 32] = [
+        '€', '\u{81}', '‚', 'ƒ', '„', '…', '†', '‡', 'ˆ', '‰', 'Š', '‹', 'Œ', '\u{8d}', 'Ž', '\u{8f}',
+        '\u{90}', '‘', '’', '“', '”', '•', '–', '—', '˜', '™', 'š', '›', 'œ', '\u{9d}', 'ž', 'Ÿ',
+    ];
+    match byte {
+        0x80..=0x9f => HIGH[usize::from(byte - 0x80)],
+        _ => char::from(byte),
+    }
+}

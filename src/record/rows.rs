@@ -1,0 +1,68 @@
+//! Rows of a text table with the numbers that a person sees in a spreadsheet.
+
+use std::io::Read;
+
+use csv::ByteRecord;
+
+/// A table's rows, one after the other. Blank rows are passed over but counted.
+pub(super) struct Rows<R> {
+    reader: csv::Reader<R>,
+    /// Line feeds inside quoted cells so far: a spreadsheet shows such a cell in one row.
+    inside: u64,
+}
+
+impl<R: Read> Rows<R> {
+    /// The rows of a text whose lines end in line feeds, the last one too.
+    pub(super) fn new(text: R, separator: u8) -> Self {
+        let reader = csv::ReaderBuilder::new()
+            .has_headers(false)
+            .flexible(true)
+            .delimiter(separator)
+            .buffer_capacity(1 << 16)
+            .from_reader(text);
+        Self { reader, inside: 0 }
+    }
+
+    /// Reads the next row that is not blank and returns its number from 1; none at the end.
+    pub(super) fn next(&mut self, record: &mut ByteRecord) -> csv::Result<Option<u64>> {
+        if !self.reader.read_byte_record(record)? {
+            return Ok(None);
+        }
+        self.inside += record.as_slice().iter().filter(|byte| **byte == b'\n').count() as u64;
+        // The reader stands behind this row's line feed.
+        Ok(Some(self.reader.position().line().saturating_sub(1 + self.inside).max(1)))
+    }
+
+    /// The text being read.
+    pub(super) fn text(&self) -> &R {
+        self.reader.get_ref()
+    }
+
+    /// The text being read, to be told things.
+    pub(super) fn text_mut(&mut self) -> &mut R {
+        self.reader.get_mut()
+    }
+
+    /// The text being read, for good.
+    pub(super) fn into_text(self) -> R {
+        self.reader.into_inner()
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn rows_are_numbered_as_a_spreadsheet_does() {
+        let text = "a,b\n\n1,\"two\nlines\"\n\n\n3,4\n5,6\n";
+        let mut rows = Rows::new(text.as_bytes(), b',');
+        let mut record = ByteRecord::new();
+        let mut seen = Vec::new();
+        while let Some(row) = rows.next(&mut record).unwrap() {
+            seen.push((row, String::from_utf8_lossy(&record[0]).into_owned()));
+        }
+        let expected = [(1, "a"), (3, "1"), (6, "3"), (7, "5")].map(|(row, cell)| (row, cell.to_owned()));
+        assert_eq!(seen, expected);
+    }
+}
