@@ -2,11 +2,12 @@
 //
 // - gives boot.js a name by its content, like the other files, and writes the script element that names glue and wasm;
 // - compresses the demo sites and copies their list;
-// - puts the licences of all that is shipped beside it.
+// - puts the licences of all that is shipped beside it;
+// - tells the service worker which files to keep.
 import { execFileSync } from "node:child_process";
 import { createHash } from "node:crypto";
 import { mkdirSync, readFileSync, readdirSync, renameSync, writeFileSync } from "node:fs";
-import { dirname, join } from "node:path";
+import { dirname, join, relative, sep } from "node:path";
 import { fileURLToPath } from "node:url";
 import { gzipSync } from "node:zlib";
 import { licences } from "./licences.mjs";
@@ -21,14 +22,17 @@ function only(pattern) {
   return found[0];
 }
 
+const digest = (content) => createHash("sha256").update(content).digest("hex").slice(0, 16);
+
 const wasm = only(/^page-.*_bg\.wasm$/);
 const glue = only(/^page-.*\.js$/);
-const boot = `boot-${createHash("sha256").update(readFileSync(join(staging, "boot.js"))).digest("hex").slice(0, 16)}.js`;
+const boot = `boot-${digest(readFileSync(join(staging, "boot.js")))}.js`;
 renameSync(join(staging, "boot.js"), join(staging, boot));
 
-// Trunk may or may not leave hints of its own for the wasm and the glue; ours replace them.
+// Trunk leaves its own element for the program in the document, and empty lines where the others were.
 const page = readFileSync(join(staging, "index.html"), "utf8")
-  .replace(/<link[^>]*rel="?(?:module)?preload"?[^>]*>\s*/g, "")
+  .replace(/<link data-trunk[^>]*>/g, "")
+  .replace(/\n\s*\n+/g, "\n")
   .replace("</head>", `<link rel="preload" href="${wasm}" as="fetch" type="application/wasm" crossorigin>
 <script src="${boot}" data-glue="${glue}" data-wasm="${wasm}" defer></script>
 </head>`);
@@ -51,3 +55,17 @@ const metadata = JSON.parse(
   ),
 );
 writeFileSync(join(staging, "licences.txt"), licences(metadata, root));
+
+/** Every file in a folder and those below it, in the order of their names. */
+function filesIn(folder) {
+  return readdirSync(folder, { withFileTypes: true }).sort((a, b) => (a.name < b.name ? -1 : 1))
+    .flatMap((entry) => (entry.isDirectory() ? filesIn(join(folder, entry.name)) : [join(folder, entry.name)]));
+}
+
+const kept = filesIn(staging).filter((file) => !/(offline\.js|licences\.txt|OFL\.txt)$/.test(file));
+const mark = digest(Buffer.concat(kept.map((file) => readFileSync(file))));
+const names = kept.map((file) => relative(staging, file).split(sep).join("/")).map((name) => (name === "index.html" ? "./" : name));
+const offline = readFileSync(join(staging, "offline.js"), "utf8")
+  .replace(/^const FILES = .*$/m, `const FILES = ${JSON.stringify(names)};`)
+  .replace(/^const MARK = .*$/m, `const MARK = "${mark}";`);
+writeFileSync(join(staging, "offline.js"), offline);

@@ -65,6 +65,12 @@
     });
   }
 
+  /** Only once the page runs, so that the first download is not slowed. Browsers allow it on https and on this machine. */
+  function keepForOffline() {
+    // Without it the page works all the same, only not without a network.
+    if (isSecureContext) navigator.serviceWorker?.register("offline.js").catch(() => {});
+  }
+
   async function start() {
     if (typeof WebAssembly !== "object") {
       return notice("This browser has no WebAssembly.\nOpen the page in a browser of the last few years, or allow WebAssembly in its settings.");
@@ -82,6 +88,7 @@
         return worker;
       };
       await wasm_bindgen({ module_or_path: module });
+      keepForOffline();
     } catch (error) {
       if (error instanceof WebAssembly.RuntimeError) return stopped(error);
       notice(`Millpond could not be loaded: ${error?.message ?? error}\nCheck the connection and reload the page.`);

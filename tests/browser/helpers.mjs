@@ -18,16 +18,20 @@ const FLAGS = [
   "--disable-component-update", "--disable-sync",
 ];
 
-/** Serves dist/ and starts the browser; `close` ends both. */
+/** Serves dist/ and starts the browser; `close` ends both, `cutOff` only the server. */
 export async function setUp() {
   const server = await serve(join(root, "dist"));
   const browser = await chromium.launch({ executablePath: process.env.CHROMIUM ?? "/usr/bin/chromium", args: FLAGS });
   const origin = `http://127.0.0.1:${server.address().port}`;
+  const cutOff = () => {
+    server.close();
+    server.closeAllConnections();
+  };
   const close = async () => {
     await browser.close();
-    server.close();
+    cutOff();
   };
-  return { browser, origin, close, open: (options) => openPage(browser, origin, options) };
+  return { browser, origin, close, cutOff, open: (options) => openPage(browser, origin, options) };
 }
 
 /**
