@@ -8,7 +8,6 @@ use millpond::sheet::{Figure, Sheet, Station};
 use millpond::units::people;
 
 use super::desk::Desk;
-use super::fold::fold;
 
 /// The `group`-th group of a station's key figures.
 pub(crate) fn figures(desk: Desk, of: fn(&Sheet) -> &Station, group: usize) -> impl IntoView {

@@ -97,6 +97,7 @@ const fn words(kind: FindingKind) -> &'static str {
         FindingKind::ClockChange => "Clock change",
         FindingKind::UnitDoubt => "Unit",
         FindingKind::SignDoubt => "Sign",
+        FindingKind::StampDoubt => "Stamp",
         FindingKind::Filled => "Filled",
         FindingKind::Ignored => "Not used",
         FindingKind::TypicalYear => "Typical year",

@@ -83,7 +83,7 @@ fn list(desk: Desk, current: Memo<usize>) -> impl IntoView {
         });
         view! {
             <li
-                class:later=move || desk.sheet.with(Option::is_none) && i > 0
+                class:later=move || i != 0 && desk.sheet.with(Option::is_none)
                 aria-current=move || (current.get() == i).then_some("step")
             >
                 <a href=format!("#{}", place.id)>

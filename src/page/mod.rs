@@ -28,7 +28,7 @@ use desk::Desk;
 
 /// Mounts the page.
 pub(crate) fn mount() {
-    leptos::mount::mount_to_body(sheet);
+    mount_to_body(sheet);
 }
 
 fn sheet() -> impl IntoView {

@@ -38,12 +38,7 @@ pub(crate) fn picture(desk: Desk, which: Which) -> impl IntoView {
     let place = NodeRef::<Div>::new();
     let canvas = NodeRef::<Canvas>::new();
     let width = width_of(place);
-    let sheet = Memo::new_with_compare(move |_| desk.sheet.get(), move |old: Option<&Option<Arc<Sheet>>>, new| {
-        match (old.and_then(Option::as_ref), new.as_ref().and_then(Option::as_ref)) {
-            (Some(old), Some(new)) => !Arc::ptr_eq(old, new) && !drawing::same(which, old, new),
-            _ => true,
-        }
-    });
+    let sheet = drawn_sheet(desk, which);
     let hits = StoredValue::new(Hits::default());
     let reading = RwSignal::new(None::<(usize, Readout)>);
     let height = RwSignal::new(0_u32);
@@ -179,6 +174,22 @@ pub(crate) fn picture(desk: Desk, which: Which) -> impl IntoView {
             )}
         </figure>
     }
+}
+
+/// The sheet, followed only where this picture changes.
+fn drawn_sheet(desk: Desk, which: Which) -> Memo<Option<Arc<Sheet>>> {
+    let owned = move |held: Option<Option<Arc<Sheet>>>| {
+        let new = desk.sheet.get();
+        let same = match (held.as_ref().and_then(Option::as_ref), &new) {
+            (Some(old), Some(new)) => Arc::ptr_eq(old, new) || drawing::same(which, old, new),
+            _ => false,
+        };
+        match held {
+            Some(held) if same => (held, false),
+            _ => (new, true),
+        }
+    };
+    Memo::new_owning(owned)
 }
 
 /// Picks a kind as a candidate, or puts it back; four letters at most.
@@ -328,7 +339,7 @@ fn ask(desk: Desk, energy_kwh: f64) {
     });
     match point {
         Some((Measure::ServedShare, share)) => {
-            set(desk, |case| case.requirement.served_share = (share * 1e4).round() / 1e4);
+            set(desk, |case| case.requirement.served_share = Some((share * 1e4).round() / 1e4));
         }
         Some((Measure::HeldImportKw, kw)) => set(desk, |case| {
             if let DutyCase::Limits { import_limit_kw, .. } = super::duty::limits(&mut case.duty) {

@@ -38,8 +38,8 @@ pub(crate) const LATER: [(&str, &str); 3] = [
     ("Statement", "not in this version yet"),
 ];
 
-/// A station: its heading and sentence, then what `inside` adds.
-pub(crate) fn station<V: IntoView>(desk: Desk, place: Place, inside: impl FnOnce() -> V) -> impl IntoView {
+/// A station: its heading and sentence, then what is inside.
+pub(crate) fn station(desk: Desk, place: Place, inside: impl IntoView) -> impl IntoView {
     let sentence = Memo::new(move |_| desk.of(|sheet| (place.of)(sheet).sentence.clone()));
     let busy = Memo::new(move |_| desk.status.with(|status| status.busy));
     view! {
@@ -54,7 +54,7 @@ pub(crate) fn station<V: IntoView>(desk: Desk, place: Place, inside: impl FnOnce
             {move || (place.number == 1 || desk.sheet.with(Option::is_some)).then(|| {
                 view! { <p class="sentence">{move || sentence.get()}</p> }
             })}
-            {inside()}
+            {inside}
         </section>
     }
 }
