@@ -1,0 +1,316 @@
+//! The page's side: one worker at a time, replaced and fed again when it dies or hangs.
+
+use std::cell::RefCell;
+use std::rc::{Rc, Weak};
+use std::sync::Arc;
+
+use gloo::events::EventListener;
+use gloo::timers::callback::Interval;
+use wasm_bindgen::{JsCast, JsValue};
+use web_sys::{File, MessageEvent, Worker};
+
+use millpond::case::Case;
+use millpond::fault::Fault;
+use millpond::sheet::{Sheet, View};
+
+use super::{Answer, Progress, Request, host};
+
+/// How often a working worker is asked whether it still turns, ms.
+const PING_MS: u32 = 3_000;
+/// Pings without any answer after which it counts as hung.
+const UNHEARD: u32 = 6;
+/// Deaths over the same request after which it is not tried again.
+const DEATHS: u32 = 2;
+
+/// What happens at the worker, told to the page.
+pub(crate) enum Event {
+    /// How far it is.
+    Progress(Progress),
+    /// A new sheet.
+    Sheet(Arc<Sheet>),
+    /// What stopped the work.
+    Fault(Fault),
+    /// The worker died or hung; another one has taken over and begins anew.
+    Restarted,
+}
+
+/// The page's end of the bridge.
+#[derive(Clone)]
+pub(crate) struct Bridge(Rc<RefCell<Inner>>);
+
+struct Inner {
+    tell: Rc<dyn Fn(Event)>,
+    worker: Option<(Worker, [EventListener; 3])>,
+    watch: Option<Interval>,
+    site: String,
+    files: Vec<File>,
+    case: Case,
+    view: View,
+    revision: u32,
+    waiting: bool,
+    unheard: u32,
+    deaths: u32,
+    /// Whether the worker that is there now has the files.
+    fed: bool,
+}
+
+impl Bridge {
+    /// A bridge that tells what happens to a function of the page. The first worker is started at once, so that it is
+    /// ready when the first file comes.
+    pub(crate) fn new(tell: impl Fn(Event) + 'static) -> Self {
+        let bridge = Self(Rc::new(RefCell::new(Inner {
+            tell: Rc::new(tell),
+            worker: None,
+            watch: None,
+            site: String::new(),
+            files: Vec::new(),
+            case: Case::default(),
+            view: View::default(),
+            revision: 0,
+            waiting: false,
+            unheard: 0,
+            deaths: 0,
+            fed: false,
+        })));
+        bridge.spawn();
+        let weak = Rc::downgrade(&bridge.0);
+        let watch = Interval::new(PING_MS, move || {
+            if let Some(bridge) = upgraded(&weak) {
+                bridge.watch();
+            }
+        });
+        bridge.0.borrow_mut().watch = Some(watch);
+        bridge
+    }
+
+    /// Opens files: reads them and computes everything.
+    pub(crate) fn open(&self, files: Vec<File>, site: String, case: Case, view: View) {
+        {
+            let mut inner = self.0.borrow_mut();
+            (inner.files, inner.site, inner.case, inner.view) = (files, site, case, view);
+            inner.deaths = 0;
+            inner.ask();
+        }
+        self.feed();
+    }
+
+    /// Computes again for a changed case.
+    pub(crate) fn change(&self, case: Case, view: View) {
+        let request = {
+            let mut inner = self.0.borrow_mut();
+            (inner.case, inner.view) = (case.clone(), view.clone());
+            inner.deaths = 0;
+            if inner.files.is_empty() {
+                return;
+            }
+            Request::Change { revision: inner.ask(), case: Box::new(case), view }
+        };
+        self.post_or_feed(&request);
+    }
+
+    /// Shows something else of the same results.
+    pub(crate) fn look(&self, view: View) {
+        let request = {
+            let mut inner = self.0.borrow_mut();
+            inner.view = view.clone();
+            if inner.files.is_empty() {
+                return;
+            }
+            Request::Look { revision: inner.ask(), view }
+        };
+        self.post_or_feed(&request);
+    }
+
+    /// Leaves off whatever is being computed.
+    pub(crate) fn stop(&self) {
+        {
+            let mut inner = self.0.borrow_mut();
+            // Answers that are already on their way are stale from here on.
+            inner.revision += 1;
+            inner.waiting = false;
+        }
+        self.post(&Request::Stop);
+    }
+
+    /// Whether an answer is awaited.
+    pub(crate) fn waiting(&self) -> bool {
+        self.0.borrow().waiting
+    }
+
+    /// Whether files are open.
+    pub(crate) fn has_files(&self) -> bool {
+        !self.0.borrow().files.is_empty()
+    }
+
+    fn spawn(&self) {
+        let worker = match host::spawn() {
+            Ok(worker) => worker,
+            Err(error) => {
+                host::notice(&format!(
+                    "Millpond's worker could not be started: {error:?}\nAllow workers for this page, or open it in another browser."
+                ));
+                return;
+            }
+        };
+        let listen = |name: &'static str, act: fn(&Self, &web_sys::Event)| {
+            let weak = Rc::downgrade(&self.0);
+            EventListener::new(&worker, name, move |event| {
+                if let Some(bridge) = upgraded(&weak) {
+                    act(&bridge, event);
+                }
+            })
+        };
+        let listeners = [
+            listen("message", |bridge, event| {
+                if let Some(event) = event.dyn_ref::<MessageEvent>() {
+                    bridge.hear(&event.data());
+                }
+            }),
+            listen("error", |bridge, event| {
+                // The page has taken note; the browser need not report it as the page's own failure.
+                event.prevent_default();
+                bridge.replace("the computation stopped");
+            }),
+            listen("messageerror", |bridge, _| bridge.replace("an answer could not be read")),
+        ];
+        let mut inner = self.0.borrow_mut();
+        (inner.worker, inner.fed) = (Some((worker, listeners)), false);
+    }
+
+    /// A worker that has replaced another one knows nothing yet: it is given everything.
+    fn post_or_feed(&self, request: &Request) {
+        let fed = self.0.borrow().fed;
+        if fed { self.post(request) } else { self.feed() }
+    }
+
+    /// Hands the worker the files and the case.
+    fn feed(&self) {
+        let (request, files) = {
+            let mut inner = self.0.borrow_mut();
+            if inner.files.is_empty() {
+                return;
+            }
+            inner.fed = true;
+            let request = Request::Open {
+                revision: inner.revision,
+                site: inner.site.clone(),
+                case: Box::new(inner.case.clone()),
+                view: inner.view.clone(),
+            };
+            (request, super::worker::file_list(&inner.files))
+        };
+        self.post_with(&request, |envelope| super::beside(envelope, "files", &files));
+    }
+
+    fn post(&self, request: &Request) {
+        self.post_with(request, |_| Ok(()));
+    }
+
+    fn post_with(&self, request: &Request, add: impl Fn(&js_sys::Object) -> Result<(), JsValue>) {
+        let posted = super::envelope(request).and_then(|envelope| {
+            add(&envelope)?;
+            match &self.0.borrow().worker {
+                Some((worker, _)) => worker.post_message(&envelope),
+                None => Ok(()),
+            }
+        });
+        if let Err(error) = posted {
+            host::log(&format!("a request could not be sent: {error:?}"));
+        }
+    }
+
+    fn hear(&self, data: &JsValue) {
+        let answer = match super::open::<Answer>(data) {
+            Ok(answer) => answer,
+            Err(error) => {
+                host::log(&format!("an answer could not be read: {error:?}"));
+                return self.replace("an answer could not be read");
+            }
+        };
+        let (current, tell) = {
+            let mut inner = self.0.borrow_mut();
+            inner.unheard = 0;
+            (inner.revision, Rc::clone(&inner.tell))
+        };
+        match answer {
+            Answer::Progress { revision, progress } if revision == current => tell(Event::Progress(progress)),
+            Answer::Sheet { revision, mut sheet } if revision == current => {
+                super::put_columns(&mut sheet, &super::list(data, "columns"));
+                self.answered();
+                tell(Event::Sheet(Arc::new(*sheet)));
+            }
+            Answer::Fault { revision, fault } if revision == current => {
+                self.answered();
+                tell(Event::Fault(fault));
+            }
+            Answer::Died { text } => self.replace(&text),
+            _ => {}
+        }
+    }
+
+    fn answered(&self) {
+        let mut inner = self.0.borrow_mut();
+        inner.waiting = false;
+        inner.deaths = 0;
+    }
+
+    fn watch(&self) {
+        let hung = {
+            let mut inner = self.0.borrow_mut();
+            if !inner.waiting {
+                return;
+            }
+            inner.unheard += 1;
+            inner.unheard > UNHEARD
+        };
+        if hung {
+            self.replace("the computation did not answer for a while");
+        } else {
+            self.post(&Request::Ping);
+        }
+    }
+
+    /// Ends the worker, starts another and feeds it again, unless the same request has killed it before.
+    fn replace(&self, why: &str) {
+        let (again, tell) = {
+            let mut inner = self.0.borrow_mut();
+            if let Some((worker, listeners)) = inner.worker.take() {
+                worker.terminate();
+                drop(listeners);
+            }
+            inner.unheard = 0;
+            inner.deaths += 1;
+            let again = inner.deaths < DEATHS;
+            if !again {
+                inner.waiting = false;
+            }
+            (again, Rc::clone(&inner.tell))
+        };
+        self.spawn();
+        if again {
+            if self.waiting() {
+                self.feed();
+            }
+            return tell(Event::Restarted);
+        }
+        tell(Event::Fault(Fault::new(
+            format!("the computation stopped twice: {why}"),
+            "the page's worker",
+            "The files may be larger than the memory that this browser gives a page: try fewer files or fewer columns. \
+             The case is kept; changing it starts the computation anew.",
+        )));
+    }
+}
+
+impl Inner {
+    fn ask(&mut self) -> u32 {
+        self.revision += 1;
+        self.waiting = true;
+        self.unheard = 0;
+        self.revision
+    }
+}
+
+fn upgraded(weak: &Weak<RefCell<Inner>>) -> Option<Bridge> {
+    weak.upgrade().map(Bridge)
+}

@@ -1,0 +1,265 @@
+//! The worker's side: holds the files and the record, works one slice per turn of its loop, and answers.
+
+use std::cell::RefCell;
+use std::rc::Rc;
+
+use gloo::events::EventListener;
+use js_sys::Array;
+use wasm_bindgen::{JsCast, JsValue};
+use web_sys::{DedicatedWorkerGlobalScope, File, MessageChannel, MessageEvent, MessagePort};
+
+use millpond::case::{Case, DutyCase, RecordCase};
+use millpond::fault::{Fault, Result};
+use millpond::job::Job;
+use millpond::record::{self, Record, Source};
+use millpond::sheet::{Lay, View};
+use millpond::technology::Catalogue;
+
+use super::blob::BlobSource;
+use super::{Answer, Progress, Request, host};
+
+/// How long a slice should take, ms: short enough to hear the next request at once.
+const SLICE_MS: f64 = 16.0;
+/// How often progress is told, ms.
+const TELL_MS: f64 = 100.0;
+/// Budget of the first slice, and its bounds.
+const BUDGETS: (usize, usize, usize) = (2_000, 20_000, 200_000_000);
+
+/// Serves the page from inside a worker: listens, and works when there is work.
+pub(crate) fn serve(scope: DedicatedWorkerGlobalScope) {
+    let Ok(channel) = MessageChannel::new() else {
+        host::log("this browser has no message channels");
+        return;
+    };
+    let turns = channel.port1();
+    let worker = Rc::new(RefCell::new(Worker {
+        scope: scope.clone(),
+        next: channel.port2(),
+        site: String::new(),
+        files: Vec::new(),
+        case: Case::default(),
+        view: View::default(),
+        revision: 0,
+        record: None,
+        catalogue: None,
+        work: None,
+        budget: BUDGETS.1,
+        told_ms: 0.0,
+    }));
+
+    let heard = Rc::clone(&worker);
+    EventListener::new(&scope, "message", move |event| {
+        if let Some(event) = event.dyn_ref::<MessageEvent>() {
+            heard.borrow_mut().hear(&event.data());
+        }
+    })
+    .forget();
+
+    // A message to itself comes after the messages that are already waiting, without the delay that timers have.
+    EventListener::new(&turns, "message", move |_| worker.borrow_mut().turn()).forget();
+    turns.start();
+}
+
+/// Tells the page that this worker is done for; the browser's own error event may come without words.
+pub(crate) fn last_words(scope: &DedicatedWorkerGlobalScope, text: String) {
+    // If even this fails, the page's watch over the worker will notice.
+    let _ = super::envelope(&Answer::Died { text }).and_then(|envelope| scope.post_message(&envelope));
+}
+
+struct Worker {
+    scope: DedicatedWorkerGlobalScope,
+    next: MessagePort,
+    site: String,
+    files: Vec<File>,
+    case: Case,
+    view: View,
+    revision: u32,
+    /// The record, and the terms it was read by.
+    record: Option<(Rc<Record>, Terms)>,
+    catalogue: Option<Rc<Catalogue>>,
+    work: Option<Work>,
+    budget: usize,
+    told_ms: f64,
+}
+
+/// What the reading of a record depends on: the case's part, and the columns that the duty names.
+#[derive(PartialEq)]
+struct Terms {
+    case: RecordCase,
+    named: Vec<String>,
+}
+
+impl Terms {
+    fn of(case: &Case) -> Self {
+        let named = match &case.duty {
+            DutyCase::Given { column, .. } => vec![column.clone()],
+            _ => Vec::new(),
+        };
+        Self { case: case.record.clone(), named }
+    }
+}
+
+enum Work {
+    Reading(record::Reader),
+    Laying(Box<Lay>),
+}
+
+impl Worker {
+    fn hear(&mut self, data: &JsValue) {
+        // The start of the worker (the compiled module) also comes as a message; it has no envelope.
+        let Ok(request) = super::open::<Request>(data) else { return };
+        match request {
+            Request::Open { revision, site, case, view } => {
+                self.files = super::list(data, "files").iter().filter_map(|file| file.dyn_into().ok()).collect();
+                self.record = None;
+                (self.site, self.case, self.view, self.revision) = (site, *case, view, revision);
+                self.begin();
+            }
+            Request::Change { revision, case, view } => {
+                (self.case, self.view, self.revision) = (*case, view, revision);
+                self.begin();
+            }
+            Request::Look { revision, view } => {
+                (self.view, self.revision) = (view, revision);
+                self.begin();
+            }
+            Request::Stop => self.work = None,
+            Request::Ping => self.answer(&Answer::Pong),
+        }
+    }
+
+    /// Begins what the case asks for now, in place of whatever was being done.
+    fn begin(&mut self) {
+        if self.files.is_empty() {
+            self.work = None;
+            return;
+        }
+        let was_idle = self.work.is_none();
+        let terms = Terms::of(&self.case);
+        let kept = self.record.as_ref().filter(|(_, read_by)| *read_by == terms).map(|(record, _)| Rc::clone(record));
+        let work = match kept {
+            Some(record) => self.lay(record),
+            None => self.read(&terms),
+        };
+        match work {
+            Ok(work) => {
+                self.work = Some(work);
+                if was_idle {
+                    self.go_on();
+                }
+            }
+            Err(fault) => self.fail(fault),
+        }
+    }
+
+    fn read(&self, terms: &Terms) -> Result<Work> {
+        let sources = self
+            .files
+            .iter()
+            .map(|file| BlobSource::new(file.clone()).map(|source| Box::new(source) as Box<dyn Source>))
+            .collect::<Result<Vec<_>>>()?;
+        Ok(Work::Reading(record::read(&self.site, sources, &terms.case, &terms.named)?))
+    }
+
+    fn lay(&mut self, record: Rc<Record>) -> Result<Work> {
+        // Parsed once, at the first need: every later sheet is laid from the same one.
+        let catalogue = match &self.catalogue {
+            Some(catalogue) => Rc::clone(catalogue),
+            None => Rc::clone(self.catalogue.insert(Rc::new(Catalogue::published()?))),
+        };
+        Ok(Work::Laying(Box::new(Lay::new(record, self.case.clone(), self.view.clone(), catalogue))))
+    }
+
+    /// One slice.
+    fn turn(&mut self) {
+        let started = host::now_ms();
+        let Some(work) = &mut self.work else { return };
+        let (progress, reading) = match work {
+            Work::Reading(job) => (job.progress(), true),
+            Work::Laying(job) => (job.progress(), false),
+        };
+        let step = match work {
+            Work::Reading(job) => job.advance(self.budget).map(|record| record.map(Done::Record)),
+            Work::Laying(job) => job.advance(self.budget).map(|sheet| sheet.map(|sheet| Done::Sheet(Box::new(sheet)))),
+        };
+        let ended = host::now_ms();
+        self.adapt(ended - started);
+        match step {
+            Ok(None) => {
+                if ended - self.told_ms >= TELL_MS {
+                    self.told_ms = ended;
+                    let progress = Progress { reading, what: progress.what.to_owned(), done: progress.done };
+                    self.answer(&Answer::Progress { revision: self.revision, progress });
+                }
+                self.go_on();
+            }
+            Ok(Some(Done::Record(record))) => {
+                let record = Rc::new(record);
+                self.record = Some((Rc::clone(&record), Terms::of(&self.case)));
+                match self.lay(record) {
+                    Ok(work) => {
+                        self.work = Some(work);
+                        self.go_on();
+                    }
+                    Err(fault) => self.fail(fault),
+                }
+            }
+            Ok(Some(Done::Sheet(sheet))) => {
+                self.work = None;
+                self.deliver(sheet);
+            }
+            Err(fault) => self.fail(fault),
+        }
+    }
+
+    /// Moves the budget towards slices of the wished length; one slow slice (a first touch of memory, a pause of the
+    /// browser) must not throw it off, so it moves by at most a factor of two.
+    fn adapt(&mut self, took_ms: f64) {
+        let factor = (SLICE_MS / took_ms.max(1.0)).clamp(0.5, 2.0);
+        self.budget = ((self.budget as f64 * factor) as usize).clamp(BUDGETS.0, BUDGETS.2);
+    }
+
+    fn go_on(&self) {
+        if self.next.post_message(&JsValue::NULL).is_err() {
+            host::log("the worker cannot post to itself");
+        }
+    }
+
+    fn fail(&mut self, fault: Fault) {
+        self.work = None;
+        self.answer(&Answer::Fault { revision: self.revision, fault });
+    }
+
+    fn deliver(&self, mut sheet: Box<millpond::sheet::Sheet>) {
+        let (columns, buffers) = super::take_columns(&mut sheet);
+        let posted = super::envelope(&Answer::Sheet { revision: self.revision, sheet }).and_then(|envelope| {
+            super::beside(&envelope, "columns", &columns)?;
+            self.scope.post_message_with_transfer(&envelope, &buffers)
+        });
+        if let Err(error) = posted {
+            self.undelivered(&error);
+        }
+    }
+
+    fn answer(&self, answer: &Answer) {
+        if let Err(error) = super::envelope(answer).and_then(|envelope| self.scope.post_message(&envelope)) {
+            self.undelivered(&error);
+        }
+    }
+
+    fn undelivered(&self, error: &JsValue) {
+        let text = format!("an answer could not be sent: {error:?}");
+        host::log(&text);
+        last_words(&self.scope, text);
+    }
+}
+
+enum Done {
+    Record(Record),
+    Sheet(Box<millpond::sheet::Sheet>),
+}
+
+/// Files as a list to stand beside an envelope.
+pub(crate) fn file_list(files: &[File]) -> Array {
+    files.iter().collect()
+}

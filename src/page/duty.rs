@@ -1,0 +1,246 @@
+//! Station 2, the duty: islanded or connected, what storage is asked, net power, its episodes.
+
+use leptos::prelude::*;
+
+use millpond::case::{Connection, DutyCase, Positive};
+use millpond::sheet::EpisodeRow;
+use millpond::units::asked::Asked;
+use millpond::units::people;
+
+use super::desk::Desk;
+use super::drawing::Which;
+use super::field::{Field, answer, choice, input, set, tick};
+use super::figures::{all_figures, figures};
+use super::fold::{fold, method, methods_from};
+use super::picture::{picture, show_window};
+use super::station::{self, PLACES};
+
+/// What can be asked, as a person says it.
+#[derive(Clone, Copy, PartialEq, Eq)]
+enum Kind {
+    Balance,
+    Limits,
+    Given,
+}
+
+const IMPORT: Field = Field {
+    asked: Asked::Power,
+    name: "Import limit",
+    size: 9,
+    get: |case| match &case.duty {
+        DutyCase::Limits { import_limit_kw, .. } => *import_limit_kw,
+        _ => None,
+    },
+    set: |case, value| {
+        if let DutyCase::Limits { import_limit_kw, .. } = limits(&mut case.duty) {
+            *import_limit_kw = value;
+        }
+    },
+};
+
+const EXPORT: Field = Field {
+    asked: Asked::Power,
+    name: "Export limit",
+    size: 9,
+    get: |case| match &case.duty {
+        DutyCase::Limits { export_limit_kw, .. } => *export_limit_kw,
+        _ => None,
+    },
+    set: |case, value| {
+        if let DutyCase::Limits { export_limit_kw, .. } = limits(&mut case.duty) {
+            *export_limit_kw = value;
+        }
+    },
+};
+
+/// The duty as one that holds limits, made one if it was another.
+pub(crate) fn limits(duty: &mut DutyCase) -> &mut DutyCase {
+    if !matches!(duty, DutyCase::Limits { .. }) {
+        *duty = DutyCase::Limits {
+            import_limit_kw: None,
+            export_limit_kw: None,
+            recharge_from_grid: true,
+            discharge_to_grid: false,
+        };
+    }
+    duty
+}
+
+/// The station.
+pub(crate) fn station(desk: Desk) -> impl IntoView {
+    let place = PLACES[1];
+    let has_sheet = Memo::new(move |_| desk.sheet.with(Option::is_some));
+    station::station(desk, place, view! {
+        {station::lacking(desk, "Needs a record: the duty is read off its supply and demand.")}
+        {figures(desk, place.of, 0)}
+        {move || has_sheet.get().then(|| view! {
+            <div class="work">{question(desk)}{terms(desk)}</div>
+            <div class="pair">{picture(desk, Which::Net)}{figures(desk, place.of, 1)}</div>
+            <div class="work">
+                {episodes(desk)}
+                {method(desk, place.of, 0)}
+                {methods_from(desk, place.of, 1)}
+                {all_figures(desk, &["duty"])}
+            </div>
+        })}
+    })
+}
+
+fn question(desk: Desk) -> impl IntoView {
+    let connection = move || desk.of(|sheet| sheet.result.duty.as_ref().map(|duty| duty.connection));
+    let put = move |connection| set(desk, |case| case.site.connection = Some(connection));
+    let guessed = Memo::new(move |_| desk.case.with(|case| case.site.connection.is_none()));
+    let note = move || desk.of(|sheet| sheet.duty.notes.join(" "));
+    view! {
+        <fieldset class="ask">
+            <legend>"Is the site islanded or connected to a grid?"</legend>
+            {answer("connection", "islanded", move || connection() == Some(Connection::Islanded), move || put(Connection::Islanded))}
+            {answer("connection", "connected", move || connection() == Some(Connection::Connected), move || put(Connection::Connected))}
+            {move || (!guessed.get()).then(|| view! {
+                <button class="quiet" on:click=move |_| set(desk, |case| case.site.connection = None)>"Guess again"</button>
+            })}
+            <span class="note">{note}</span>
+        </fieldset>
+    }
+}
+
+fn terms(desk: Desk) -> impl IntoView {
+    let kind = Memo::new(move |_| {
+        let in_force = desk.of(|sheet| sheet.terms.kind.clone());
+        desk.case.with(|case| match &case.duty {
+            DutyCase::Limits { .. } => Kind::Limits,
+            DutyCase::Given { .. } => Kind::Given,
+            DutyCase::Guess {} if in_force == "limits" => Kind::Limits,
+            _ => Kind::Balance,
+        })
+    });
+    let columns = Memo::new(move |_| desk.of(|sheet| {
+        let columns = sheet.reading.files.iter().flat_map(|file| &file.columns);
+        columns.filter(|column| !column.unit.is_empty()).map(|column| column.header.clone()).collect::<Vec<_>>()
+    }));
+    let put = move |kind: Kind| {
+        let column = columns.with_untracked(|columns| columns.first().cloned());
+        set(desk, |case| {
+            case.duty = match (kind, column) {
+                (Kind::Given, Some(column)) => DutyCase::Given { column, positive: Positive::Charge },
+                (Kind::Limits, _) => limits(&mut DutyCase::Guess {}).clone(),
+                _ => DutyCase::Balance {},
+            }
+        });
+    };
+    let kinds = move || {
+        let mut kinds = vec![
+            (Kind::Balance, "serve deficits from surplus".to_owned()),
+            (Kind::Limits, "hold limits at the grid connection".to_owned()),
+        ];
+        if columns.with(|columns| !columns.is_empty()) {
+            kinds.push((Kind::Given, "carry the power of a column".to_owned()));
+        }
+        kinds
+    };
+    view! {
+        <ol class="terms">
+            <li>"Storage is asked to "{move || choice("What storage is asked", kinds(), move || kind.get(), put)}"."</li>
+            {move || match kind.get() {
+                Kind::Balance => ().into_any(),
+                Kind::Limits => limit_terms(desk).into_any(),
+                Kind::Given => given_terms(desk, columns).into_any(),
+            }}
+        </ol>
+    }
+}
+
+fn limit_terms(desk: Desk) -> impl IntoView {
+    let in_force = move |pick: fn(&millpond::sheet::Terms) -> Option<f64>| {
+        move || match desk.of(|sheet| pick(&sheet.terms)) {
+            Some(kw) => people::power(kw).to_string(),
+            None => "no limit".to_owned(),
+        }
+    };
+    let flag = move |pick: fn(&DutyCase) -> Option<bool>, other: bool| move || desk.case.with(|case| pick(&case.duty).unwrap_or(other));
+    view! {
+        <li>"Keep import at or below "{input(desk, IMPORT, in_force(|terms| terms.import_limit_kw))}"."</li>
+        <li>"Keep export at or below "{input(desk, EXPORT, in_force(|terms| terms.export_limit_kw))}"."</li>
+        <li>
+            {tick("recharge from the grid, below the import limit", flag(|duty| match duty {
+                DutyCase::Limits { recharge_from_grid, .. } => Some(*recharge_from_grid),
+                _ => None,
+            }, true), move |yes| set(desk, |case| {
+                if let DutyCase::Limits { recharge_from_grid, .. } = limits(&mut case.duty) {
+                    *recharge_from_grid = yes;
+                }
+            }))}
+        </li>
+        <li>
+            {tick("discharge to the grid, below the export limit", flag(|duty| match duty {
+                DutyCase::Limits { discharge_to_grid, .. } => Some(*discharge_to_grid),
+                _ => None,
+            }, false), move |yes| set(desk, |case| {
+                if let DutyCase::Limits { discharge_to_grid, .. } = limits(&mut case.duty) {
+                    *discharge_to_grid = yes;
+                }
+            }))}
+        </li>
+    }
+}
+
+fn given_terms(desk: Desk, columns: Memo<Vec<String>>) -> impl IntoView {
+    let at = move || {
+        let named = desk.case.with(|case| match &case.duty {
+            DutyCase::Given { column, .. } => column.clone(),
+            _ => String::new(),
+        });
+        columns.with(|columns| columns.iter().position(|column| *column == named).unwrap_or(0))
+    };
+    let names = move || columns.get().into_iter().enumerate().collect::<Vec<_>>();
+    let sign = move || desk.case.with(|case| match &case.duty {
+        DutyCase::Given { positive, .. } => *positive,
+        _ => Positive::Charge,
+    });
+    view! {
+        <li>
+            "Carry "
+            {move || choice("Column to carry", names(), at, move |at| set(desk, |case| {
+                let name = columns.with_untracked(|columns| columns.get(at).cloned());
+                if let (DutyCase::Given { column, .. }, Some(name)) = (&mut case.duty, name) {
+                    *column = name;
+                }
+            }))}
+            ", where a positive value "
+            {choice("A positive value", vec![(Positive::Charge, "charges".to_owned()), (Positive::Discharge, "discharges".to_owned())],
+                sign, move |sign| set(desk, |case| {
+                    if let DutyCase::Given { positive, .. } = &mut case.duty {
+                        *positive = sign;
+                    }
+                }))}
+            " the store."
+        </li>
+    }
+}
+
+fn episodes(desk: Desk) -> impl IntoView {
+    let rows = Memo::new(move |_| desk.of(|sheet| sheet.episodes.clone()));
+    let count = move || format!("the {} largest, by energy", rows.with(Vec::len));
+    fold("Episodes", count, true, move || view! {
+        <div class="scroll" tabindex="0" role="region" aria-label="Episodes"><table>
+            <thead><tr>
+                <th>"Began"</th><th>"Ended"</th><th class="n">"Hours"</th><th class="n">"Energy, kWh"</th><th class="n">"Peak, kW"</th>
+            </tr></thead>
+            <tbody>{move || rows.get().into_iter().map(|row| episode(desk, row)).collect_view()}</tbody>
+        </table></div>
+    })
+}
+
+fn episode(desk: Desk, row: EpisodeRow) -> impl IntoView {
+    let EpisodeRow { began, ended, from_us, to_us, hours, energy_kwh, peak_kw } = row;
+    let name = format!("Show from {began} in the picture");
+    view! {
+        <tr>
+            <td><button class="quiet" aria-label=name on:click=move |_| show_window(desk, from_us, to_us)>{began}</button></td>
+            <td>{ended}</td>
+            <td class="n">{people::plain(hours, 2)}</td>
+            <td class="n">{people::significant(energy_kwh, 4)}</td>
+            <td class="n">{people::significant(peak_kw, 3)}</td>
+        </tr>
+    }
+}

@@ -1,0 +1,106 @@
+//! What is wrong or doubtful in the record: kind, words, rows, whether figures change, and the remedy as a choice.
+
+use leptos::prelude::*;
+
+use millpond::case::{GapRemedy, RepeatRemedy};
+use millpond::record::{Finding, FindingKind};
+use millpond::units::people;
+
+use super::desk::Desk;
+use super::field::{choice, set};
+
+const GAPS: [(GapRemedy, &str); 5] = [
+    (GapRemedy::LeaveOut, "left out"),
+    (GapRemedy::Hold, "last value held"),
+    (GapRemedy::Line, "joined by a line"),
+    (GapRemedy::Zero, "taken as zero"),
+    (GapRemedy::NeighbourDays, "as on neighbouring days"),
+];
+
+const REPEATS: [(RepeatRemedy, &str); 3] =
+    [(RepeatRemedy::First, "first kept"), (RepeatRemedy::Last, "last kept"), (RepeatRemedy::Mean, "mean taken")];
+
+/// The list of findings.
+pub(crate) fn list(desk: Desk) -> impl IntoView {
+    // The rows are made anew only when their kinds change; words and choices inside follow on their own.
+    let kinds = Memo::new(move |_| {
+        findings(desk, |all| all.iter().map(|finding| (finding.kind, finding.changes_figures)).collect::<Vec<_>>())
+    });
+    view! {
+        <h3>"Findings"</h3>
+        {move || {
+            let kinds = kinds.get();
+            if kinds.is_empty() {
+                return view! { <p class="empty">"Nothing wrong or doubtful was found in the record."</p> }.into_any();
+            }
+            let rows = kinds.into_iter().enumerate().map(|(i, (kind, changes))| row(desk, i, kind, changes)).collect_view();
+            view! { <ul class="findings">{rows}</ul> }.into_any()
+        }}
+    }
+}
+
+fn findings<T: Default>(desk: Desk, pick: impl FnOnce(&[Finding]) -> T) -> T {
+    desk.of(|sheet| sheet.result.record.as_ref().map(|record| pick(&record.findings)).unwrap_or_default())
+}
+
+fn row(desk: Desk, at: usize, kind: FindingKind, changes: bool) -> impl IntoView {
+    let finding = Memo::new(move |_| findings(desk, |all| all.get(at).cloned()));
+    let text = move || finding.with(|finding| finding.as_ref().map(|finding| finding.text.clone()));
+    let rows = move || finding.with(|finding| finding.as_ref().map(first_row).unwrap_or_default());
+    let remedy = match kind {
+        FindingKind::Gap => choice(
+            "Remedy for gaps",
+            GAPS.map(|(remedy, words)| (remedy, words.to_owned())).to_vec(),
+            move || desk.case.with(|case| case.record.remedies.gap),
+            move |remedy| set(desk, |case| case.record.remedies.gap = remedy),
+        )
+        .into_any(),
+        FindingKind::Repeat | FindingKind::Conflict => choice(
+            "Remedy for repeats",
+            REPEATS.map(|(remedy, words)| (remedy, words.to_owned())).to_vec(),
+            move || desk.case.with(|case| case.record.remedies.repeat),
+            move |remedy| set(desk, |case| case.record.remedies.repeat = remedy),
+        )
+        .into_any(),
+        _ => view! { {move || finding.with(|finding| finding.as_ref().map(|finding| finding.remedy.clone()))} }.into_any(),
+    };
+    view! {
+        <li class=if changes { "changes" } else { "remark" }>
+            <span class="kind">{words(kind)}</span>
+            <span class="what">{text}<span class="rows">{rows}</span></span>
+            <span class="sev">{if changes { "changes figures" } else { "note" }}</span>
+            <span class="rem">{remedy}</span>
+        </li>
+    }
+}
+
+fn first_row(finding: &Finding) -> String {
+    let Some(row) = finding.first_row else { return String::new() };
+    let file = if finding.file.is_empty() { String::new() } else { format!(" of {}", finding.file) };
+    format!(" (first at row {}{file})", people::whole(row as f64))
+}
+
+const fn words(kind: FindingKind) -> &'static str {
+    match kind {
+        FindingKind::Gap => "Gap",
+        FindingKind::Repeat => "Repeat",
+        FindingKind::Conflict => "Conflict",
+        FindingKind::Disorder => "Disorder",
+        FindingKind::Text => "Text",
+        FindingKind::Stuck => "Stuck",
+        FindingKind::Outlier => "Outlier",
+        FindingKind::Negative => "Negative",
+        FindingKind::NightSupply => "Night supply",
+        FindingKind::Clipped => "Clipped",
+        FindingKind::Jump => "Jump",
+        FindingKind::MixedSteps => "Mixed steps",
+        FindingKind::ClockChange => "Clock change",
+        FindingKind::UnitDoubt => "Unit",
+        FindingKind::SignDoubt => "Sign",
+        FindingKind::StampDoubt => "Stamp",
+        FindingKind::Filled => "Filled",
+        FindingKind::Ignored => "Not used",
+        FindingKind::TypicalYear => "Typical year",
+        FindingKind::Netted => "Netted",
+    }
+}

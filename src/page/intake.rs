@@ -1,0 +1,174 @@
+//! Where files come in: chosen, dropped anywhere on the page, or a demo site of the page's own.
+
+use gloo::events::{EventListener, EventListenerOptions};
+use js_sys::{Array, Uint8Array};
+use leptos::prelude::*;
+use leptos::task::spawn_local;
+use wasm_bindgen::{JsCast, JsValue};
+use wasm_bindgen_futures::JsFuture;
+use web_sys::{DragEvent, File, FileList, HtmlInputElement, Response};
+
+use millpond::case::Case;
+use millpond::fault::Fault;
+
+use super::desk::Desk;
+use super::screen;
+
+/// The demo sites that come with the page.
+const SITES: &str = include_str!("../../demo-profiles/sites.json");
+
+#[derive(Clone, serde::Deserialize)]
+struct Demo {
+    name: String,
+    title: String,
+    text: String,
+    file: String,
+}
+
+/// Where files are taken, with the demo sites below.
+pub(crate) fn place(desk: Desk) -> impl IntoView {
+    let chosen = move |event: web_sys::Event| {
+        if let Some(input) = event.target().and_then(|target| target.dyn_into::<HtmlInputElement>().ok()) {
+            take(desk, files(input.files()));
+            // So that the same file, corrected meanwhile, can be chosen again.
+            input.set_value("");
+        }
+    };
+    let node = NodeRef::<leptos::html::Input>::new();
+    let choose = move |_| {
+        if let Some(input) = node.get_untracked() {
+            input.click();
+        }
+    };
+    let open_at_first = desk.files.with_untracked(Vec::is_empty);
+    view! {
+        <div class="drop">
+            <span>"Drop files anywhere on this page, or"</span>
+            <input
+                type="file" multiple data-role="files" id="files" tabindex="-1" aria-label="Meter files"
+                node_ref=node on:change=chosen
+            />
+            <button class:first=move || desk.files.with(Vec::is_empty) on:click=choose>"Choose files"</button>
+            <span class="note">"They are read here, in the browser, and go nowhere."</span>
+        </div>
+        <details class="fold" open=open_at_first>
+            <summary>"Demo sites"<span class="count">"invented, with the faults that real files have"</span></summary>
+            <div><ul class="demos">{demos().into_iter().map(move |demo| entry(desk, demo)).collect_view()}</ul></div>
+        </details>
+    }
+}
+
+fn entry(desk: Desk, demo: Demo) -> impl IntoView {
+    let Demo { name, title, text, file } = demo;
+    view! {
+        <li>
+            <button class="quiet" data-role="demo" data-demo=name on:click=move |_| open_demo(desk, file.clone())>{title}</button>
+            <span class="note">{text}</span>
+        </li>
+    }
+}
+
+/// Listens for files dropped anywhere, and for a demo site named after the hash.
+pub(crate) fn listen(desk: Desk) {
+    let options = EventListenerOptions::enable_prevent_default();
+    let root = document();
+    for name in ["dragenter", "dragover", "dragleave", "drop"] {
+        EventListener::new_with_options(&root, name, options, move |event| {
+            let Some(drag) = event.dyn_ref::<DragEvent>() else { return };
+            let Some(transfer) = drag.data_transfer() else { return };
+            // Text dragged within the page is none of our business.
+            if !transfer.types().iter().any(|kind| kind.as_string().as_deref() == Some("Files")) {
+                return;
+            }
+            drag.prevent_default();
+            if let Some(root) = screen::root() {
+                let over = matches!(drag.type_().as_str(), "dragenter" | "dragover");
+                let _ = root.class_list().toggle_with_force("dropping", over);
+            }
+            if drag.type_() == "drop" {
+                take(desk, files(transfer.files()));
+            }
+        })
+        .forget();
+    }
+    let by_hash = move || {
+        let hash = window().location().hash().unwrap_or_default();
+        if let Some(name) = hash.strip_prefix("#demo=")
+            && let Some(demo) = demos().into_iter().find(|demo| demo.name == name)
+        {
+            open_demo(desk, demo.file);
+        }
+    };
+    by_hash();
+    EventListener::new(&window(), "hashchange", move |_| by_hash()).forget();
+}
+
+fn demos() -> Vec<Demo> {
+    serde_json::from_str(SITES).unwrap_or_default()
+}
+
+fn files(list: Option<FileList>) -> Vec<File> {
+    list.map(|list| (0..list.length()).filter_map(|i| list.get(i)).collect()).unwrap_or_default()
+}
+
+/// Opens meter files; a case file among them is taken as the case.
+fn take(desk: Desk, files: Vec<File>) {
+    let (cases, meters): (Vec<File>, Vec<File>) =
+        files.into_iter().partition(|file| file.name().to_lowercase().ends_with(".json"));
+    if let Some(case) = cases.into_iter().next_back() {
+        screen::settled(false);
+        spawn_local(async move {
+            match read_case(&case).await {
+                Ok(case) if meters.is_empty() => {
+                    if let Err(fault) = desk.edit(move |held| *held = case) {
+                        desk.fail(fault);
+                    }
+                    desk.settle_soon();
+                }
+                Ok(case) => desk.open_with(meters, case),
+                Err(fault) => desk.fail(fault),
+            }
+        });
+        return;
+    }
+    desk.open(meters);
+}
+
+async fn read_case(file: &File) -> Result<Case, Fault> {
+    let name = file.name();
+    let text = JsFuture::from(file.text()).await.ok().and_then(|text| text.as_string()).ok_or_else(|| {
+        Fault::new("the case file cannot be read", name.as_str(), "Choose it again.")
+    })?;
+    Case::from_json(&text).map_err(|fault| Fault { place: fault.place.replacen("case file", &name, 1), ..fault })
+}
+
+fn open_demo(desk: Desk, name: String) {
+    screen::settled(false);
+    spawn_local(async move {
+        match fetch(&name).await {
+            Ok(file) => {
+                // A demo site is a fresh start: no case of another site is carried over to it.
+                desk.open_with(vec![file], Case::default());
+            }
+            Err(error) => desk.fail(Fault::new(
+                "the demo site could not be fetched",
+                format!("demos/{name}: {}", words(&error)),
+                "Check the connection, then try again; files of your own can be read without one.",
+            )),
+        }
+    });
+}
+
+async fn fetch(name: &str) -> Result<File, JsValue> {
+    let answer: Response = JsFuture::from(window().fetch_with_str(&format!("demos/{name}"))).await?.dyn_into()?;
+    if !answer.ok() {
+        return Err(format!("the server answered {}", answer.status()).into());
+    }
+    let bytes = JsFuture::from(answer.array_buffer()?).await?;
+    File::new_with_u8_array_sequence(&Array::of1(&Uint8Array::new(&bytes)), name)
+}
+
+fn words(error: &JsValue) -> String {
+    let message = js_sys::Reflect::get(error, &"message".into()).ok().and_then(|text| text.as_string());
+    message.or_else(|| error.as_string()).unwrap_or_else(|| "no reason given".to_owned())
+}

@@ -1,0 +1,224 @@
+//! Station 3, the requirement: coverage, the deciding week, the cumulative curve, criteria and bands.
+
+use leptos::prelude::*;
+
+use millpond::result::{Band, Bound, Confidence, CoverageRow, Criterion, Origin};
+use millpond::units::asked::Asked;
+use millpond::units::people;
+
+use super::desk::Desk;
+use super::drawing::Which;
+use super::field::{Field, input};
+use super::figures::{all_figures, figures};
+use super::fold::{fold, method, methods_from};
+use super::picture::picture;
+use super::station::{self, PLACES};
+
+const SERVED: Field = Field {
+    asked: Asked::Share,
+    name: "Share of the deficit served",
+    size: 6,
+    get: |case| case.requirement.served_share,
+    set: |case, value| case.requirement.served_share = value,
+};
+
+const POWER: Field = Field {
+    asked: Asked::Power,
+    name: "Greatest power",
+    size: 8,
+    get: |case| case.requirement.served_power_kw,
+    set: |case, value| case.requirement.served_power_kw = value,
+};
+
+const CHARGE: Field = Field {
+    asked: Asked::Share,
+    name: "Charge efficiency",
+    size: 6,
+    get: |case| Some(case.requirement.charge_efficiency),
+    set: |case, value| case.requirement.charge_efficiency = value.unwrap_or(1.0),
+};
+
+const DISCHARGE: Field = Field {
+    asked: Asked::Share,
+    name: "Discharge efficiency",
+    size: 6,
+    get: |case| Some(case.requirement.discharge_efficiency),
+    set: |case, value| case.requirement.discharge_efficiency = value.unwrap_or(1.0),
+};
+
+const DEPTH: Field = Field {
+    asked: Asked::Share,
+    name: "Usable depth",
+    size: 6,
+    get: |case| Some(case.requirement.depth),
+    set: |case, value| case.requirement.depth = value.unwrap_or(0.9),
+};
+
+const END: Field = Field {
+    asked: Asked::Share,
+    name: "Capacity left at end of life",
+    size: 6,
+    get: |case| Some(case.requirement.end_of_life),
+    set: |case, value| case.requirement.end_of_life = value.unwrap_or(0.8),
+};
+
+const MARGIN: Field = Field {
+    asked: Asked::Share,
+    name: "Margin on nameplate energy",
+    size: 6,
+    get: |case| Some(case.requirement.margin),
+    set: |case, value| case.requirement.margin = value.unwrap_or(0.0),
+};
+
+/// The station.
+pub(crate) fn station(desk: Desk) -> impl IntoView {
+    let place = PLACES[2];
+    let has_sheet = Memo::new(move |_| desk.sheet.with(Option::is_some));
+    let has_week = Memo::new(move |_| desk.of(|sheet| sheet.pictures.week.is_some()));
+    station::station(desk, place, view! {
+        {station::lacking(desk, "Needs a duty: from it follow energies, powers, ramps, cycling and holding time.")}
+        {figures(desk, place.of, 0)}
+        {move || has_sheet.get().then(|| view! {
+            <div class="work">{terms(desk)}</div>
+            <div class="pair">{picture(desk, Which::Coverage)}{figures(desk, place.of, 1)}</div>
+            <div class="work">{method(desk, place.of, 0)}</div>
+            {move || has_week.get().then(|| view! {
+                <div class="pair">{picture(desk, Which::Week)}{figures(desk, place.of, 2)}</div>
+                <div class="work">{method(desk, place.of, 1)}</div>
+            })}
+            <div class="pair">{picture(desk, Which::Cumulative)}{figures(desk, place.of, 3)}</div>
+            <div class="work">{method(desk, place.of, 2)}</div>
+            <div class="full">
+                {criteria(desk)}
+                {bands(desk)}
+                {coverage(desk)}
+                {methods_from(desk, place.of, 3)}
+                {all_figures(desk, &["requirement", "simulations"])}
+            </div>
+        })}
+    })
+}
+
+fn terms(desk: Desk) -> impl IntoView {
+    let limits = Memo::new(move |_| desk.of(|sheet| sheet.terms.kind == "limits"));
+    let served = move || desk.of(|sheet| people::percent(sheet.terms.served_share).to_string());
+    let power = move || desk.of(|sheet| people::power(sheet.terms.power_kw).to_string());
+    let word = move || if desk.of(|sheet| sheet.heads.connection == "connected") { "the import" } else { "the deficit" };
+    let none = String::new;
+    view! {
+        <ol class="terms">
+            {move || (!limits.get()).then(|| view! {
+                <li>"Serve "{input(desk, SERVED, served)}" of "{word}", with at most "{input(desk, POWER, power)}" both ways."</li>
+            })}
+            <li>
+                "Of what is charged "{input(desk, CHARGE, none)}" reaches the store; of what leaves it "
+                {input(desk, DISCHARGE, none)}" reaches the connection point."
+            </li>
+            <li>
+                "Of nameplate "{input(desk, DEPTH, none)}" is used and "{input(desk, END, none)}
+                " is left at end of life; a margin of "{input(desk, MARGIN, none)}" is added."
+            </li>
+        </ol>
+    }
+}
+
+fn criteria(desk: Desk) -> impl IntoView {
+    let rows = Memo::new(move |_| desk.of(|sheet| {
+        sheet.result.requirement.as_ref().map(|requirement| requirement.criteria.clone()).unwrap_or_default()
+    }));
+    view! {
+        <h3>"Criteria"</h3>
+        <div class="scroll" tabindex="0" role="region" aria-label="Criteria"><table class="criteria">
+            <thead><tr>
+                <th>"Quantity"</th><th>"Bound"</th><th class="n">"Value"</th><th>"Unit"</th><th>"Origin"</th><th>"From"</th><th>"Sure"</th>
+            </tr></thead>
+            <tbody>{move || rows.get().into_iter().map(criterion).collect_view()}</tbody>
+        </table></div>
+    }
+}
+
+fn criterion(row: Criterion) -> impl IntoView {
+    let origin = match row.origin {
+        Origin::Computed => "computed",
+        Origin::Asked => "asked",
+    };
+    let sure = match row.confidence {
+        Confidence::Measured => "measured",
+        Confidence::BoundedBySampling => "bounded by sampling",
+        Confidence::Assumed => "assumed",
+    };
+    view! {
+        <tr class=origin>
+            <th scope="row">{quantity(&row.quantity)}</th>
+            <td class="bd">{match row.bound { Bound::AtLeast => "at least", Bound::AtMost => "at most" }}</td>
+            <td class="n">{people::significant(row.value, 3)}</td>
+            <td>{row.unit}</td>
+            <td class="or">{origin}</td>
+            <td class="fr">{row.from}</td>
+            <td class="su">{sure}</td>
+        </tr>
+    }
+}
+
+/// A quantity's word of the result format, as a person reads it.
+fn quantity(word: &str) -> String {
+    let mut words = word.replace('_', " ");
+    if word == "round_trip_efficiency" {
+        words = "round-trip efficiency".to_owned();
+    }
+    let mut letters = words.chars();
+    letters.next().map(|first| first.to_uppercase().chain(letters).collect()).unwrap_or_default()
+}
+
+fn bands(desk: Desk) -> impl IntoView {
+    let rows = Memo::new(move |_| desk.of(|sheet| {
+        sheet.result.requirement.as_ref().map(|requirement| requirement.bands.clone()).unwrap_or_default()
+    }));
+    fold("Time-scale bands", move || format!("{} bands, which add up to the net power", rows.with(Vec::len)), false, move || view! {
+        <div class="scroll" tabindex="0" role="region" aria-label="Time-scale bands"><table>
+            <thead><tr>
+                <th>"Changes"</th><th class="n">"Charge, kW"</th><th class="n">"Discharge, kW"</th><th class="n">"Energy, kWh"</th>
+            </tr></thead>
+            <tbody>{move || rows.get().into_iter().map(band).collect_view()}</tbody>
+        </table></div>
+    })
+}
+
+fn band(row: Band) -> impl IntoView {
+    let span = match (row.faster_than_s, row.slower_than_s) {
+        (Some(fast), Some(slow)) => format!("within {}, over {}", people::duration(fast), people::duration(slow)),
+        (Some(fast), None) => format!("within {}", people::duration(fast)),
+        (None, Some(slow)) => format!("over {} and more", people::duration(slow)),
+        (None, None) => "all".to_owned(),
+    };
+    view! {
+        <tr>
+            <th scope="row">{span}</th>
+            <td class="n">{people::significant(row.charge_kw, 3)}</td>
+            <td class="n">{people::significant(row.discharge_kw, 3)}</td>
+            <td class="n">{people::significant(row.energy_kwh, 4)}</td>
+        </tr>
+    }
+}
+
+fn coverage(desk: Desk) -> impl IntoView {
+    let rows = Memo::new(move |_| desk.of(|sheet| {
+        sheet.result.requirement.as_ref().map(|requirement| requirement.coverage.clone()).unwrap_or_default()
+    }));
+    fold("Least capacity for a power and an unserved share", String::new, false, move || view! {
+        <div class="scroll" tabindex="0" role="region" aria-label="Least capacity"><table>
+            <thead><tr><th>"Power both ways"</th><th class="n">"Unserved, %"</th><th class="n">"Capacity inside, kWh"</th></tr></thead>
+            <tbody>{move || rows.get().into_iter().map(coverage_row).collect_view()}</tbody>
+        </table></div>
+    })
+}
+
+fn coverage_row(row: CoverageRow) -> impl IntoView {
+    view! {
+        <tr>
+            <th scope="row">{row.power_kw.map_or_else(|| "no limit".to_owned(), |kw| people::power(kw).to_string())}</th>
+            <td class="n">{people::percent(row.unserved_share).number}</td>
+            <td class="n">{row.capacity_kwh.map_or_else(|| "cannot be reached".to_owned(), |kwh| people::significant(kwh, 4))}</td>
+        </tr>
+    }
+}
