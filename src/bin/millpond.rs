@@ -1,2 +1,5 @@
-//! The terminal program.
-fn main() {}
+//! The terminal program; see [`millpond::terminal`].
+
+fn main() -> std::process::ExitCode {
+    millpond::terminal::main()
+}

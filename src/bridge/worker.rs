@@ -13,6 +13,7 @@ use millpond::fault::{Fault, Result};
 use millpond::job::Job;
 use millpond::record::{self, Record, Source};
 use millpond::sheet::{Lay, View};
+use millpond::technology::Catalogue;
 
 use super::blob::BlobSource;
 use super::{Answer, Progress, Request, host};
@@ -40,6 +41,7 @@ pub(crate) fn serve(scope: DedicatedWorkerGlobalScope) {
         view: View::default(),
         revision: 0,
         record: None,
+        catalogue: None,
         work: None,
         budget: BUDGETS.1,
         told_ms: 0.0,
@@ -74,6 +76,7 @@ struct Worker {
     revision: u32,
     /// The record, and the terms it was read by.
     record: Option<(Rc<Record>, Terms)>,
+    catalogue: Option<Rc<Catalogue>>,
     work: Option<Work>,
     budget: usize,
     told_ms: f64,
@@ -133,9 +136,10 @@ impl Worker {
         }
         let was_idle = self.work.is_none();
         let terms = Terms::of(&self.case);
-        let work = match &self.record {
-            Some((record, read_by)) if *read_by == terms => Ok(self.lay(Rc::clone(record))),
-            _ => self.read(&terms),
+        let kept = self.record.as_ref().filter(|(_, read_by)| *read_by == terms).map(|(record, _)| Rc::clone(record));
+        let work = match kept {
+            Some(record) => self.lay(record),
+            None => self.read(&terms),
         };
         match work {
             Ok(work) => {
@@ -157,8 +161,13 @@ impl Worker {
         Ok(Work::Reading(record::read(&self.site, sources, &terms.case, &terms.named)?))
     }
 
-    fn lay(&self, record: Rc<Record>) -> Work {
-        Work::Laying(Box::new(Lay::new(record, self.case.clone(), self.view.clone())))
+    fn lay(&mut self, record: Rc<Record>) -> Result<Work> {
+        // Parsed once, at the first need: every later sheet is laid from the same one.
+        let catalogue = match &self.catalogue {
+            Some(catalogue) => Rc::clone(catalogue),
+            None => Rc::clone(self.catalogue.insert(Rc::new(Catalogue::published()?))),
+        };
+        Ok(Work::Laying(Box::new(Lay::new(record, self.case.clone(), self.view.clone(), catalogue))))
     }
 
     /// One slice.
@@ -187,8 +196,13 @@ impl Worker {
             Ok(Some(Done::Record(record))) => {
                 let record = Rc::new(record);
                 self.record = Some((Rc::clone(&record), Terms::of(&self.case)));
-                self.work = Some(self.lay(record));
-                self.go_on();
+                match self.lay(record) {
+                    Ok(work) => {
+                        self.work = Some(work);
+                        self.go_on();
+                    }
+                    Err(fault) => self.fail(fault),
+                }
             }
             Ok(Some(Done::Sheet(sheet))) => {
                 self.work = None;

@@ -1,5 +1,7 @@
 //! What a store serves against the energy that it delivers, for up to three powers, with the points that matter named.
 
+use std::fmt::Write as _;
+
 use super::NARROW;
 use super::data::{Coverage, CoverageCurve, CoverageMark, Measure};
 use super::frame::{Frame, Hits, Spot};
@@ -8,7 +10,7 @@ use super::palette::Palette;
 use super::pen::{Ink, Pen, Surface, Text, roomy};
 use super::shape::Point;
 use super::ticks::{self, Ticks};
-use super::words::{at, energy_unit, extent};
+use super::words::{at, energy_unit, extent, in_unit, power_unit};
 use crate::fault::Result;
 use crate::units::people;
 
@@ -29,16 +31,19 @@ pub fn sentence(data: &Coverage) -> String {
     match data.curves.len() {
         0 => return text + ": no data.",
         1 => text.push_str(" at one power"),
-        n => text.push_str(&format!(" at {n} powers")),
+        n => {
+            let _ = write!(text, " at {n} powers");
+        }
     }
     for (i, mark) in data.marks.iter().enumerate() {
         text.push_str(if i == 0 { ": " } else { "; " });
-        text.push_str(&format!(
+        let _ = write!(
+            text,
             "{} {} at {}",
             mark.name,
             value_text(data.measure, mark.value),
             people::energy(mark.energy_kwh)
-        ));
+        );
     }
     text + "."
 }
@@ -77,7 +82,7 @@ pub fn coverage<S: Surface>(
     let names =
         data.curves.iter().map(|c| Text::label(palette.ink).bold().width(&power_text(c))).fold(0.0, f64::max);
     let right = if narrow { 10.0 } else { names + 18.0 };
-    let plot = (if narrow { 36.0 } else { 40.0 }, TOP, pen.width - right, TOP + plot_height(size.0));
+    let plot = (44.0, TOP, pen.width - right, TOP + plot_height(size.0));
     let frame = axes(&mut pen, plot, data);
     let mut placer =
         Placer::new(Patch { x0: plot.0 + 2.0, y0: plot.1 - 18.0, x1: pen.width, y1: plot.3 - 4.0 });
@@ -106,30 +111,32 @@ pub fn coverage<S: Surface>(
 fn axes<S: Surface>(pen: &mut Pen<'_, S>, plot: (f64, f64, f64, f64), data: &Coverage) -> Frame {
     let share = data.measure != Measure::HeldImportKw;
     let found = extent(data.curves.iter().map(|c| &c.value));
+    // Shares are their own unit.
+    let (kw, power) = if share { (1.0, "") } else { power_unit(found.map_or(1.0, |e| e.1)) };
     let ((low, high), upright) = if data.measure == Measure::ServedShare {
         ((0.0, 1.0), ticks::linear(0.0, 1.0, 5))
     } else {
         let (low, high) = found.unwrap_or((0.0, 1.0));
         let zero = low < 0.4 * high;
-        let rounded = ticks::rounded((low, high), zero, 5);
+        let rounded = ticks::rounded(in_unit((low, high), kw), zero, 5);
         if share { ((rounded.0.0.max(0.0), rounded.0.1.min(1.0)), rounded.1) } else { rounded }
     };
     let most = extent(data.curves.iter().map(|c| &c.energy_kwh)).map_or(1.0, |e| e.1);
     let marked = data.marks.iter().map(|m| m.energy_kwh).filter(|e| e.is_finite()).fold(0.0, f64::max);
     let most = if most.max(marked) > 0.0 { most.max(marked) } else { 1.0 };
-    let frame = Frame::new(plot, (0.0, most), (low, high));
+    let frame = Frame::new(plot, (0.0, most), (low * kw, high * kw));
     let (x0, _, x1, y1) = plot;
     let tick = Text::tick(pen.palette);
     let percent = Ticks { step: upright.step * 100.0, values: Vec::new() };
     for &v in &upright.values {
-        let y = frame.y.px(v);
+        let y = frame.y.px(v * kw);
         if y < y1 - 1.0 {
             pen.level(x0, x1, y, pen.grid_ink());
         }
         let text = if share { percent.text(v * 100.0) } else { upright.text(v) };
         pen.text((x0 - 6.0, y + 4.5), &text, tick.end());
     }
-    let unit = if share { "%" } else { "kW" };
+    let unit = if share { "%" } else { power };
     pen.text((0.0, 13.0), &format!("{}, {unit}", title(data.measure)), tick);
     pen.level(x0, x1, y1, pen.axis_ink());
     let (size, unit) = energy_unit(most);

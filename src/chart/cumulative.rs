@@ -9,7 +9,7 @@ use super::palette::Palette;
 use super::pen::{Ink, Pen, Surface, Text, roomy};
 use super::shape::Point;
 use super::ticks;
-use super::words::{at, energy_unit, extent};
+use super::words::{at, energy_unit, extent, most};
 use crate::fault::Result;
 use crate::units::people::{self, NARROW as JOIN};
 
@@ -63,16 +63,18 @@ pub fn cumulative<S: Surface>(
 ) -> Result<Hits> {
     let size = roomy(size);
     let mut pen = Pen::new(surface, size, palette);
-    let narrow = size.0 < NARROW;
-    let plot = (if narrow { 38.0 } else { 40.0 }, TOP, pen.width - 6.0, TOP + plot_height(size.0));
+    let plot = (44.0, TOP, pen.width - 6.0, TOP + plot_height(size.0));
     let (x0, y0, x1, y1) = plot;
     let critical = data
         .critical
         .filter(|c| (c.from_us + c.to_us + c.from_kwh + c.to_kwh).is_finite() && c.to_us > c.from_us);
     let levels = extent([&data.energy_kwh]).unwrap_or((0.0, 1.0));
     let levels = critical.map_or(levels, |c| (levels.0.min(c.to_kwh), levels.1.max(c.from_kwh)));
+    // A flat line has no span of its own.
+    let levels =
+        if levels.1 - levels.0 > 1e-6 * most(levels) { levels } else { ticks::rounded(levels, false, 4).0 };
     // Room below the fall for the period's dimension, and above it for its words.
-    let span = (levels.1 - levels.0).max(1e-9);
+    let span = levels.1 - levels.0;
     let (below, above) = if critical.is_some() { (46.0, 24.0) } else { (8.0, 8.0) };
     let per_px = span / (y1 - y0 - below - above);
     let (low, high) = (levels.0 - below * per_px, levels.1 + above * per_px);

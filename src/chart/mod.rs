@@ -2,8 +2,9 @@
 //! picture in a test are the same drawing.
 //!
 //! A picture is drawn at 1:1 px for the width it is given and redrawn for another, never scaled. Its surface takes
-//! [`FINE`] steps per px, so a canvas context is scaled by `devicePixelRatio / FINE` before it is handed over. Each module
-//! of a picture gives its height for a width and a sentence that says in words what it shows.
+//! [`FINE`] steps per px, so a canvas context is scaled by `devicePixelRatio / FINE` and given round line joins before it
+//! is handed over. Bold stands for weight 600: the page declares its face for weights 200 to 600. Each module of a picture
+//! gives its height for a width and a sentence that says in words what it shows.
 
 pub mod coverage;
 pub mod cumulative;
@@ -20,6 +21,7 @@ pub mod plane;
 mod plane_labels;
 #[cfg(test)]
 mod samples;
+mod scheme;
 mod shape;
 mod svg;
 pub mod ticks;
@@ -33,9 +35,10 @@ pub use cumulative::cumulative;
 pub use data::*;
 pub use frame::{Axis, Frame, Hits, Spot, nearest};
 pub use net::net_power;
-pub use palette::{DARK, HIGH, HIGH_DARK, LIGHT, PRINT, Palette, Rgb, Scheme, tokens};
+pub use palette::{DARK, HIGH, HIGH_DARK, LIGHT, PRINT, Palette, Pens, Rgb};
 pub use pen::{FINE, Surface};
 pub use plane::plane;
+pub use scheme::{Scheme, tokens};
 pub use svg::svg;
 pub use week::week;
 pub use year::year_sheet;

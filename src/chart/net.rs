@@ -1,6 +1,8 @@
 //! Net power over a window: surplus above the line and deficit below, the largest episodes as dimensions; below it a strip
 //! of the whole record with the window as a selection.
 
+use std::fmt::Write as _;
+
 use super::NARROW;
 use super::data::{EpisodeMark, NetPower};
 use super::frame::{Axis, Frame, Hits, Spot};
@@ -9,7 +11,7 @@ use super::palette::Palette;
 use super::pen::{Ink, Pen, Surface, Text, crisp, roomy};
 use super::shape::{self, Point};
 use super::ticks::{self, TimeTick};
-use super::words::extent;
+use super::words::{extent, in_unit, most, power_unit};
 use crate::fault::Result;
 use crate::units::people;
 
@@ -47,12 +49,13 @@ pub fn sentence(data: &NetPower) -> String {
     };
     for (sign, word) in [(-1.0, "deficit"), (1.0, "surplus")] {
         if let Some(episode) = largest(sign) {
-            text.push_str(&format!(
+            let _ = write!(
+                text,
                 " Its largest {word} is {} over {} from {}.",
                 people::energy(episode.energy_kwh.abs()),
                 hours(episode),
                 ticks::moment(episode.from_us),
-            ));
+            );
         }
     }
     text
@@ -75,20 +78,21 @@ pub fn net_power<S: Surface>(
     let size = roomy(size);
     let mut pen = Pen::new(surface, size, palette);
     let narrow = size.0 < NARROW;
-    let plot = (if narrow { 36.0 } else { 40.0 }, TOP, pen.width - 6.0, TOP + plot_height(size.0));
+    let plot = (44.0, TOP, pen.width - 6.0, TOP + plot_height(size.0));
     let mut powers = extent([&data.least_kw, &data.greatest_kw]).unwrap_or((0.0, 1.0));
     for limit in data.limits_kw.iter().filter(|l| l.is_finite()) {
         powers = (powers.0.min(*limit), powers.1.max(*limit));
     }
-    let ((low, high), marks) = ticks::roomy(powers, 0.05, 6);
+    let (kw, unit) = power_unit(most(powers));
+    let ((low, high), marks) = ticks::roomy(in_unit(powers, kw), 0.05, 6);
     let shown = extent([&data.t_us]).unwrap_or((0.0, 1.0));
     let window = if data.window_us.1 > data.window_us.0 { data.window_us } else { shown };
-    let frame = Frame::new(plot, window, (low, high));
+    let frame = Frame::new(plot, window, (low * kw, high * kw));
     let tick = Text::tick(palette);
 
-    pen.text((0.0, 14.0), "Net power, kW", tick);
+    pen.text((0.0, 14.0), &format!("Net power, {unit}"), tick);
     for &p in &marks.values {
-        let y = frame.y.px(p);
+        let y = frame.y.px(p * kw);
         if p != 0.0 {
             pen.level(plot.0, plot.2, y, pen.grid_ink());
         }
@@ -205,7 +209,7 @@ fn away(line: &[Point], level: f64) -> Vec<Vec<Point>> {
 }
 
 fn draw_limits<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, limits: &[f64]) {
-    let look = Text::tick(pen.palette).halo();
+    let look = Text::label(pen.palette.ink);
     for &limit in limits.iter().filter(|l| l.is_finite()) {
         let y = frame.y.px(limit);
         pen.level(frame.plot.0, frame.plot.2, y, Ink::new(pen.palette.requirement, pen.palette.pens.line));

@@ -121,10 +121,6 @@ impl Text {
         Self { anchor: HPos::Right, ..self }
     }
 
-    pub(super) fn halo(self) -> Self {
-        Self { halo: true, ..self }
-    }
-
     /// Width of a text, px.
     pub(super) fn width(&self, text: &str) -> f64 {
         metrics::width(text, self.size, self.bold)

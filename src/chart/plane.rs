@@ -1,6 +1,8 @@
 //! The Ragone plane: kinds of storage as strands of curves of power against deliverable energy, lines of equal time, and
 //! the requirement as a line across it with a tick at the point that the budget sets.
 
+use std::fmt::Write as _;
+
 use super::NARROW;
 use super::data::{Basis, Plane, Strand, Verdict};
 use super::frame::{Axis, Frame, Hits, Spot};
@@ -56,14 +58,15 @@ pub fn sentence(data: &Plane) -> String {
         data.strands.len()
     );
     if let Some((power, energy)) = data.requirement {
-        text.push_str(&format!(
+        let _ = write!(
+            text,
             "; the requirement is {} at {}, {}",
             people::energy(energy),
             people::power(power),
             people::duration(energy / power * 3600.0)
-        ));
+        );
         if !data.budget.is_empty() {
-            text.push_str(&format!(", with its point at {}", data.budget));
+            let _ = write!(text, ", with its point at {}", data.budget);
         }
     }
     for (verdict, word) in
@@ -72,7 +75,7 @@ pub fn sentence(data: &Plane) -> String {
         let names: Vec<&str> =
             data.strands.iter().filter(|s| s.verdict == Some(verdict)).map(|s| s.name.as_str()).collect();
         if !names.is_empty() {
-            text.push_str(&format!("; {word}: {}", names.join(", ")));
+            let _ = write!(text, "; {word}: {}", names.join(", "));
         }
     }
     text + "."
@@ -92,8 +95,13 @@ pub fn plane<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: 
     let mut pen = Pen::new(surface, size, palette);
     let narrow = size.0 < NARROW;
     let right = if narrow { 36.0 } else { 62.0 };
-    let plot = (if narrow { 46.0 } else { 54.0 }, TOP, pen.width - right, TOP + plot_height(size.0));
-    let frame = ends(plot, data);
+    let plot = (0.0, TOP, pen.width - right, TOP + plot_height(size.0));
+    let upright = ends(plot, data).y;
+    let widest =
+        ticks::log(upright.from, upright.to).0.into_iter().map(|p| Text::tick(palette).width(&decade(p)));
+    let left = widest.fold(40.0 - 12.0, f64::max) + 12.0;
+    let frame = ends((left, plot.1, plot.2, plot.3), data);
+    let plot = frame.plot;
     axes(&mut pen, &frame, data.basis, narrow);
     let mut taken = equal_times(&mut pen, &frame, narrow);
     let mut spots = Vec::new();
@@ -182,30 +190,47 @@ fn ends(plot: (f64, f64, f64, f64), data: &Plane) -> Frame {
 fn axes<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, basis: Basis, narrow: bool) {
     let (x0, y0, x1, y1) = frame.plot;
     let tick = Text::tick(pen.palette);
-    let text = |v: f64| people::significant(v, 1);
     let (decades, between) = ticks::log(frame.x.from, frame.x.to);
     for &e in &decades {
         let x = frame.x.px(e);
         pen.upright(x, y0, y1, pen.grid_ink());
-        pen.text((x, y1 + 18.0), &text(e), tick.middle());
+        pen.text((x, y1 + 18.0), &decade(e), tick.middle());
     }
     for &e in &between {
-        pen.upright(frame.x.px(e), y1 - 3.0, y1, pen.hair_ink());
+        let x = frame.x.px(e);
+        pen.upright(x, y1 - 3.0, y1, pen.hair_ink());
+        if decades.len() < 2 && names_too(e) {
+            pen.text((x, y1 + 18.0), &decade(e), tick.middle());
+        }
     }
     let (decades, between) = ticks::log(frame.y.from, frame.y.to);
     for &p in &decades {
         let y = frame.y.px(p);
         pen.level(x0, x1, y, pen.grid_ink());
-        pen.text((x0 - 7.0, y + 4.5), &text(p), tick.end());
+        pen.text((x0 - 7.0, y + 4.5), &decade(p), tick.end());
     }
     for &p in &between {
-        pen.level(x0, x0 + 3.0, frame.y.px(p), pen.hair_ink());
+        let y = frame.y.px(p);
+        pen.level(x0, x0 + 3.0, y, pen.hair_ink());
+        if decades.len() < 2 && names_too(p) {
+            pen.text((x0 - 7.0, y + 4.5), &decade(p), tick.end());
+        }
     }
     pen.level(x0, x1, y1, pen.axis_ink());
     pen.upright(x0, y0, y1, pen.axis_ink());
     let (across, up) = units(basis);
     pen.text((if narrow { pen.width } else { x1 }, y1 + 38.0), across, tick.end());
     pen.text((0.0, 14.0), up, tick);
+}
+
+/// Whether a tick between decades is named where there are too few decades for a scale: at 2 and 5.
+fn names_too(value: f64) -> bool {
+    let lead = value / libm::pow(10.0, libm::floor(libm::log10(value) + 1e-9));
+    (lead - 2.0).abs() < 1e-6 || (lead - 5.0).abs() < 1e-6
+}
+
+fn decade(value: f64) -> String {
+    people::significant(value, 1)
 }
 
 /// A line of constant time, from lower left to upper right, within the frame.
@@ -381,7 +406,7 @@ fn name_line<S: Surface>(
         // Below the line at the text's left end, where it is lowest.
         let below = b.1 + slope * (right - wide - b.0) + 22.0;
         let above = b.1 + slope * (right - b.0) - 30.0;
-        for y in [below, above] {
+        for y in [below, above, below + 28.0, below + 56.0] {
             let patch = Patch { x0: right - wide, y0: y - 11.0, x1: right, y1: y + 22.0 };
             if within(patch, frame) && taken.iter().all(|t| !t.overlaps(&patch)) {
                 places.push(((right, y), patch));

@@ -117,25 +117,23 @@ pub(super) fn draw<S: Surface>(
         let mut best: Option<(f64, Place, Patch)> = None;
         let limit = if kind.strand.candidate.is_some() { f64::INFINITY } else { DEAREST };
         for place in places(&kind.line, look.width(&text), (x0, x1)) {
+            let length = libm::hypot(place.from.0 - place.to.0, place.from.1 - place.to.1);
+            let steep = (place.from.1 - place.to.1).abs() / length.max(1.0);
+            let own = 0.6 * length + 14.0 * (steep - 0.6).max(0.0) + place.low;
+            if own >= best.as_ref().map_or(limit, |(least, ..)| *least) {
+                continue;
+            }
             let patch = look.patch(place.at, &text).grown(2.0);
             if !placer.clear(&patch)
                 || leaders.iter().any(|(a, b)| shape::clip(*a, *b, patch.area()).is_some())
+                || leaders.iter().any(|(a, b)| cross(*a, *b, place.from, place.to))
+                || placer.crossed(place.from, place.to)
             {
                 continue;
             }
-            if leaders.iter().any(|(a, b)| cross(*a, *b, place.from, place.to)) {
-                continue;
-            }
-            if placer.crossed(place.from, place.to) {
-                continue;
-            }
-            let length = libm::hypot(place.from.0 - place.to.0, place.from.1 - place.to.1);
-            let steep = (place.from.1 - place.to.1).abs() / length.max(1.0);
-            let cost = 3.5 * f64::from(cover.under(&patch))
-                + 2.2 * f64::from(cover.along(place.from, place.to))
-                + 0.6 * length
-                + 14.0 * (steep - 0.6).max(0.0)
-                + place.low;
+            let cost = own
+                + 3.5 * f64::from(cover.under(&patch))
+                + 2.2 * f64::from(cover.along(place.from, place.to));
             if cost < limit && best.as_ref().is_none_or(|(least, ..)| cost < *least) {
                 best = Some((cost, place, patch));
             }

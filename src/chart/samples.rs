@@ -144,8 +144,7 @@ pub(super) fn deciding_week() -> Week {
     let net = island();
     let (from, to) = (50 * 24, 57 * 24);
     let (mut level, mut data) = (0.2, Week::default());
-    for h in from..to {
-        let asked = net[h];
+    for (h, &asked) in net.iter().enumerate().take(to).skip(from) {
         let room = if asked > 0.0 { (1.0 - level) * 2700.0 } else { level * 2700.0 };
         let carried = asked.signum() * asked.abs().min(42.0).min(room);
         data.t_us.push(MONDAY_2024 + h as f64 * HOUR);
@@ -171,7 +170,8 @@ fn bow(energy: f64, power: f64, hours: f64) -> Vec<(f64, f64)> {
 }
 
 pub(super) fn kinds() -> Plane {
-    let list: [(&str, f64, f64, f64, Option<u8>, bool); 10] = [
+    type Kind = (&'static str, f64, f64, f64, Option<u8>, bool);
+    let list: [Kind; 10] = [
         ("Lithium iron phosphate", 78.0, 420.0, 600.0, Some(0), false),
         ("Sodium-ion", 66.0, 500.0, 600.0, Some(1), false),
         ("Vanadium flow", 7.5, 7.0, 700.0, Some(2), false),
@@ -246,13 +246,66 @@ pub(super) fn all(width: u32, palette: &Palette) -> Vec<Drawn> {
     let data = kinds();
     let size = (full, plane::height(full));
     let ragone = svg(size, &plane::sentence(&data), |s| plane(s, size, palette, &data));
+    // The same site on a grid connection of 40 kW, a short record, and plants that are built.
+    let mut connected = curve;
+    (connected.import_limit_kw, connected.deficit_word) = (Some(40.0), "import".to_owned());
+    let short = YearSheet {
+        net_kw: island()[..24 * 17].to_vec(),
+        critical_us: Some((MONDAY_2024 + 200.0 * HOUR, MONDAY_2024 + 900.0 * HOUR)),
+        ..sheet
+    };
+    let size = (full, year::height(full, year::rows(&short)));
+    let short = svg(size, "", |s| year_sheet(s, size, palette, &short, &connected));
+    let mut data = self::net();
+    data.limits_kw = vec![-40.0, 60.0];
+    let size = (width, net::height(width));
+    let limited = svg(size, "", |s| net_power(s, size, palette, &data));
+    let mut data = coverage_curves();
+    data.measure = Measure::HeldImportKw;
+    for curve in &mut data.curves {
+        curve.value.iter_mut().for_each(|v| *v = 90.0 - 60.0 * *v);
+    }
+    data.marks = vec![CoverageMark { name: "asked".to_owned(), energy_kwh: 4740.0, value: 32.0 }];
+    let size = (width, coverage::height(width));
+    let held = svg(size, "", |s| coverage(s, size, palette, &data));
+    // Every kind of a full catalogue at once.
+    let mut data = kinds();
+    for (factor, word) in [(0.7, "light"), (1.4, "heavy")] {
+        for mut strand in kinds().strands {
+            let moved = |c: &(f64, f64)| (c.0 * factor, c.1 * factor * factor);
+            strand.typical = strand.typical.iter().map(moved).collect();
+            strand.others = strand.others.iter().map(|o| o.iter().map(moved).collect()).collect();
+            strand.technology = format!("{}-{word}", strand.technology);
+            strand.name = format!("{}, {word}", strand.name);
+            (strand.candidate, strand.meets) = (None, None);
+            data.strands.push(strand);
+        }
+    }
+    let size = (full, plane::height(full));
+    let crowded = svg(size, "", |s| plane(s, size, palette, &data));
+    let mut data = kinds();
+    data.basis = Basis::Absolute;
+    (data.point, data.budget) = (Some((4740.0, 87.0)), String::new());
+    for strand in &mut data.strands {
+        let long = |c: &(f64, f64)| (c.0 * 1e3, c.1 * 300.0);
+        strand.typical = strand.typical.iter().map(long).collect();
+        strand.others.clear();
+        (strand.meets, strand.candidate) = (None, None);
+    }
+    let size = (full, plane::height(full));
+    let built = svg(size, "", |s| plane(s, size, palette, &data));
     [
         ("year", year),
+        ("year-short", short),
         ("net", net),
+        ("net-limits", limited),
         ("coverage", covered),
+        ("coverage-held", held),
         ("cumulative", fallen),
         ("week", carried),
         ("plane", ragone),
+        ("plane-built", built),
+        ("plane-all", crowded),
     ]
     .map(|(name, text)| (name, text.unwrap()))
     .to_vec()

@@ -76,7 +76,10 @@ pub(super) fn hatch(areas: &[Vec<Point>], lie: Lie, step: f64) -> Vec<[Point; 2]
 /// The drawn parts of a line cut by a pattern of lengths (drawn, left out, drawn, ...), px, the phase carried on round
 /// corners; each with the distance of its middle from the line's start.
 pub(super) fn dashes(line: &[Point], pattern: &[f64]) -> Vec<(Vec<Point>, f64)> {
-    if pattern.is_empty() || pattern.iter().sum::<f64>() < 0.1 || pattern.iter().any(|d| !(*d > 0.0)) {
+    if pattern.is_empty()
+        || pattern.iter().sum::<f64>() < 0.1
+        || pattern.iter().any(|d| d.is_nan() || *d <= 0.0)
+    {
         return vec![(line.to_vec(), 0.0)];
     }
     let mut parts = Vec::new();
@@ -135,7 +138,7 @@ pub(super) fn clip(a: Point, b: Point, (x0, y0, x1, y1): (f64, f64, f64, f64)) -
     }
     // A comparison with no number fails, so that nothing is drawn of it.
     (from <= to && (dx + dy).is_finite())
-        .then(|| ((a.0 + from * dx, a.1 + from * dy), (a.0 + to * dx, a.1 + to * dy)))
+        .then_some(((a.0 + from * dx, a.1 + from * dy), (a.0 + to * dx, a.1 + to * dy)))
 }
 
 /// The parts of a line inside a rectangle.

@@ -1,5 +1,7 @@
 //! Pictures as SVG text: the same drawing, through plotters' SVG backend, made small and fit for a document.
 
+use std::fmt::Write as _;
+
 use plotters::backend::SVGBackend;
 
 use super::frame::Hits;
@@ -89,7 +91,7 @@ impl Path {
     fn end(&mut self, out: &mut String) {
         if !self.steps.is_empty() {
             let look = self.look.replace(" opacity=\"1\"", "");
-            out.push_str(&format!("<path{look} d=\"{}\"/>\n", self.steps));
+            let _ = writeln!(out, "<path{look} d=\"{}\"/>", self.steps);
             self.steps.clear();
         }
     }

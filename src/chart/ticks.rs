@@ -32,8 +32,8 @@ pub fn step(span: f64, most: usize) -> f64 {
     if !(rough.is_finite() && rough > 1e-300) {
         return 1.0;
     }
-    let mut exponent = libm::floor(libm::log10(rough)) as i32;
-    for _ in 0..2 {
+    let exponent = libm::floor(libm::log10(rough)) as i32;
+    for exponent in [exponent, exponent + 1] {
         for times in [1.0, 2.0, 5.0] {
             // 10^-1 is not exact, 1/10 is the nearest double: divide by the whole power.
             let size = if exponent < 0 { times / ten(-exponent) } else { times * ten(exponent) };
@@ -41,7 +41,6 @@ pub fn step(span: f64, most: usize) -> f64 {
                 return size;
             }
         }
-        exponent += 1;
     }
     rough
 }
@@ -203,20 +202,20 @@ pub fn time(from_us: f64, to_us: f64, px: f64) -> Vec<TimeTick> {
         }
     };
     if per_day >= 4.0 {
-        // Days; the Mondays are named, or, where they stand wide apart, more days.
-        let narrow = 62.0;
-        let every =
-            if per_day >= 76.0 { 1 } else { 7 * libm::ceil(narrow / (7.0 * per_day)).max(1.0) as i32 };
-        let mut date = from.date();
-        let mut mondays = 0;
+        // Days; the Mondays are named, or, where they stand wide apart, every first, second or third day.
+        let close = (1..=3).find(|n| days < 16.0 && per_day * f64::from(*n) >= 62.0);
+        let weeks = libm::ceil(62.0 / (7.0 * per_day)).max(1.0) as i32;
+        let apart = f64::from(close.unwrap_or(7 * weeks)) * per_day;
+        let (mut date, mut count, mut mondays) = (from.date(), 0, 0);
         while date <= to.date() {
             let monday = date.weekday() == Weekday::Monday;
-            let named = every == 1 || monday && mondays % (every / 7).max(1) == 0;
-            mondays += i32::from(monday);
-            let full = every == 1 || per_day * f64::from(every) >= 84.0;
+            let named = close.map_or(monday && mondays % weeks == 0, |every| count % every == 0);
+            let full = apart >= 84.0;
             let label =
                 named.then(|| if full { format!("{} {}", weekday(date), day(date)) } else { day(date) });
-            push(&mut ticks, date, monday || every == 1, label);
+            push(&mut ticks, date, monday || close.is_some() && named, label);
+            count += 1;
+            mondays += i32::from(monday);
             let Ok(next) = date.tomorrow() else { break };
             date = next;
         }

@@ -1,5 +1,7 @@
 //! The deciding week: the power asked of a store against the power it carried, and its level below.
 
+use std::fmt::Write as _;
+
 use super::NARROW;
 use super::data::Week;
 use super::frame::{Frame, Hits};
@@ -9,7 +11,7 @@ use super::palette::Palette;
 use super::pen::{Ink, Pen, Surface, Text, roomy};
 use super::shape::{self, Point};
 use super::ticks;
-use super::words::extent;
+use super::words::{extent, in_unit, most, power_unit};
 use crate::fault::Result;
 use crate::units::people;
 
@@ -47,15 +49,12 @@ pub fn sentence(data: &Week) -> String {
         ticks::moment(to)
     );
     if !data.store.is_empty() {
-        text.push_str(&format!(" ({})", data.store));
+        let _ = write!(text, " ({})", data.store);
     }
-    text.push_str(&format!(": {} {}", people::energy(unserved), unserved_word(data)));
+    let _ = write!(text, ": {} {}", people::energy(unserved), unserved_word(data));
     if let Some((low, high)) = extent([&data.level]) {
-        text.push_str(&format!(
-            "; its level runs between {} and {}",
-            people::percent(low),
-            people::percent(high)
-        ));
+        let _ =
+            write!(text, "; its level runs between {} and {}", people::percent(low), people::percent(high));
     }
     text + "."
 }
@@ -67,23 +66,23 @@ pub fn sentence(data: &Week) -> String {
 pub fn week<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: &Week) -> Result<Hits> {
     let size = roomy(size);
     let mut pen = Pen::new(surface, size, palette);
-    let narrow = size.0 < NARROW;
-    let (x0, x1) = (if narrow { 36.0 } else { 40.0 }, pen.width - 6.0);
+    let (x0, x1) = (44.0, pen.width - 6.0);
     let plot = (x0, TOP, x1, TOP + plot_height(size.0));
     let powers = extent([&data.asked_kw, &data.carried_kw]).unwrap_or((0.0, 1.0));
-    let ((low, high), marks) = ticks::roomy(powers, 0.14, 6);
-    let span = extent([&data.t_us]).unwrap_or((0.0, 1.0));
-    let frame = Frame::new(plot, span, (low, high));
+    let (kw, unit) = power_unit(most(powers));
+    let ((low, high), marks) = ticks::roomy(in_unit(powers, kw), 0.14, 6);
+    let span = held_span(&data.t_us);
+    let frame = Frame::new(plot, span, (low * kw, high * kw));
     let tick = Text::tick(palette);
-    let (long, short) =
-        ("Power, kW, charge above and discharge below the line", "Power, kW, charge above the line");
-    let title = if tick.width(long) + tick.width(&data.store) + 24.0 < pen.width { long } else { short };
+    let long = format!("Power, {unit}, charge above and discharge below the line");
+    let short = format!("Power, {unit}, charge above the line");
+    let title = if tick.width(&long) + tick.width(&data.store) + 24.0 < pen.width { &long } else { &short };
     pen.text((0.0, 13.0), title, tick);
     if tick.width(title) + tick.width(&data.store) + 16.0 < pen.width {
         pen.text((x1, 13.0), &data.store, Text::tick(palette).end());
     }
     for &p in &marks.values {
-        let y = frame.y.px(p);
+        let y = frame.y.px(p * kw);
         if p != 0.0 {
             pen.level(x0, x1, y, pen.grid_ink());
         }
@@ -99,6 +98,13 @@ pub fn week<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: &
     time_axis(&mut pen, &band, band.plot.3);
     pen.lift()?;
     Ok(Hits { main: frame, second: Some(band), spots: Vec::new() })
+}
+
+/// From the first sample to the end of the last, which holds as long as the one before it (alone: an hour).
+fn held_span(t_us: &[f64]) -> (f64, f64) {
+    let (Some(&from), Some(&last)) = (t_us.first(), t_us.last()) else { return (0.0, 1.0) };
+    let step = if t_us.len() > 1 { last - t_us[t_us.len() - 2] } else { 3600e6 };
+    (from, last + step.max(0.0))
 }
 
 /// Areas between two lines over the runs where both have numbers.
@@ -132,7 +138,7 @@ fn draw_powers<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Week) {
         let mut line = Vec::with_capacity(2 * count);
         for i in 0..count {
             let y = frame.y.px(value(data.asked_kw[i], data.carried_kw[i]));
-            let next = if i + 1 < count { data.t_us[i + 1] } else { data.t_us[i] };
+            let next = if i + 1 < count { data.t_us[i + 1] } else { frame.x.to };
             line.extend([(frame.x.px(data.t_us[i]), y), (frame.x.px(next), y)]);
         }
         line
@@ -207,13 +213,21 @@ fn labels<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Week, lines: [
     };
     // Where the two lines stand furthest apart, most of all for long.
     let widest = |a: &[Point], b: &[Point]| -> Option<(Point, Point)> {
-        a.iter().zip(b).filter(|(p, q)| (p.1 - q.1).is_finite() && (p.1 - q.1).abs() > 3.0).fold(
-            None,
-            |best: Option<(Point, Point)>, (p, q)| match best {
-                Some((r, s)) if (r.1 - s.1).abs() >= (p.1 - q.1).abs() => best,
-                _ => Some((*p, *q)),
-            },
-        )
+        let apart = |i: usize| {
+            let (p, q) = (a.get(i)?, b.get(i)?);
+            Some((p.1 - q.1).abs()).filter(|d| d.is_finite())
+        };
+        let mut best: Option<(f64, usize)> = None;
+        for i in 0..a.len().min(b.len()) {
+            let Some(here) = apart(i).filter(|d| *d > 3.0) else { continue };
+            let around =
+                (i.saturating_sub(6)..=i + 6).map(|k| apart(k).unwrap_or(0.0)).fold(f64::INFINITY, f64::min);
+            let score = around + 0.1 * here;
+            if best.is_none_or(|(least, _)| score > least) {
+                best = Some((score, i));
+            }
+        }
+        best.map(|(_, i)| (a[i], b[i]))
     };
     let flat: Vec<Point> =
         carried.iter().map(|p| (p.0, if p.1.is_finite() { zero } else { f64::NAN })).collect();

@@ -7,6 +7,21 @@ pub(super) fn energy_unit(most: f64) -> (f64, &'static str) {
     unit(most, &[(1.0, "kWh"), (1e3, "MWh"), (1e6, "GWh"), (1e9, "TWh")], (1e-3, "Wh"))
 }
 
+/// The unit in which powers up to `most` kW read well on an axis, and kW in one of it.
+pub(super) fn power_unit(most: f64) -> (f64, &'static str) {
+    unit(most, &[(1.0, "kW"), (1e3, "MW"), (1e6, "GW"), (1e9, "TW")], (1e-3, "W"))
+}
+
+/// Two ends divided by a unit's size.
+pub(super) fn in_unit((low, high): (f64, f64), size: f64) -> (f64, f64) {
+    (low / size, high / size)
+}
+
+/// The greatest magnitude of two ends.
+pub(super) fn most((low, high): (f64, f64)) -> f64 {
+    low.abs().max(high.abs())
+}
+
 fn unit(most: f64, rising: &[(f64, &'static str)], least: (f64, &'static str)) -> (f64, &'static str) {
     let fits = |size: f64| most.abs() >= size * if size == 1.0 { 0.3 } else { 1.5 };
     rising.iter().rev().find(|(size, _)| fits(*size)).copied().unwrap_or(if most == 0.0 {

@@ -1,6 +1,8 @@
 //! The year at a glance: a row per week, Monday to Sunday to the right, beside the duration curve, whose power axis is the
 //! colour bar of the sheet.
 
+use std::fmt::Write as _;
+
 use super::data::{DurationCurve, YearSheet};
 use super::frame::{Frame, Hits};
 use super::label::{Patch, Placer};
@@ -48,11 +50,8 @@ pub fn sentence(data: &YearSheet, curve: &DurationCurve) -> String {
         word(curve),
     );
     if let Some((from, to)) = data.critical_us {
-        text.push_str(&format!(
-            " The critical period runs from {} to {}.",
-            ticks::moment(from),
-            ticks::moment(to)
-        ));
+        let _ =
+            write!(text, " The critical period runs from {} to {}.", ticks::moment(from), ticks::moment(to));
     }
     text
 }

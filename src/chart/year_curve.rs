@@ -6,7 +6,7 @@ use super::label::{Patch, Placer};
 use super::pen::{Ink, Pen, Surface, Text};
 use super::shape::Point;
 use super::ticks;
-use super::words::at;
+use super::words::{at, in_unit, most, power_unit};
 use super::year::{Scale, corners, fine_hatch, shade, word};
 use crate::units::people::{self, NARROW};
 
@@ -36,7 +36,9 @@ pub(super) fn draw<S: Surface>(
     if let Some(limit) = curve.import_limit_kw.filter(|l| l.is_finite()) {
         powers.0 = powers.0.min(-limit);
     }
-    let ((low, high), marks) = ticks::rounded(powers, true, if y1 - y0 > 250.0 { 7 } else { 5 });
+    let (kw, unit) = power_unit(most(powers));
+    let ((low, high), marks) = ticks::rounded(in_unit(powers, kw), true, if y1 - y0 > 250.0 { 7 } else { 5 });
+    let (low, high) = (low * kw, high * kw);
     let hours = curve.hours.iter().copied().filter(|h| h.is_finite()).fold(0.0, f64::max);
     let frame = Frame::new(place.plot, (0.0, hours), (low, high));
     let palette = pen.palette;
@@ -53,15 +55,15 @@ pub(super) fn draw<S: Surface>(
     edge.push(edge[0]);
     pen.line(&edge, Ink::new(palette.ink, palette.pens.hair));
     for &p in &marks.values {
-        let y = frame.y.px(p);
+        let y = frame.y.px(p * kw);
         pen.level(place.bar - 4.0, place.bar, y, pen.axis_ink());
         pen.text((place.bar - 8.0, y + 4.5), &marks.text(p), tick.end());
         if p != 0.0 {
             pen.level(x0, x1, y, pen.grid_ink());
         }
     }
-    let title = if place.narrow { "Net power, kW, against hours reached" } else { "Net power, kW" };
-    pen.text(place.title, title, tick);
+    let over = if place.narrow { ", against hours reached" } else { "" };
+    pen.text(place.title, &format!("Net power, {unit}{over}"), tick);
 
     let line: Vec<Point> = curve.hours.iter().zip(&curve.net_kw).map(|(&h, &p)| frame.px(h, p)).collect();
     let zero = frame.y.px(0.0);
@@ -196,6 +198,21 @@ fn labels<S: Surface>(
             let (x, y) = options[i];
             pen.text((x, y), name, look);
             pen.text((x, y + 17.0), &number, look.bold());
+            continue;
+        }
+        // No room for two lines: one.
+        let line = format!("{name} {number}");
+        let wide = look.width(&line);
+        let mut options = Vec::new();
+        for y in [18.0, 32.0, 46.0, 60.0, 80.0, 110.0] {
+            for across in [0.55, 0.8, 0.3, 1.0, 0.1] {
+                let x = x0 + 6.0 + across * (x1 - x0 - wide - 10.0).max(0.0);
+                options.push((x, if up { zero - y + 12.0 } else { zero + y }));
+            }
+        }
+        let patches: Vec<Patch> = options.iter().map(|o| look.patch(*o, &line)).collect();
+        if let Some(i) = placer.first_clear(&patches) {
+            pen.text(options[i], &line, look);
         }
     }
 }

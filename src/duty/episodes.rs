@@ -3,7 +3,7 @@
 use super::Duty;
 use crate::case::Connection;
 use crate::numeric::Sum;
-use crate::result::DutyResult;
+use crate::result::{DutyResult, RecordResult};
 
 /// A maximal run of one strict sign of net power. A zero or a gap ends a run and starts none.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -39,6 +39,21 @@ pub(super) fn nothing() -> DutyResult {
         infeasible: None,
         import_limit_kw: None,
         export_limit_kw: None,
+    }
+}
+
+/// Totals of nothing, to be filled.
+pub(super) fn no_totals() -> RecordResult {
+    RecordResult {
+        intervals: 0,
+        step_s: 0.0,
+        start: String::new(),
+        end: String::new(),
+        missing_intervals: 0,
+        supply_kwh: None,
+        demand_kwh: None,
+        filled_share: 0.0,
+        findings: Vec::new(),
     }
 }
 

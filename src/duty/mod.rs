@@ -116,9 +116,20 @@ pub fn ask(record: &Rc<Record>, case: &Case) -> Result<Duty> {
         connection_guessed: false,
         given,
         episodes: Vec::new(),
-        totals: totals(record),
+        totals: episodes::no_totals(),
         result: episodes::nothing(),
     };
+    duty.totals = totals(&duty);
+    if duty.totals.missing_intervals == duty.totals.intervals {
+        return Err(Fault::new(
+            format!(
+                "none of the {} intervals has all the values that net power needs",
+                duty.totals.intervals
+            ),
+            record.site.clone(),
+            "See the findings for the cells that do not read, or give other columns the roles of supply and demand.",
+        ));
+    }
     let (found, integrals) = episodes::integrate(&duty);
     duty.episodes = found;
     duty.kind = match &case.duty {
@@ -188,17 +199,19 @@ fn column_of(record: &Record, header: &str) -> Result<usize> {
 }
 
 /// The record's totals, over intervals whose net power is there.
-fn totals(record: &Record) -> RecordResult {
+fn totals(duty: &Duty) -> RecordResult {
     use crate::numeric::Sum;
+    let record = &duty.record;
     let step_h = record.step_h();
     let (mut supply, mut demand, mut missing) = (Sum::default(), Sum::default(), 0);
     for i in 0..record.clock.intervals {
-        if record.net_kw(i).is_none() {
+        if duty.net_kw(i).is_none() {
             missing += 1;
-            continue;
         }
-        supply.add(record.supply_kw.as_ref().and_then(|series| series.get(i)).unwrap_or(0.0));
-        demand.add(record.demand_kw.as_ref().and_then(|series| series.get(i)).unwrap_or(0.0));
+        if record.net_kw(i).is_some() {
+            supply.add(record.supply_kw.as_ref().and_then(|series| series.get(i)).unwrap_or(0.0));
+            demand.add(record.demand_kw.as_ref().and_then(|series| series.get(i)).unwrap_or(0.0));
+        }
     }
     RecordResult {
         intervals: record.clock.intervals,

@@ -113,8 +113,11 @@ impl Feed {
     }
 }
 
+/// What a file is, and its first text.
+type Looked = (Container, Vec<u8>);
+
 /// Looks at the first bytes of a source: what it is, and its first text. The source comes back in any case.
-pub(super) fn look(source: Box<dyn Source>) -> (Box<dyn Source>, Result<(Container, Vec<u8>)>) {
+pub(super) fn look(source: Box<dyn Source>) -> (Box<dyn Source>, Result<Looked>) {
     let name = source.name().to_owned();
     if source.is_empty() {
         let fault = Fault::new("the file is empty", name, "Choose the file that holds the readings.");
@@ -136,7 +139,7 @@ pub(super) fn look(source: Box<dyn Source>) -> (Box<dyn Source>, Result<(Contain
             head.truncate(count);
             container(&name, gzip, &head)
         }
-        Err(error) => Err(fault(&error_to_io(error), &name, gzip)),
+        Err(error) => Err(fault(&error, &name, gzip)),
     };
     match found {
         Ok(container) => {
@@ -149,7 +152,7 @@ pub(super) fn look(source: Box<dyn Source>) -> (Box<dyn Source>, Result<(Contain
                 text.truncate(count);
                 text
             });
-            let text = text.map_err(|error| fault(&error_to_io(error), &name, gzip));
+            let text = text.map_err(|error| fault(&error, &name, gzip));
             (source, text.map(|text| (container, text)))
         }
         Err(fault) => (source, Err(fault)),
@@ -367,7 +370,7 @@ impl Decoded {
             self.skip -= skipped;
         }
         if let Encoding::Utf16 { big } = self.container.encoding {
-            self.from_utf16(big);
+            self.to_utf8(big);
         }
         match self.container.carriage_returns {
             Returns::None => {}
@@ -387,7 +390,7 @@ impl Decoded {
         Ok(())
     }
 
-    fn from_utf16(&mut self, big: bool) {
+    fn to_utf8(&mut self, big: bool) {
         let mut bytes = std::mem::take(&mut self.carry);
         bytes.append(&mut self.raw);
         // A half unit, or the first half of a pair, waits for the next bytes.
@@ -430,10 +433,6 @@ impl Read for Decoded {
     }
 }
 
-fn error_to_io(error: io::Error) -> Box<io::Error> {
-    Box::new(error)
-}
-
 /// The fault behind a reading error, at row `row` if that is known.
 #[cold]
 pub(super) fn fault(error: &io::Error, name: &str, gzip: bool) -> Fault {
@@ -448,7 +447,13 @@ pub(super) fn fault(error: &io::Error, name: &str, gzip: bool) -> Fault {
 #[cold]
 pub(super) fn row_fault(error: &csv::Error, name: &str) -> Fault {
     match error.kind() {
-        csv::ErrorKind::Io(error) => fault(error, name, true),
+        csv::ErrorKind::Io(error) => {
+            let mut fault = fault(error, name, true);
+            if !fault.place.contains(name) {
+                fault.place = format!("{name}, {}", fault.place);
+            }
+            fault
+        }
         _ => {
             Fault::new(format!("the rows cannot be told apart: {error}"), name, "Choose a text table (CSV).")
         }

@@ -6,7 +6,7 @@ use super::decode::{HEAD, text};
 use super::number::{self, Cell, Evidence, Marks};
 use super::rows::Rows;
 use super::stamp;
-use super::words::{self, Stated};
+use super::unit::{self, Stated};
 use crate::case::{DateOrder, RecordCase};
 use crate::fault::{Fault, Result, quote};
 
@@ -116,7 +116,7 @@ pub(super) fn decide(name: &str, head: &[u8], terms: &RecordCase) -> Result<Dial
     let Some(first) = first else {
         return Err(no_values(name, &rows));
     };
-    let (header, unit) = header(&rows, first, pattern.len());
+    let (header, units_row) = header(&rows, first, pattern.len());
     let mut headers: Vec<String> = match header {
         Some(row) => rows[row]
             .1
@@ -160,10 +160,10 @@ pub(super) fn decide(name: &str, head: &[u8], terms: &RecordCase) -> Result<Dial
     }
     let units = (0..width)
         .map(|i| {
-            let below = unit
+            let below = units_row
                 .and_then(|row| rows[row].1.get(i))
-                .map_or(Stated::Nothing, |cell| words::unit_cell(&text(cell)));
-            if below == Stated::Nothing { words::unit_of(&headers[i]) } else { below }
+                .map_or(Stated::Nothing, |cell| unit::unit_cell(&text(cell)));
+            if below == Stated::Nothing { unit::unit_of(&headers[i]) } else { below }
         })
         .collect();
     let mut evidence = Evidence::default();
@@ -183,7 +183,7 @@ pub(super) fn decide(name: &str, head: &[u8], terms: &RecordCase) -> Result<Dial
         marks,
         thousands: evidence.thousands(marks),
         header_row: header.map(|row| numbers[row]),
-        unit_row: unit.map(|row| numbers[row]),
+        unit_row: units_row.map(|row| numbers[row]),
         first_row: numbers[first],
         headers,
         units,
@@ -291,8 +291,8 @@ fn header(rows: &[(u64, ByteRecord)], first: usize, width: usize) -> (Option<usi
         (0..first).rev().filter(|row| !blank(&rows[*row].1) && !comment(&rows[*row].1)).collect();
     let units = |row: usize| {
         let cells = || rows[row].1.iter().map(text);
-        cells().all(|cell| words::in_unit_row(&cell))
-            && cells().any(|cell| words::unit_cell(&cell) != Stated::Nothing)
+        cells().all(|cell| unit::in_unit_row(&cell))
+            && cells().any(|cell| unit::unit_cell(&cell) != Stated::Nothing)
     };
     match above[..] {
         [unit, header, ..] if units(unit) && heads(header) => (Some(header), Some(unit)),

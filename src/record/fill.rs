@@ -5,16 +5,20 @@ use std::collections::BTreeMap;
 use csv::ByteRecord;
 
 use super::decode::text;
-use super::grid::{Grid, people_duration};
+use super::grid::Grid;
 use super::number::{self, Cell, Marks};
 use super::roles::key;
 use super::stamp::DAY;
 use super::timing::Timing;
-use super::words::Unit;
+use super::unit::Unit;
 use super::zone::Resolver;
-use super::{Clock, Finding, FindingKind, Series, dialect};
+use super::{Clock, Series, dialect};
 use crate::case::{DateOrder, RepeatRemedy};
-use crate::fault::{Result, quote};
+use crate::fault::Result;
+
+mod tally;
+
+use tally::Tally;
 
 /// Powers beyond this (kW) are slips: a thousand times the largest plants.
 const MOST_KW: f64 = 1e12;
@@ -104,24 +108,6 @@ pub(super) struct FilePlan {
     pub(super) resolver: Resolver,
 }
 
-/// How often something was seen, and where first.
-#[derive(Debug, Default, Clone)]
-struct Tally {
-    count: u64,
-    first_row: u64,
-    what: String,
-}
-
-impl Tally {
-    fn add(&mut self, row: u64, what: impl FnOnce() -> String) {
-        if self.count == 0 {
-            self.first_row = row;
-            self.what = what();
-        }
-        self.count += 1;
-    }
-}
-
 /// The second pass over one file.
 #[derive(Debug)]
 pub(super) struct Fill {
@@ -130,6 +116,8 @@ pub(super) struct Fill {
     sums: Vec<Option<f64>>,
     before: Option<i64>,
     at: Option<usize>,
+    /// Rows with a stamp.
+    rows: u64,
     stampless: Tally,
     /// Rows without a stamp since the last row with one: the table's foot, if nothing follows.
     foot: Tally,
@@ -154,6 +142,7 @@ impl Fill {
             record: ByteRecord::new(),
             before: None,
             at: None,
+            rows: 0,
             stampless: none(),
             foot: none(),
             heads: none(),
@@ -201,6 +190,7 @@ impl Fill {
             self.disorder.add(row, shown);
         }
         self.before = Some(instant);
+        self.rows += 1;
         let clock = &grid.clock;
         let from_start = instant - grid.shift_us - clock.start_us;
         let at = (from_start + clock.step_us / 2).div_euclid(clock.step_us);
@@ -339,186 +329,10 @@ impl Fill {
         }
         let shown = || text(self.record.get(plan.timing.column()).unwrap_or(b""));
         if differs {
-            self.conflict.add(row, shown)
+            self.conflict.add(row, shown);
         } else {
-            self.repeat.add(row, shown)
+            self.repeat.add(row, shown);
         }
         Ok(())
-    }
-
-    /// What was found, and the plan again.
-    pub(super) fn finish(self, clock: &Clock, findings: &mut Vec<Finding>) {
-        let file = self.plan.name.clone();
-        let mut say = |kind, tally: &Tally, remedy: &str, changes: bool, text: String| {
-            if tally.count > 0 {
-                findings.push(Finding {
-                    kind,
-                    count: tally.count,
-                    first_row: Some(tally.first_row),
-                    file: file.clone(),
-                    remedy: remedy.to_owned(),
-                    text,
-                    changes_figures: changes,
-                });
-            }
-        };
-        let first = |tally: &Tally| format!("the first is row {}, {}", tally.first_row, quote(&tally.what));
-        let rows = |count: u64, one: &str, many: &str| {
-            if count == 1 { format!("One row {one}") } else { format!("{count} rows {many}") }
-        };
-        let tally = &self.stampless;
-        say(
-            FindingKind::Text,
-            tally,
-            "left out",
-            true,
-            format!("{} no stamp that reads: {}.", rows(tally.count, "holds", "hold"), first(tally)),
-        );
-        let foot = &self.foot;
-        let text = format!(
-            "At the foot of the table {}: {}.",
-            rows(foot.count, "holds no stamp", "hold no stamp").to_lowercase(),
-            first(foot)
-        );
-        say(FindingKind::Ignored, foot, "left out", false, text);
-        say(
-            FindingKind::Ignored,
-            &self.heads,
-            "left out",
-            false,
-            format!("{} the headers: {}.", rows(self.heads.count, "repeats", "repeat"), first(&self.heads)),
-        );
-        say(
-            FindingKind::Ignored,
-            &self.comments,
-            "left out",
-            false,
-            format!(
-                "{}: {}.",
-                rows(self.comments.count, "is a comment", "are comments"),
-                first(&self.comments)
-            ),
-        );
-        say(
-            FindingKind::ClockChange,
-            &self.skipped,
-            "left out",
-            true,
-            format!(
-                "{} in the hour that clocks leave out in spring: {}. The zone or the stamps may be wrong.",
-                rows(self.skipped.count, "lies", "lie"),
-                first(&self.skipped)
-            ),
-        );
-        say(
-            FindingKind::MixedSteps,
-            &self.off_step,
-            "left out",
-            true,
-            format!(
-                "{} off the regular step of {}: {}.",
-                rows(self.off_step.count, "lies", "lie"),
-                people_duration(clock.step_s()),
-                first(&self.off_step)
-            ),
-        );
-        say(
-            FindingKind::MixedSteps,
-            &self.snapped,
-            "taken as on the step",
-            false,
-            format!(
-                "{} up to {} off the regular step of {}: {}.",
-                rows(self.snapped.count, "lies", "lie"),
-                people_duration(self.snapped_most as f64 / 1e6),
-                people_duration(clock.step_s()),
-                first(&self.snapped)
-            ),
-        );
-        say(
-            FindingKind::Disorder,
-            &self.outside,
-            "left out",
-            true,
-            format!(
-                "{} a stamp far from all others: {}.",
-                rows(self.outside.count, "has", "have"),
-                first(&self.outside)
-            ),
-        );
-        say(
-            FindingKind::Disorder,
-            &self.disorder,
-            "sorted in",
-            false,
-            format!(
-                "{} a stamp before that of the row above: {}.",
-                rows(self.disorder.count, "has", "have"),
-                first(&self.disorder)
-            ),
-        );
-        say(
-            FindingKind::Repeat,
-            &self.repeat,
-            "first kept",
-            false,
-            format!(
-                "{} a stamp that was there before, with the same values: {}.",
-                rows(self.repeat.count, "repeats", "repeat"),
-                first(&self.repeat)
-            ),
-        );
-        let (remedy, kept) = match self.plan.repeat {
-            RepeatRemedy::First => ("first kept", "the first row of each counts"),
-            RepeatRemedy::Last => ("last kept", "the last row of each counts"),
-            RepeatRemedy::Mean => ("mean taken", "their mean counts"),
-        };
-        say(
-            FindingKind::Conflict,
-            &self.conflict,
-            remedy,
-            true,
-            format!(
-                "{} a stamp that was there before, with other values: {}; {kept}.",
-                rows(self.conflict.count, "repeats", "repeat"),
-                first(&self.conflict)
-            ),
-        );
-        for column in &self.plan.uses {
-            let header = quote(&column.header);
-            let cells = |tally: &Tally, what: &str, many: &str| {
-                let count = if tally.count == 1 {
-                    format!("one cell {what}")
-                } else {
-                    format!("{} cells {many}", tally.count)
-                };
-                format!("In column {header} {count}: {}.", first(tally))
-            };
-            say(
-                FindingKind::Text,
-                &column.text,
-                "taken as missing",
-                true,
-                cells(&column.text, "holds no number", "hold no number"),
-            );
-            say(
-                FindingKind::Outlier,
-                &column.outlier,
-                "taken as missing",
-                true,
-                cells(
-                    &column.outlier,
-                    "holds more than a million million kW",
-                    "hold more than a million million kW",
-                ),
-            );
-            say(
-                FindingKind::Negative,
-                &column.negative,
-                "kept as read",
-                false,
-                cells(&column.negative, "is negative", "are negative"),
-            );
-        }
     }
 }

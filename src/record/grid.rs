@@ -84,7 +84,7 @@ impl Grid {
         let intervals = i64::try_from(self.clock.intervals).unwrap_or(i64::MAX);
         let bytes = intervals.saturating_mul(8).saturating_mul(i64::try_from(series).unwrap_or(i64::MAX));
         let rows = i64::try_from(rows).unwrap_or(i64::MAX);
-        let hollow = intervals > 5_000_000 && intervals / 1000 > rows;
+        let hollow = intervals > 1_000_000 && intervals / 1000 > rows;
         if intervals <= MOST_INTERVALS && bytes <= MOST_BYTES && !hollow {
             return Ok(());
         }
@@ -152,6 +152,16 @@ fn step(files: &[Stamped], terms: &RecordCase, findings: &mut Vec<Finding>) -> R
                     ),
                     file.name,
                     "Export readings at a regular step, or state the step.",
+                ));
+            }
+            if found.step_us > 8 * DAY {
+                return Err(Fault::new(
+                    format!(
+                        "the rows lie {} apart: nothing can be said of storage from them",
+                        people_duration(found.step_us as f64 / 1e6)
+                    ),
+                    file.name,
+                    "Choose a file with a reading at least every day, better every hour or quarter of an hour.",
                 ));
             }
             if let Some((second, count)) = found.second

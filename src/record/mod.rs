@@ -20,6 +20,7 @@ mod stamp;
 #[cfg(test)]
 mod tests;
 mod timing;
+mod unit;
 mod words;
 mod zone;
 
@@ -28,7 +29,7 @@ pub use read::{Reader, read};
 pub use series::Series;
 #[cfg(not(target_arch = "wasm32"))]
 pub use source::Disk;
-pub use source::{Memory, Source};
+pub use source::{Memory, Source, site_name};
 
 use serde::{Deserialize, Serialize};
 

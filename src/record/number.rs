@@ -183,7 +183,7 @@ impl Evidence {
             at += width;
         }
         self.grouped_by = self.grouped_by.or(grouped);
-        let count = |mark: u8| body.iter().filter(|byte| **byte == mark).count();
+        let count = |mark: u8| body.split(|byte| *byte == mark).count() - 1;
         let last = |mark: u8| body.iter().rposition(|byte| *byte == mark);
         match (count(b','), count(b'.')) {
             (0, 0) => self.bare += u32::from(body.iter().any(|byte| (b'1'..=b'9').contains(byte))),
@@ -212,8 +212,7 @@ impl Evidence {
 
     /// The marks taken, and why.
     pub(super) fn decide(&self, chosen: Option<char>) -> (Marks, &'static str) {
-        let comma = Marks { decimal: b',', thousands: (self.either_point + self.point > 0).then_some(b'.') };
-        let comma = Marks { thousands: comma.thousands.or(Some(b'.')), ..comma };
+        let comma = Marks { decimal: b',', thousands: Some(b'.') };
         let point = Marks { decimal: b'.', thousands: Some(b',') };
         match chosen {
             Some(',') => return (comma, "as stated"),

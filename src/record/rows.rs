@@ -1,8 +1,13 @@
 //! Rows of a text table with the numbers that a person sees in a spreadsheet.
 
-use std::io::Read;
+use std::io::{self, Read};
 
 use csv::ByteRecord;
+
+use crate::fault::Fault;
+
+/// Most lines in a row: past them a quotation mark stands where it should not.
+const MOST_LINES: usize = 100;
 
 /// A table's rows, one after the other. Blank rows are passed over but counted.
 pub(super) struct Rows<R> {
@@ -28,9 +33,19 @@ impl<R: Read> Rows<R> {
         if !self.reader.read_byte_record(record)? {
             return Ok(None);
         }
-        self.inside += record.as_slice().iter().filter(|byte| **byte == b'\n').count() as u64;
+        let inside = record.as_slice().split(|byte| *byte == b'\n').count().saturating_sub(1);
+        self.inside += inside as u64;
         // The reader stands behind this row's line feed.
-        Ok(Some(self.reader.position().line().saturating_sub(1 + self.inside).max(1)))
+        let row = self.reader.position().line().saturating_sub(1 + self.inside).max(1);
+        if inside > MOST_LINES {
+            return Err(io::Error::other(Fault::new(
+                format!("a quotation mark opens a cell that runs over {inside} lines"),
+                format!("row {row}"),
+                "Remove the stray quotation mark in that row.",
+            ))
+            .into());
+        }
+        Ok(Some(row))
     }
 
     /// The text being read.

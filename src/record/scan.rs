@@ -3,7 +3,6 @@
 use std::collections::BTreeMap;
 
 use csv::ByteRecord;
-use jiff::tz::TimeZone;
 
 use super::number::Marks;
 use super::stamp::DAY;
@@ -34,7 +33,7 @@ pub(super) struct Block {
 pub(super) struct Stats {
     /// Rows with a stamp.
     pub(super) rows: u64,
-    /// Distances between consecutive stamps (microseconds, positive) and how often each comes.
+    /// Distances between consecutive stamps (microseconds, either way) and how often each comes.
     pub(super) distances: BTreeMap<i64, u64>,
     /// Rows per block of time.
     pub(super) blocks: BTreeMap<i64, Block>,
@@ -84,25 +83,13 @@ pub(super) struct Scanned {
 }
 
 impl Scan {
-    pub(super) fn new(
-        timing: Timing,
-        marks: Marks,
-        zone: Option<TimeZone>,
-        stated: Option<DateOrder>,
-    ) -> Self {
+    pub(super) fn new(timing: Timing, marks: Marks, resolver: Resolver, stated: Option<DateOrder>) -> Self {
         let order = stated.unwrap_or(DateOrder::DayFirst);
-        let zone = if matches!(timing, Timing::Counter { .. }) { None } else { zone };
         let open = match stated {
             None if timing.dated() => vec![DateOrder::MonthFirst, DateOrder::YearFirst],
             _ => Vec::new(),
         };
-        let candidate = Candidate {
-            order,
-            resolver: Resolver::new(zone),
-            stats: Stats::new(),
-            refuted: 0,
-            refuted_by: None,
-        };
+        let candidate = Candidate { order, resolver, stats: Stats::new(), refuted: 0, refuted_by: None };
         Self {
             timing,
             marks,
@@ -266,10 +253,11 @@ impl Stats {
         if self.sample.len() < SAMPLE {
             self.sample.push(instant);
         }
+        // Files may run from the newest row to the oldest, so distances count both ways.
         if let Some(before) = self.before
-            && instant > before
+            && instant != before
         {
-            let distance = instant - before;
+            let distance = (instant - before).abs();
             if distance == self.run.0 {
                 self.run.1 += 1;
             } else {

@@ -337,7 +337,7 @@ fn fill(series: &mut Series, remedy: GapRemedy, step_us: i64) -> Result<()> {
                 let before = i.checked_sub(day).and_then(|at| series.get(at));
                 let after = series.get(i + day);
                 let value = match (before, after) {
-                    (Some(before), Some(after)) => Some((before + after) / 2.0),
+                    (Some(before), Some(after)) => Some(before + (after - before) / 2.0),
                     (one, other) => one.or(other),
                 };
                 found.extend(value.map(|value| (i, value)));

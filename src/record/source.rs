@@ -22,6 +22,21 @@ pub trait Source {
     fn read_at(&mut self, offset: u64, buffer: &mut [u8]) -> Result<usize>;
 }
 
+/// The name of a site after its file: without the ending, and without that of its compression.
+///
+/// ```
+/// assert_eq!(millpond::record::site_name("hill-farm.csv.gz"), "hill-farm");
+/// assert_eq!(millpond::record::site_name(".csv"), ".csv");
+/// ```
+pub fn site_name(file: &str) -> String {
+    let stem = |name: &str| match name.rsplit_once('.') {
+        Some((stem, _)) if !stem.is_empty() => stem.to_owned(),
+        _ => name.to_owned(),
+    };
+    let is_compressed = file.to_ascii_lowercase().ends_with(".gz");
+    if is_compressed { stem(&stem(file)) } else { stem(file) }
+}
+
 /// A source of bytes in memory.
 #[derive(Debug, Clone)]
 pub struct Memory {

@@ -24,6 +24,9 @@ pub(super) struct Written {
     pub(super) mark: u8,
 }
 
+/// Days before each month in a year without leap day.
+const BEFORE: [i64; 12] = [0, 31, 59, 90, 120, 151, 181, 212, 243, 273, 304, 334];
+
 /// Days from 1970-01-01 to a date of the Gregorian calendar; none if there is no such date.
 pub(super) fn days(year: i64, month: i64, day: i64) -> Option<i64> {
     if !(1..=9999).contains(&year) || !(1..=12).contains(&month) || day < 1 {
@@ -39,8 +42,7 @@ pub(super) fn days(year: i64, month: i64, day: i64) -> Option<i64> {
     if day > longest {
         return None;
     }
-    // Days before the month in a year without leap day, then whole years by the calendar's rule.
-    const BEFORE: [i64; 12] = [0, 31, 59, 90, 120, 151, 181, 212, 243, 273, 304, 334];
+    // Whole years by the calendar's rule, then months.
     let before = BEFORE[(month - 1) as usize] + i64::from(leap && month > 2);
     let past = year - 1;
     Some(past * 365 + past / 4 - past / 100 + past / 400 + before + day - 1 - 719_162)
@@ -222,9 +224,9 @@ impl Scan<'_> {
                         return None;
                     }
                     if parts == 0 {
-                        minute = value
+                        minute = value;
                     } else {
-                        second = value
+                        second = value;
                     }
                     parts += 1;
                 }
@@ -249,10 +251,10 @@ impl Scan<'_> {
         self.skip(b" ");
         let halves = match self.rest {
             [half @ (b'a' | b'A' | b'p' | b'P'), b'm' | b'M', ..] => {
-                Some((half.to_ascii_lowercase() == b'p', 2))
+                Some((half.eq_ignore_ascii_case(&b'p'), 2))
             }
             [half @ (b'a' | b'A' | b'p' | b'P'), b'.', b'm' | b'M', b'.', ..] => {
-                Some((half.to_ascii_lowercase() == b'p', 4))
+                Some((half.eq_ignore_ascii_case(&b'p'), 4))
             }
             _ => None,
         };
@@ -272,6 +274,7 @@ impl Scan<'_> {
     }
 
     /// The offset from UTC, if one is written; none if something else follows.
+    #[allow(clippy::option_option, reason = "no offset and no stamp are two things")]
     fn offset(&mut self) -> Option<Option<i32>> {
         if self.rest.is_empty() {
             return Some(None);
@@ -354,10 +357,8 @@ fn compact(value: i64, width: usize) -> Option<(i64, bool, u8, Option<i64>)> {
 /// Number of a month by its name or the first letters of it, in English and German.
 fn month(word: &[u8]) -> Option<i64> {
     let mut low = [0_u8; 3];
-    let mut count = 0;
-    for byte in word.iter().take(3) {
-        low[count] = byte.to_ascii_lowercase();
-        count += 1;
+    for (low, byte) in low.iter_mut().zip(word) {
+        *low = byte.to_ascii_lowercase();
     }
     if word.len() > 10 {
         return None;

@@ -194,6 +194,15 @@ pub(super) fn choose(
 ) -> Result<Timing> {
     let width = dialect.headers.len();
     let profiles: Vec<Profile> = (0..width).map(|column| Profile::new(dialect, column)).collect();
+    let by_day =
+        dialect.headers.iter().filter(|header| stamp::time_of_day(header.as_bytes()).is_some()).count();
+    if by_day >= 20 && by_day * 3 >= width * 2 {
+        return Err(Fault::new(
+            format!("the table has one row per day and {by_day} columns for the times of day"),
+            format!("{name}, row {}", dialect.header_row.unwrap_or(1)),
+            "Export the readings with one row per reading: this version reads no other shape.",
+        ));
+    }
     let find = |role: Role| (0..width).find(|column| stated(*column) == Some(role));
     let free = |column: &usize| {
         stated(*column).is_none_or(|role| matches!(role, Role::Time | Role::Date | Role::Clock))
@@ -290,6 +299,10 @@ fn numeric(dialect: &Dialect, column: usize, profile: &Profile, stated: bool) ->
         && profile.values.iter().any(|value| value.fract() != 0.0)
     {
         return Some(Timing::Serial(column));
+    }
+    // Hours that begin again each day are no count of time.
+    if !stated && profile.values.windows(2).any(|pair| pair[1] < pair[0]) {
+        return None;
     }
     if let Some(unit_us) = unit {
         return Some(Timing::Counter { column, unit_us, unit_known: true });

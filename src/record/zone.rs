@@ -10,15 +10,17 @@ use super::stamp::{DAY, SECOND};
 #[derive(Debug, Clone)]
 pub(super) struct Resolver {
     zone: Option<TimeZone>,
-    before: i64,
+    /// Whether rows run from the newest to the oldest.
+    falling: bool,
+    before: Option<i64>,
     /// A span of local readings in which the offset holds for certain: start, end, offset (all microseconds).
     steady: (i64, i64, i64),
 }
 
 impl Resolver {
     /// A resolver for stamps in `zone`, or for stamps that are taken as they stand.
-    pub(super) fn new(zone: Option<TimeZone>) -> Self {
-        Self { zone, before: i64::MIN, steady: (0, 0, 0) }
+    pub(super) fn new(zone: Option<TimeZone>, falling: bool) -> Self {
+        Self { zone, falling, before: None, steady: (0, 0, 0) }
     }
 
     /// The instant of a reading, or none if clocks in the zone never show it.
@@ -28,19 +30,24 @@ impl Resolver {
             (None, None) => us,
             (None, Some(_)) if (self.steady.0..self.steady.1).contains(&us) => us - self.steady.2,
             (None, Some(zone)) => {
-                let (instant, steady) = ambiguous(zone, us, self.before)?;
+                let (instant, steady) = ambiguous(zone, us, self.before, self.falling)?;
                 if let Some(steady) = steady {
                     self.steady = steady;
                 }
                 instant
             }
         };
-        self.before = instant;
+        self.before = Some(instant);
         Some(instant)
     }
 }
 
-fn ambiguous(zone: &TimeZone, us: i64, before: i64) -> Option<(i64, Option<(i64, i64, i64)>)> {
+fn ambiguous(
+    zone: &TimeZone,
+    us: i64,
+    before: Option<i64>,
+    falling: bool,
+) -> Option<(i64, Option<(i64, i64, i64)>)> {
     let read =
         DateTime::constant(1970, 1, 1, 0, 0, 0, 0).checked_add(SignedDuration::from_micros(us)).ok()?;
     let shift = |offset: jiff::tz::Offset| i64::from(offset.seconds()) * SECOND;
@@ -57,8 +64,13 @@ fn ambiguous(zone: &TimeZone, us: i64, before: i64) -> Option<(i64, Option<(i64,
             Some((instant, Some((start + offset + DAY, end + offset - DAY, offset))))
         }
         AmbiguousOffset::Fold { before: summer, after: winter } => {
-            let first = us - shift(summer);
-            Some((if first > before { first } else { us - shift(winter) }, None))
+            let (first, second) = (us - shift(summer), us - shift(winter));
+            let take_first = if falling {
+                before.is_some_and(|before| second >= before)
+            } else {
+                before.is_none_or(|before| first > before)
+            };
+            Some((if take_first { first } else { second }, None))
         }
         AmbiguousOffset::Gap { .. } => None,
     }
@@ -71,7 +83,7 @@ mod tests {
     use crate::case::DateOrder;
 
     fn berlin() -> Resolver {
-        Resolver::new(Some(TimeZone::get("Europe/Berlin").unwrap()))
+        Resolver::new(Some(TimeZone::get("Europe/Berlin").unwrap()), false)
     }
 
     fn at(cell: &str) -> i64 {
@@ -92,6 +104,9 @@ mod tests {
         let instants: Vec<i64> = rows.iter().map(|row| resolver.instant(at(row), None).unwrap()).collect();
         assert_eq!(instants[0], at("2025-10-25 23:30"));
         assert!(instants.windows(2).all(|pair| pair[1] - pair[0] == 1800 * SECOND), "{instants:?}");
+        let mut backwards = Resolver::new(berlin().zone, true);
+        let back: Vec<i64> = rows.iter().rev().map(|row| backwards.instant(at(row), None).unwrap()).collect();
+        assert!(back.iter().rev().eq(&instants), "{back:?}");
     }
 
     #[test]

@@ -61,7 +61,7 @@ pub(super) fn point(duty: &Duty, case: &Case, working: &Working) -> Option<Asked
         Kind::Limits(_) => limits(duty, case, losses)?,
         Kind::Balance | Kind::Given => balance(duty, case, losses)?,
     };
-    if power_kw <= 0.0 {
+    if power_kw <= 0.0 || usable_kwh <= 0.0 {
         return None;
     }
     let terms = &case.requirement;

@@ -11,6 +11,7 @@ pub(crate) mod coverage;
 mod criteria;
 mod ranges;
 
+pub(crate) use asked::knee;
 pub use asked::{Asked, Working};
 pub use capacity::Losses;
 pub use ranges::Ranges;

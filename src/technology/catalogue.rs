@@ -247,7 +247,7 @@ pub struct Siting {
 }
 
 /// A kind of storage.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, PartialEq, Serialize)]
 pub struct Technology {
     /// Identifier.
     pub id: String,
@@ -273,7 +273,7 @@ impl Technology {
 }
 
 /// All kinds of storage, in the order of the tables.
-#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[derive(Debug, Clone, PartialEq, Serialize)]
 pub struct Catalogue {
     /// The kinds.
     pub technologies: Vec<Technology>,

@@ -34,16 +34,11 @@ pub(super) struct Element {
 }
 
 impl Element {
-    /// Greatest power, at matched load from full.
-    pub(super) fn greatest_power(&self) -> f64 {
-        self.full * self.full / (4.0 * self.resistance)
-    }
-
     /// Time from full to empty (or to the state that no longer gives the power) at constant power.
     pub(super) fn discharge_time(&self, power: f64) -> f64 {
         let bb = 4.0 * self.resistance * power;
         let end = self.empty.max(bb.sqrt());
-        if end >= self.full || !(power > 0.0) {
+        if end >= self.full || !positive(power) {
             return 0.0;
         }
         let h = |x: f64| x + (x * x - bb).max(0.0).sqrt();
@@ -147,7 +142,7 @@ impl Circuit {
         // What is delivered is almost proportional to what is inside; the correction contracts by the leak's share.
         for _ in 0..200 {
             let delivered = circuit.delivered_kwh(ref_power_kw);
-            if !(delivered > 0.0) || (delivered - 1.0).abs() < 1e-15 {
+            if !positive(delivered) || (delivered - 1.0).abs() < 1e-15 {
                 break;
             }
             circuit.energy_kwh /= delivered;
@@ -186,7 +181,7 @@ impl Circuit {
 
     /// How long a constant power lasts from full, hours.
     pub fn lasts_h(&self, power_kw: f64) -> f64 {
-        if !(power_kw > 0.0) || power_kw > self.peak_kw * (1.0 + 1e-12) {
+        if !positive(power_kw) || power_kw > self.peak_kw * (1.0 + 1e-12) {
             return 0.0;
         }
         self.time_h(power_kw, self.leak_h)
@@ -207,7 +202,7 @@ impl Circuit {
         if self.model == Model::Fixed {
             return Some(self.eta_charge * self.eta_discharge);
         }
-        if !(charge_kw > 0.0) || !(self.lasts_h(discharge_kw) > 0.0) {
+        if !positive(charge_kw) || !positive(self.lasts_h(discharge_kw)) {
             return None;
         }
         let element = self.element(None);
@@ -253,6 +248,11 @@ impl Circuit {
     }
 }
 
+/// Above zero; not a number is not.
+fn positive(value: f64) -> bool {
+    value > 0.0
+}
+
 #[cfg(test)]
 mod tests {
     use super::*;
@@ -287,7 +287,7 @@ mod tests {
                 assert!(close(energy, row[column], 1e-9), "{} W, column {column}: {energy}", row[0]);
             }
         }
-        assert_eq!(element(None, 0.0).greatest_power(), 145_800.0);
+        assert_eq!(element(None, 0.0).discharge_time(145_800.0), 0.0, "nothing is left at matched load");
         let steps = &reference["capacitor"]["step_times"]["rows"];
         let (down, up) = (numbers(&steps[0]), numbers(&steps[1]));
         let discharge =

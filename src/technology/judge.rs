@@ -82,9 +82,11 @@ impl<'a> Bench<'a> {
         let typical = self.typical.round_trip(running, charging).unwrap_or(published.typical / 100.0);
         Pair { typical, good: typical.max(published.high / 100.0) }
     }
+}
 
+impl Judged {
     /// Judges a load: asked over offered at the typical value and at the good end.
-    pub(super) fn weigh(&self, quantity: Criterion, typical: f64, good: f64, margin: f64) -> Judged {
+    pub(super) fn weigh(quantity: Criterion, typical: f64, good: f64, margin: f64) -> Self {
         let (typical, good) = (bounded(typical), bounded(good.min(typical)));
         // The slack keeps a value that meets its bound to the last digit on the right side of it.
         let verdict = if typical * (1.0 + margin) <= 1.0 + 1e-12 {
@@ -95,11 +97,9 @@ impl<'a> Bench<'a> {
             Verdict::Fails
         };
         let load = Some(Pair { typical, good });
-        Judged { quantity, verdict, reason: String::new(), confirmed: false, turn: String::new(), load }
+        Self { quantity, verdict, reason: String::new(), confirmed: false, turn: String::new(), load }
     }
-}
 
-impl Judged {
     /// A verdict in which no number was weighed.
     pub(super) fn plain(quantity: Criterion, verdict: Verdict, reason: impl Into<String>) -> Self {
         Self { quantity, verdict, reason: reason.into(), confirmed: false, turn: String::new(), load: None }

@@ -40,8 +40,7 @@ fn ramp(bench: &Bench) -> Option<Judged> {
     let (typical, good) = (bench.power_kw / published.typical, bench.power_kw / published.low);
     let rate = |value: f64| format!("{}\u{202f}kW/s", significant(value, 3));
     Some(
-        bench
-            .weigh(Criterion::Ramp, asked / typical, asked / good, bench.need.margin())
+        Judged::weigh(Criterion::Ramp, asked / typical, asked / good, bench.need.margin())
             .because(format!("Ramps at {}, {} at best; {} asked", rate(typical), rate(good), rate(asked)))
             .turned_by("A faster kind beside it for the steep part would turn it")
             .confirmed(published.verified),
@@ -84,8 +83,7 @@ fn transfer(bench: &Bench) -> Option<Judged> {
 
 /// A time that must not be longer than asked.
 fn within(bench: &Bench, quantity: Criterion, published: &Range, asked: f64) -> Judged {
-    bench
-        .weigh(quantity, published.typical / asked, published.low / asked, bench.need.margin())
+    Judged::weigh(quantity, published.typical / asked, published.low / asked, bench.need.margin())
         .turned_by(format!("{} allowed, or a faster kind beside it, would turn it", duration(published.low)))
         .confirmed(published.verified)
 }
@@ -95,22 +93,21 @@ fn round_trip(bench: &Bench) -> Option<Judged> {
     let returns = bench.round_trip();
     let published = bench.technology.range(Quantity::RoundTripEfficiency);
     Some(
-        bench
-            .weigh(
-                Criterion::RoundTripEfficiency,
-                lost_of(returns.typical, asked),
-                lost_of(returns.good, asked),
-                bench.need.margin(),
-            )
-            .because(format!(
-                "Returns {} at {}, {} at best; at least {} asked",
-                percent(returns.typical),
-                duration(bench.hours * 3600.0),
-                percent(returns.good),
-                percent(asked)
-            ))
-            .turned_by(format!("Enough surplus to live with {} would turn it", percent(returns.good)))
-            .confirmed(published.verified),
+        Judged::weigh(
+            Criterion::RoundTripEfficiency,
+            lost_of(returns.typical, asked),
+            lost_of(returns.good, asked),
+            bench.need.margin(),
+        )
+        .because(format!(
+            "Returns {} at {}, {} at best; at least {} asked",
+            percent(returns.typical),
+            duration(bench.hours * 3600.0),
+            percent(returns.good),
+            percent(asked)
+        ))
+        .turned_by(format!("Enough surplus to live with {} would turn it", percent(returns.good)))
+        .confirmed(published.verified),
     )
 }
 
@@ -164,8 +161,7 @@ fn holding(bench: &Bench) -> Option<Judged> {
         good: (1.0 - kept.good) / allowed(returns.good),
     };
     Some(
-        bench
-            .weigh(Criterion::SelfDischarge, load.typical, load.good, bench.need.margin())
+        Judged::weigh(Criterion::SelfDischarge, load.typical, load.good, bench.need.margin())
             .because(format!(
                 "Keeps {} of its energy over a mean hold of {}, standing load included; at most {} may go",
                 percent(kept.typical),
@@ -190,8 +186,7 @@ fn cycles(bench: &Bench) -> Option<Judged> {
         good = good.min(1.0);
     }
     Some(
-        bench
-            .weigh(Criterion::Cycles, typical, good, bench.need.margin())
+        Judged::weigh(Criterion::Cycles, typical, good, bench.need.margin())
             .because(format!(
                 "Lasts {} full cycles, {} at best; {} in {} years{}",
                 whole(published.typical),
@@ -212,24 +207,20 @@ fn years(bench: &Bench) -> Option<Judged> {
     let asked = asked(bench.need.service_life_years)?;
     let published = bench.technology.range(Quantity::CalendarLife);
     Some(
-        bench
-            .weigh(
-                Criterion::ServiceLife,
-                asked / published.typical,
-                asked / published.high,
-                bench.need.margin(),
-            )
-            .because(format!(
-                "Lasts {} years, {} at best; {} asked",
-                significant(published.typical, 2),
-                significant(published.high, 2),
-                significant(asked, 2)
-            ))
-            .turned_by(format!(
-                "One replacement after {} years would turn it",
-                significant(published.typical, 2)
-            ))
-            .confirmed(published.verified),
+        Judged::weigh(
+            Criterion::ServiceLife,
+            asked / published.typical,
+            asked / published.high,
+            bench.need.margin(),
+        )
+        .because(format!(
+            "Lasts {} years, {} at best; {} asked",
+            significant(published.typical, 2),
+            significant(published.high, 2),
+            significant(asked, 2)
+        ))
+        .turned_by(format!("One replacement after {} years would turn it", significant(published.typical, 2)))
+        .confirmed(published.verified),
     )
 }
 

@@ -3,7 +3,7 @@
 use serde::{Deserialize, Serialize};
 
 use super::catalogue::{Catalogue, MassBasis, Quantity, Technology};
-use super::curve::Meeting;
+use super::curve::{Circuit, Meeting};
 use super::family::{Design, PLACES, Per};
 use super::need::{Need, Screening};
 use crate::chart::{Basis, Plane, Strand};
@@ -17,6 +17,12 @@ const LONGEST_H: f64 = 1440.0;
 
 /// A curve is drawn down to this many times its reference duration, and to two hours at least.
 const SLOWER: f64 = 300.0;
+
+/// A curve is drawn past the requirement's mark down to this share of the power there.
+const PAST_MARK: f64 = 0.6;
+
+/// Towards the matched load a curve is drawn until this share of the rated energy is left.
+const LEAST_DRAWN: f64 = 0.2;
 
 /// A point of the requirement on the plane, one for each budget asked.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -131,14 +137,23 @@ fn curves(technology: &Technology, need: Option<&Need>, per: Per) -> (Curve, Vec
     let place = |design: &Design, power_kw: f64, energy_kwh: f64| {
         (design.energy_wh * energy_kwh * depth / packing, design.energy_wh * power_kw / packing)
     };
+    let hours = need.and_then(Need::duration_s).map(|seconds| seconds / 3600.0);
+    let meeting = |design: &Design| match design.circuit.meets(hours?, depth) {
+        Meeting::Curve(power) => Some(power),
+        Meeting::PowerBound(_) | Meeting::RunsDown(_) => None,
+    };
     let curve = |design: &Design| -> Curve {
         let circuit = &design.circuit;
-        let longest_h = (SLOWER / circuit.ref_power_kw()).max(2.0).min(LONGEST_H);
-        let (top, bottom) = (circuit.peak_kw() * 0.999_5, 1.0 / longest_h);
+        let longest_h = (SLOWER / circuit.ref_power_kw()).clamp(2.0, LONGEST_H);
+        let top = top_kw(circuit);
+        // Far enough down to hold the mark.
+        let bottom = meeting(design).map_or(f64::INFINITY, |power| power * PAST_MARK).min(1.0 / longest_h);
         let ratio = (bottom / top).min(0.5);
         (0..POINTS)
             .map(|i| {
-                let power = top * libm::pow(ratio, i as f64 / (POINTS - 1) as f64);
+                // Denser at the top, where the knee is.
+                let share = i as f64 / (POINTS - 1) as f64;
+                let power = top * libm::pow(ratio, share * share);
                 place(design, power, circuit.delivered_kwh(power))
             })
             .filter(|(energy, power)| *energy > 0.0 && *power > 0.0)
@@ -150,16 +165,27 @@ fn curves(technology: &Technology, need: Option<&Need>, per: Per) -> (Curve, Vec
     for (design, at) in Design::all(technology, per).iter().zip(PLACES) {
         if at == 0.0 {
             typical = curve(design);
-            if let Some(seconds) = need.and_then(Need::duration_s)
-                && let Meeting::Curve(power) = design.circuit.meets(seconds / 3600.0, depth)
-            {
-                meets = Some(place(design, power, design.circuit.delivered_kwh(power)));
-            }
+            meets = meeting(design).map(|power| place(design, power, design.circuit.delivered_kwh(power)));
         } else {
             others.push(curve(design));
         }
     }
     (typical, others, meets)
+}
+
+/// Power at which a curve's drawing begins: the greatest, or where so little energy is left that the curve only runs
+/// along a level line.
+fn top_kw(circuit: &Circuit) -> f64 {
+    let (mut good, mut poor) = (circuit.ref_power_kw(), circuit.peak_kw());
+    let enough = |power: f64| circuit.delivered_kwh(power) >= LEAST_DRAWN;
+    if enough(poor) || good >= poor {
+        return poor;
+    }
+    for _ in 0..40 {
+        let middle = (good * poor).sqrt();
+        if enough(middle) { good = middle } else { poor = middle }
+    }
+    good
 }
 
 fn plants(technology: &Technology) -> (Curve, Vec<Curve>, Option<(f64, f64)>) {
@@ -261,6 +287,8 @@ mod tests {
         for strand in &plane.strands {
             if let Some((energy, power)) = strand.meets {
                 met += 1;
+                let (first, last) = (strand.typical[0], strand.typical[strand.typical.len() - 1]);
+                assert!(power <= first.1 && power >= last.1, "the mark lies on the drawn curve");
                 assert!((energy / power / hours - 1.0).abs() < 1e-9, "{}", strand.technology);
             }
         }

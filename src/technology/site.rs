@@ -70,8 +70,7 @@ fn plant_size(bench: &Bench) -> Judged {
     } else {
         (asked / place.greatest_plant_kw, LARGER, "Several plants would turn it".to_owned())
     };
-    bench
-        .weigh(Criterion::PlantSize, load, load / slack, 0.0)
+    Judged::weigh(Criterion::PlantSize, load, load / slack, 0.0)
         .because(format!(
             "Built from {} to {}; {} asked",
             power(place.least_plant_kw),

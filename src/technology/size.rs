@@ -82,9 +82,8 @@ fn discharge_power(bench: &Bench) -> Option<Judged> {
         }
     }
     let (_, p) = Per::Mass.quantities();
-    Some(match worst {
-        Some((offered, load)) => bench
-            .weigh(quantity, load.typical, load.good, bench.need.margin())
+    let judged = if let Some((offered, load)) = worst {
+        Judged::weigh(quantity, load.typical, load.good, bench.need.margin())
             .because(format!(
                 "At most {} from what the budget holds, {} at best; {} asked",
                 power(offered.typical),
@@ -92,15 +91,15 @@ fn discharge_power(bench: &Bench) -> Option<Judged> {
                 power(asked)
             ))
             .turned_by(format!("A budget {} times as large would do at best", significant(load.good, 2)))
-            .confirmed(bench.technology.range(p).verified),
-        None => {
-            let rated = asked / bench.running_kw();
-            bench
-                .weigh(quantity, 0.0, 0.0, 0.0)
-                .because(format!("{} from {} rated; no budget limits it", power(asked), energy(rated)))
-                .confirmed(bench.technology.range(p).verified)
-        }
-    })
+    } else {
+        let rated = asked / bench.running_kw();
+        Judged::weigh(quantity, 0.0, 0.0, 0.0).because(format!(
+            "{} from {} rated; no budget limits it",
+            power(asked),
+            energy(rated)
+        ))
+    };
+    Some(judged.confirmed(bench.technology.range(p).verified))
 }
 
 fn charge_power(bench: &Bench) -> Option<Judged> {
@@ -115,12 +114,11 @@ fn charge_power(bench: &Bench) -> Option<Judged> {
     let separate = bench.technology.circuit.model == super::Model::Fixed;
     let judged = if separate {
         // Pump, compressor or electrolyser: a machine of its own, bought for the charge power.
-        bench
-            .weigh(Criterion::ChargePower, 0.0, 0.0, 0.0)
+        Judged::weigh(Criterion::ChargePower, 0.0, 0.0, 0.0)
             .because(format!("Its charging machine is bought for the {} asked", power(asked)))
     } else {
         // A larger store always takes more, so that charging alone never rules a kind out; its mass may.
-        bench.weigh(Criterion::ChargePower, asked / typical, (asked / good).min(1.0), 0.0).because(format!(
+        Judged::weigh(Criterion::ChargePower, asked / typical, (asked / good).min(1.0), 0.0).because(format!(
             "The size that discharging sets takes {}, {} at best; {} asked",
             power(typical),
             power(good),
@@ -151,8 +149,7 @@ fn energy_kept(bench: &Bench) -> Judged {
     let typical = kept(&bench.typical, depth.typical);
     let good = kept(&good_circuit, depth.good).max(typical);
     if let (Meeting::RunsDown(lasts), true) = (bench.meeting(), good < LEAST_KEPT) {
-        return bench
-            .weigh(quantity, bench.hours / lasts, bench.hours / lasts, 0.0)
+        return Judged::weigh(quantity, bench.hours / lasts, bench.hours / lasts, 0.0)
             .because(format!(
                 "Runs down by itself in about {}; the duty lasts {}",
                 duration(lasts * 3600.0),
@@ -164,9 +161,9 @@ fn energy_kept(bench: &Bench) -> Judged {
     // At peak power from full little energy is left; a power-bound store is simply larger, so only slow losses count.
     let slow = bench.hours * 3600.0 > bench.technology.circuit.ref_duration_s;
     let mut judged = if slow {
-        bench.weigh(quantity, LEAST_KEPT / typical, LEAST_KEPT / good, 0.0)
+        Judged::weigh(quantity, LEAST_KEPT / typical, LEAST_KEPT / good, 0.0)
     } else {
-        bench.weigh(quantity, 0.0, 0.0, 0.0)
+        Judged::weigh(quantity, 0.0, 0.0, 0.0)
     };
     judged = judged
         .because(if slow {
@@ -195,7 +192,7 @@ fn energy_kept(bench: &Bench) -> Judged {
         let delivered = Pair { typical: offered.typical * room / 1000.0, good: offered.good * room / 1000.0 };
         let load =
             Pair { typical: bench.energy_kwh / delivered.typical, good: bench.energy_kwh / delivered.good };
-        let other = bench.weigh(quantity, load.typical, load.good, bench.need.margin());
+        let other = Judged::weigh(quantity, load.typical, load.good, bench.need.margin());
         if other.verdict >= judged.verdict {
             judged = other
                 .because(format!(
@@ -220,7 +217,7 @@ fn duration_held(bench: &Bench) -> Judged {
     let stretch = if device { 1.0 } else { STRETCH };
     let seconds = bench.hours * 3600.0;
     let good = (published.typical * published.high).sqrt();
-    let judged = bench.weigh(
+    let judged = Judged::weigh(
         Criterion::Duration,
         seconds / (stretch * published.typical),
         seconds / (stretch * good),
@@ -260,26 +257,25 @@ fn budget_held(bench: &Bench, per: Per) -> Option<Judged> {
         Per::Volume => volume(value).to_string(),
     };
     Some(
-        bench
-            .weigh(
-                quantity,
-                needed.typical / allowed.max(0.0),
-                needed.good / allowed.max(0.0),
-                bench.need.margin(),
-            )
-            .because(format!(
-                "Needs {} at typical values, {} at best; {} allowed",
-                text(needed.typical),
-                text(needed.good),
-                text(allowed)
-            ))
-            .turned_by(if needed.good <= allowed {
-                format!("A budget of {} would turn it", text(needed.typical * (1.0 + bench.need.margin())))
-            } else if allowed > 0.0 {
-                format!("Needs {} times the budget even at best", significant(needed.good / allowed, 2))
-            } else {
-                format!("A budget of {} would do at best", text(needed.good))
-            }),
+        Judged::weigh(
+            quantity,
+            needed.typical / allowed.max(0.0),
+            needed.good / allowed.max(0.0),
+            bench.need.margin(),
+        )
+        .because(format!(
+            "Needs {} at typical values, {} at best; {} allowed",
+            text(needed.typical),
+            text(needed.good),
+            text(allowed)
+        ))
+        .turned_by(if needed.good <= allowed {
+            format!("A budget of {} would turn it", text(needed.typical * (1.0 + bench.need.margin())))
+        } else if allowed > 0.0 {
+            format!("Needs {} times the budget even at best", significant(needed.good / allowed, 2))
+        } else {
+            format!("A budget of {} would do at best", text(needed.good))
+        }),
         // Packing factors are judgement, so that no installed mass is ever confirmed.
     )
 }

@@ -4,3 +4,4 @@
 mod properties;
 mod reference;
 mod site;
+mod terminal;

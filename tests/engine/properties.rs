@@ -13,6 +13,7 @@ fn series() -> impl Strategy<Value = Vec<Option<f64>>> {
         prop_oneof![9 => (-20i32..20).prop_map(|n| Some(f64::from(n))), 1 => Just(None)],
         1..120,
     )
+    .prop_filter("a record has at least one value", |values| values.iter().any(Option::is_some))
 }
 
 fn near(a: f64, b: f64, scale: f64) -> bool {

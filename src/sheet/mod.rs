@@ -3,9 +3,16 @@
 //! The result object, the sentences, the pictures' series and the tables' rows. The page lays them out and computes
 //! nothing; the statement quotes the same words.
 
+mod lay;
+mod pictures;
+
+pub use lay::Lay;
+
 use serde::{Deserialize, Serialize};
 
 use crate::chart;
+use crate::duty::Duty;
+use crate::fault::Fault;
 use crate::record::Reading;
 use crate::result::SiteResult;
 
@@ -141,6 +148,12 @@ pub struct Terms {
     pub power_kw: f64,
     /// Served share of the asked point.
     pub served_share: f64,
+    /// Charge efficiency in force, share.
+    pub charge_efficiency: f64,
+    /// Discharge efficiency in force, share.
+    pub discharge_efficiency: f64,
+    /// Whether the efficiencies are assumed, since none were entered.
+    pub efficiency_assumed: bool,
 }
 
 /// The pictures' data.
@@ -186,4 +199,57 @@ impl Pictures {
         }
         columns
     }
+}
+
+impl Sheet {
+    /// A sheet that only says what stopped the work.
+    pub fn failed(site: &str, fault: Fault) -> Self {
+        Self {
+            result: crate::assess::failed(site, fault),
+            reading: Reading::default(),
+            heads: Heads::default(),
+            record: Station::default(),
+            duty: Station::default(),
+            requirement: Station::default(),
+            plane: Station::default(),
+            episodes: Vec::new(),
+            terms: Terms::default(),
+            pictures: Pictures::default(),
+        }
+    }
+}
+
+/// Most episodes of each sign in the list.
+const LISTED: usize = 10;
+
+/// The largest deficit episodes, then the largest surplus episodes, each by energy.
+fn episodes(duty: &Duty) -> Vec<EpisodeRow> {
+    let clock = &duty.record.clock;
+    let step_h = duty.record.step_h();
+    [-1.0, 1.0]
+        .into_iter()
+        .flat_map(|sign| {
+            let mut side: Vec<_> =
+                duty.episodes.iter().filter(|episode| episode.energy_kwh * sign > 0.0).collect();
+            side.sort_by(|a, b| {
+                b.energy_kwh.abs().total_cmp(&a.energy_kwh.abs()).then(a.start.cmp(&b.start))
+            });
+            side.truncate(LISTED);
+            side
+        })
+        .map(|episode| {
+            let end = episode.start + episode.steps;
+            let (from_us, to_us) =
+                (pictures::reading_us(clock, episode.start), pictures::reading_us(clock, end));
+            EpisodeRow {
+                began: chart::ticks::moment(from_us),
+                ended: chart::ticks::moment(to_us),
+                from_us,
+                to_us,
+                hours: episode.steps as f64 * step_h,
+                energy_kwh: episode.energy_kwh,
+                peak_kw: episode.peak_kw,
+            }
+        })
+        .collect()
 }

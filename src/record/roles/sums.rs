@@ -1,0 +1,305 @@
+//! How the columns of a site add up to supply, demand and net power.
+
+use super::super::unit::Unit;
+use super::super::words::Guess;
+use super::super::{Finding, FindingKind, Role};
+use super::{Column, Target, is_extra, is_power, key};
+use crate::fault::{Fault, Result, quote};
+
+/// Settles what headers left open, over all files of the site, and says what each column is added to.
+pub(in crate::record) fn plan(
+    files: &mut [(String, Vec<Column>)],
+    findings: &mut Vec<Finding>,
+) -> Result<()> {
+    settle_open(files, findings);
+    let count =
+        |role: Role| files.iter().flat_map(|file| &file.1).filter(|column| column.role == role).count();
+    let [supply, demand, import, export] =
+        [Role::Supply, Role::Demand, Role::Import, Role::Export].map(count);
+    let generated = supply + count(Role::Generation);
+    let nets = count(Role::NetImport) + count(Role::NetExport);
+    let grid = import + export + nets > 0;
+    let mut doubt = None;
+    for column in files.iter_mut().flat_map(|file| &mut file.1) {
+        use Target::{Demand, Net, Supply};
+        // Import and export stand for net power only where no net column does.
+        let (drawn, fed) = match column.role {
+            Role::Import if nets == 0 => (1.0, 0.0),
+            Role::Export if nets == 0 => (0.0, 1.0),
+            Role::NetImport => (1.0, 0.0),
+            Role::NetExport => (0.0, 1.0),
+            _ => (0.0, 0.0),
+        };
+        let out = fed - drawn;
+        column.into = match column.role {
+            Role::Supply | Role::Generation if demand == 0 && grid => {
+                if column.role == Role::Supply && !column.stated {
+                    column.role = Role::Generation;
+                    column
+                        .why
+                        .push_str("; beside the meter's import and export it is generation on the site");
+                }
+                vec![(Supply, 1.0), (Demand, 1.0)]
+            }
+            Role::Supply | Role::Generation => vec![(Supply, 1.0)],
+            Role::Demand if generated == 0 && (nets > 0 || (import > 0 && export > 0)) => {
+                vec![(Demand, 1.0), (Supply, 1.0)]
+            }
+            Role::Demand => vec![(Demand, 1.0)],
+            _ if out == 0.0 => Vec::new(),
+            _ if generated > 0 && demand > 0 => Vec::new(),
+            _ if generated > 0 => vec![(Demand, 0.0 - out)],
+            _ if demand > 0 && (nets > 0 || (import > 0 && export > 0)) => vec![(Supply, out)],
+            _ if demand > 0 => Vec::new(),
+            _ if nets == 0 && export == 0 => vec![(Demand, 1.0)],
+            _ => vec![(Net, out)],
+        };
+        if is_power(column.role) && column.into.is_empty() {
+            column.why.push_str("; not needed beside the other columns");
+        }
+        if is_extra(column.role) && (column.numeric || column.stated) {
+            column.extra = true;
+        }
+    }
+    if generated > 0 && demand == 0 && nets == 0 && (import > 0) != (export > 0) {
+        doubt = Some(if export == 0 {
+            "There is generation and import but no export: demand is taken as generation plus import, which holds only if nothing is exported."
+        } else {
+            "There is generation and export but no import: demand is taken as generation minus export, which holds only if nothing is imported."
+        });
+    }
+    if let Some(text) = doubt {
+        findings.push(note(FindingKind::SignDoubt, 1, "", "taken as zero", text.to_owned(), true));
+    }
+    if generated == 0 && demand == 0 && (nets > 0 || (import > 0 && export > 0)) {
+        findings.push(note(
+            FindingKind::Netted,
+            1,
+            "",
+            "net power taken as recorded",
+            "The files hold what was drawn from and fed to the grid: supply and demand were netted before they were recorded, so that use on the site does not show.".to_owned(),
+            false,
+        ));
+    }
+    units(files, findings);
+    ignored(files, findings);
+    if files.iter().all(|file| file.1.iter().all(|column| column.into.is_empty() && !column.extra)) {
+        return Err(nothing(files));
+    }
+    Ok(())
+}
+
+/// Roles of columns whose headers say nothing, from what else is there and from their values.
+fn settle_open(files: &mut [(String, Vec<Column>)], findings: &mut Vec<Finding>) {
+    let known = |files: &[(String, Vec<Column>)], roles: &[Role]| {
+        files.iter().flat_map(|file| &file.1).any(|column| roles.contains(&column.role))
+    };
+    let supply = known(files, &[Role::Supply, Role::Generation]);
+    let demand = known(files, &[Role::Demand]);
+    let grid = known(files, &[Role::Import, Role::Export, Role::NetImport, Role::NetExport]);
+    for (file, columns) in files.iter_mut() {
+        for column in columns.iter_mut().filter(|column| column.open) {
+            let Guess::Net(word) = column.guess else { continue };
+            if (supply && demand) || grid {
+                column.take(
+                    Role::Ignore,
+                    format!("its header says {}; not needed beside the other columns", quote(word)),
+                );
+            } else {
+                net(file, column, word, findings);
+            }
+        }
+    }
+    let grid = known(files, &[Role::Import, Role::Export, Role::NetImport, Role::NetExport]);
+    if demand || grid {
+        return;
+    }
+    let open: Vec<(usize, usize)> = files
+        .iter()
+        .enumerate()
+        .flat_map(|(f, file)| {
+            file.1
+                .iter()
+                .enumerate()
+                .filter(|(_, column)| column.open && !column.extra)
+                .map(move |(c, _)| (f, c))
+        })
+        .collect();
+    // Columns in kW or kWh come before columns without a unit.
+    let powers: Vec<(usize, usize)> =
+        open.iter().copied().filter(|(f, c)| files[*f].1[*c].unit.is_some()).collect();
+    let open = if powers.is_empty() { open } else { powers };
+    let Some(&(first_file, first)) = open.first() else { return };
+    let same = key(&files[first_file].1[first].header);
+    if open.iter().all(|(f, c)| key(&files[*f].1[*c].header) == same) {
+        for (f, c) in open {
+            let (file, columns) = &mut files[f];
+            let column = &mut columns[c];
+            if column.look.negative > 0 && column.look.positive > 0 && !supply {
+                net(file, column, "", findings);
+            } else {
+                let why = if supply {
+                    "the only other column of numbers beside supply"
+                } else {
+                    "the only column of numbers"
+                };
+                column.take(Role::Demand, why.to_owned());
+                let text = format!("Column {} is taken as demand: it is {why}.", quote(&column.header));
+                findings.push(note(FindingKind::SignDoubt, 1, file, "taken as demand", text, true));
+            }
+        }
+        return;
+    }
+    // Of two columns the one that is often zero is supply, as the sun does not shine at night.
+    let zeros = |(f, c): (usize, usize)| {
+        let look = &files[f].1[c].look;
+        look.zeros as f64 / look.numbers.max(1) as f64
+    };
+    let idle = open.iter().copied().find(|at| !supply && zeros(*at) > 0.2);
+    let busy = open.iter().copied().find(|at| Some(*at) != idle && zeros(*at) < 0.1);
+    let (idle, busy) = if busy.is_some() { (idle, busy) } else { (None, Some(open[0])) };
+    for (at, role, why) in [
+        (idle, Role::Supply, "it is zero for much of the time"),
+        (busy, Role::Demand, "no header says what is what"),
+    ] {
+        let Some((f, c)) = at else { continue };
+        let (file, columns) = &mut files[f];
+        columns[c].take(role, why.to_owned());
+        let name = if role == Role::Supply { "supply" } else { "demand" };
+        let text = format!("Column {} is taken as {name} by a guess: {why}.", quote(&columns[c].header));
+        findings.push(note(FindingKind::SignDoubt, 1, file, "role guessed", text, true));
+    }
+}
+
+/// The sign of a net column whose header does not say which way is positive.
+fn net(file: &str, column: &mut Column, word: &str, findings: &mut Vec<Finding>) {
+    let said = if word.is_empty() {
+        "it has both signs".to_owned()
+    } else {
+        format!("its header says {}", quote(word))
+    };
+    if column.look.negative == 0 && column.look.positive > 0 && word != "net" {
+        column.take(Role::Import, format!("{said} and no value is negative"));
+        return;
+    }
+    let (role, sign, because) = if column.look.night_sum > 0.0 {
+        (
+            Role::NetImport,
+            "drawn from the grid",
+            "it is positive in the hours after midnight, when sites draw",
+        )
+    } else if column.look.night_sum < 0.0 {
+        (Role::NetExport, "surplus", "it is negative in the hours after midnight, when sites draw")
+    } else {
+        (Role::NetExport, "surplus", "nothing says otherwise")
+    };
+    column.take(role, format!("{said}; positive is taken as {sign}, since {because}"));
+    let text = format!("In column {} positive is taken as {sign}: {because}.", quote(&column.header));
+    findings.push(note(FindingKind::SignDoubt, 1, file, "sign guessed", text, true));
+}
+
+fn units(files: &mut [(String, Vec<Column>)], findings: &mut Vec<Finding>) {
+    for (file, columns) in files {
+        let mut guessed = Vec::new();
+        for column in columns.iter_mut().filter(|column| !column.into.is_empty()) {
+            match column.unit {
+                Some(unit) => {
+                    let how =
+                        if column.stated_unit { "as stated" } else { "as the header or units row says" };
+                    column.why.push_str(&format!("; {} {how}", unit.label()));
+                }
+                None => {
+                    column.unit = Some(Unit::Kw);
+                    column.why.push_str("; no unit is stated, kW is a guess");
+                    guessed.push(quote(&column.header));
+                }
+            }
+        }
+        if !guessed.is_empty() {
+            let text = format!("No unit is stated for {}: kW (average power) is taken.", list(&guessed));
+            findings.push(note(FindingKind::UnitDoubt, 1, file, "kW taken", text, true));
+        }
+    }
+}
+
+fn ignored(files: &[(String, Vec<Column>)], findings: &mut Vec<Finding>) {
+    for (file, columns) in files {
+        let unused: Vec<String> = columns
+            .iter()
+            .filter(|column| {
+                !column.extra
+                    && column.into.is_empty()
+                    && column.look.filled > 0
+                    && !column.stated
+                    && (column.role == Role::Ignore || is_power(column.role))
+            })
+            .map(|column| quote(&column.header))
+            .collect();
+        if unused.is_empty() {
+            continue;
+        }
+        let registers = columns
+            .iter()
+            .any(|column| column.role == Role::Ignore && column.look.register && !column.stated);
+        let text = format!(
+            "{} not used: {}.{}",
+            if unused.len() == 1 {
+                "One column is".to_owned()
+            } else {
+                format!("{} columns are", unused.len())
+            },
+            list(&unused),
+            if registers {
+                " A column that only ever rises is a running meter reading; state its role if it is not."
+            } else {
+                ""
+            }
+        );
+        findings.push(note(FindingKind::Ignored, unused.len() as u64, file, "left out", text, false));
+    }
+}
+
+pub(super) fn list(names: &[String]) -> String {
+    const MOST: usize = 8;
+    let mut text = names.iter().take(MOST).cloned().collect::<Vec<_>>().join(", ");
+    if names.len() > MOST {
+        text.push_str(&format!(" and {} more", names.len() - MOST));
+    }
+    text
+}
+
+fn note(
+    kind: FindingKind,
+    count: u64,
+    file: &str,
+    remedy: &str,
+    text: String,
+    changes_figures: bool,
+) -> Finding {
+    Finding {
+        kind,
+        count,
+        first_row: None,
+        file: file.to_owned(),
+        remedy: remedy.to_owned(),
+        text,
+        changes_figures,
+    }
+}
+
+#[cold]
+fn nothing(files: &[(String, Vec<Column>)]) -> Fault {
+    let (file, columns) =
+        files.first().map_or(("", &[][..]), |(file, columns)| (file.as_str(), &columns[..]));
+    let headers: Vec<String> = columns.iter().map(|column| quote(&column.header)).collect();
+    let register = columns.iter().any(|column| column.look.register);
+    Fault::new(
+        format!("no column holds numbers that could be power or energy; the columns are {}", list(&headers)),
+        file,
+        if register {
+            "A column that only ever rises is a running meter reading: export the energy or power of each interval, or state the column's role."
+        } else {
+            "State the role of the column that holds supply, demand or net power, or choose another file."
+        },
+    )
+}
