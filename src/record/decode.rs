@@ -129,9 +129,16 @@ pub(super) fn look(source: Box<dyn Source>) -> (Box<dyn Source>, Result<Looked>)
         Ok(count) => count,
         Err(fault) => return (source, Err(fault)),
     };
+    let len = source.len();
     let gzip = first[..count].starts_with(&[0x1f, 0x8b]);
     let mut feed = Feed::new(source, gzip);
-    let mut head = vec![0; HEAD];
+    // UTF-16 grows by a half at most as it becomes UTF-8.
+    let room = if gzip {
+        HEAD
+    } else {
+        usize::try_from(len.saturating_mul(2)).map_or(HEAD, |len| HEAD.min(len + 2))
+    };
+    let mut head = vec![0; room];
     let filled = fill(&mut feed, &mut head);
     let source = feed.into_source();
     let found = match filled {
@@ -144,7 +151,7 @@ pub(super) fn look(source: Box<dyn Source>) -> (Box<dyn Source>, Result<Looked>)
     match found {
         Ok(container) => {
             let mut decoded = Decoded::open(source, &container);
-            let mut text = vec![0; HEAD];
+            let mut text = vec![0; room];
             let read = decoded.read_full(&mut text);
             let name = decoded.name.clone();
             let source = decoded.into_source();
@@ -370,7 +377,7 @@ impl Decoded {
             self.skip -= skipped;
         }
         if let Encoding::Utf16 { big } = self.container.encoding {
-            self.to_utf8(big);
+            self.convert_utf16(big);
         }
         match self.container.carriage_returns {
             Returns::None => {}
@@ -390,7 +397,7 @@ impl Decoded {
         Ok(())
     }
 
-    fn to_utf8(&mut self, big: bool) {
+    fn convert_utf16(&mut self, big: bool) {
         let mut bytes = std::mem::take(&mut self.carry);
         bytes.append(&mut self.raw);
         // A half unit, or the first half of a pair, waits for the next bytes.

@@ -309,7 +309,9 @@ mod tests {
             (&["1.234.567", "7"], b','),
         ] {
             let mut evidence = Evidence::default();
-            cells.iter().for_each(|cell| evidence.add(cell.as_bytes()));
+            for cell in cells {
+                evidence.add(cell.as_bytes());
+            }
             assert_eq!(evidence.decide(None).0.decimal, decimal, "{cells:?}");
         }
     }

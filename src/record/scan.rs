@@ -135,12 +135,11 @@ impl Scan {
         }
         let Some(any) = moments.iter().flatten().next().copied() else { return };
         for (candidate, moment) in candidates.iter_mut().zip(moments) {
-            match moment {
-                Some(moment) => candidate.push(row, moment),
-                None => {
-                    candidate.refuted += 1;
-                    candidate.refuted_by.get_or_insert(row);
-                }
+            if let Some(moment) = moment {
+                candidate.push(row, moment);
+            } else {
+                candidate.refuted += 1;
+                candidate.refuted_by.get_or_insert(row);
             }
         }
         self.note(any);

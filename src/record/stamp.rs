@@ -3,6 +3,8 @@
 use super::number::trim;
 use crate::case::DateOrder;
 
+mod fixed;
+
 /// Microseconds of a second and of a day.
 pub(super) const SECOND: i64 = 1_000_000;
 pub(super) const DAY: i64 = 86_400 * SECOND;
@@ -50,7 +52,13 @@ pub(super) fn days(year: i64, month: i64, day: i64) -> Option<i64> {
 
 /// Reads a stamp, a date with or without time of day.
 pub(super) fn stamp(cell: &[u8], order: DateOrder) -> Option<Written> {
-    let mut scan = Scan { rest: trim(cell) };
+    let cell = trim(cell);
+    fixed::fixed(cell, order).or_else(|| scanned(cell, order))
+}
+
+/// Reads a stamp by scanning it part by part.
+fn scanned(cell: &[u8], order: DateOrder) -> Option<Written> {
+    let mut scan = Scan { rest: cell };
     let (days, clear, mark, glued) = scan.date(order)?;
     let mut written = Written {
         civil_us: days.checked_mul(DAY)?,

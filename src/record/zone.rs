@@ -6,6 +6,9 @@ use jiff::{SignedDuration, Timestamp};
 
 use super::stamp::{DAY, SECOND};
 
+/// A span of local readings in which the offset holds for certain: start, end, offset (all microseconds).
+type Steady = (i64, i64, i64);
+
 /// Turns the stamps of one file into instants, row by row in the file's order.
 #[derive(Debug, Clone)]
 pub(super) struct Resolver {
@@ -13,8 +16,7 @@ pub(super) struct Resolver {
     /// Whether rows run from the newest to the oldest.
     falling: bool,
     before: Option<i64>,
-    /// A span of local readings in which the offset holds for certain: start, end, offset (all microseconds).
-    steady: (i64, i64, i64),
+    steady: Steady,
 }
 
 impl Resolver {
@@ -42,12 +44,7 @@ impl Resolver {
     }
 }
 
-fn ambiguous(
-    zone: &TimeZone,
-    us: i64,
-    before: Option<i64>,
-    falling: bool,
-) -> Option<(i64, Option<(i64, i64, i64)>)> {
+fn ambiguous(zone: &TimeZone, us: i64, before: Option<i64>, falling: bool) -> Option<(i64, Option<Steady>)> {
     let read =
         DateTime::constant(1970, 1, 1, 0, 0, 0, 0).checked_add(SignedDuration::from_micros(us)).ok()?;
     let shift = |offset: jiff::tz::Offset| i64::from(offset.seconds()) * SECOND;

@@ -169,8 +169,13 @@ impl Reader {
                     .collect();
                 if column.extra {
                     let wanted = roles::key(&column.header);
-                    let known = self.shape.extras.iter().find(|(header, _, _)| roles::key(header) == wanted);
-                    let series = known.map(|known| known.2).unwrap_or_else(|| {
+                    let known = self
+                        .shape
+                        .extras
+                        .iter()
+                        .find(|(header, _, _)| roles::key(header) == wanted)
+                        .map(|known| known.2);
+                    let series = known.unwrap_or_else(|| {
                         let role = if column.role == Role::Ignore { Role::Asked } else { column.role };
                         self.shape.extras.push((column.header.clone(), role, count));
                         count += 1;

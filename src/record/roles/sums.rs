@@ -202,17 +202,13 @@ fn units(files: &mut [(String, Vec<Column>)], findings: &mut Vec<Finding>) {
     for (file, columns) in files {
         let mut guessed = Vec::new();
         for column in columns.iter_mut().filter(|column| !column.into.is_empty()) {
-            match column.unit {
-                Some(unit) => {
-                    let how =
-                        if column.stated_unit { "as stated" } else { "as the header or units row says" };
-                    column.why.push_str(&format!("; {} {how}", unit.label()));
-                }
-                None => {
-                    column.unit = Some(Unit::Kw);
-                    column.why.push_str("; no unit is stated, kW is a guess");
-                    guessed.push(quote(&column.header));
-                }
+            if let Some(unit) = column.unit {
+                let how = if column.stated_unit { "as stated" } else { "as the header or units row says" };
+                column.why = format!("{}; {} {how}", column.why, unit.label());
+            } else {
+                column.unit = Some(Unit::Kw);
+                column.why.push_str("; no unit is stated, kW is a guess");
+                guessed.push(quote(&column.header));
             }
         }
         if !guessed.is_empty() {
@@ -261,11 +257,8 @@ fn ignored(files: &[(String, Vec<Column>)], findings: &mut Vec<Finding>) {
 
 pub(super) fn list(names: &[String]) -> String {
     const MOST: usize = 8;
-    let mut text = names.iter().take(MOST).cloned().collect::<Vec<_>>().join(", ");
-    if names.len() > MOST {
-        text.push_str(&format!(" and {} more", names.len() - MOST));
-    }
-    text
+    let text = names.iter().take(MOST).cloned().collect::<Vec<_>>().join(", ");
+    if names.len() > MOST { format!("{text} and {} more", names.len() - MOST) } else { text }
 }
 
 fn note(
