@@ -3,6 +3,7 @@
 
 use std::fmt::Write as _;
 
+use super::NARROW;
 use super::data::{DurationCurve, YearSheet};
 use super::frame::{Frame, Hits};
 use super::label::{Patch, Placer};
@@ -12,7 +13,6 @@ use super::shape::{Lie, Point};
 use super::ticks::{self, DAY_US};
 use super::words::extent;
 use super::year_curve::{self, Place};
-use super::{NARROW, shape};
 use crate::fault::Result;
 use crate::units::people;
 
@@ -328,7 +328,6 @@ fn bracket<S: Surface>(
         line.push((x, bottom));
     }
     pen.line(&line, Ink::new(pen.palette.requirement, pen.palette.pens.requirement));
-    debug_assert!(shape::runs(&line).count() == 1);
 }
 
 #[cfg(test)]
