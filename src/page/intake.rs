@@ -159,8 +159,9 @@ fn open_demo(desk: Desk, name: String) {
     });
 }
 
+/// The build packs the demo sites; what they are is told by their bytes, so they keep their own names.
 async fn fetch(name: &str) -> Result<File, JsValue> {
-    let answer: Response = JsFuture::from(window().fetch_with_str(&format!("demos/{name}"))).await?.dyn_into()?;
+    let answer: Response = JsFuture::from(window().fetch_with_str(&format!("demos/{name}.gz"))).await?.dyn_into()?;
     if !answer.ok() {
         return Err(format!("the server answered {}", answer.status()).into());
     }
