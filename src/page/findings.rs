@@ -75,7 +75,8 @@ fn row(desk: Desk, at: usize, kind: FindingKind, changes: bool) -> impl IntoView
 }
 
 fn first_row(finding: &Finding) -> String {
-    let Some(row) = finding.first_row else { return String::new() };
+    // Most sentences name their rows themselves.
+    let Some(row) = finding.first_row.filter(|row| !finding.text.contains(&row.to_string())) else { return String::new() };
     let file = if finding.file.is_empty() { String::new() } else { format!(" of {}", finding.file) };
     format!(" (first at row {}{file})", people::whole(row as f64))
 }

@@ -74,12 +74,16 @@ const MARGIN: Field = Field {
 pub(crate) fn station(desk: Desk) -> impl IntoView {
     let place = PLACES[2];
     let has_sheet = Memo::new(move |_| desk.sheet.with(Option::is_some));
+    let notes = Memo::new(move |_| desk.of(|sheet| sheet.requirement.notes.clone()));
     let has_week = Memo::new(move |_| desk.of(|sheet| sheet.pictures.week.is_some()));
     station::station(desk, place, view! {
         {station::lacking(desk, "Needs a duty: from it follow energies, powers, ramps, cycling and holding time.")}
         {figures(desk, place.of, 0)}
         {move || has_sheet.get().then(|| view! {
-            <div class="work">{terms(desk)}</div>
+            <div class="work">
+                {terms(desk)}
+                {move || notes.get().into_iter().map(|note| view! { <p class="note">{note}</p> }).collect_view()}
+            </div>
             <div class="pair">{picture(desk, Which::Coverage)}{figures(desk, place.of, 1)}</div>
             <div class="work">{method(desk, place.of, 0)}</div>
             {move || has_week.get().then(|| view! {

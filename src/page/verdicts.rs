@@ -83,7 +83,6 @@ pub(crate) fn list(desk: Desk) -> impl IntoView {
             <tbody>{move || order.get().into_iter().map(|(i, id)| row(desk, i, id)).collect_view()}</tbody>
         </table></div>
         <div class="note caution">
-            <p>"Screening only: a kind that carries here still has to be designed. Local codes and licensed practice decide."</p>
             {move || notes.get().into_iter().map(|note| view! { <p>{note}</p> }).collect_view()}
             <p>"Cautions of the kinds shown:"</p>
             <ul>{move || cautions.get().into_iter().map(|words| view! { <li>{words}</li> }).collect_view()}</ul>
