@@ -1,6 +1,6 @@
 //! Where bytes come from: anything with a length that can be read from a place.
 
-use crate::fault::{Fault, Result};
+use crate::fault::Result;
 
 /// A file to be read: a file of the system in the terminal, a `Blob` read synchronously in the worker, bytes in a test.
 pub trait Source {
@@ -113,8 +113,8 @@ impl Source for Disk {
 
 #[cfg(not(target_arch = "wasm32"))]
 #[cold]
-fn cannot_read(name: &str, error: &std::io::Error) -> Fault {
-    Fault::new(
+fn cannot_read(name: &str, error: &std::io::Error) -> crate::fault::Fault {
+    crate::fault::Fault::new(
         format!("the file cannot be read: {error}"),
         name,
         "Check that it exists, that it is not open in another program, and that you may read it.",

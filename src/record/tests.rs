@@ -1,6 +1,6 @@
 //! The reader as a whole: files as they come, the record they make, and what is said about them.
 
-#![allow(clippy::format_push_string, reason = "tests build small tables")]
+#![allow(clippy::format_push_string, clippy::format_collect, reason = "tests build small tables")]
 
 use proptest::prelude::*;
 
