@@ -2,6 +2,7 @@
 
 use super::{Case, DutyCase, Store, VERSION};
 use crate::fault::{Fault, Result};
+use crate::units::people::percent;
 
 /// Powers and energies beyond this (kW, kWh, kg, l) are slips of the pen: a thousand times the largest plants.
 const MOST: f64 = 1e12;
@@ -114,7 +115,12 @@ fn number(field: &str, value: f64, least: f64, greatest: f64, unit: &str) -> Res
     if value.is_finite() && (least..=greatest).contains(&value) {
         return Ok(());
     }
-    let unit = if unit.is_empty() { String::new() } else { format!(" {unit}") };
+    // Numbers without a unit are shares, which the page takes as per cent.
+    let unit = if unit.is_empty() {
+        format!(" ({} to {})", percent(least), percent(greatest))
+    } else {
+        format!(" {unit}")
+    };
     Err(Fault::new(
         format!("{field} is {value}"),
         format!("case, at {field}"),

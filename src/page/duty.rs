@@ -15,6 +15,9 @@ use super::fold::{fold, method, methods_from};
 use super::picture::{picture, show_window};
 use super::station::{self, PLACES};
 
+/// Episodes that stand open.
+const FIRST: usize = 5;
+
 /// What can be asked, as a person says it.
 #[derive(Clone, Copy, PartialEq, Eq)]
 enum Kind {
@@ -220,15 +223,21 @@ fn given_terms(desk: Desk, columns: Memo<Vec<String>>) -> impl IntoView {
 
 fn episodes(desk: Desk) -> impl IntoView {
     let rows = Memo::new(move |_| desk.of(|sheet| sheet.episodes.clone()));
-    let count = move || format!("the {} largest, by energy", rows.with(Vec::len));
-    fold("Episodes", count, true, move || view! {
-        <div class="scroll" tabindex="0" role="region" aria-label="Episodes"><table>
+    let table = move |name: &'static str, from: usize, to: usize| view! {
+        <div class="scroll" tabindex="0" role="region" aria-label=name><table class="episodes">
             <thead><tr>
-                <th>"Began"</th><th>"Ended"</th><th class="n">"Hours"</th><th class="n">"Energy, kWh"</th><th class="n">"Peak, kW"</th>
+                <th>"Began"</th><th class="ended">"Ended"</th><th class="n">"Hours"</th><th class="n">"Energy, kWh"</th><th class="n">"Peak, kW"</th>
             </tr></thead>
-            <tbody>{move || rows.get().into_iter().map(|row| episode(desk, row)).collect_view()}</tbody>
+            <tbody>{move || rows.get().into_iter().take(to).skip(from).map(|row| episode(desk, row)).collect_view()}</tbody>
         </table></div>
-    })
+    };
+    let further = Memo::new(move |_| rows.with(Vec::len).saturating_sub(FIRST));
+    view! {
+        {fold("Episodes", || "the largest first".to_owned(), true, move || table("Episodes", 0, FIRST))}
+        {move || (further.get() > 0).then(|| {
+            fold("Further episodes", move || further.get().to_string(), false, move || table("Further episodes", FIRST, usize::MAX))
+        })}
+    }
 }
 
 fn episode(desk: Desk, row: EpisodeRow) -> impl IntoView {
@@ -237,7 +246,7 @@ fn episode(desk: Desk, row: EpisodeRow) -> impl IntoView {
     view! {
         <tr>
             <td><button class="quiet" aria-label=name on:click=move |_| show_window(desk, from_us, to_us)>{began}</button></td>
-            <td>{ended}</td>
+            <td class="ended">{ended}</td>
             <td class="n">{people::plain(hours, 2)}</td>
             <td class="n">{people::significant(energy_kwh, 4)}</td>
             <td class="n">{people::significant(peak_kw, 3)}</td>

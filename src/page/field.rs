@@ -61,6 +61,12 @@ pub(crate) fn input(desk: Desk, field: Field, empty: impl Fn() -> String + Send 
                 aria-invalid=move || remedy.with(Option::is_some).then_some("true")
                 aria-describedby=move || remedy.with(Option::is_some).then(|| by.clone())
                 on:input=take
+                on:change=move |_| {
+                    // Left with a value that reads, the field shows it with its unit.
+                    if remedy.with_untracked(Option::is_none) {
+                        typed.set(asked.show(value.get_untracked()));
+                    }
+                }
             />
             {move || remedy.get().map(|remedy| view! { <span class="err" id=described.clone()>{remedy}</span> })}
         </span>

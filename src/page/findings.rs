@@ -22,20 +22,22 @@ const REPEATS: [(RepeatRemedy, &str); 3] =
 
 /// The list of findings.
 pub(crate) fn list(desk: Desk) -> impl IntoView {
-    // The rows are made anew only when their kinds change; words and choices inside follow on their own.
     let kinds = Memo::new(move |_| {
-        findings(desk, |all| all.iter().map(|finding| (finding.kind, finding.changes_figures)).collect::<Vec<_>>())
+        let kinds = |all: &[Finding]| all.iter().map(|finding| (finding.kind, finding.changes_figures)).enumerate().collect::<Vec<_>>();
+        findings(desk, kinds)
     });
+    let none = Memo::new(move |_| kinds.with(Vec::is_empty));
     view! {
         <h3>"Findings"</h3>
-        {move || {
-            let kinds = kinds.get();
-            if kinds.is_empty() {
-                return view! { <p class="empty">"Nothing wrong or doubtful was found in the record."</p> }.into_any();
-            }
-            let rows = kinds.into_iter().enumerate().map(|(i, (kind, changes))| row(desk, i, kind, changes)).collect_view();
-            view! { <ul class="findings">{rows}</ul> }.into_any()
-        }}
+        {move || none.get().then(|| view! { <p class="empty">"Nothing wrong or doubtful was found in the record."</p> })}
+        <ul class="findings" hidden=move || none.get()>
+            // A row stays as long as its kind does, so that a choice keeps its focus; words and choices inside follow on their own.
+            <For
+                each=move || kinds.get()
+                key=|(at, (kind, changes))| (*at, *kind as u8, *changes)
+                children=move |(at, (kind, changes))| row(desk, at, kind, changes)
+            />
+        </ul>
     }
 }
 
@@ -75,7 +77,8 @@ fn row(desk: Desk, at: usize, kind: FindingKind, changes: bool) -> impl IntoView
 }
 
 fn first_row(finding: &Finding) -> String {
-    let Some(row) = finding.first_row else { return String::new() };
+    // Most sentences name their rows themselves.
+    let Some(row) = finding.first_row.filter(|row| !finding.text.contains(&row.to_string())) else { return String::new() };
     let file = if finding.file.is_empty() { String::new() } else { format!(" of {}", finding.file) };
     format!(" (first at row {}{file})", people::whole(row as f64))
 }

@@ -40,7 +40,6 @@ pub(crate) fn place(desk: Desk) -> impl IntoView {
             input.click();
         }
     };
-    let open_at_first = desk.files.with_untracked(Vec::is_empty);
     view! {
         <div class="drop">
             <span>"Drop files anywhere on this page, or"</span>
@@ -51,7 +50,7 @@ pub(crate) fn place(desk: Desk) -> impl IntoView {
             <button class:first=move || desk.files.with(Vec::is_empty) on:click=choose>"Choose files"</button>
             <span class="note">"They are read here, in the browser, and go nowhere."</span>
         </div>
-        <details class="fold" open=open_at_first>
+        <details class="fold" prop:open=move || desk.files.with(Vec::is_empty)>
             <summary>"Demo sites"<span class="count">"invented, with the faults that real files have"</span></summary>
             <div><ul class="demos">{demos().into_iter().map(move |demo| entry(desk, demo)).collect_view()}</ul></div>
         </details>

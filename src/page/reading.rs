@@ -51,12 +51,10 @@ struct Shape {
 /// "As read", the note under it, and the fold with further corrections.
 pub(crate) fn as_read(desk: Desk) -> impl IntoView {
     let shapes = Memo::new(move |_| desk.of(|sheet| sheet.reading.files.iter().map(shape).collect::<Vec<_>>()));
-    let note = Memo::new(move |_| {
-        desk.of(|sheet| {
-            let notes = sheet.reading.files.iter().map(|file| note(file, sheet.reading.files.len() > 1));
-            (notes.collect::<Vec<_>>(), sheet.reading.clock_note.clone())
-        })
+    let notes = Memo::new(move |_| {
+        desk.of(|sheet| sheet.reading.files.iter().map(|file| note(file, sheet.reading.files.len() > 1)).collect::<Vec<_>>())
     });
+    let clock = Memo::new(move |_| desk.of(|sheet| sheet.reading.clock_note.clone()));
     view! {
         <h3>"As read"</h3>
         {move || {
@@ -64,7 +62,7 @@ pub(crate) fn as_read(desk: Desk) -> impl IntoView {
             let many = shapes.len() > 1;
             shapes.into_iter().enumerate().map(|(i, shape)| table(desk, i, shape, many)).collect_view()
         }}
-        <p class="note">{move || note.get().0.into_iter().map(|line| view! { {line}<br /> }).collect_view()}{move || note.get().1}</p>
+        <p class="note">{move || notes.get().into_iter().map(noted).collect_view()}{move || clock.get()}</p>
         {fold("Correct the reading", String::new, false, move || corrections(desk))}
     }
 }
@@ -77,14 +75,21 @@ fn shape(file: &FileReading) -> Shape {
     }
 }
 
-fn note(file: &FileReading, many: bool) -> String {
+/// Name where there are several files, separator, decimal mark, and the rest in words.
+type Note = (String, String, char, String);
+
+fn note(file: &FileReading, many: bool) -> Note {
     let separator = match file.separator {
         '\t' => "tab".to_owned(),
         other => other.to_string(),
     };
     let name = if many { format!("{}: ", file.name) } else { String::new() };
     let container = if file.container.is_empty() { String::new() } else { format!(" {}.", file.container) };
-    format!("{name}Separator {separator} decimal mark {} stamps {}.{container}", file.decimal, file.stamps)
+    (name, separator, file.decimal, format!(", stamps {}.{container}", file.stamps))
+}
+
+fn noted((name, separator, decimal, rest): Note) -> impl IntoView {
+    view! { {name}"Separator "<b>{separator}</b>" decimal mark "<b>{decimal.to_string()}</b>{rest}<br /> }
 }
 
 /// One file's first rows, once for wide screens and once, a row per column, for a phone.

@@ -17,7 +17,7 @@ use super::station::{self, PLACES};
 const SERVED: Field = Field {
     asked: Asked::Share,
     name: "Share of the deficit served",
-    size: 6,
+    size: 5,
     get: |case| case.requirement.served_share,
     set: |case, value| case.requirement.served_share = value,
 };
@@ -33,7 +33,7 @@ const POWER: Field = Field {
 const CHARGE: Field = Field {
     asked: Asked::Share,
     name: "Charge efficiency",
-    size: 6,
+    size: 5,
     get: |case| Some(case.requirement.charge_efficiency),
     set: |case, value| case.requirement.charge_efficiency = value.unwrap_or(1.0),
 };
@@ -41,7 +41,7 @@ const CHARGE: Field = Field {
 const DISCHARGE: Field = Field {
     asked: Asked::Share,
     name: "Discharge efficiency",
-    size: 6,
+    size: 5,
     get: |case| Some(case.requirement.discharge_efficiency),
     set: |case, value| case.requirement.discharge_efficiency = value.unwrap_or(1.0),
 };
@@ -49,7 +49,7 @@ const DISCHARGE: Field = Field {
 const DEPTH: Field = Field {
     asked: Asked::Share,
     name: "Usable depth",
-    size: 6,
+    size: 5,
     get: |case| Some(case.requirement.depth),
     set: |case, value| case.requirement.depth = value.unwrap_or(0.9),
 };
@@ -57,7 +57,7 @@ const DEPTH: Field = Field {
 const END: Field = Field {
     asked: Asked::Share,
     name: "Capacity left at end of life",
-    size: 6,
+    size: 5,
     get: |case| Some(case.requirement.end_of_life),
     set: |case, value| case.requirement.end_of_life = value.unwrap_or(0.8),
 };
@@ -65,7 +65,7 @@ const END: Field = Field {
 const MARGIN: Field = Field {
     asked: Asked::Share,
     name: "Margin on nameplate energy",
-    size: 6,
+    size: 5,
     get: |case| Some(case.requirement.margin),
     set: |case, value| case.requirement.margin = value.unwrap_or(0.0),
 };
@@ -74,12 +74,16 @@ const MARGIN: Field = Field {
 pub(crate) fn station(desk: Desk) -> impl IntoView {
     let place = PLACES[2];
     let has_sheet = Memo::new(move |_| desk.sheet.with(Option::is_some));
+    let notes = Memo::new(move |_| desk.of(|sheet| sheet.requirement.notes.clone()));
     let has_week = Memo::new(move |_| desk.of(|sheet| sheet.pictures.week.is_some()));
     station::station(desk, place, view! {
         {station::lacking(desk, "Needs a duty: from it follow energies, powers, ramps, cycling and holding time.")}
         {figures(desk, place.of, 0)}
         {move || has_sheet.get().then(|| view! {
-            <div class="work">{terms(desk)}</div>
+            <div class="work">
+                {terms(desk)}
+                {move || notes.get().into_iter().map(|note| view! { <p class="note">{note}</p> }).collect_view()}
+            </div>
             <div class="pair">{picture(desk, Which::Coverage)}{figures(desk, place.of, 1)}</div>
             <div class="work">{method(desk, place.of, 0)}</div>
             {move || has_week.get().then(|| view! {
@@ -111,12 +115,12 @@ fn terms(desk: Desk) -> impl IntoView {
                 <li>"Serve "{input(desk, SERVED, served)}" of "{word}", with at most "{input(desk, POWER, power)}" both ways."</li>
             })}
             <li>
-                "Of what is charged "{input(desk, CHARGE, none)}" reaches the store; of what leaves it "
-                {input(desk, DISCHARGE, none)}" reaches the connection point."
+                "Of what is charged "{input(desk, CHARGE, none)}" reaches the store, of what leaves it "
+                {input(desk, DISCHARGE, none)}" the connection."
             </li>
             <li>
-                "Of nameplate "{input(desk, DEPTH, none)}" is used and "{input(desk, END, none)}
-                " is left at end of life; a margin of "{input(desk, MARGIN, none)}" is added."
+                "Of nameplate "{input(desk, DEPTH, none)}" is used, "{input(desk, END, none)}
+                " left at end of life; add a margin of "{input(desk, MARGIN, none)}"."
             </li>
         </ol>
     }
@@ -138,6 +142,7 @@ fn criteria(desk: Desk) -> impl IntoView {
 }
 
 fn criterion(row: Criterion) -> impl IntoView {
+    let (number, unit) = scaled(row.value, &row.unit);
     let origin = match row.origin {
         Origin::Computed => "computed",
         Origin::Asked => "asked",
@@ -151,13 +156,27 @@ fn criterion(row: Criterion) -> impl IntoView {
         <tr class=origin>
             <th scope="row">{quantity(&row.quantity)}</th>
             <td class="bd">{match row.bound { Bound::AtLeast => "at least", Bound::AtMost => "at most" }}</td>
-            <td class="n">{people::significant(row.value, 3)}</td>
-            <td>{row.unit}</td>
+            <td class="n">{number}</td>
+            <td>{unit}</td>
             <td class="or">{origin}</td>
             <td class="fr">{row.from}</td>
             <td class="su">{sure}</td>
         </tr>
     }
+}
+
+/// A value in a unit of the result format, as people read it.
+fn scaled(value: f64, unit: &str) -> (String, String) {
+    let scaled = match unit {
+        "kWh" => people::energy(value),
+        "kW" => people::power(value),
+        "s" => people::duration(value),
+        "kg" => people::mass(value),
+        "l" => people::volume(value),
+        "" | "1" => people::percent(value),
+        other => return (people::significant(value, 3), other.to_owned()),
+    };
+    (scaled.number, scaled.unit.to_owned())
 }
 
 /// A quantity's word of the result format, as a person reads it.

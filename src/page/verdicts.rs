@@ -73,7 +73,7 @@ pub(crate) fn list(desk: Desk) -> impl IntoView {
             <span>{mark(Verdict::Fails, 12)}" fails: not even the good end"</span>
             <span><em>"unconfirmed"</em>": the deciding number is from memory"</span>
         </p>
-        <p class="note">"Choose up to four kinds as candidates A to D; they are drawn apart on the plane."</p>
+        <p class="note">"Pick up to four kinds as candidates A to D; they are drawn apart on the plane."</p>
         <div class="scroll" tabindex="0" role="region" aria-label="Verdicts"><table class="verdicts">
             <thead><tr>
                 <td></td><th>"Kind"</th><th>"Verdict"</th>
@@ -83,7 +83,6 @@ pub(crate) fn list(desk: Desk) -> impl IntoView {
             <tbody>{move || order.get().into_iter().map(|(i, id)| row(desk, i, id)).collect_view()}</tbody>
         </table></div>
         <div class="note caution">
-            <p>"Screening only: a kind that carries here still has to be designed. Local codes and licensed practice decide."</p>
             {move || notes.get().into_iter().map(|note| view! { <p>{note}</p> }).collect_view()}
             <p>"Cautions of the kinds shown:"</p>
             <ul>{move || cautions.get().into_iter().map(|words| view! { <li>{words}</li> }).collect_view()}</ul>
@@ -108,19 +107,20 @@ fn row(desk: Desk, at: usize, id: String) -> impl IntoView {
             |(verdict, reason)| view! { <span title=reason>{labelled(verdict)}</span> }.into_any(),
         )}</td> }
     });
-    let label = format!("{name} as a candidate");
+    let label = format!("Pick {name} as a candidate");
     view! {
         <tr class=move || format!("k {}", word(verdict.get()))>
-            <td class="pn">{move || chosen().map_or_else(
-                || view! { <span class="pin none"></span> }.into_any(),
-                |(letter, class)| view! { <span class=format!("pin c-{class}")>
-                    <svg width="30" height="8" aria-hidden="true"><path class=format!("st-0 dash-{class}") d="M0 4h30"></path></svg>{letter}
-                </span> }.into_any(),
-            )}</td>
-            <th scope="row">
-                <button class="quiet kind" aria-label=label aria-pressed=move || letter.get().is_some().to_string()
-                    on:click=move |_| pick(desk, &id)>{name}</button>
-            </th>
+            <td class="pn">
+                <button class="quiet pick" aria-label=label aria-pressed=move || letter.get().is_some().to_string() on:click=move |_| pick(desk, &id)>
+                    {move || chosen().map_or_else(
+                        || view! { "pick" }.into_any(),
+                        |(letter, class)| view! { <span class=format!("pin c-{class}")>
+                            <svg width="30" height="8" aria-hidden="true"><path class=format!("st-0 dash-{class}") d="M0 4h30"></path></svg>{letter}
+                        </span> }.into_any(),
+                    )}
+                </button>
+            </td>
+            <th scope="row">{name}</th>
             <td class="vd">{move || mark(verdict.get(), 12)}" "{move || word(verdict.get())}</td>
             {marks.collect_view()}
             <td class="n ms">{words(|kind| tonnes(kind.mass_kg.map(|mass| mass.typical)))}</td>
