@@ -1,6 +1,6 @@
 // Trunk's last step: finishes the staged site before it becomes dist/.
 //
-// - gives boot.js a name by its content, like the other files, and writes the script element that names glue and wasm;
+// - gives boot.js and the engine names by their content, like the other files, and writes the script element that names them;
 // - compresses the demo sites and copies their list;
 // - puts the licences of all that is shipped beside it;
 // - tells the service worker which files to keep.
@@ -22,19 +22,29 @@ function only(pattern) {
   return found[0];
 }
 
+/** Gives a file a name by its content, as Trunk does with the page's own, so that no old copy is taken for a new one. */
+function hashed(name) {
+  const [stem, ending] = name.split(".");
+  const renamed = `${stem}-${digest(readFileSync(join(staging, name)))}.${ending}`;
+  renameSync(join(staging, name), join(staging, renamed));
+  return renamed;
+}
+
 const digest = (content) => createHash("sha256").update(content).digest("hex").slice(0, 16);
 
 const wasm = only(/^page-.*_bg\.wasm$/);
 const glue = only(/^page-.*\.js$/);
-const boot = `boot-${digest(readFileSync(join(staging, "boot.js")))}.js`;
-renameSync(join(staging, "boot.js"), join(staging, boot));
+const engineWasm = hashed(only(/^engine_bg\.wasm$/));
+const engineGlue = hashed(only(/^engine\.js$/));
+const boot = hashed("boot.js");
 
 // Trunk leaves its own element for the program in the document, and empty lines where the others were.
 const page = readFileSync(join(staging, "index.html"), "utf8")
   .replace(/<link data-trunk[^>]*>/g, "")
   .replace(/\n\s*\n+/g, "\n")
   .replace("</head>", `<link rel="preload" href="${wasm}" as="fetch" type="application/wasm" crossorigin>
-<script src="${boot}" data-glue="${glue}" data-wasm="${wasm}" defer></script>
+<script src="${boot}" data-glue="${glue}" data-wasm="${wasm}"
+ data-engine-glue="${engineGlue}" data-engine-wasm="${engineWasm}" defer></script>
 </head>`);
 if (/<script(?![^>]*\bsrc=)/.test(page)) throw new Error("index.html holds a script inside the document: the policy forbids it");
 writeFileSync(join(staging, "index.html"), page);
@@ -50,7 +60,7 @@ writeFileSync(join(demos, "sites.json"), JSON.stringify(sites.map((site) => ({ .
 const metadata = JSON.parse(
   execFileSync(
     "cargo",
-    ["metadata", "--format-version=1", "--locked", "--no-default-features", "--features=page", "--filter-platform=wasm32-unknown-unknown"],
+    ["metadata", "--format-version=1", "--locked", "--no-default-features", "--features=page,engine", "--filter-platform=wasm32-unknown-unknown"],
     { cwd: root, encoding: "utf8", maxBuffer: 1 << 28, stdio: ["ignore", "pipe", "inherit"] },
   ),
 );

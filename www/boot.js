@@ -1,15 +1,15 @@
-// Starts the page. The wasm is compiled once; the page and every worker run from that one compiled module.
+// Starts the page, and workers with the engine when the page asks for them. The engine's wasm is fetched and compiled once, at the
+// first sign that somebody is about to use it; every worker runs from that one compiled module.
 //
 // What the page (src/main.rs, src/bridge) uses, as properties of globalThis.millpond:
-//   module           the compiled WebAssembly.Module
-//   spawn()          a new Worker that runs the same wasm, already on its way
+//   spawn()          a new Worker with the engine on its way
 //   notice(text)     shows that something is broken, by plain DOM, since the page's own code may be what broke
 //
-// The build writes the hashed names of the two files into this script's own element (www/after-build.mjs).
+// The build writes the hashed names of the four files into this script's own element (www/after-build.mjs).
 "use strict";
 (() => {
-  const { glue, wasm } = document.currentScript.dataset;
-  const millpond = (globalThis.millpond = { module: null, spawn: null, notice });
+  const { glue, wasm, engineGlue, engineWasm } = document.currentScript.dataset;
+  globalThis.millpond = { spawn, notice };
 
   // The worker is a classic one made from a Blob, because that also starts in a file opened from disk. Its first message
   // brings the module; the start is synchronous, so a message that follows at once finds the listener that main() has set.
@@ -50,8 +50,8 @@
     return answer;
   }
 
-  async function compile() {
-    const answer = await get(wasm);
+  async function compile(name) {
+    const answer = await get(name);
     if (answer.headers.get("Content-Type")?.startsWith("application/wasm")) return WebAssembly.compileStreaming(answer);
     return WebAssembly.compile(await answer.arrayBuffer());
   }
@@ -63,6 +63,48 @@
       script.onerror = () => failed(new Error(`${glue} was not found`));
       document.head.append(script);
     });
+  }
+
+  let engine = null;
+
+  /** The engine: the worker's script as an address, and the compiled module. */
+  function fetchEngine() {
+    engine ??= Promise.all([get(engineGlue).then((answer) => answer.text()), compile(engineWasm)])
+      .then(([text, module]) => ({ module, script: URL.createObjectURL(new Blob([text, START], { type: "text/javascript" })) }));
+    // A failure is not kept, so that the next try may succeed.
+    engine.catch(() => { engine = null; });
+    return engine;
+  }
+
+  /** A worker with the engine. What is posted to it before the engine is there is held back. */
+  function spawn() {
+    const early = [];
+    let worker = null;
+    let ended = false;
+    // The page listens and posts to this stand-in as it would to the worker itself.
+    const port = new EventTarget();
+    port.postMessage = (data) => (worker ? worker.postMessage(data) : early.push(data));
+    port.terminate = () => { ended = true; worker?.terminate(); };
+    fetchEngine().then(({ module, script }) => {
+      if (ended) return;
+      worker = new Worker(script);
+      for (const name of ["message", "messageerror"]) {
+        worker.addEventListener(name, (event) => port.dispatchEvent(new MessageEvent(name, { data: event.data })));
+      }
+      worker.addEventListener("error", (event) => { event.preventDefault(); port.dispatchEvent(new Event("error")); });
+      worker.postMessage({ module });
+      for (const data of early) worker.postMessage(data);
+    }, (error) => {
+      notice(`The engine could not be loaded: ${error?.message ?? error}\nCheck the connection and reload the page.`);
+    });
+    return port;
+  }
+
+  /** Fetches the engine at the first sign of use, so that it is there when the first file comes. */
+  function fetchEngineEarly() {
+    for (const name of ["pointerover", "dragenter", "focusin", "keydown", "touchstart"]) {
+      addEventListener(name, () => fetchEngine().catch(() => {}), { once: true, passive: true });
+    }
   }
 
   /** Only once the page runs, so that the first download is not slowed. Browsers allow it on https and on this machine. */
@@ -79,15 +121,9 @@
       return notice("This page cannot start from a folder on disk.\nServe the folder (www/start does), or use the one-file build.");
     }
     try {
-      const [module, text] = await Promise.all([compile(), get(glue).then((answer) => answer.text()), runGlue()]);
-      const script = URL.createObjectURL(new Blob([text, START], { type: "text/javascript" }));
-      millpond.module = module;
-      millpond.spawn = () => {
-        const worker = new Worker(script);
-        worker.postMessage({ module });
-        return worker;
-      };
+      const [module] = await Promise.all([compile(wasm), runGlue()]);
       await wasm_bindgen({ module_or_path: module });
+      fetchEngineEarly();
       keepForOffline();
     } catch (error) {
       if (error instanceof WebAssembly.RuntimeError) return stopped(error);

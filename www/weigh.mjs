@@ -7,14 +7,19 @@ const LIMIT_KB = 400;
 const folder = process.argv[2] ?? "dist";
 const FIRST = /^(index\.html|icon\.svg|boot-.*\.js|page-.*\.js|page-.*_bg\.wasm|.*\.css)$/;
 
-const parts = readdirSync(folder)
-  .filter((name) => FIRST.test(name))
+const THEN = /^engine-.*\.(js|wasm)$/;
+
+const weigh = (pattern) => readdirSync(folder)
+  .filter((name) => pattern.test(name))
   .map((name) => ({ name, bytes: gzipSync(readFileSync(join(folder, name)), { level: 9 }).length }))
   .sort((a, b) => b.bytes - a.bytes);
-const total = parts.reduce((sum, part) => sum + part.bytes, 0);
+const sum = (parts) => parts.reduce((sum, part) => sum + part.bytes, 0);
+const parts = weigh(FIRST);
+const total = sum(parts);
 
 const kb = (bytes) => (bytes / 1000).toFixed(1).padStart(7);
 for (const { name, bytes } of parts) console.log(`${kb(bytes)} kB  ${name}`);
+console.log(`${kb(sum(weigh(THEN)))} kB  the engine, fetched at the first sign of use`);
 console.log(`${kb(total)} kB  first download, gzipped (limit ${LIMIT_KB} kB)`);
 if (!parts.some(({ name }) => name.endsWith(".wasm"))) {
   console.error(`\nStopped: ${folder} holds no page.\nRemedy:  run www/build.`);

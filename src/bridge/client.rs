@@ -6,6 +6,7 @@ use std::sync::Arc;
 
 use gloo::events::EventListener;
 use gloo::timers::callback::Interval;
+use js_sys::Array;
 use wasm_bindgen::{JsCast, JsValue};
 use web_sys::{File, MessageEvent, Worker};
 
@@ -52,11 +53,13 @@ struct Inner {
     deaths: u32,
     /// Whether the worker that is there now has the files.
     fed: bool,
+    /// Whether it has said anything yet; until then its program may still be on its way.
+    alive: bool,
 }
 
 impl Bridge {
-    /// A bridge that tells what happens to a function of the page. The first worker is started at once, so that it is
-    /// ready when the first file comes.
+    /// A bridge that tells what happens to a function of the page. The first worker is started when the first file comes:
+    /// until then nobody has to wait for its program.
     pub(crate) fn new(tell: impl Fn(Event) + 'static) -> Self {
         let bridge = Self(Rc::new(RefCell::new(Inner {
             tell: Rc::new(tell),
@@ -71,8 +74,8 @@ impl Bridge {
             unheard: 0,
             deaths: 0,
             fed: false,
+            alive: false,
         })));
-        bridge.spawn();
         let weak = Rc::downgrade(&bridge.0);
         let watch = Interval::new(PING_MS, move || {
             if let Some(bridge) = upgraded(&weak) {
@@ -90,6 +93,9 @@ impl Bridge {
             (inner.files, inner.site, inner.case, inner.view) = (files, site, case, view);
             inner.deaths = 0;
             inner.ask();
+        }
+        if self.0.borrow().worker.is_none() {
+            self.spawn();
         }
         self.feed();
     }
@@ -174,7 +180,7 @@ impl Bridge {
             listen("messageerror", |bridge, _| bridge.replace("an answer could not be read")),
         ];
         let mut inner = self.0.borrow_mut();
-        (inner.worker, inner.fed) = (Some((worker, listeners)), false);
+        (inner.worker, inner.fed, inner.alive) = (Some((worker, listeners)), false, false);
     }
 
     /// A worker that has replaced another one knows nothing yet: it is given everything.
@@ -197,7 +203,7 @@ impl Bridge {
                 case: inner.case.clone(),
                 view: inner.view.clone(),
             };
-            (request, super::worker::file_list(&inner.files))
+            (request, inner.files.iter().collect::<Array>())
         };
         self.post_with(&request, |envelope| super::beside(envelope, "files", &files));
     }
@@ -215,7 +221,7 @@ impl Bridge {
             }
         });
         if let Err(error) = posted {
-            host::log(&format!("a request could not be sent: {error:?}"));
+            super::log(&format!("a request could not be sent: {error:?}"));
         }
     }
 
@@ -223,13 +229,13 @@ impl Bridge {
         let answer = match super::open::<Answer>(data) {
             Ok(answer) => answer,
             Err(error) => {
-                host::log(&format!("an answer could not be read: {error:?}"));
+                super::log(&format!("an answer could not be read: {error:?}"));
                 return self.replace("an answer could not be read");
             }
         };
         let (current, tell) = {
             let mut inner = self.0.borrow_mut();
-            inner.unheard = 0;
+            (inner.unheard, inner.alive) = (0, true);
             (inner.revision, Rc::clone(&inner.tell))
         };
         match answer {
@@ -257,7 +263,7 @@ impl Bridge {
     fn watch(&self) {
         let hung = {
             let mut inner = self.0.borrow_mut();
-            if !inner.waiting {
+            if !inner.waiting || !inner.alive {
                 return;
             }
             inner.unheard += 1;

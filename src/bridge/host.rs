@@ -1,35 +1,19 @@
-//! The doors to the browser that the program needs outside the page's elements: where it runs, the worker's start, the
-//! notice by plain DOM, and the milliseconds by which slices are measured.
+//! The doors to the browser that the page needs outside its elements: the worker's start, the notice by plain DOM, and the case
+//! left behind by a page that breaks.
 
 use std::cell::RefCell;
 
 use js_sys::{Function, Reflect, global};
 use wasm_bindgen::{JsCast, JsValue};
-use web_sys::DedicatedWorkerGlobalScope;
 
-/// Where this copy of the program runs.
-pub(crate) enum Place {
-    /// With a document.
-    Page,
-    /// In a worker.
-    Worker(DedicatedWorkerGlobalScope),
-    /// Somewhere it was not made for.
-    Elsewhere,
-}
+use super::log;
 
-/// Where this copy of the program runs.
-pub(crate) fn place() -> Place {
-    if web_sys::window().is_some_and(|window| window.document().is_some()) {
-        return Place::Page;
-    }
-    global().dyn_into().map_or(Place::Elsewhere, Place::Worker)
-}
-
-/// Starts a worker that runs the same program (see `www/boot.js`).
+/// Starts a worker with the engine. What comes back stands in for the worker until its program is there, with the same methods and
+/// events (see `www/boot.js`), so it is taken for one without asking for its class.
 pub(crate) fn spawn() -> Result<web_sys::Worker, JsValue> {
     let millpond = millpond()?;
     let spawn: Function = Reflect::get(&millpond, &"spawn".into())?.dyn_into()?;
-    spawn.call0(&millpond)?.dyn_into()
+    Ok(spawn.call0(&millpond)?.unchecked_into())
 }
 
 /// Shows a notice by plain DOM, since the page's own code may be what broke; the first line is what happened.
@@ -43,28 +27,6 @@ pub(crate) fn notice(text: &str) {
     if show().is_err() {
         log(text);
     }
-}
-
-/// Milliseconds on a clock that only runs forward; for the length of slices, never for a result.
-pub(crate) fn now_ms() -> f64 {
-    let read = || -> Result<JsValue, JsValue> {
-        let performance = Reflect::get(&global(), &"performance".into())?;
-        let now: Function = Reflect::get(&performance, &"now".into())?.dyn_into()?;
-        now.call0(&performance)
-    };
-    read().ok().and_then(|value| value.as_f64()).unwrap_or(0.0)
-}
-
-/// Writes to the browser's console.
-pub(crate) fn log(text: &str) {
-    let write = || -> Result<(), JsValue> {
-        let console = Reflect::get(&global(), &"console".into())?;
-        let error: Function = Reflect::get(&console, &"error".into())?.dyn_into()?;
-        error.call1(&console, &text.into())?;
-        Ok(())
-    };
-    // A browser without a console has nowhere to tell it.
-    let _ = write();
 }
 
 thread_local! {
@@ -99,21 +61,15 @@ fn storage(method: &str, arguments: &[&str]) -> Result<JsValue, JsValue> {
     method.apply(&storage, &arguments.iter().map(|argument| JsValue::from(*argument)).collect())
 }
 
-/// On a panic: the console has the words; the worker tells the page, the page shows the notice.
+/// On a panic: the console has the words, the page shows the notice, and the case is left to the page that follows.
 pub(crate) fn report_panics() {
     std::panic::set_hook(Box::new(|panic| {
         let text = panic.to_string();
         log(&text);
-        match place() {
-            Place::Page => {
-                let kept = if leave_case() { "The case is kept. " } else { "" };
-                notice(&format!(
-                    "Millpond stopped: a defect in the page.\n{text}\n{kept}Reload the page to go on. No file has left this computer."
-                ));
-            }
-            Place::Worker(scope) => super::worker::last_words(&scope, text),
-            Place::Elsewhere => {}
-        }
+        let kept = if leave_case() { "The case is kept. " } else { "" };
+        notice(&format!(
+            "Millpond stopped: a defect in the page.\n{text}\n{kept}Reload the page to go on. No file has left this computer."
+        ));
     }));
 }
 

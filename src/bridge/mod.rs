@@ -4,12 +4,20 @@
 //! per turn of its loop, so that it hears the next request, and drops what it was doing when one comes. Answers carry the
 //! revision they were asked for; the page drops stale ones. Long series travel as transferred buffers beside the envelope.
 
-pub(crate) mod blob;
+//!
+//! The two ends are two programs (`src/main.rs` and `src/engine.rs`), each a wasm of its own; what they say to each other is
+//! here.
+
+#[cfg(feature = "engine")]
+mod blob;
+#[cfg(feature = "page")]
 pub(crate) mod client;
+#[cfg(feature = "page")]
 pub(crate) mod host;
+#[cfg(feature = "engine")]
 pub(crate) mod worker;
 
-use js_sys::{Array, Float64Array, Object, Reflect};
+use js_sys::{Array, Float64Array, Function, Object, Reflect, global};
 use serde::de::DeserializeOwned;
 use serde::{Deserialize, Serialize};
 use wasm_bindgen::{JsCast, JsValue};
@@ -81,6 +89,7 @@ pub(crate) fn list(envelope: &JsValue, name: &str) -> Array {
 }
 
 /// Takes the long series out of a sheet: typed arrays, and their buffers to be transferred.
+#[cfg(feature = "engine")]
 pub(crate) fn take_columns(sheet: &mut Sheet) -> (Array, Array) {
     let (columns, buffers) = (Array::new(), Array::new());
     for column in sheet.pictures.columns_mut() {
@@ -92,10 +101,23 @@ pub(crate) fn take_columns(sheet: &mut Sheet) -> (Array, Array) {
 }
 
 /// Puts the long series back, in the same order.
+#[cfg(feature = "page")]
 pub(crate) fn put_columns(sheet: &mut Sheet, columns: &Array) {
     for (column, series) in sheet.pictures.columns_mut().into_iter().zip(columns.iter()) {
         if let Ok(series) = series.dyn_into::<Float64Array>() {
             *column = series.to_vec();
         }
     }
+}
+
+/// Writes to the browser's console.
+pub(crate) fn log(text: &str) {
+    let write = || -> Result<(), JsValue> {
+        let console = Reflect::get(&global(), &"console".into())?;
+        let error: Function = Reflect::get(&console, &"error".into())?.dyn_into()?;
+        error.call1(&console, &text.into())?;
+        Ok(())
+    };
+    // A browser without a console has nowhere to tell it.
+    let _ = write();
 }

@@ -4,7 +4,7 @@ use std::cell::RefCell;
 use std::rc::Rc;
 
 use gloo::events::EventListener;
-use js_sys::Array;
+use js_sys::{Function, Reflect, global};
 use wasm_bindgen::{JsCast, JsValue};
 use web_sys::{DedicatedWorkerGlobalScope, File, MessageChannel, MessageEvent, MessagePort};
 
@@ -16,7 +16,7 @@ use millpond::sheet::{Lay, View};
 use millpond::technology::Catalogue;
 
 use super::blob::BlobSource;
-use super::{Answer, Progress, Request, host};
+use super::{Answer, Progress, Request};
 
 /// How long a slice should take, ms: short enough to hear the next request at once.
 const SLICE_MS: f64 = 16.0;
@@ -28,7 +28,7 @@ const BUDGETS: (usize, usize, usize) = (2_000, 20_000, 200_000_000);
 /// Serves the page from inside a worker: listens, and works when there is work.
 pub(crate) fn serve(scope: DedicatedWorkerGlobalScope) {
     let Ok(channel) = MessageChannel::new() else {
-        host::log("this browser has no message channels");
+        super::log("this browser has no message channels");
         return;
     };
     let turns = channel.port1();
@@ -58,6 +58,10 @@ pub(crate) fn serve(scope: DedicatedWorkerGlobalScope) {
     // A message to itself comes after the messages that are already waiting, without the delay that timers have.
     EventListener::new(&turns, "message", move |_| worker.borrow_mut().turn()).forget();
     turns.start();
+    // The first sign of life: the page waits for it before it takes silence for a hang.
+    if let Ok(envelope) = super::envelope(&Answer::Pong) {
+        let _ = scope.post_message(&envelope);
+    }
 }
 
 /// Tells the page that this worker is done for; the browser's own error event may come without words.
@@ -182,7 +186,7 @@ impl Worker {
 
     /// One slice.
     fn turn(&mut self) {
-        let started = host::now_ms();
+        let started = now_ms();
         let Some(work) = &mut self.work else { return };
         let (progress, reading) = match work {
             Work::Reading(job) => (job.progress(), true),
@@ -192,7 +196,7 @@ impl Worker {
             Work::Reading(job) => job.advance(self.budget).map(|record| record.map(Done::Record)),
             Work::Laying(job) => job.advance(self.budget).map(|sheet| sheet.map(|sheet| Done::Sheet(Box::new(sheet)))),
         };
-        let ended = host::now_ms();
+        let ended = now_ms();
         self.adapt(ended - started);
         match step {
             Ok(None) => {
@@ -231,7 +235,7 @@ impl Worker {
 
     fn go_on(&self) {
         if self.next.post_message(&JsValue::NULL).is_err() {
-            host::log("the worker cannot post to itself");
+            super::log("the worker cannot post to itself");
         }
     }
 
@@ -259,7 +263,7 @@ impl Worker {
 
     fn undelivered(&self, error: &JsValue) {
         let text = format!("an answer could not be sent: {error:?}");
-        host::log(&text);
+        super::log(&text);
         last_words(&self.scope, text);
     }
 }
@@ -269,7 +273,28 @@ enum Done {
     Sheet(Box<millpond::sheet::Sheet>),
 }
 
-/// Files as a list to stand beside an envelope.
-pub(crate) fn file_list(files: &[File]) -> Array {
-    files.iter().collect()
+/// The worker's own scope; none where there is a document.
+pub(crate) fn scope() -> Option<DedicatedWorkerGlobalScope> {
+    global().dyn_into().ok()
+}
+
+/// Milliseconds on a clock that only runs forward; for the length of slices, never for a result.
+fn now_ms() -> f64 {
+    let read = || -> std::result::Result<JsValue, JsValue> {
+        let performance = Reflect::get(&global(), &"performance".into())?;
+        let now: Function = Reflect::get(&performance, &"now".into())?.dyn_into()?;
+        now.call0(&performance)
+    };
+    read().ok().and_then(|value| value.as_f64()).unwrap_or(0.0)
+}
+
+/// On a panic: the console has the words, and the page hears of it.
+pub(crate) fn report_panics() {
+    std::panic::set_hook(Box::new(|panic| {
+        let text = panic.to_string();
+        super::log(&text);
+        if let Some(scope) = scope() {
+            last_words(&scope, text);
+        }
+    }));
 }
