@@ -9,7 +9,6 @@ use gloo::timers::callback::Interval;
 use wasm_bindgen::{JsCast, JsValue};
 use web_sys::{File, MessageEvent, Worker};
 
-use millpond::case::Case;
 use millpond::fault::Fault;
 use millpond::sheet::{Sheet, View};
 
@@ -44,7 +43,8 @@ struct Inner {
     watch: Option<Interval>,
     site: String,
     files: Vec<File>,
-    case: Case,
+    /// The case as the text of its file.
+    case: String,
     view: View,
     revision: u32,
     waiting: bool,
@@ -64,7 +64,7 @@ impl Bridge {
             watch: None,
             site: String::new(),
             files: Vec::new(),
-            case: Case::default(),
+            case: String::new(),
             view: View::default(),
             revision: 0,
             waiting: false,
@@ -83,8 +83,8 @@ impl Bridge {
         bridge
     }
 
-    /// Opens files: reads them and computes everything.
-    pub(crate) fn open(&self, files: Vec<File>, site: String, case: Case, view: View) {
+    /// Opens files: reads them and computes everything. The case is the text of its file.
+    pub(crate) fn open(&self, files: Vec<File>, site: String, case: String, view: View) {
         {
             let mut inner = self.0.borrow_mut();
             (inner.files, inner.site, inner.case, inner.view) = (files, site, case, view);
@@ -95,7 +95,7 @@ impl Bridge {
     }
 
     /// Computes again for a changed case.
-    pub(crate) fn change(&self, case: Case, view: View) {
+    pub(crate) fn change(&self, case: String, view: View) {
         let request = {
             let mut inner = self.0.borrow_mut();
             (inner.case, inner.view) = (case.clone(), view.clone());
@@ -103,7 +103,7 @@ impl Bridge {
             if inner.files.is_empty() {
                 return;
             }
-            Request::Change { revision: inner.ask(), case: Box::new(case), view }
+            Request::Change { revision: inner.ask(), case, view }
         };
         self.post_or_feed(&request);
     }
@@ -194,7 +194,7 @@ impl Bridge {
             let request = Request::Open {
                 revision: inner.revision,
                 site: inner.site.clone(),
-                case: Box::new(inner.case.clone()),
+                case: inner.case.clone(),
                 view: inner.view.clone(),
             };
             (request, super::worker::file_list(&inner.files))

@@ -1,6 +1,8 @@
 //! The doors to the browser that the program needs outside the page's elements: where it runs, the worker's start, the
 //! notice by plain DOM, and the milliseconds by which slices are measured.
 
+use std::cell::RefCell;
+
 use js_sys::{Function, Reflect, global};
 use wasm_bindgen::{JsCast, JsValue};
 use web_sys::DedicatedWorkerGlobalScope;
@@ -65,15 +67,50 @@ pub(crate) fn log(text: &str) {
     let _ = write();
 }
 
+thread_local! {
+    /// The case as it last was, for the panic hook.
+    static CASE: RefCell<String> = const { RefCell::new(String::new()) };
+}
+
+/// Name under which a broken page leaves its case to the next one in the same window; it ends with the window.
+const LEFT: &str = "millpond-case";
+
+/// Notes the case, so that it outlives the page's own code.
+pub(crate) fn keep(case: &str) {
+    CASE.with(|held| case.clone_into(&mut held.borrow_mut()));
+}
+
+/// The case that a page in this window left when it broke.
+pub(crate) fn kept() -> Option<String> {
+    let text = storage("getItem", &[LEFT]).ok()?.as_string();
+    // It is taken over once: a later reload starts afresh.
+    storage("removeItem", &[LEFT]).ok()?;
+    text
+}
+
+/// Leaves the case to the page that follows, if there is one to leave.
+fn leave_case() -> bool {
+    CASE.with(|held| held.try_borrow().is_ok_and(|case| !case.is_empty() && storage("setItem", &[LEFT, &case]).is_ok()))
+}
+
+fn storage(method: &str, arguments: &[&str]) -> Result<JsValue, JsValue> {
+    let storage = Reflect::get(&global(), &"sessionStorage".into())?;
+    let method: Function = Reflect::get(&storage, &method.into())?.dyn_into()?;
+    method.apply(&storage, &arguments.iter().map(|argument| JsValue::from(*argument)).collect())
+}
+
 /// On a panic: the console has the words; the worker tells the page, the page shows the notice.
 pub(crate) fn report_panics() {
     std::panic::set_hook(Box::new(|panic| {
         let text = panic.to_string();
         log(&text);
         match place() {
-            Place::Page => notice(&format!(
-                "Millpond stopped: a defect in the page.\n{text}\nReload the page to go on. No file has left this computer."
-            )),
+            Place::Page => {
+                let kept = if leave_case() { "The case is kept. " } else { "" };
+                notice(&format!(
+                    "Millpond stopped: a defect in the page.\n{text}\n{kept}Reload the page to go on. No file has left this computer."
+                ));
+            }
             Place::Worker(scope) => super::worker::last_words(&scope, text),
             Place::Elsewhere => {}
         }

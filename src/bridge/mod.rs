@@ -14,17 +14,16 @@ use serde::de::DeserializeOwned;
 use serde::{Deserialize, Serialize};
 use wasm_bindgen::{JsCast, JsValue};
 
-use millpond::case::Case;
 use millpond::fault::Fault;
 use millpond::sheet::{Sheet, View};
 
-/// What the page asks of the worker.
+/// What the page asks of the worker. The case travels as the text of its file, so that one reader serves both.
 #[derive(Debug, Clone, Serialize, Deserialize)]
 pub(crate) enum Request {
     /// Takes new files (beside the envelope) and does everything.
-    Open { revision: u32, site: String, case: Box<Case>, view: View },
+    Open { revision: u32, site: String, case: String, view: View },
     /// Does again what a changed case changes.
-    Change { revision: u32, case: Box<Case>, view: View },
+    Change { revision: u32, case: String, view: View },
     /// Shows something else of the same results.
     Look { revision: u32, view: View },
     /// Leaves off.

@@ -112,12 +112,12 @@ impl Worker {
             Request::Open { revision, site, case, view } => {
                 self.files = super::list(data, "files").iter().filter_map(|file| file.dyn_into().ok()).collect();
                 self.record = None;
-                (self.site, self.case, self.view, self.revision) = (site, *case, view, revision);
-                self.begin();
+                (self.site, self.view, self.revision) = (site, view, revision);
+                self.begin_with(&case);
             }
             Request::Change { revision, case, view } => {
-                (self.case, self.view, self.revision) = (*case, view, revision);
-                self.begin();
+                (self.view, self.revision) = (view, revision);
+                self.begin_with(&case);
             }
             Request::Look { revision, view } => {
                 (self.view, self.revision) = (view, revision);
@@ -125,6 +125,16 @@ impl Worker {
             }
             Request::Stop => self.work = None,
             Request::Ping => self.answer(&Answer::Pong),
+        }
+    }
+
+    fn begin_with(&mut self, case: &str) {
+        match Case::from_json(case) {
+            Ok(case) => {
+                self.case = case;
+                self.begin();
+            }
+            Err(fault) => self.fail(fault),
         }
     }
 

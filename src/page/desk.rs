@@ -14,6 +14,7 @@ use millpond::sheet::{Sheet, View};
 
 use crate::bridge::Progress;
 use crate::bridge::client::{Bridge, Event};
+use crate::bridge::host;
 
 /// A person who types is left to finish, ms.
 const TYPING_MS: u32 = 150;
@@ -56,7 +57,7 @@ impl Desk {
         let sheet = RwSignal::new(None);
         let status = RwSignal::new(Status::default());
         let (files, case, view) =
-            (RwSignal::new(Vec::new()), RwSignal::new(Case::default()), RwSignal::new(View::default()));
+            (RwSignal::new(Vec::new()), RwSignal::new(first_case()), RwSignal::new(View::default()));
         let scheme = super::screen::scheme();
         let typing = StoredValue::new_local(None);
         let bridge = StoredValue::<Option<Bridge>, LocalStorage>::new_local(None);
@@ -89,9 +90,9 @@ impl Desk {
         self.view.update(|view| view.window_us = None);
         self.typing.set_value(None);
         self.begin();
-        self.bridge.with_value(|bridge| {
-            bridge.open(files, site, self.case.get_untracked(), self.view.get_untracked());
-        });
+        if let Some(case) = self.case_text() {
+            self.bridge.with_value(|bridge| bridge.open(files, site, case, self.view.get_untracked()));
+        }
     }
 
     /// Changes the case at once.
@@ -173,7 +174,23 @@ impl Desk {
     fn post_case(self) {
         if self.bridge.with_value(Bridge::has_files) {
             self.begin();
-            self.bridge.with_value(|bridge| bridge.change(self.case.get_untracked(), self.view.get_untracked()));
+            if let Some(case) = self.case_text() {
+                self.bridge.with_value(|bridge| bridge.change(case, self.view.get_untracked()));
+            }
+        }
+    }
+
+    /// The case as the text of its file, also kept for the page that follows one that broke.
+    fn case_text(self) -> Option<String> {
+        match self.case.with_untracked(Case::to_json) {
+            Ok(text) => {
+                host::keep(&text);
+                Some(text)
+            }
+            Err(fault) => {
+                self.fail(fault);
+                None
+            }
         }
     }
 
@@ -212,6 +229,12 @@ fn settle(bridge: &Bridge, typing: StoredValue<Option<Timeout>, LocalStorage>) {
         }
     })
     .forget();
+}
+
+/// The case of a page in this window that broke; otherwise the default.
+fn first_case() -> Case {
+    // A text that does not read is no case; the page that broke may have been of another version.
+    host::kept().and_then(|text| Case::from_json(&text).ok()).unwrap_or_default()
 }
 
 /// The case without what belongs to one file's columns.

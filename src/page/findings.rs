@@ -23,8 +23,11 @@ const REPEATS: [(RepeatRemedy, &str); 3] =
 /// The list of findings.
 pub(crate) fn list(desk: Desk) -> impl IntoView {
     let kinds = Memo::new(move |_| {
-        let kinds = |all: &[Finding]| all.iter().map(|finding| (finding.kind, finding.changes_figures)).enumerate().collect::<Vec<_>>();
-        findings(desk, kinds)
+        findings(desk, |all| {
+            let nth = |at: usize, kind| all[..at].iter().filter(|finding| finding.kind == kind).count();
+            let row = |(at, finding): (usize, &Finding)| (finding.kind, nth(at, finding.kind), finding.changes_figures);
+            all.iter().enumerate().map(row).collect::<Vec<_>>()
+        })
     });
     let none = Memo::new(move |_| kinds.with(Vec::is_empty));
     view! {
@@ -34,8 +37,8 @@ pub(crate) fn list(desk: Desk) -> impl IntoView {
             // A row stays as long as its kind does, so that a choice keeps its focus; words and choices inside follow on their own.
             <For
                 each=move || kinds.get()
-                key=|(at, (kind, changes))| (*at, *kind as u8, *changes)
-                children=move |(at, (kind, changes))| row(desk, at, kind, changes)
+                key=|(kind, nth, changes)| (*kind as u8, *nth, *changes)
+                children=move |(kind, nth, changes)| row(desk, kind, nth, changes)
             />
         </ul>
     }
@@ -45,8 +48,11 @@ fn findings<T: Default>(desk: Desk, pick: impl FnOnce(&[Finding]) -> T) -> T {
     desk.of(|sheet| sheet.result.record.as_ref().map(|record| pick(&record.findings)).unwrap_or_default())
 }
 
-fn row(desk: Desk, at: usize, kind: FindingKind, changes: bool) -> impl IntoView {
-    let finding = Memo::new(move |_| findings(desk, |all| all.get(at).cloned()));
+/// The `nth` finding of a kind.
+fn row(desk: Desk, kind: FindingKind, nth: usize, changes: bool) -> impl IntoView {
+    let finding = Memo::new(move |_| {
+        findings(desk, |all| all.iter().filter(|finding| finding.kind == kind).nth(nth).cloned())
+    });
     let text = move || finding.with(|finding| finding.as_ref().map(|finding| finding.text.clone()));
     let rows = move || finding.with(|finding| finding.as_ref().map(first_row).unwrap_or_default());
     let remedy = match kind {
