@@ -7,7 +7,7 @@ fn main() {
     bridge::host::report_panics();
     match bridge::host::place() {
         bridge::host::Place::Page => page::mount(),
-        bridge::host::Place::Worker(scope) => bridge::worker::serve(scope),
+        bridge::host::Place::Worker(scope) => bridge::worker::serve(&scope),
         bridge::host::Place::Elsewhere => {}
     }
 }
