@@ -5,6 +5,6 @@ mod bridge;
 fn main() {
     bridge::worker::report_panics();
     if let Some(scope) = bridge::worker::scope() {
-        bridge::worker::serve(scope);
+        bridge::worker::serve(&scope);
     }
 }

@@ -69,7 +69,10 @@ impl Source for BlobSource {
 fn cannot_read(name: &str, error: &JsValue) -> Fault {
     let why = js_sys::Reflect::get(error, &"message".into()).ok().and_then(|text| text.as_string());
     Fault::new(
-        format!("the file cannot be read: {}", why.unwrap_or_else(|| "the browser gave no reason".to_owned())),
+        format!(
+            "the file cannot be read: {}",
+            why.unwrap_or_else(|| "the browser gave no reason".to_owned())
+        ),
         name,
         "Choose it again: a file that was moved, changed or opened by another program must be handed over anew.",
     )

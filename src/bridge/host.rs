@@ -52,7 +52,9 @@ pub(crate) fn kept() -> Option<String> {
 
 /// Leaves the case to the page that follows, if there is one to leave.
 fn leave_case() -> bool {
-    CASE.with(|held| held.try_borrow().is_ok_and(|case| !case.is_empty() && storage("setItem", &[LEFT, &case]).is_ok()))
+    CASE.with(|held| {
+        held.try_borrow().is_ok_and(|case| !case.is_empty() && storage("setItem", &[LEFT, &case]).is_ok())
+    })
 }
 
 fn storage(method: &str, arguments: &[&str]) -> Result<JsValue, JsValue> {

@@ -26,7 +26,7 @@ const TELL_MS: f64 = 100.0;
 const BUDGETS: (usize, usize, usize) = (2_000, 20_000, 200_000_000);
 
 /// Serves the page from inside a worker: listens, and works when there is work.
-pub(crate) fn serve(scope: DedicatedWorkerGlobalScope) {
+pub(crate) fn serve(scope: &DedicatedWorkerGlobalScope) {
     let Ok(channel) = MessageChannel::new() else {
         super::log("this browser has no message channels");
         return;
@@ -48,7 +48,7 @@ pub(crate) fn serve(scope: DedicatedWorkerGlobalScope) {
     }));
 
     let heard = Rc::clone(&worker);
-    EventListener::new(&scope, "message", move |event| {
+    EventListener::new(scope, "message", move |event| {
         if let Some(event) = event.dyn_ref::<MessageEvent>() {
             heard.borrow_mut().hear(&event.data());
         }
@@ -104,7 +104,7 @@ impl Terms {
 }
 
 enum Work {
-    Reading(record::Reader),
+    Reading(Box<record::Reader>),
     Laying(Box<Lay>),
 }
 
@@ -114,7 +114,8 @@ impl Worker {
         let Ok(request) = super::open::<Request>(data) else { return };
         match request {
             Request::Open { revision, site, case, view } => {
-                self.files = super::list(data, "files").iter().filter_map(|file| file.dyn_into().ok()).collect();
+                self.files =
+                    super::list(data, "files").iter().filter_map(|file| file.dyn_into().ok()).collect();
                 self.record = None;
                 (self.site, self.view, self.revision) = (site, view, revision);
                 self.begin_with(&case);
@@ -150,7 +151,11 @@ impl Worker {
         }
         let was_idle = self.work.is_none();
         let terms = Terms::of(&self.case);
-        let kept = self.record.as_ref().filter(|(_, read_by)| *read_by == terms).map(|(record, _)| Rc::clone(record));
+        let kept = self
+            .record
+            .as_ref()
+            .filter(|(_, read_by)| *read_by == terms)
+            .map(|(record, _)| Rc::clone(record));
         let work = match kept {
             Some(record) => self.lay(record),
             None => self.read(&terms),
@@ -172,7 +177,7 @@ impl Worker {
             .iter()
             .map(|file| BlobSource::new(file.clone()).map(|source| Box::new(source) as Box<dyn Source>))
             .collect::<Result<Vec<_>>>()?;
-        Ok(Work::Reading(record::read(&self.site, sources, &terms.case, &terms.named)?))
+        Ok(Work::Reading(Box::new(record::read(&self.site, sources, &terms.case, &terms.named)?)))
     }
 
     fn lay(&mut self, record: Rc<Record>) -> Result<Work> {
@@ -194,7 +199,9 @@ impl Worker {
         };
         let step = match work {
             Work::Reading(job) => job.advance(self.budget).map(|record| record.map(Done::Record)),
-            Work::Laying(job) => job.advance(self.budget).map(|sheet| sheet.map(|sheet| Done::Sheet(Box::new(sheet)))),
+            Work::Laying(job) => {
+                job.advance(self.budget).map(|sheet| sheet.map(|sheet| Done::Sheet(Box::new(sheet))))
+            }
         };
         let ended = now_ms();
         self.adapt(ended - started);
@@ -246,10 +253,11 @@ impl Worker {
 
     fn deliver(&self, mut sheet: Box<millpond::sheet::Sheet>) {
         let (columns, buffers) = super::take_columns(&mut sheet);
-        let posted = super::envelope(&Answer::Sheet { revision: self.revision, sheet }).and_then(|envelope| {
-            super::beside(&envelope, "columns", &columns)?;
-            self.scope.post_message_with_transfer(&envelope, &buffers)
-        });
+        let posted =
+            super::envelope(&Answer::Sheet { revision: self.revision, sheet }).and_then(|envelope| {
+                super::beside(&envelope, "columns", &columns)?;
+                self.scope.post_message_with_transfer(&envelope, &buffers)
+            });
         if let Err(error) = posted {
             self.undelivered(&error);
         }

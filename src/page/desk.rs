@@ -73,7 +73,9 @@ impl Desk {
 
     /// Opens files in place of those that are open; the case stays, but for what was corrected of other files' reading.
     pub(crate) fn open(self, files: Vec<File>) {
-        let again = self.files.with_untracked(|open| open.iter().eq(files.iter().map(File::name).collect::<Vec<_>>().iter()));
+        let again = self
+            .files
+            .with_untracked(|open| open.iter().eq(files.iter().map(File::name).collect::<Vec<_>>().iter()));
         let case = self.case.with_untracked(|case| if again { case.clone() } else { afresh(case) });
         self.open_with(files, case);
     }
@@ -215,7 +217,9 @@ fn heard(sheet: RwSignal<Option<Arc<Sheet>>>, status: RwSignal<Status>, event: E
         }
         Event::Fault(fault) => status.set(Status { fault: Some(fault), ..Status::default() }),
         Event::Restarted => {
-            status.update(|status| status.remark = "The computation stopped and was started anew with the same case.");
+            status.update(|status| {
+                status.remark = "The computation stopped and was started anew with the same case.";
+            });
         }
     }
 }

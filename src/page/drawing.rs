@@ -66,12 +66,18 @@ impl Which {
     /// The line under its title.
     pub(crate) const fn note(self) -> &'static str {
         match self {
-            Self::Year => "A row is a week, hours run to the right. Hatched hours are deficits. The bracket marks the critical period.",
+            Self::Year => {
+                "A row is a week, hours run to the right. Hatched hours are deficits. The bracket marks the critical period."
+            }
             Self::Net => "Drag the window in the strip below, or move it with Shift and an arrow key.",
-            Self::Coverage => "Power is the same both ways. Drag the asked tick, or type above: the rest of the sheet follows.",
+            Self::Coverage => {
+                "Power is the same both ways. Drag the asked tick, or type above: the rest of the sheet follows."
+            }
             Self::Week => "What was asked of the store, what it carried, what it left, and its level below.",
             Self::Cumulative => "Over the critical period the curve falls furthest below where it stood.",
-            Self::Plane => "Dotted diagonals join equal times at full power. The requirement is the ink line; its tick is the point that the budget sets.",
+            Self::Plane => {
+                "Dotted diagonals join equal times at full power. The requirement is the ink line; its tick is the point that the budget sets."
+            }
         }
     }
 }
@@ -138,7 +144,11 @@ pub(crate) fn on_canvas(
     // Setting its size also clears a canvas.
     canvas.set_width((width * dots) as u32);
     canvas.set_height((height * dots) as u32);
-    let context = canvas.get_context("2d").ok().flatten().and_then(|context| context.dyn_into::<CanvasRenderingContext2d>().ok());
+    let context = canvas
+        .get_context("2d")
+        .ok()
+        .flatten()
+        .and_then(|context| context.dyn_into::<CanvasRenderingContext2d>().ok());
     let (Some(context), Some(surface)) = (context, CanvasBackend::with_canvas_object(canvas.clone())) else {
         return Err(no_canvas());
     };
@@ -146,7 +156,9 @@ pub(crate) fn on_canvas(
         context.set_fill_style_str(&palette.paper.to_string());
         context.fill_rect(0.0, 0.0, width * dots, height * dots);
     }
-    context.scale(dots / FINE, dots / FINE).map_err(|_| no_canvas())?;
+    if context.scale(dots / FINE, dots / FINE).is_err() {
+        return Err(no_canvas());
+    }
     context.set_line_join("round");
     draw(which, sheet, surface, size, palette)
 }
@@ -166,5 +178,9 @@ pub(crate) fn same(which: Which, a: &Sheet, b: &Sheet) -> bool {
 
 #[cold]
 fn no_canvas() -> Fault {
-    Fault::new("the browser has no canvas to draw on", "picture", "Open the table behind the picture instead.")
+    Fault::new(
+        "the browser has no canvas to draw on",
+        "picture",
+        "Open the table behind the picture instead.",
+    )
 }

@@ -73,20 +73,24 @@ pub(crate) fn limits(duty: &mut DutyCase) -> &mut DutyCase {
 pub(crate) fn station(desk: Desk) -> impl IntoView {
     let place = PLACES[1];
     let has_sheet = Memo::new(move |_| desk.sheet.with(Option::is_some));
-    station::station(desk, place, view! {
-        {station::lacking(desk, "Needs a record: the duty is read off its supply and demand.")}
-        {figures(desk, place.of, 0)}
-        {move || has_sheet.get().then(|| view! {
-            <div class="work">{question(desk)}{terms(desk)}</div>
-            <div class="pair">{picture(desk, Which::Net)}{figures(desk, place.of, 1)}</div>
-            <div class="work">
-                {episodes(desk)}
-                {method(desk, place.of, 0)}
-                {methods_from(desk, place.of, 1)}
-                {all_figures(desk, &["duty"])}
-            </div>
-        })}
-    })
+    station::station(
+        desk,
+        place,
+        view! {
+            {station::lacking(desk, "Needs a record: the duty is read off its supply and demand.")}
+            {figures(desk, place.of, 0)}
+            {move || has_sheet.get().then(|| view! {
+                <div class="work">{question(desk)}{terms(desk)}</div>
+                <div class="pair">{picture(desk, Which::Net)}{figures(desk, place.of, 1)}</div>
+                <div class="work">
+                    {episodes(desk)}
+                    {method(desk, place.of, 0)}
+                    {methods_from(desk, place.of, 1)}
+                    {all_figures(desk, &["duty"])}
+                </div>
+            })}
+        },
+    )
 }
 
 fn question(desk: Desk) -> impl IntoView {
@@ -117,10 +121,15 @@ fn terms(desk: Desk) -> impl IntoView {
             _ => Kind::Balance,
         })
     });
-    let columns = Memo::new(move |_| desk.of(|sheet| {
-        let columns = sheet.reading.files.iter().flat_map(|file| &file.columns);
-        columns.filter(|column| !column.unit.is_empty()).map(|column| column.header.clone()).collect::<Vec<_>>()
-    }));
+    let columns = Memo::new(move |_| {
+        desk.of(|sheet| {
+            let columns = sheet.reading.files.iter().flat_map(|file| &file.columns);
+            columns
+                .filter(|column| !column.unit.is_empty())
+                .map(|column| column.header.clone())
+                .collect::<Vec<_>>()
+        })
+    });
     let put = move |kind: Kind| {
         let column = columns.with_untracked(|columns| columns.first().cloned());
         set(desk, |case| {
@@ -160,7 +169,9 @@ fn limit_terms(desk: Desk) -> impl IntoView {
             None => "no limit".to_owned(),
         }
     };
-    let flag = move |pick: fn(&DutyCase) -> Option<bool>, other: bool| move || desk.case.with(|case| pick(&case.duty).unwrap_or(other));
+    let flag = move |pick: fn(&DutyCase) -> Option<bool>, other: bool| {
+        move || desk.case.with(|case| pick(&case.duty).unwrap_or(other))
+    };
     view! {
         <li>"Keep import at or below "{input(desk, IMPORT, in_force(|terms| terms.import_limit_kw))}"."</li>
         <li>"Keep export at or below "{input(desk, EXPORT, in_force(|terms| terms.export_limit_kw))}"."</li>
@@ -196,10 +207,12 @@ fn given_terms(desk: Desk, columns: Memo<Vec<String>>) -> impl IntoView {
         columns.with(|columns| columns.iter().position(|column| *column == named).unwrap_or(0))
     };
     let names = move || columns.get().into_iter().enumerate().collect::<Vec<_>>();
-    let sign = move || desk.case.with(|case| match &case.duty {
-        DutyCase::Given { positive, .. } => *positive,
-        _ => Positive::Charge,
-    });
+    let sign = move || {
+        desk.case.with(|case| match &case.duty {
+            DutyCase::Given { positive, .. } => *positive,
+            _ => Positive::Charge,
+        })
+    };
     view! {
         <li>
             "Carry "
@@ -223,13 +236,15 @@ fn given_terms(desk: Desk, columns: Memo<Vec<String>>) -> impl IntoView {
 
 fn episodes(desk: Desk) -> impl IntoView {
     let rows = Memo::new(move |_| desk.of(|sheet| sheet.episodes.clone()));
-    let table = move |name: &'static str, from: usize, to: usize| view! {
-        <div class="scroll" tabindex="0" role="region" aria-label=name><table class="episodes">
-            <thead><tr>
-                <th>"Began"</th><th class="ended">"Ended"</th><th class="n">"Hours"</th><th class="n">"Energy, kWh"</th><th class="n">"Peak, kW"</th>
-            </tr></thead>
-            <tbody>{move || rows.get().into_iter().take(to).skip(from).map(|row| episode(desk, row)).collect_view()}</tbody>
-        </table></div>
+    let table = move |name: &'static str, from: usize, to: usize| {
+        view! {
+            <div class="scroll" tabindex="0" role="region" aria-label=name><table class="episodes">
+                <thead><tr>
+                    <th>"Began"</th><th class="ended">"Ended"</th><th class="n">"Hours"</th><th class="n">"Energy, kWh"</th><th class="n">"Peak, kW"</th>
+                </tr></thead>
+                <tbody>{move || rows.get().into_iter().take(to).skip(from).map(|row| episode(desk, row)).collect_view()}</tbody>
+            </table></div>
+        }
     };
     let further = Memo::new(move |_| rows.with(Vec::len).saturating_sub(FIRST));
     view! {

@@ -26,7 +26,11 @@ pub(crate) struct Field {
 
 /// The field as an input, with the remedy under it when what is typed does not read. `empty` is shown in muted ink while it
 /// is empty: the value in force, or what no value means.
-pub(crate) fn input(desk: Desk, field: Field, empty: impl Fn() -> String + Send + Sync + 'static) -> impl IntoView {
+pub(crate) fn input(
+    desk: Desk,
+    field: Field,
+    empty: impl Fn() -> String + Send + Sync + 'static,
+) -> impl IntoView {
     let Field { asked, name, size, get, set } = field;
     // What the person typed stands as typed, as long as it means what the case holds.
     let typed = RwSignal::new(String::new());
@@ -42,7 +46,8 @@ pub(crate) fn input(desk: Desk, field: Field, empty: impl Fn() -> String + Send 
         let entered = event_target_value(&event);
         let read = asked.read(&entered);
         typed.set(entered);
-        let taken = read.and_then(|value| desk.type_in(|case| set(case, value)).map_err(|Fault { remedy, .. }| remedy));
+        let taken = read
+            .and_then(|value| desk.type_in(|case| set(case, value)).map_err(|Fault { remedy, .. }| remedy));
         remedy.set(taken.err());
     };
     let id = format!("f-{}", name.replace(' ', "-"));
@@ -82,7 +87,9 @@ pub(crate) fn choice<T: Copy + PartialEq + Send + Sync + 'static>(
 ) -> impl IntoView {
     let values: Vec<T> = options.iter().map(|(value, _)| *value).collect();
     let chosen = move |event| {
-        if let Some(chosen) = event_target_value(&event).parse().ok().and_then(|at: usize| values.get(at).copied()) {
+        if let Some(chosen) =
+            event_target_value(&event).parse().ok().and_then(|at: usize| values.get(at).copied())
+        {
             set(chosen);
         }
     };

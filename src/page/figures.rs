@@ -11,10 +11,12 @@ use super::desk::Desk;
 
 /// The `group`-th group of a station's key figures.
 pub(crate) fn figures(desk: Desk, of: fn(&Sheet) -> &Station, group: usize) -> impl IntoView {
-    let figures = Memo::new(move |_| desk.of(|sheet| of(sheet).figures.get(group).cloned().unwrap_or_default()));
+    let figures =
+        Memo::new(move |_| desk.of(|sheet| of(sheet).figures.get(group).cloned().unwrap_or_default()));
     move || {
         let figures = figures.get();
-        (!figures.is_empty()).then(|| view! { <dl class="figures">{figures.into_iter().map(figure).collect_view()}</dl> })
+        (!figures.is_empty())
+            .then(|| view! { <dl class="figures">{figures.into_iter().map(figure).collect_view()}</dl> })
     }
 }
 
@@ -120,5 +122,8 @@ fn unit(path: &str) -> &'static str {
     ];
     // Fields of a group (losses, a mass at its typical and good end) carry the unit in the group's name.
     let parent = path.rsplit_once('.').map_or("", |(parent, _)| parent);
-    [path, parent].iter().find_map(|name| ENDS.iter().find(|(end, _)| name.ends_with(end))).map_or("", |(_, unit)| unit)
+    [path, parent]
+        .iter()
+        .find_map(|name| ENDS.iter().find(|(end, _)| name.ends_with(end)))
+        .map_or("", |(_, unit)| unit)
 }

@@ -17,15 +17,20 @@ const GAPS: [(GapRemedy, &str); 5] = [
     (GapRemedy::NeighbourDays, "as on neighbouring days"),
 ];
 
-const REPEATS: [(RepeatRemedy, &str); 3] =
-    [(RepeatRemedy::First, "first kept"), (RepeatRemedy::Last, "last kept"), (RepeatRemedy::Mean, "mean taken")];
+const REPEATS: [(RepeatRemedy, &str); 3] = [
+    (RepeatRemedy::First, "first kept"),
+    (RepeatRemedy::Last, "last kept"),
+    (RepeatRemedy::Mean, "mean taken"),
+];
 
 /// The list of findings.
 pub(crate) fn list(desk: Desk) -> impl IntoView {
     let kinds = Memo::new(move |_| {
         findings(desk, |all| {
             let nth = |at: usize, kind| all[..at].iter().filter(|finding| finding.kind == kind).count();
-            let row = |(at, finding): (usize, &Finding)| (finding.kind, nth(at, finding.kind), finding.changes_figures);
+            let row = |(at, finding): (usize, &Finding)| {
+                (finding.kind, nth(at, finding.kind), finding.changes_figures)
+            };
             all.iter().enumerate().map(row).collect::<Vec<_>>()
         })
     });
@@ -70,7 +75,10 @@ fn row(desk: Desk, kind: FindingKind, nth: usize, changes: bool) -> impl IntoVie
             move |remedy| set(desk, |case| case.record.remedies.repeat = remedy),
         )
         .into_any(),
-        _ => view! { {move || finding.with(|finding| finding.as_ref().map(|finding| finding.remedy.clone()))} }.into_any(),
+        _ => {
+            view! { {move || finding.with(|finding| finding.as_ref().map(|finding| finding.remedy.clone()))} }
+                .into_any()
+        }
     };
     view! {
         <li class=if changes { "changes" } else { "remark" }>
@@ -84,7 +92,9 @@ fn row(desk: Desk, kind: FindingKind, nth: usize, changes: bool) -> impl IntoVie
 
 fn first_row(finding: &Finding) -> String {
     // Most sentences name their rows themselves.
-    let Some(row) = finding.first_row.filter(|row| !finding.text.contains(&row.to_string())) else { return String::new() };
+    let Some(row) = finding.first_row.filter(|row| !finding.text.contains(&row.to_string())) else {
+        return String::new();
+    };
     let file = if finding.file.is_empty() { String::new() } else { format!(" of {}", finding.file) };
     format!(" (first at row {}{file})", people::whole(row as f64))
 }

@@ -25,10 +25,12 @@ pub(crate) fn fold<V: IntoView + 'static>(
 /// "How this was computed" of a station, its `index`-th method.
 pub(crate) fn method(desk: Desk, of: fn(&Sheet) -> &Station, index: usize) -> impl IntoView {
     let method = Memo::new(move |_| desk.of(|sheet| of(sheet).method.get(index).cloned()));
-    move || method.get().map(|shown| {
-        let summary = shown.summary.clone();
-        fold("How this was computed", move || summary.clone(), false, move || explanation(&shown))
-    })
+    move || {
+        method.get().map(|shown| {
+            let summary = shown.summary.clone();
+            fold("How this was computed", move || summary.clone(), false, move || explanation(&shown))
+        })
+    }
 }
 
 /// The methods from the `first`-th on: those of tables, after those of the pictures.

@@ -21,7 +21,11 @@ pub(crate) fn title_block(desk: Desk) -> impl IntoView {
     let changed = Memo::new(move |_| desk.case.with(|case| *case != millpond::case::Case::default()));
     Effect::new(move || {
         let site = desk.of(|sheet| sheet.result.site.clone());
-        document().set_title(&if site.is_empty() { "Millpond".to_owned() } else { format!("{site}: Millpond") });
+        document().set_title(&if site.is_empty() {
+            "Millpond".to_owned()
+        } else {
+            format!("{site}: Millpond")
+        });
     });
     view! {
         <header class="block">

@@ -135,10 +135,13 @@ fn take(desk: Desk, files: Vec<File>) {
 
 async fn read_case(file: &File) -> Result<Case, Fault> {
     let name = file.name();
-    let text = JsFuture::from(file.text()).await.ok().and_then(|text| text.as_string()).ok_or_else(|| {
-        Fault::new("the case file cannot be read", name.as_str(), "Choose it again.")
-    })?;
-    Case::from_json(&text).map_err(|fault| Fault { place: fault.place.replacen("case file", &name, 1), ..fault })
+    let text = JsFuture::from(file.text())
+        .await
+        .ok()
+        .and_then(|text| text.as_string())
+        .ok_or_else(|| Fault::new("the case file cannot be read", name.as_str(), "Choose it again."))?;
+    Case::from_json(&text)
+        .map_err(|fault| Fault { place: fault.place.replacen("case file", &name, 1), ..fault })
 }
 
 fn open_demo(desk: Desk, name: String) {
@@ -160,7 +163,8 @@ fn open_demo(desk: Desk, name: String) {
 
 /// The build packs the demo sites; what they are is told by their bytes, so they keep their own names.
 async fn fetch(name: &str) -> Result<File, JsValue> {
-    let answer: Response = JsFuture::from(window().fetch_with_str(&format!("demos/{name}.gz"))).await?.dyn_into()?;
+    let answer: Response =
+        JsFuture::from(window().fetch_with_str(&format!("demos/{name}.gz"))).await?.dyn_into()?;
     if !answer.ok() {
         return Err(format!("the server answered {}", answer.status()).into());
     }

@@ -108,8 +108,12 @@ pub(crate) fn picture(desk: Desk, which: Which) -> impl IntoView {
             "Enter" | " " if which == Which::Plane => {
                 event.prevent_default();
                 if let Some((index, _)) = reading.get_untracked() {
-                    let kind = desk.of(|sheet| sheet.pictures.plane.strands.get(index).map(|strand| strand.technology.clone()));
-                    kind.into_iter().for_each(|kind| pick(desk, &kind));
+                    let kind = desk.of(|sheet| {
+                        sheet.pictures.plane.strands.get(index).map(|strand| strand.technology.clone())
+                    });
+                    if let Some(kind) = kind {
+                        pick(desk, &kind);
+                    }
                 }
                 return;
             }
@@ -130,7 +134,9 @@ pub(crate) fn picture(desk: Desk, which: Which) -> impl IntoView {
         point(Some(next));
     };
 
-    let title = Memo::new(move |_| sheet.with(|sheet| sheet.as_deref().map_or(which.title(), |sheet| which.title_of(sheet))));
+    let title = Memo::new(move |_| {
+        sheet.with(|sheet| sheet.as_deref().map_or(which.title(), |sheet| which.title_of(sheet)))
+    });
     let sentence = move || sheet.with(|sheet| sheet.as_deref().map(|sheet| drawing::sentence(which, sheet)));
     let note = move || match reading.get() {
         Some((_, read)) => view! { <span class="read">{read.words}</span> }.into_any(),
@@ -143,7 +149,11 @@ pub(crate) fn picture(desk: Desk, which: Which) -> impl IntoView {
             }
         }
     };
-    let rows = move || sheet.with(|sheet| sheet.as_deref().map(|sheet| tables::table(which, sheet).rows.len()).unwrap_or_default());
+    let rows = move || {
+        sheet.with(|sheet| {
+            sheet.as_deref().map(|sheet| tables::table(which, sheet).rows.len()).unwrap_or_default()
+        })
+    };
     view! {
         <figure class="picture">
             <figcaption>
@@ -321,12 +331,15 @@ fn dropped(desk: Desk, drag: Drag, hits: &Hits, at: (f64, f64)) {
     let now = strip.x.at(at.0);
     // An hour is the shortest window.
     let least = 3600e6;
-    put_window(desk, match drag {
-        Drag::From => (now.min(to - least), to),
-        Drag::To => (from, now.max(from + least)),
-        Drag::Window(taken) => (now - taken, now - taken + (to - from)),
-        Drag::Asked => return,
-    });
+    put_window(
+        desk,
+        match drag {
+            Drag::From => (now.min(to - least), to),
+            Drag::To => (from, now.max(from + least)),
+            Drag::Window(taken) => (now - taken, now - taken + (to - from)),
+            Drag::Asked => return,
+        },
+    );
 }
 
 /// Asks what the curve gives at an energy.
@@ -371,4 +384,5 @@ fn put_window(desk: Desk, (from, to): (f64, f64)) {
 }
 
 /// What the plane's axes are divided by, in words.
-pub(crate) const BASES: [(Basis, &str); 3] = [(Basis::Mass, "mass"), (Basis::Volume, "volume"), (Basis::Absolute, "absolute")];
+pub(crate) const BASES: [(Basis, &str); 3] =
+    [(Basis::Mass, "mass"), (Basis::Volume, "volume"), (Basis::Absolute, "absolute")];

@@ -73,29 +73,33 @@ const WARMEST: Field = Field {
 pub(crate) fn station(desk: Desk) -> impl IntoView {
     let place = PLACES[3];
     let has_sheet = Memo::new(move |_| desk.sheet.with(Option::is_some));
-    station::station(desk, place, view! {
-        {station::lacking(desk, "Needs a requirement: it is laid on the plane against what each kind can do.")}
-        {figures(desk, place.of, 0)}
-        {move || has_sheet.get().then(|| view! {
-            <div class="work">
-                {axes(desk)}
-                {terms(desk)}
-                <p class="note">
-                    "Each strand is a set of curves computed from the kind’s circuit: the heavy one typical, the fine ones from its \
-                     energy-rich to its power-rich designs. Beaded: mass of the fluid only. A mark sits where the typical curve meets \
-                     the requirement."
-                </p>
-            </div>
-            <div class="full">
-                {picture(desk, Which::Plane)}
-                {figures(desk, place.of, 1)}
-                {method(desk, place.of, 0)}
-                {verdicts::list(desk)}
-                {methods_from(desk, place.of, 1)}
-                {all_figures(desk, &["plane", "screening"])}
-            </div>
-        })}
-    })
+    station::station(
+        desk,
+        place,
+        view! {
+            {station::lacking(desk, "Needs a requirement: it is laid on the plane against what each kind can do.")}
+            {figures(desk, place.of, 0)}
+            {move || has_sheet.get().then(|| view! {
+                <div class="work">
+                    {axes(desk)}
+                    {terms(desk)}
+                    <p class="note">
+                        "Each strand is a set of curves computed from the kind’s circuit: the heavy one typical, the fine ones from its \
+                         energy-rich to its power-rich designs. Beaded: mass of the fluid only. A mark sits where the typical curve meets \
+                         the requirement."
+                    </p>
+                </div>
+                <div class="full">
+                    {picture(desk, Which::Plane)}
+                    {figures(desk, place.of, 1)}
+                    {method(desk, place.of, 0)}
+                    {verdicts::list(desk)}
+                    {methods_from(desk, place.of, 1)}
+                    {all_figures(desk, &["plane", "screening"])}
+                </div>
+            })}
+        },
+    )
 }
 
 fn axes(desk: Desk) -> impl IntoView {

@@ -50,9 +50,17 @@ struct Shape {
 
 /// "As read", the note under it, and the fold with further corrections.
 pub(crate) fn as_read(desk: Desk) -> impl IntoView {
-    let shapes = Memo::new(move |_| desk.of(|sheet| sheet.reading.files.iter().map(shape).collect::<Vec<_>>()));
+    let shapes =
+        Memo::new(move |_| desk.of(|sheet| sheet.reading.files.iter().map(shape).collect::<Vec<_>>()));
     let notes = Memo::new(move |_| {
-        desk.of(|sheet| sheet.reading.files.iter().map(|file| note(file, sheet.reading.files.len() > 1)).collect::<Vec<_>>())
+        desk.of(|sheet| {
+            sheet
+                .reading
+                .files
+                .iter()
+                .map(|file| note(file, sheet.reading.files.len() > 1))
+                .collect::<Vec<_>>()
+        })
     });
     let clock = Memo::new(move |_| desk.of(|sheet| sheet.reading.clock_note.clone()));
     view! {
@@ -60,7 +68,7 @@ pub(crate) fn as_read(desk: Desk) -> impl IntoView {
         {move || {
             let shapes = shapes.get();
             let many = shapes.len() > 1;
-            shapes.into_iter().enumerate().map(|(i, shape)| table(desk, i, shape, many)).collect_view()
+            shapes.into_iter().enumerate().map(|(i, shape)| table(desk, i, &shape, many)).collect_view()
         }}
         <p class="note">{move || notes.get().into_iter().map(noted).collect_view()}{move || clock.get()}</p>
         {fold("Correct the reading", String::new, false, move || corrections(desk))}
@@ -93,11 +101,17 @@ fn noted((name, separator, decimal, rest): Note) -> impl IntoView {
 }
 
 /// One file's first rows, once for wide screens and once, a row per column, for a phone.
-fn table(desk: Desk, file: usize, shape: Shape, many: bool) -> impl IntoView {
-    let numeric = |at: usize| shape.rows.iter().any(|(_, cells)| cells.get(at).is_some_and(|cell| is_number(cell)));
+fn table(desk: Desk, file: usize, shape: &Shape, many: bool) -> impl IntoView + use<> {
+    let numeric =
+        |at: usize| shape.rows.iter().any(|(_, cells)| cells.get(at).is_some_and(|cell| is_number(cell)));
     let class = |at: usize| if numeric(at) { "n" } else { "" };
-    let heads = shape.headers.iter().enumerate().map(|(j, header)| view! { <th class=class(j)>{header.clone()}</th> });
-    let roles = (0..shape.headers.len()).map(|j| view! { <td class=class(j)>{column_choices(desk, file, j)}</td> });
+    let heads = shape
+        .headers
+        .iter()
+        .enumerate()
+        .map(|(j, header)| view! { <th class=class(j)>{header.clone()}</th> });
+    let roles =
+        (0..shape.headers.len()).map(|j| view! { <td class=class(j)>{column_choices(desk, file, j)}</td> });
     let rows = shape.rows.iter().map(|(number, cells)| {
         let cells = (0..shape.headers.len())
             .map(|j| view! { <td class=class(j)>{cells.get(j).cloned().unwrap_or_default()}</td> })
@@ -131,16 +145,19 @@ fn table(desk: Desk, file: usize, shape: Shape, many: bool) -> impl IntoView {
 }
 
 fn is_number(cell: &str) -> bool {
-    cell.chars().any(|c| c.is_ascii_digit()) && cell.chars().all(|c| c.is_ascii_digit() || " .,'-+\u{2212}\u{a0}\u{202f}eE".contains(c))
+    cell.chars().any(|c| c.is_ascii_digit())
+        && cell.chars().all(|c| c.is_ascii_digit() || " .,'-+\u{2212}\u{a0}\u{202f}eE".contains(c))
 }
 
 /// Choices of role and, where the role is a power, of unit.
 fn column_choices(desk: Desk, file: usize, at: usize) -> impl IntoView {
     let column = Memo::new(move |_| desk.of(|sheet| sheet.reading.files.get(file)?.columns.get(at).cloned()));
-    let header = column.with_untracked(|column| column.as_ref().map(|column| column.header.clone()).unwrap_or_default());
+    let header = column
+        .with_untracked(|column| column.as_ref().map(|column| column.header.clone()).unwrap_or_default());
     let role = move || column.with(|column| column.as_ref().map_or(Role::Ignore, |column| column.role));
     let unit = move || {
-        let unit = column.with(|column| column.as_ref().map(|column| column.unit.clone()).unwrap_or_default());
+        let unit =
+            column.with(|column| column.as_ref().map(|column| column.unit.clone()).unwrap_or_default());
         UNITS.into_iter().find(|known| *known == unit).unwrap_or("")
     };
     let has_unit = Memo::new(move |_| !unit().is_empty() || is_power(role()));
@@ -167,10 +184,24 @@ fn column_choices(desk: Desk, file: usize, at: usize) -> impl IntoView {
 }
 
 const fn is_power(role: Role) -> bool {
-    use Role::{Asked, Critical, Demand, Export, Generation, Import, NetExport, NetImport, Schedule, StoreCharge, StoreDischarge, Supply};
+    use Role::{
+        Asked, Critical, Demand, Export, Generation, Import, NetExport, NetImport, Schedule, StoreCharge,
+        StoreDischarge, Supply,
+    };
     matches!(
         role,
-        Supply | Demand | NetImport | NetExport | Import | Export | Generation | StoreCharge | StoreDischarge | Critical | Schedule | Asked
+        Supply
+            | Demand
+            | NetImport
+            | NetExport
+            | Import
+            | Export
+            | Generation
+            | StoreCharge
+            | StoreDischarge
+            | Critical
+            | Schedule
+            | Asked
     )
 }
 

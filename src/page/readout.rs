@@ -1,5 +1,7 @@
 //! What a picture says at a place: the sample nearest to the pointer, or the one that the arrow keys have reached.
 
+use std::fmt::Write;
+
 use millpond::chart::ticks::moment;
 use millpond::chart::{Hits, Measure, Verdict, nearest};
 use millpond::sheet::Sheet;
@@ -67,7 +69,12 @@ pub(crate) fn locate(which: Which, sheet: &Sheet, hits: &Hits, at: (f64, f64)) -
                     let (px, py) = frame.px(*energy, *power);
                     (px - at.0).abs() + (py - at.1).abs()
                 };
-                let least = strand.typical.iter().map(apart).filter(|apart| apart.is_finite()).min_by(f64::total_cmp)?;
+                let least = strand
+                    .typical
+                    .iter()
+                    .map(apart)
+                    .filter(|apart| apart.is_finite())
+                    .min_by(f64::total_cmp)?;
                 (least < 24.0).then_some((i, least))
             })
             .min_by(|a, b| a.1.total_cmp(&b.1))
@@ -100,7 +107,11 @@ pub(crate) fn read(which: Which, sheet: &Sheet, hits: &Hits, index: usize) -> Op
             } else {
                 format!("from {}: net {} to {}", moment(t), people::power(least), people::power(greatest))
             };
-            Readout { words, at: frame.px(t, if least.abs() > greatest.abs() { least } else { greatest }), hair }
+            Readout {
+                words,
+                at: frame.px(t, if least.abs() > greatest.abs() { least } else { greatest }),
+                hair,
+            }
         }
         Which::Coverage => {
             let coverage = &pictures.coverage;
@@ -113,9 +124,14 @@ pub(crate) fn read(which: Which, sheet: &Sheet, hits: &Hits, index: usize) -> Op
             };
             let mut words = format!("{} delivered:", people::energy(energy));
             for (i, curve) in coverage.curves.iter().enumerate() {
-                let Some(value) = nearest(&curve.energy_kwh, energy).and_then(|j| known(curve.value[j])) else { continue };
-                let power = curve.power_kw.map_or_else(|| "any power".to_owned(), |kw| people::power(kw).to_string());
-                words.push_str(&format!("{} {} at {power}", if i == 0 { "" } else { "," }, measure(value)));
+                let Some(value) = nearest(&curve.energy_kwh, energy).and_then(|j| known(curve.value[j]))
+                else {
+                    continue;
+                };
+                let power =
+                    curve.power_kw.map_or_else(|| "any power".to_owned(), |kw| people::power(kw).to_string());
+                // A String takes whatever is written to it.
+                let _ = write!(words, "{} {} at {power}", if i == 0 { "" } else { "," }, measure(value));
             }
             Readout { words, at: frame.px(energy, *first.value.get(index)?), hair }
         }
@@ -125,7 +141,12 @@ pub(crate) fn read(which: Which, sheet: &Sheet, hits: &Hits, index: usize) -> Op
             let (asked, carried) = (known(*week.asked_kw.get(index)?)?, known(*week.carried_kw.get(index)?)?);
             let level = week.level.get(index).copied().and_then(known);
             let level = level.map_or_else(String::new, |level| format!(", level {}", people::percent(level)));
-            let words = format!("{}: asked {}, carried {}{level}", moment(t), people::power(asked), people::power(carried));
+            let words = format!(
+                "{}: asked {}, carried {}{level}",
+                moment(t),
+                people::power(asked),
+                people::power(carried)
+            );
             Readout { words, at: frame.px(t, carried), hair }
         }
         Which::Cumulative => {

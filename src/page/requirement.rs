@@ -2,6 +2,7 @@
 
 use leptos::prelude::*;
 
+use millpond::case::Case;
 use millpond::result::{Band, Bound, Confidence, CoverageRow, Criterion, Origin};
 use millpond::units::asked::Asked;
 use millpond::units::people;
@@ -34,7 +35,7 @@ const CHARGE: Field = Field {
     asked: Asked::Share,
     name: "Charge efficiency",
     size: 5,
-    get: |case| Some(case.requirement.charge_efficiency),
+    get: |case| stated(case, case.requirement.charge_efficiency),
     set: |case, value| case.requirement.charge_efficiency = value.unwrap_or(1.0),
 };
 
@@ -42,9 +43,15 @@ const DISCHARGE: Field = Field {
     asked: Asked::Share,
     name: "Discharge efficiency",
     size: 5,
-    get: |case| Some(case.requirement.discharge_efficiency),
+    get: |case| stated(case, case.requirement.discharge_efficiency),
     set: |case, value| case.requirement.discharge_efficiency = value.unwrap_or(1.0),
 };
+
+/// A lossless store is none that was stated: the engine then assumes losses, which the empty field shows.
+fn stated(case: &Case, efficiency: f64) -> Option<f64> {
+    let lossless = case.requirement.charge_efficiency == 1.0 && case.requirement.discharge_efficiency == 1.0;
+    (!lossless).then_some(efficiency)
+}
 
 const DEPTH: Field = Field {
     asked: Asked::Share,
@@ -76,38 +83,46 @@ pub(crate) fn station(desk: Desk) -> impl IntoView {
     let has_sheet = Memo::new(move |_| desk.sheet.with(Option::is_some));
     let notes = Memo::new(move |_| desk.of(|sheet| sheet.requirement.notes.clone()));
     let has_week = Memo::new(move |_| desk.of(|sheet| sheet.pictures.week.is_some()));
-    station::station(desk, place, view! {
-        {station::lacking(desk, "Needs a duty: from it follow energies, powers, ramps, cycling and holding time.")}
-        {figures(desk, place.of, 0)}
-        {move || has_sheet.get().then(|| view! {
-            <div class="work">
-                {terms(desk)}
-                {move || notes.get().into_iter().map(|note| view! { <p class="note">{note}</p> }).collect_view()}
-            </div>
-            <div class="pair">{picture(desk, Which::Coverage)}{figures(desk, place.of, 1)}</div>
-            <div class="work">{method(desk, place.of, 0)}</div>
-            {move || has_week.get().then(|| view! {
-                <div class="pair">{picture(desk, Which::Week)}{figures(desk, place.of, 2)}</div>
-                <div class="work">{method(desk, place.of, 1)}</div>
+    station::station(
+        desk,
+        place,
+        view! {
+            {station::lacking(desk, "Needs a duty: from it follow energies, powers, ramps, cycling and holding time.")}
+            {figures(desk, place.of, 0)}
+            {move || has_sheet.get().then(|| view! {
+                <div class="work">
+                    {terms(desk)}
+                    {move || notes.get().into_iter().map(|note| view! { <p class="note">{note}</p> }).collect_view()}
+                </div>
+                <div class="pair">{picture(desk, Which::Coverage)}{figures(desk, place.of, 1)}</div>
+                <div class="work">{method(desk, place.of, 0)}</div>
+                {move || has_week.get().then(|| view! {
+                    <div class="pair">{picture(desk, Which::Week)}{figures(desk, place.of, 2)}</div>
+                    <div class="work">{method(desk, place.of, 1)}</div>
+                })}
+                <div class="pair">{picture(desk, Which::Cumulative)}{figures(desk, place.of, 3)}</div>
+                <div class="work">{method(desk, place.of, 2)}</div>
+                <div class="full">
+                    {criteria(desk)}
+                    {bands(desk)}
+                    {coverage(desk)}
+                    {methods_from(desk, place.of, 3)}
+                    {all_figures(desk, &["requirement", "simulations"])}
+                </div>
             })}
-            <div class="pair">{picture(desk, Which::Cumulative)}{figures(desk, place.of, 3)}</div>
-            <div class="work">{method(desk, place.of, 2)}</div>
-            <div class="full">
-                {criteria(desk)}
-                {bands(desk)}
-                {coverage(desk)}
-                {methods_from(desk, place.of, 3)}
-                {all_figures(desk, &["requirement", "simulations"])}
-            </div>
-        })}
-    })
+        },
+    )
 }
 
 fn terms(desk: Desk) -> impl IntoView {
     let limits = Memo::new(move |_| desk.of(|sheet| sheet.terms.kind == "limits"));
     let served = move || desk.of(|sheet| people::percent(sheet.terms.served_share).to_string());
     let power = move || desk.of(|sheet| people::power(sheet.terms.power_kw).to_string());
-    let word = move || if desk.of(|sheet| sheet.heads.connection == "connected") { "the import" } else { "the deficit" };
+    let word = move || {
+        if desk.of(|sheet| sheet.heads.connection == "connected") { "the import" } else { "the deficit" }
+    };
+    let charge = move || desk.of(|sheet| people::percent(sheet.terms.charge_efficiency).to_string());
+    let discharge = move || desk.of(|sheet| people::percent(sheet.terms.discharge_efficiency).to_string());
     let none = String::new;
     view! {
         <ol class="terms">
@@ -115,8 +130,8 @@ fn terms(desk: Desk) -> impl IntoView {
                 <li>"Serve "{input(desk, SERVED, served)}" of "{word}", with at most "{input(desk, POWER, power)}" both ways."</li>
             })}
             <li>
-                "Of what is charged "{input(desk, CHARGE, none)}" reaches the store, of what leaves it "
-                {input(desk, DISCHARGE, none)}" the connection."
+                "Of what is charged "{input(desk, CHARGE, charge)}" reaches the store, of what leaves it "
+                {input(desk, DISCHARGE, discharge)}" the connection."
             </li>
             <li>
                 "Of nameplate "{input(desk, DEPTH, none)}" is used, "{input(desk, END, none)}
@@ -127,9 +142,16 @@ fn terms(desk: Desk) -> impl IntoView {
 }
 
 fn criteria(desk: Desk) -> impl IntoView {
-    let rows = Memo::new(move |_| desk.of(|sheet| {
-        sheet.result.requirement.as_ref().map(|requirement| requirement.criteria.clone()).unwrap_or_default()
-    }));
+    let rows = Memo::new(move |_| {
+        desk.of(|sheet| {
+            sheet
+                .result
+                .requirement
+                .as_ref()
+                .map(|requirement| requirement.criteria.clone())
+                .unwrap_or_default()
+        })
+    });
     view! {
         <h3>"Criteria"</h3>
         <div class="scroll" tabindex="0" role="region" aria-label="Criteria"><table class="criteria">
@@ -181,31 +203,43 @@ fn scaled(value: f64, unit: &str) -> (String, String) {
 
 /// A quantity's word of the result format, as a person reads it.
 fn quantity(word: &str) -> String {
-    let mut words = word.replace('_', " ");
-    if word == "round_trip_efficiency" {
-        words = "round-trip efficiency".to_owned();
-    }
+    let words = if word == "round_trip_efficiency" {
+        "round-trip efficiency".to_owned()
+    } else {
+        word.replace('_', " ")
+    };
     let mut letters = words.chars();
     letters.next().map(|first| first.to_uppercase().chain(letters).collect()).unwrap_or_default()
 }
 
 fn bands(desk: Desk) -> impl IntoView {
-    let rows = Memo::new(move |_| desk.of(|sheet| {
-        sheet.result.requirement.as_ref().map(|requirement| requirement.bands.clone()).unwrap_or_default()
-    }));
-    fold("Time-scale bands", move || format!("{} bands, which add up to the net power", rows.with(Vec::len)), false, move || view! {
-        <div class="scroll" tabindex="0" role="region" aria-label="Time-scale bands"><table>
-            <thead><tr>
-                <th>"Changes"</th><th class="n">"Charge, kW"</th><th class="n">"Discharge, kW"</th><th class="n">"Energy, kWh"</th>
-            </tr></thead>
-            <tbody>{move || rows.get().into_iter().map(band).collect_view()}</tbody>
-        </table></div>
-    })
+    let rows = Memo::new(move |_| {
+        desk.of(|sheet| {
+            sheet.result.requirement.as_ref().map(|requirement| requirement.bands.clone()).unwrap_or_default()
+        })
+    });
+    fold(
+        "Time-scale bands",
+        move || format!("{} bands, which add up to the net power", rows.with(Vec::len)),
+        false,
+        move || {
+            view! {
+                <div class="scroll" tabindex="0" role="region" aria-label="Time-scale bands"><table>
+                    <thead><tr>
+                        <th>"Changes"</th><th class="n">"Charge, kW"</th><th class="n">"Discharge, kW"</th><th class="n">"Energy, kWh"</th>
+                    </tr></thead>
+                    <tbody>{move || rows.get().into_iter().map(band).collect_view()}</tbody>
+                </table></div>
+            }
+        },
+    )
 }
 
 fn band(row: Band) -> impl IntoView {
     let span = match (row.faster_than_s, row.slower_than_s) {
-        (Some(fast), Some(slow)) => format!("within {}, over {}", people::duration(fast), people::duration(slow)),
+        (Some(fast), Some(slow)) => {
+            format!("within {}, over {}", people::duration(fast), people::duration(slow))
+        }
         (Some(fast), None) => format!("within {}", people::duration(fast)),
         (None, Some(slow)) => format!("over {} and more", people::duration(slow)),
         (None, None) => "all".to_owned(),
@@ -221,14 +255,23 @@ fn band(row: Band) -> impl IntoView {
 }
 
 fn coverage(desk: Desk) -> impl IntoView {
-    let rows = Memo::new(move |_| desk.of(|sheet| {
-        sheet.result.requirement.as_ref().map(|requirement| requirement.coverage.clone()).unwrap_or_default()
-    }));
-    fold("Least capacity for a power and an unserved share", String::new, false, move || view! {
-        <div class="scroll" tabindex="0" role="region" aria-label="Least capacity"><table>
-            <thead><tr><th>"Power both ways"</th><th class="n">"Unserved, %"</th><th class="n">"Capacity inside, kWh"</th></tr></thead>
-            <tbody>{move || rows.get().into_iter().map(coverage_row).collect_view()}</tbody>
-        </table></div>
+    let rows = Memo::new(move |_| {
+        desk.of(|sheet| {
+            sheet
+                .result
+                .requirement
+                .as_ref()
+                .map(|requirement| requirement.coverage.clone())
+                .unwrap_or_default()
+        })
+    });
+    fold("Least capacity for a power and an unserved share", String::new, false, move || {
+        view! {
+            <div class="scroll" tabindex="0" role="region" aria-label="Least capacity"><table>
+                <thead><tr><th>"Power both ways"</th><th class="n">"Unserved, %"</th><th class="n">"Capacity inside, kWh"</th></tr></thead>
+                <tbody>{move || rows.get().into_iter().map(coverage_row).collect_view()}</tbody>
+            </table></div>
+        }
     })
 }
 

@@ -21,10 +21,9 @@ const DOTS: f64 = 2.0;
 pub(crate) fn case(desk: Desk) {
     let name = desk.of(|sheet| sheet.result.site.clone());
     let name = if name.is_empty() { "case".to_owned() } else { format!("{name} case") };
-    let saved = desk
-        .case
-        .with_untracked(millpond::case::Case::to_json)
-        .and_then(|text| save_text(&format!("{name}.json"), "application/json", &text).map_err(|error| refused(&error)));
+    let saved = desk.case.with_untracked(millpond::case::Case::to_json).and_then(|text| {
+        save_text(&format!("{name}.json"), "application/json", &text).map_err(|error| refused(&error))
+    });
     report(desk, saved);
 }
 

@@ -27,7 +27,13 @@ pub(crate) struct Place {
 pub(crate) const PLACES: [Place; 4] = [
     Place { number: 1, id: "record", name: "Record", of: |sheet| &sheet.record, lacks: "no file yet" },
     Place { number: 2, id: "duty", name: "Duty", of: |sheet| &sheet.duty, lacks: "needs a record" },
-    Place { number: 3, id: "requirement", name: "Requirement", of: |sheet| &sheet.requirement, lacks: "needs a duty" },
+    Place {
+        number: 3,
+        id: "requirement",
+        name: "Requirement",
+        of: |sheet| &sheet.requirement,
+        lacks: "needs a duty",
+    },
     Place { number: 4, id: "plane", name: "Plane", of: |sheet| &sheet.plane, lacks: "needs a requirement" },
 ];
 
@@ -51,9 +57,10 @@ pub(crate) fn station(desk: Desk, place: Place, inside: impl IntoView) -> impl I
             aria-busy=move || if busy.get() { "true" } else { "false" }
         >
             <h2 id=format!("h-{}", place.id) tabindex="-1"><span class="no">{place.number}</span>{place.name}</h2>
-            {move || (place.number == 1 || desk.sheet.with(Option::is_some)).then(|| {
-                view! { <p class="sentence">{move || sentence.get()}</p> }
-            })}
+            {move || {
+                let sentence = sentence.get();
+                (!sentence.is_empty()).then(|| view! { <p class="sentence">{sentence}</p> })
+            }}
             {inside}
         </section>
     }
@@ -68,13 +75,15 @@ pub(crate) fn lacking(desk: Desk, words: &'static str) -> impl IntoView {
 /// The error box: what, where, remedy.
 pub(crate) fn error_box(desk: Desk) -> impl IntoView {
     let fault = Memo::new(move |_| desk.status.with(|status| status.fault.clone()));
-    move || fault.get().map(|Fault { what, place, remedy }| {
-        view! {
-            <div class="error" role="alert">
-                <b>{capital(&what)}</b><span class="wh">{place}</span><span>{remedy}</span>
-            </div>
-        }
-    })
+    move || {
+        fault.get().map(|Fault { what, place, remedy }| {
+            view! {
+                <div class="error" role="alert">
+                    <b>{capital(&what)}</b><span class="wh">{place}</span><span>{remedy}</span>
+                </div>
+            }
+        })
+    }
 }
 
 /// A sentence's first letter as such; faults are written to stand anywhere.
@@ -88,7 +97,8 @@ fn capital(text: &str) -> String {
 pub(crate) fn working(desk: Desk) -> impl IntoView {
     let busy = Memo::new(move |_| desk.status.with(|status| status.busy));
     let remark = Memo::new(move |_| desk.status.with(|status| status.remark));
-    let done = move || desk.status.with(|status| status.progress.as_ref().map_or(0.0, |progress| progress.done));
+    let done =
+        move || desk.status.with(|status| status.progress.as_ref().map_or(0.0, |progress| progress.done));
     let words = move || {
         desk.status.with(|status| match &status.progress {
             Some(progress) => format!("{}, {}", capital(&progress.what), people::percent(progress.done)),

@@ -45,7 +45,8 @@ pub(crate) fn table(which: Which, sheet: &Sheet) -> Table {
                 Measure::HeldImportKw => "Import held, kW",
             };
             let rows = pictures.coverage.curves.iter().flat_map(|curve| {
-                let power = curve.power_kw.map_or_else(|| "no limit".to_owned(), |kw| people::power(kw).to_string());
+                let power =
+                    curve.power_kw.map_or_else(|| "no limit".to_owned(), |kw| people::power(kw).to_string());
                 let points = curve.energy_kwh.iter().zip(&curve.value);
                 points.map(move |(energy, value)| (power.clone(), vec![known(energy), known(value)]))
             });
@@ -54,13 +55,16 @@ pub(crate) fn table(which: Which, sheet: &Sheet) -> Table {
         Which::Week => {
             let rows = pictures.week.iter().flat_map(|week| {
                 let rows = week.t_us.iter().zip(&week.asked_kw).zip(&week.carried_kw).zip(&week.level);
-                rows.map(|(((t, asked), carried), level)| (moment(*t), vec![known(asked), known(carried), known(level)]))
+                rows.map(|(((t, asked), carried), level)| {
+                    (moment(*t), vec![known(asked), known(carried), known(level)])
+                })
             });
             (heads(&["From", "Asked, kW", "Carried, kW", "Level, of 1"]), rows.collect())
         }
         Which::Cumulative => {
             let curve = &pictures.cumulative;
-            let rows = curve.t_us.iter().zip(&curve.energy_kwh).map(|(t, energy)| (moment(*t), vec![known(energy)]));
+            let rows =
+                curve.t_us.iter().zip(&curve.energy_kwh).map(|(t, energy)| (moment(*t), vec![known(energy)]));
             (heads(&["At", "Net energy since the start, kWh"]), rows.collect())
         }
         Which::Plane => {

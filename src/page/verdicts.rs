@@ -44,7 +44,8 @@ pub(crate) fn list(desk: Desk) -> impl IntoView {
         let all = desk.view.with(|view| view.all_kinds);
         desk.of(|sheet| {
             let screening = &sheet.result.screening;
-            let mut shown: Vec<usize> = (0..screening.len()).filter(|i| all || screening[*i].default_on).collect();
+            let mut shown: Vec<usize> =
+                (0..screening.len()).filter(|i| all || screening[*i].default_on).collect();
             shown.sort_by_key(|i| screening[*i].verdict);
             shown.into_iter().map(|i| (i, screening[i].technology.clone())).collect::<Vec<_>>()
         })
@@ -52,16 +53,9 @@ pub(crate) fn list(desk: Desk) -> impl IntoView {
     let cautions = Memo::new(move |_| {
         let shown = order.get();
         desk.of(|sheet| {
-            let mut words: Vec<String> = Vec::new();
-            for (i, _) in shown {
-                if let Some(kind) = sheet.result.screening.get(i)
-                    && !kind.hazards.is_empty()
-                    && !words.contains(&kind.hazards)
-                {
-                    words.push(kind.hazards.clone());
-                }
-            }
-            words
+            let kinds = shown.iter().filter_map(|(i, _)| sheet.result.screening.get(*i));
+            let cautions = kinds.filter(|kind| !kind.hazards.is_empty());
+            cautions.map(|kind| (kind.name.clone(), kind.hazards.clone())).collect::<Vec<_>>()
         })
     });
     let notes = Memo::new(move |_| desk.of(|sheet| sheet.plane.notes.clone()));
@@ -85,7 +79,7 @@ pub(crate) fn list(desk: Desk) -> impl IntoView {
         <div class="note caution">
             {move || notes.get().into_iter().map(|note| view! { <p>{note}</p> }).collect_view()}
             <p>"Cautions of the kinds shown:"</p>
-            <ul>{move || cautions.get().into_iter().map(|words| view! { <li>{words}</li> }).collect_view()}</ul>
+            <ul>{move || cautions.get().into_iter().map(|(name, words)| view! { <li><b>{name}</b>": "{words}</li> }).collect_view()}</ul>
         </div>
     }
 }
@@ -93,15 +87,19 @@ pub(crate) fn list(desk: Desk) -> impl IntoView {
 fn row(desk: Desk, at: usize, id: String) -> impl IntoView {
     let kind = Memo::new(move |_| desk.of(|sheet| sheet.result.screening.get(at).cloned()));
     let name = kind.with_untracked(|kind| kind.as_ref().map(|kind| kind.name.clone()).unwrap_or_default());
-    let verdict = Memo::new(move |_| kind.with(|kind| kind.as_ref().map_or(Verdict::Fails, |kind| kind.verdict)));
-    let words = move |pick: fn(&Screened) -> String| move || kind.with(|kind| kind.as_ref().map(pick).unwrap_or_default());
+    let verdict =
+        Memo::new(move |_| kind.with(|kind| kind.as_ref().map_or(Verdict::Fails, |kind| kind.verdict)));
+    let words = move |pick: fn(&Screened) -> String| {
+        move || kind.with(|kind| kind.as_ref().map(pick).unwrap_or_default())
+    };
     let letter = {
         let id = id.clone();
         Memo::new(move |_| desk.view.with(|view| view.picks.iter().position(|picked| *picked == id)))
     };
     let chosen = move || letter.get().and_then(|at| LETTERS.get(at).copied());
     let marks = COLUMNS.map(|(column, criteria)| {
-        let judged = Memo::new(move |_| kind.with(|kind| kind.as_ref().and_then(|kind| worst(kind, criteria))));
+        let judged =
+            Memo::new(move |_| kind.with(|kind| kind.as_ref().and_then(|kind| worst(kind, criteria))));
         view! { <td class="m" data-c=column>{move || judged.get().map_or_else(
             || view! { <span class="na">"–"</span> }.into_any(),
             |(verdict, reason)| view! { <span title=reason>{labelled(verdict)}</span> }.into_any(),
