@@ -114,6 +114,15 @@ impl Bridge {
         self.post_or_feed(&request);
     }
 
+    /// Has the engine say what is wrong with the text of a case file.
+    pub(crate) fn explain(&self, name: String, case: String) {
+        if self.0.borrow().worker.is_none() {
+            self.spawn();
+        }
+        let request = Request::Explain { revision: self.0.borrow_mut().ask(), name, case };
+        self.post(&request);
+    }
+
     /// Shows something else of the same results.
     pub(crate) fn look(&self, view: View) {
         let request = {

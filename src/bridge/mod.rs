@@ -32,6 +32,8 @@ pub(crate) enum Request {
     Open { revision: u32, site: String, case: String, view: View },
     /// Does again what a changed case changes.
     Change { revision: u32, case: String, view: View },
+    /// Says what is wrong with the text of a case file, by its name.
+    Explain { revision: u32, name: String, case: String },
     /// Shows something else of the same results.
     Look { revision: u32, view: View },
     /// Leaves off.
@@ -86,6 +88,20 @@ pub(crate) fn open<T: DeserializeOwned>(envelope: &JsValue) -> Result<T, JsValue
 /// A list that came with an envelope; empty if there was none.
 pub(crate) fn list(envelope: &JsValue, name: &str) -> Array {
     Reflect::get(envelope, &name.into()).ok().and_then(|list| list.dyn_into().ok()).unwrap_or_default()
+}
+
+/// A case as the text of its file, written by the browser's own JSON, so that the page carries no writer of its own.
+#[cfg(feature = "page")]
+pub(crate) fn case_text(case: &millpond::case::Case) -> Result<String, JsValue> {
+    let value = case.serialize(&serde_wasm_bindgen::Serializer::json_compatible())?;
+    let text = js_sys::JSON::stringify_with_replacer_and_space(&value, &JsValue::NULL, &JsValue::from(2))?;
+    Ok(text.into())
+}
+
+/// A value in the text of a JSON file; none if it does not read, which the engine can put in words.
+#[cfg(feature = "page")]
+pub(crate) fn of_json<T: DeserializeOwned>(text: &str) -> Option<T> {
+    serde_wasm_bindgen::from_value(js_sys::JSON::parse(text).ok()?).ok()
 }
 
 /// Takes the long series out of a sheet: typed arrays, and their buffers to be transferred.

@@ -124,6 +124,17 @@ impl Worker {
                 (self.view, self.revision) = (view, revision);
                 self.begin_with(&case);
             }
+            Request::Explain { revision, name, case } => {
+                self.revision = revision;
+                let fault = Case::from_json(&case).err().unwrap_or_else(|| {
+                    Fault::new(
+                        "the page cannot take this case over, though it reads",
+                        "case file",
+                        "Report this as a defect.",
+                    )
+                });
+                self.fail(Fault { place: fault.place.replacen("case file", &name, 1), ..fault });
+            }
             Request::Look { revision, view } => {
                 (self.view, self.revision) = (view, revision);
                 self.begin();

@@ -39,6 +39,7 @@ pub(super) fn version(text: &str) -> Result<()> {
 }
 
 pub(super) fn ranges(case: &Case) -> Result<()> {
+    number("millpond_case", f64::from(case.millpond_case), f64::from(VERSION), f64::from(VERSION), "")?;
     let record = &case.record;
     optional("record.step_s", record.step_s, 1e-3, 31_536_000.0, "s")?;
     count("record.roles", record.roles.len())?;

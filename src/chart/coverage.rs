@@ -70,8 +70,8 @@ fn power_text(curve: &CoverageCurve) -> String {
 /// Draws what is served against delivered energy.
 ///
 /// In the result, `main` has x in kWh delivered and y in the measure (shares from 0 to 1, or kW); each mark is a spot.
-pub fn coverage<S: Surface>(
-    surface: S,
+pub fn coverage(
+    surface: &mut dyn Surface,
     size: (u32, u32),
     palette: &Palette,
     data: &Coverage,
@@ -108,7 +108,7 @@ pub fn coverage<S: Surface>(
     Ok(Hits { main: frame, second: None, spots })
 }
 
-fn axes<S: Surface>(pen: &mut Pen<'_, S>, plot: (f64, f64, f64, f64), data: &Coverage) -> Frame {
+fn axes(pen: &mut Pen<'_>, plot: (f64, f64, f64, f64), data: &Coverage) -> Frame {
     let share = data.measure != Measure::HeldImportKw;
     let found = extent(data.curves.iter().map(|c| &c.value));
     // Shares are their own unit.
@@ -153,12 +153,7 @@ fn axes<S: Surface>(pen: &mut Pen<'_, S>, plot: (f64, f64, f64, f64), data: &Cov
 }
 
 /// Dotted drops with ticks at both ends and three short lines each; marks at one place share them.
-fn draw_marks<S: Surface>(
-    pen: &mut Pen<'_, S>,
-    frame: &Frame,
-    data: &Coverage,
-    placer: &mut Placer,
-) -> Vec<Spot> {
+fn draw_marks(pen: &mut Pen<'_>, frame: &Frame, data: &Coverage, placer: &mut Placer) -> Vec<Spot> {
     let base = frame.plot.3;
     let mut groups: Vec<(String, &CoverageMark, Point)> = Vec::new();
     for mark in &data.marks {
@@ -227,13 +222,7 @@ fn draw_marks<S: Surface>(
 }
 
 /// Names of the powers, at the right ends or, on a phone, beside the curves.
-fn draw_names<S: Surface>(
-    pen: &mut Pen<'_, S>,
-    frame: &Frame,
-    data: &Coverage,
-    placer: &mut Placer,
-    narrow: bool,
-) {
+fn draw_names(pen: &mut Pen<'_>, frame: &Frame, data: &Coverage, placer: &mut Placer, narrow: bool) {
     let curves: Vec<&CoverageCurve> = data.curves.iter().take(3).collect();
     if narrow {
         for (i, curve) in curves.iter().enumerate() {

@@ -55,8 +55,8 @@ fn period(c: &Critical) -> String {
 }
 
 /// Draws the cumulative energy curve. In the result, `main` has x in microseconds of clock reading and y in kWh.
-pub fn cumulative<S: Surface>(
-    surface: S,
+pub fn cumulative(
+    surface: &mut dyn Surface,
     size: (u32, u32),
     palette: &Palette,
     data: &Cumulative,
@@ -130,7 +130,7 @@ fn fallen(frame: &Frame, data: &Cumulative, c: &Critical) -> Vec<Point> {
 }
 
 /// The fall as an upright dimension, the period as a level one.
-fn dimensions<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, c: &Critical, line: &[Point]) {
+fn dimensions(pen: &mut Pen<'_>, frame: &Frame, c: &Critical, line: &[Point]) {
     let (x0, y0, x1, y1) = frame.plot;
     let (top, bottom) = (frame.y.px(c.from_kwh), frame.y.px(c.to_kwh));
     let (from, to) = (frame.x.px(c.from_us), frame.x.px(c.to_us));

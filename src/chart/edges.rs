@@ -13,10 +13,7 @@ fn hours(count: usize) -> Vec<f64> {
 }
 
 /// A picture as SVG text; it must hold numbers only.
-fn sound(
-    size: (u32, u32),
-    draw: impl FnOnce(plotters::backend::SVGBackend<'_>) -> crate::fault::Result<Hits>,
-) -> String {
+fn sound(size: (u32, u32), draw: impl FnOnce(&mut dyn Surface) -> crate::fault::Result<Hits>) -> String {
     let text = svg(size, "", draw).unwrap();
     assert!(!text.contains("NaN") && !text.contains("inf") && !text.contains("2147483647"), "{text}");
     text

@@ -1,5 +1,7 @@
 //! Placing labels: none may overlap another or leave its frame; the least important, which comes last, yields.
 
+use crate::numeric::rising;
+
 use super::shape::Point;
 
 /// A rectangle taken by a text or a mark, px.
@@ -101,8 +103,7 @@ impl Placer {
 
 /// Positions moved apart to at least `gap`, in their order, kept within the two ends as far as they fit.
 pub(super) fn spread(wanted: &[f64], gap: f64, (low, high): (f64, f64)) -> Vec<f64> {
-    let mut order: Vec<usize> = (0..wanted.len()).collect();
-    order.sort_by(|&a, &b| wanted[a].total_cmp(&wanted[b]));
+    let order = rising(wanted);
     let mut placed = wanted.to_vec();
     let mut least = low;
     for &i in &order {

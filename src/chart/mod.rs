@@ -36,7 +36,7 @@ pub use data::*;
 pub use frame::{Axis, Frame, Hits, Spot, nearest};
 pub use net::net_power;
 pub use palette::{DARK, HIGH, HIGH_DARK, LIGHT, PRINT, Palette, Pens, Rgb};
-pub use pen::{FINE, Surface};
+pub use pen::{Backend, Drawn, FINE, Letters, Over, Surface};
 pub use plane::plane;
 pub use scheme::{Scheme, tokens};
 pub use svg::svg;

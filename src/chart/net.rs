@@ -13,6 +13,7 @@ use super::shape::{self, Point};
 use super::ticks::{self, TimeTick};
 use super::words::{extent, in_unit, most, power_unit};
 use crate::fault::Result;
+use crate::numeric::rising;
 use crate::units::people;
 
 const TOP: f64 = 46.0;
@@ -69,8 +70,8 @@ fn hours(episode: &EpisodeMark) -> people::Scaled {
 ///
 /// In the result, `main` is the power (x in microseconds of clock reading, y in kW), `second` the strip; the spots "from"
 /// and "to" are the window's grips.
-pub fn net_power<S: Surface>(
-    surface: S,
+pub fn net_power(
+    surface: &mut dyn Surface,
     size: (u32, u32),
     palette: &Palette,
     data: &NetPower,
@@ -115,7 +116,7 @@ pub fn net_power<S: Surface>(
 }
 
 /// The time axis of a frame, drawn at `y` below it.
-pub(super) fn time_axis<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, y: f64) {
+pub(super) fn time_axis(pen: &mut Pen<'_>, frame: &Frame, y: f64) {
     let (x0, _, x1, _) = frame.plot;
     pen.level(x0, x1, y, pen.axis_ink());
     let look = Text::tick(pen.palette);
@@ -150,7 +151,7 @@ fn envelope(frame: &Frame, data: &NetPower) -> Vec<Vec<(f64, f64, f64)>> {
     runs
 }
 
-fn draw_areas<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &NetPower) {
+fn draw_areas(pen: &mut Pen<'_>, frame: &Frame, data: &NetPower) {
     let zero = frame.y.px(0.0);
     let palette = pen.palette;
     let runs = envelope(frame, data);
@@ -208,7 +209,7 @@ fn away(line: &[Point], level: f64) -> Vec<Vec<Point>> {
     parts
 }
 
-fn draw_limits<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, limits: &[f64]) {
+fn draw_limits(pen: &mut Pen<'_>, frame: &Frame, limits: &[f64]) {
     let look = Text::label(pen.palette.ink);
     for &limit in limits.iter().filter(|l| l.is_finite()) {
         let y = frame.y.px(limit);
@@ -219,7 +220,7 @@ fn draw_limits<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, limits: &[f64]) 
 }
 
 /// The largest episodes as dimensions: surpluses above, deficits below, each with its energy and hours.
-fn draw_episodes<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, episodes: &[EpisodeMark], narrow: bool) {
+fn draw_episodes(pen: &mut Pen<'_>, frame: &Frame, episodes: &[EpisodeMark], narrow: bool) {
     let (x0, y0, x1, y1) = frame.plot;
     let palette = pen.palette;
     let most = if narrow { 2 } else { ((x1 - x0) / 220.0) as usize };
@@ -240,14 +241,15 @@ fn draw_episodes<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, episodes: &[Ep
                 y1: 18.0,
             });
         }
-        let mut order: Vec<&EpisodeMark> = episodes
+        let in_view: Vec<&EpisodeMark> = episodes
             .iter()
             .filter(|e| (e.energy_kwh > 0.0) == up && e.energy_kwh != 0.0 && e.from_us < e.to_us)
             .filter(|e| e.to_us > frame.x.from && e.from_us < frame.x.to)
             .collect();
-        order.sort_by(|a, b| {
-            b.energy_kwh.abs().total_cmp(&a.energy_kwh.abs()).then(a.from_us.total_cmp(&b.from_us))
-        });
+        // The largest first, the earlier first among equals.
+        let by_time = rising(&in_view.iter().map(|e| e.from_us).collect::<Vec<_>>());
+        let sizes: Vec<f64> = by_time.iter().map(|i| -in_view[*i].energy_kwh.abs()).collect();
+        let order = rising(&sizes).into_iter().map(|i| in_view[by_time[i]]);
         let mut drawn = 0;
         for episode in order {
             let (from, to) = (frame.x.px(episode.from_us), frame.x.px(episode.to_us));
@@ -274,8 +276,8 @@ fn draw_episodes<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, episodes: &[Ep
 }
 
 /// The whole record as daily means, with the window washed and its two grips.
-fn draw_strip<S: Surface>(
-    pen: &mut Pen<'_, S>,
+fn draw_strip(
+    pen: &mut Pen<'_>,
     area: (f64, f64, f64, f64),
     data: &NetPower,
     window: (f64, f64),

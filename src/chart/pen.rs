@@ -30,7 +30,7 @@ pub(super) const FAMILY: &str =
 pub(super) const OUTLINED: f64 = 0.999;
 
 /// A backend, with what plotters leaves open about text: its size and where it stands.
-pub trait Surface: DrawingBackend {
+pub trait Backend: DrawingBackend {
     /// By what the backend divides the size of a font.
     const SHRINKS: f64;
     /// The upright anchor to ask for.
@@ -41,7 +41,7 @@ pub trait Surface: DrawingBackend {
     const OUTLINES: bool;
 }
 
-impl Surface for plotters::backend::SVGBackend<'_> {
+impl Backend for plotters::backend::SVGBackend<'_> {
     // It writes fonts 1.24 times smaller than asked, and the top anchor as a shift of 0.76 em.
     const SHRINKS: f64 = 1.24;
     const STANDS: VPos = VPos::Top;
@@ -50,12 +50,100 @@ impl Surface for plotters::backend::SVGBackend<'_> {
 }
 
 #[cfg(feature = "page")]
-impl Surface for plotters_canvas::CanvasBackend {
+impl Backend for plotters_canvas::CanvasBackend {
     // The middle of the em box of this face lies 0.219 em above the baseline (ascent 1024, descent 400, scaled to 1000).
     const SHRINKS: f64 = 1.0;
     const STANDS: VPos = VPos::Center;
     const RISE: f64 = 0.219;
     const OUTLINES: bool = false;
+}
+
+/// What a picture is drawn on: a [`Backend`] behind calls that no longer know which, so that the pictures are in the program once
+/// and not once for each backend. A failure comes back in words.
+pub trait Surface {
+    /// Readies the backend.
+    fn ready(&mut self) -> Drawn;
+    /// Shows what was drawn.
+    fn show(&mut self) -> Drawn;
+    /// A line through points, its width in the backend's steps.
+    fn path(&mut self, points: &[BackendCoord], colour: BackendColor, width: u32) -> Drawn;
+    /// A filled polygon.
+    fn polygon(&mut self, points: &[BackendCoord], colour: BackendColor) -> Drawn;
+    /// A filled rectangle between two corners.
+    fn rectangle(&mut self, corners: (BackendCoord, BackendCoord), colour: BackendColor) -> Drawn;
+    /// A filled circle.
+    fn circle(&mut self, centre: BackendCoord, radius: u32, colour: BackendColor) -> Drawn;
+    /// A text with its baseline at a point (px).
+    fn letters(&mut self, at: (f64, f64), text: &str, look: &Letters) -> Drawn;
+    /// See [`Backend::OUTLINES`].
+    fn outlines(&self) -> bool;
+}
+
+/// Whether something was drawn; if not, why.
+pub type Drawn = std::result::Result<(), String>;
+
+/// A backend as a [`Surface`].
+#[derive(Debug)]
+pub struct Over<B>(pub B);
+
+/// A line's style in the backend's own steps.
+struct Stroke(BackendColor, u32);
+
+impl BackendStyle for Stroke {
+    fn color(&self) -> BackendColor {
+        self.0
+    }
+
+    fn stroke_width(&self) -> u32 {
+        self.1
+    }
+}
+
+fn worded<E: std::error::Error + Send + Sync>(drawn: std::result::Result<(), DrawingErrorKind<E>>) -> Drawn {
+    drawn.map_err(|error| error.to_string())
+}
+
+impl<B: Backend> Surface for Over<B> {
+    fn ready(&mut self) -> Drawn {
+        worded(self.0.ensure_prepared())
+    }
+
+    fn show(&mut self) -> Drawn {
+        worded(self.0.present())
+    }
+
+    fn path(&mut self, points: &[BackendCoord], colour: BackendColor, width: u32) -> Drawn {
+        worded(self.0.draw_path(points.iter().copied(), &Stroke(colour, width)))
+    }
+
+    fn polygon(&mut self, points: &[BackendCoord], colour: BackendColor) -> Drawn {
+        worded(self.0.fill_polygon(points.iter().copied(), &colour))
+    }
+
+    fn rectangle(&mut self, corners: (BackendCoord, BackendCoord), colour: BackendColor) -> Drawn {
+        worded(self.0.draw_rect(corners.0, corners.1, &colour, true))
+    }
+
+    fn circle(&mut self, centre: BackendCoord, radius: u32, colour: BackendColor) -> Drawn {
+        worded(self.0.draw_circle(centre, radius, &colour, true))
+    }
+
+    fn letters(&mut self, (x, y): (f64, f64), text: &str, look: &Letters) -> Drawn {
+        let style = Type { text: look.text, shrinks: B::SHRINKS, stands: B::STANDS, colour: look.colour };
+        worded(self.0.draw_text(text, &style, coord((x, y - B::RISE * look.text.size))))
+    }
+
+    fn outlines(&self) -> bool {
+        B::OUTLINES
+    }
+}
+
+/// How a text is drawn on a [`Surface`].
+#[derive(Clone, Copy)]
+#[allow(missing_debug_implementations, reason = "plotters' colours and anchors have none")]
+pub struct Letters {
+    text: Text,
+    colour: BackendColor,
 }
 
 /// A line's colour, opacity and width (px).
@@ -73,16 +161,6 @@ impl Ink {
 
     pub(super) fn faint(self, alpha: f64) -> Self {
         Self { alpha, ..self }
-    }
-}
-
-impl BackendStyle for Ink {
-    fn color(&self) -> BackendColor {
-        backend_colour(self.colour, self.alpha)
-    }
-
-    fn stroke_width(&self) -> u32 {
-        fine(self.width).max(1).unsigned_abs()
     }
 }
 
@@ -185,19 +263,19 @@ impl BackendTextStyle for Type {
 }
 
 /// The pen over a surface. It keeps the first failure and reports it when lifted.
-pub(super) struct Pen<'p, S: Surface> {
-    surface: S,
+pub(super) struct Pen<'p> {
+    surface: &'p mut dyn Surface,
     pub(super) palette: &'p Palette,
     pub(super) width: f64,
     failed: Option<String>,
 }
 
-impl<'p, S: Surface> Pen<'p, S> {
+impl<'p> Pen<'p> {
     /// Takes a surface of a size in px and lays the paper.
-    pub(super) fn new(surface: S, size: (u32, u32), palette: &'p Palette) -> Self {
+    pub(super) fn new(surface: &'p mut dyn Surface, size: (u32, u32), palette: &'p Palette) -> Self {
         let (width, height) = (f64::from(size.0), f64::from(size.1));
         let mut pen = Self { surface, palette, width, failed: None };
-        let prepared = pen.surface.ensure_prepared();
+        let prepared = pen.surface.ready();
         pen.note(prepared);
         pen.rect((0.0, 0.0, width, height), palette.paper, 1.0);
         pen
@@ -205,7 +283,7 @@ impl<'p, S: Surface> Pen<'p, S> {
 
     /// Ends the picture.
     pub(super) fn lift(mut self) -> Result<()> {
-        let presented = self.surface.present();
+        let presented = self.surface.show();
         self.note(presented);
         match self.failed {
             None => Ok(()),
@@ -217,9 +295,9 @@ impl<'p, S: Surface> Pen<'p, S> {
         }
     }
 
-    fn note(&mut self, drawn: std::result::Result<(), DrawingErrorKind<S::ErrorType>>) {
+    fn note(&mut self, drawn: Drawn) {
         if let (Err(error), None) = (drawn, &self.failed) {
-            self.failed = Some(error.to_string());
+            self.failed = Some(error);
         }
     }
 
@@ -229,7 +307,9 @@ impl<'p, S: Surface> Pen<'p, S> {
             if let [alone] = run {
                 self.dot(*alone, ink.width.max(1.5), ink.colour, ink.alpha);
             } else {
-                let drawn = self.surface.draw_path(run.iter().map(|&p| coord(p)), &ink);
+                let points: Vec<BackendCoord> = run.iter().map(|&p| coord(p)).collect();
+                let width = fine(ink.width).max(1).unsigned_abs();
+                let drawn = self.surface.path(&points, backend_colour(ink.colour, ink.alpha), width);
                 self.note(drawn);
             }
         }
@@ -265,19 +345,16 @@ impl<'p, S: Surface> Pen<'p, S> {
         if area.len() < 3 || area.iter().any(|p| !(p.0.is_finite() && p.1.is_finite())) {
             return;
         }
-        let drawn = self.surface.fill_polygon(area.iter().map(|&p| coord(p)), &backend_colour(colour, alpha));
+        let points: Vec<BackendCoord> = area.iter().map(|&p| coord(p)).collect();
+        let drawn = self.surface.polygon(&points, backend_colour(colour, alpha));
         self.note(drawn);
     }
 
     /// A filled rectangle (left, top, right, bottom).
     pub(super) fn rect(&mut self, (x0, y0, x1, y1): (f64, f64, f64, f64), colour: Rgb, alpha: f64) {
         if (x0 + y0 + x1 + y1).is_finite() && x1 > x0 && y1 > y0 {
-            let drawn = self.surface.draw_rect(
-                coord((x0, y0)),
-                coord((x1, y1)),
-                &backend_colour(colour, alpha),
-                true,
-            );
+            let drawn =
+                self.surface.rectangle((coord((x0, y0)), coord((x1, y1))), backend_colour(colour, alpha));
             self.note(drawn);
         }
     }
@@ -313,11 +390,10 @@ impl<'p, S: Surface> Pen<'p, S> {
     /// A filled circle.
     pub(super) fn dot(&mut self, centre: Point, radius: f64, colour: Rgb, alpha: f64) {
         if (centre.0 + centre.1).is_finite() {
-            let drawn = self.surface.draw_circle(
+            let drawn = self.surface.circle(
                 coord(centre),
                 fine(radius).unsigned_abs(),
-                &backend_colour(colour, alpha),
-                true,
+                backend_colour(colour, alpha),
             );
             self.note(drawn);
         }
@@ -332,7 +408,7 @@ impl<'p, S: Surface> Pen<'p, S> {
         let text = text.replace('\u{202f}', "\u{2009}");
         if look.halo {
             let paper = Text { colour: self.palette.paper, ..look };
-            if S::OUTLINES {
+            if self.surface.outlines() {
                 self.write(at, &text, paper, OUTLINED);
             } else {
                 for (dx, dy) in [
@@ -352,14 +428,9 @@ impl<'p, S: Surface> Pen<'p, S> {
         self.write(at, &text, look, 1.0);
     }
 
-    fn write(&mut self, (x, y): Point, text: &str, look: Text, alpha: f64) {
-        let style = Type {
-            text: look,
-            shrinks: S::SHRINKS,
-            stands: S::STANDS,
-            colour: backend_colour(look.colour, alpha),
-        };
-        let drawn = self.surface.draw_text(text, &style, coord((x, y - S::RISE * look.size)));
+    fn write(&mut self, at: Point, text: &str, look: Text, alpha: f64) {
+        let letters = Letters { text: look, colour: backend_colour(look.colour, alpha) };
+        let drawn = self.surface.letters(at, text, &letters);
         self.note(drawn);
     }
 

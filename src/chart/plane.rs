@@ -13,6 +13,7 @@ use super::plane_labels::{self, Named};
 use super::shape::{self, Lie, Point};
 use super::ticks;
 use crate::fault::Result;
+use crate::numeric::rising;
 use crate::units::people::{self, NARROW as JOIN};
 
 const TOP: f64 = 44.0;
@@ -90,7 +91,7 @@ fn lower(text: &str) -> String {
 ///
 /// In the result, `main` has logarithmic axes in the units of the basis; spots are the names and marks of the kinds, by the
 /// identifier of the technology, and "point" for the tick of the requirement.
-pub fn plane<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: &Plane) -> Result<Hits> {
+pub fn plane(surface: &mut dyn Surface, size: (u32, u32), palette: &Palette, data: &Plane) -> Result<Hits> {
     let size = roomy(size);
     let mut pen = Pen::new(surface, size, palette);
     let narrow = size.0 < NARROW;
@@ -107,10 +108,10 @@ pub fn plane<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: 
     let mut spots = Vec::new();
 
     // Kinds that were not picked lie below those that were.
-    let mut order: Vec<&Strand> = data.strands.iter().collect();
-    order.sort_by_key(|s| s.candidate.is_some());
+    let (picked, others): (Vec<&Strand>, Vec<&Strand>) =
+        data.strands.iter().partition(|strand| strand.candidate.is_some());
     let mut named = Vec::new();
-    for strand in order {
+    for strand in others.into_iter().chain(picked) {
         if let Some(line) = draw_strand(&mut pen, &frame, strand) {
             named.push(Named { strand, line });
         }
@@ -133,13 +134,15 @@ pub fn plane<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: 
         }
     }
     // The first named keeps its place: candidates, then the others as they were given.
-    named.reverse();
-    named.sort_by_key(|n| {
-        (
-            n.strand.candidate.unwrap_or(u8::MAX),
-            data.strands.iter().position(|s| s.technology == n.strand.technology),
-        )
-    });
+    let places: Vec<f64> = named
+        .iter()
+        .map(|n| {
+            let place = data.strands.iter().position(|s| s.technology == n.strand.technology).unwrap_or(0);
+            f64::from(n.strand.candidate.unwrap_or(u8::MAX)) * 1000.0 + place as f64
+        })
+        .collect();
+    let mut waiting: Vec<Option<Named<'_>>> = named.into_iter().map(Some).collect();
+    let named: Vec<Named<'_>> = rising(&places).into_iter().filter_map(|i| waiting[i].take()).collect();
     spots.extend(plane_labels::draw(&mut pen, &frame, &named, &taken, &lines));
     pen.lift()?;
     Ok(Hits { main: frame, second: None, spots })
@@ -187,7 +190,7 @@ fn ends(plot: (f64, f64, f64, f64), data: &Plane) -> Frame {
     }
 }
 
-fn axes<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, basis: Basis, narrow: bool) {
+fn axes(pen: &mut Pen<'_>, frame: &Frame, basis: Basis, narrow: bool) {
     let (x0, y0, x1, y1) = frame.plot;
     let tick = Text::tick(pen.palette);
     let (decades, between) = ticks::log(frame.x.from, frame.x.to);
@@ -239,7 +242,7 @@ fn time_line(frame: &Frame, hours: f64) -> Option<(Point, Point)> {
     shape::clip(at(frame.x.from / 1e3), at(frame.x.to * 1e3), frame.plot)
 }
 
-fn equal_times<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, narrow: bool) -> Vec<Patch> {
+fn equal_times(pen: &mut Pen<'_>, frame: &Frame, narrow: bool) -> Vec<Patch> {
     let (_, y0, x1, _) = frame.plot;
     let look = Text::tick(pen.palette);
     let mut taken = Vec::new();
@@ -264,7 +267,7 @@ fn equal_times<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, narrow: bool) ->
 }
 
 /// Draws a kind; gives the visible part of its typical curve, from the top.
-fn draw_strand<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, strand: &Strand) -> Option<Vec<Point>> {
+fn draw_strand(pen: &mut Pen<'_>, frame: &Frame, strand: &Strand) -> Option<Vec<Point>> {
     let colour = strand.candidate.map_or(pen.palette.strand, |c| pen.palette.candidate(c));
     let dash = strand.candidate.and_then(|c| DASHES.get(usize::from(c))).copied().unwrap_or(&[]);
     let visible = |curve: &[(f64, f64)]| -> Vec<Point> {
@@ -287,7 +290,7 @@ fn draw_strand<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, strand: &Strand)
 }
 
 /// A curve whose two ends fade to nothing over the last sixth of its height, its dashes carried on.
-fn fading<S: Surface>(pen: &mut Pen<'_, S>, line: &[Point], ink: Ink, dash: &[f64], beaded: bool) {
+fn fading(pen: &mut Pen<'_>, line: &[Point], ink: Ink, dash: &[f64], beaded: bool) {
     const STEPS: f64 = 8.0;
     if line.len() < 2 {
         return;
@@ -333,8 +336,8 @@ fn finely(line: &[Point], rise: f64) -> Vec<Point> {
 }
 
 /// The requirement: a line of its time across the plane, and a tick square to it at the budget's point, both named.
-fn requirement<S: Surface>(
-    pen: &mut Pen<'_, S>,
+fn requirement(
+    pen: &mut Pen<'_>,
     frame: &Frame,
     data: &Plane,
     named: &[Named<'_>],
@@ -386,8 +389,8 @@ fn within(patch: Patch, frame: &Frame) -> bool {
 }
 
 /// Names the requirement beside its line: under its right end, or where there is room for two short lines.
-fn name_line<S: Surface>(
-    pen: &mut Pen<'_, S>,
+fn name_line(
+    pen: &mut Pen<'_>,
     frame: &Frame,
     (a, b): (Point, Point),
     (power, energy): (f64, f64),
@@ -425,7 +428,7 @@ fn name_line<S: Surface>(
 }
 
 /// A verdict's mark: solid carries, hatched strains, open fails.
-fn mark<S: Surface>(pen: &mut Pen<'_, S>, (x, y): Point, verdict: Verdict) {
+fn mark(pen: &mut Pen<'_>, (x, y): Point, verdict: Verdict) {
     let palette = pen.palette;
     let half = MARK / 2.0;
     let area = (x - half, y - half, x + half, y + half);

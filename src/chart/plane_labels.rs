@@ -3,7 +3,7 @@
 use super::data::Strand;
 use super::frame::{Frame, Spot};
 use super::label::{Patch, Placer};
-use super::pen::{Pen, Surface, Text};
+use super::pen::{Pen, Text};
 use super::plane::name_of;
 use super::shape::{self, Point};
 
@@ -92,8 +92,8 @@ struct Place {
 }
 
 /// Draws the names, the most important first; a kind that finds no place stays without.
-pub(super) fn draw<S: Surface>(
-    pen: &mut Pen<'_, S>,
+pub(super) fn draw(
+    pen: &mut Pen<'_>,
     frame: &Frame,
     named: &[Named<'_>],
     taken: &[Patch],

@@ -5,7 +5,7 @@ use std::fmt::Write as _;
 use plotters::backend::SVGBackend;
 
 use super::frame::Hits;
-use super::pen::{FAMILY, FINE, OUTLINED};
+use super::pen::{FAMILY, FINE, OUTLINED, Over, Surface};
 use crate::fault::Result;
 
 /// Draws a picture of a size in px to SVG text, with a sentence as its text equivalent.
@@ -19,11 +19,11 @@ use crate::fault::Result;
 pub fn svg(
     size: (u32, u32),
     sentence: &str,
-    draw: impl FnOnce(SVGBackend<'_>) -> Result<Hits>,
+    draw: impl FnOnce(&mut dyn Surface) -> Result<Hits>,
 ) -> Result<String> {
     let mut text = String::new();
     let scaled = (size.0 * FINE as u32, size.1 * FINE as u32);
-    draw(SVGBackend::with_string(&mut text, scaled))?;
+    draw(&mut Over(SVGBackend::with_string(&mut text, scaled)))?;
     Ok(finish(&text, size, scaled, sentence))
 }
 

@@ -13,6 +13,7 @@ use super::shape::{self, Point};
 use super::ticks;
 use super::words::{extent, in_unit, most, power_unit};
 use crate::fault::Result;
+use crate::numeric::rising;
 use crate::units::people;
 
 const TOP: f64 = 28.0;
@@ -63,7 +64,7 @@ pub fn sentence(data: &Week) -> String {
 ///
 /// In the result, `main` is the power (x in microseconds of clock reading, y in kW, charge positive), `second` the level
 /// (a share).
-pub fn week<S: Surface>(surface: S, size: (u32, u32), palette: &Palette, data: &Week) -> Result<Hits> {
+pub fn week(surface: &mut dyn Surface, size: (u32, u32), palette: &Palette, data: &Week) -> Result<Hits> {
     let size = roomy(size);
     let mut pen = Pen::new(surface, size, palette);
     let (x0, x1) = (44.0, pen.width - 6.0);
@@ -129,7 +130,7 @@ fn between(upper: &[Point], lower: &[Point]) -> Vec<Vec<Point>> {
     areas
 }
 
-fn draw_powers<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Week) {
+fn draw_powers(pen: &mut Pen<'_>, frame: &Frame, data: &Week) {
     let palette = pen.palette;
     let zero = frame.y.px(0.0);
     // Each sample holds until the next: steps, so that areas are energies.
@@ -195,7 +196,7 @@ fn apart(line: &[Point], other: &[Point]) -> Vec<Vec<Point>> {
 }
 
 /// Names the three parts where each is largest.
-fn labels<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Week, lines: [&[Point]; 5]) {
+fn labels(pen: &mut Pen<'_>, frame: &Frame, data: &Week, lines: [&[Point]; 5]) {
     let [served_down, asked_down, asked_up, served_up, carried] = lines;
     let palette = pen.palette;
     let (x0, y0, x1, y1) = frame.plot;
@@ -252,7 +253,8 @@ fn labels<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Week, lines: [
             let near = if o.0 > thing.0 { o.0 } else { o.0 + wide };
             libm::hypot(near - thing.0, o.1 - 5.0 - thing.1)
         };
-        options.sort_by(|a, b| far(a).total_cmp(&far(b)));
+        let distances: Vec<f64> = options.iter().map(far).collect();
+        let options: Vec<Point> = rising(&distances).into_iter().map(|i| options[i]).collect();
         let fits = |o: &&Point| {
             let patch = look.patch(**o, name).grown(3.0);
             placer.free(&patch) && off(&patch)
@@ -267,7 +269,7 @@ fn labels<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame, data: &Week, lines: [
 }
 
 /// The level as a filled band.
-fn draw_level<S: Surface>(pen: &mut Pen<'_, S>, band: &Frame, data: &Week) {
+fn draw_level(pen: &mut Pen<'_>, band: &Frame, data: &Week) {
     let palette = pen.palette;
     let (x0, y0, x1, y1) = band.plot;
     let tick = Text::tick(palette);

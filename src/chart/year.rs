@@ -73,8 +73,8 @@ fn sheet_height(width: u32, rows: usize) -> f64 {
 /// Draws the year sheet with its duration curve.
 ///
 /// In the result, `main` is the sheet (x in cells of a row, y in rows, downwards), `second` the curve (x in hours).
-pub fn year_sheet<S: Surface>(
-    surface: S,
+pub fn year_sheet(
+    surface: &mut dyn Surface,
     size: (u32, u32),
     palette: &Palette,
     data: &YearSheet,
@@ -176,7 +176,7 @@ pub(super) fn shade(p: &Palette, class: i8) -> Rgb {
 }
 
 /// The fine hatch in paper colour on everything in deficit.
-pub(super) fn fine_hatch<S: Surface>(pen: &mut Pen<'_, S>, areas: &[Vec<Point>]) {
+pub(super) fn fine_hatch(pen: &mut Pen<'_>, areas: &[Vec<Point>]) {
     pen.hatch(areas, Lie::Rising, 4.0, Ink::new(pen.palette.paper, 0.6).faint(0.55));
 }
 
@@ -184,8 +184,8 @@ pub(super) fn corners((x0, y0, x1, y1): (f64, f64, f64, f64)) -> Vec<Point> {
     vec![(x0, y0), (x1, y0), (x1, y1), (x0, y1)]
 }
 
-fn draw_sheet<S: Surface>(
-    pen: &mut Pen<'_, S>,
+fn draw_sheet(
+    pen: &mut Pen<'_>,
     sheet: (f64, f64, f64, f64),
     data: &YearSheet,
     rows: usize,
@@ -238,7 +238,7 @@ fn row_us(data: &YearSheet) -> f64 {
 }
 
 /// Days over the columns, with paper seams between them; hours where a row is a day.
-fn heads<S: Surface>(pen: &mut Pen<'_, S>, (x0, y0, x1, y1): (f64, f64, f64, f64), data: &YearSheet) {
+fn heads(pen: &mut Pen<'_>, (x0, y0, x1, y1): (f64, f64, f64, f64), data: &YearSheet) {
     let look = Text::tick(pen.palette).middle();
     let days = libm::round(row_us(data) / DAY_US).max(1.0);
     let seam = Ink::new(pen.palette.paper, 1.0);
@@ -267,12 +267,7 @@ fn heads<S: Surface>(pen: &mut Pen<'_, S>, (x0, y0, x1, y1): (f64, f64, f64, f64
 }
 
 /// Months at the left, or the date of each row where there are few.
-fn sides<S: Surface>(
-    pen: &mut Pen<'_, S>,
-    (x0, y0, _, y1): (f64, f64, f64, f64),
-    data: &YearSheet,
-    rows: usize,
-) {
+fn sides(pen: &mut Pen<'_>, (x0, y0, _, y1): (f64, f64, f64, f64), data: &YearSheet, rows: usize) {
     let look = Text::tick(pen.palette).end();
     let tall = (y1 - y0) / rows.max(1) as f64;
     let mut placer = Placer::new(Patch { x0: 0.0, y0: y0 - 4.0, x1: x0, y1: y1 + 6.0 });
@@ -304,12 +299,7 @@ fn sides<S: Surface>(
 }
 
 /// The critical period as a bracket at the right edge, open where it runs past the record's end.
-fn bracket<S: Surface>(
-    pen: &mut Pen<'_, S>,
-    (_, y0, x1, y1): (f64, f64, f64, f64),
-    data: &YearSheet,
-    rows: usize,
-) {
+fn bracket(pen: &mut Pen<'_>, (_, y0, x1, y1): (f64, f64, f64, f64), data: &YearSheet, rows: usize) {
     let Some((from, to)) = data.critical_us else { return };
     let row = |us: f64| (us - data.start_us) / row_us(data);
     let (first, last) = (libm::floor(row(from)), libm::floor(row(to - 1.0)) + 1.0);

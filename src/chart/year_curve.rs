@@ -3,7 +3,7 @@
 use super::data::DurationCurve;
 use super::frame::Frame;
 use super::label::{Patch, Placer};
-use super::pen::{Ink, Pen, Surface, Text};
+use super::pen::{Ink, Pen, Text};
 use super::shape::Point;
 use super::ticks;
 use super::words::{at, in_unit, most, power_unit};
@@ -25,8 +25,8 @@ pub(super) struct Place {
 
 const BAR: f64 = 12.0;
 
-pub(super) fn draw<S: Surface>(
-    pen: &mut Pen<'_, S>,
+pub(super) fn draw(
+    pen: &mut Pen<'_>,
     place: &Place,
     curve: &DurationCurve,
     mut powers: (f64, f64),
@@ -115,7 +115,7 @@ fn area(line: &[Point], zero: f64) -> Vec<Vec<Point>> {
     vec![area]
 }
 
-fn hour_ticks<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame) {
+fn hour_ticks(pen: &mut Pen<'_>, frame: &Frame) {
     let (x0, _, x1, y1) = frame.plot;
     let marks = ticks::linear(0.0, frame.x.to, (((x1 - x0) / 42.0) as usize).clamp(1, 8));
     let look = Text::tick(pen.palette);
@@ -135,12 +135,7 @@ fn hour_ticks<S: Surface>(pen: &mut Pen<'_, S>, frame: &Frame) {
 }
 
 /// Surplus and deficit with their energies, and the limit.
-fn labels<S: Surface>(
-    pen: &mut Pen<'_, S>,
-    frame: &Frame,
-    curve: &DurationCurve,
-    (above, below): (&[Point], &[Point]),
-) {
+fn labels(pen: &mut Pen<'_>, frame: &Frame, curve: &DurationCurve, (above, below): (&[Point], &[Point])) {
     let palette = pen.palette;
     let (x0, y0, x1, y1) = frame.plot;
     let zero = frame.y.px(0.0);
@@ -189,7 +184,8 @@ fn labels<S: Surface>(
                 .iter()
                 .all(|x| at(&xs, &ys, *x).is_none_or(|y| if up { y > o.1 + 22.0 } else { y < o.1 - 14.0 }))
         };
-        options.sort_by_key(|o| !empty(o));
+        let (free, covered): (Vec<Point>, Vec<Point>) = options.into_iter().partition(empty);
+        let options = [free, covered].concat();
         let patches: Vec<Patch> = options
             .iter()
             .map(|o| Patch { x0: o.0, y0: o.1 - 11.0, x1: o.0 + wide, y1: o.1 + 21.0 })

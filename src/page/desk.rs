@@ -14,7 +14,7 @@ use millpond::sheet::{Sheet, View};
 
 use crate::bridge::Progress;
 use crate::bridge::client::{Bridge, Event};
-use crate::bridge::host;
+use crate::bridge::{case_text, host, of_json};
 
 /// A person who types is left to finish, ms.
 const TYPING_MS: u32 = 150;
@@ -183,17 +183,27 @@ impl Desk {
     }
 
     /// The case as the text of its file, also kept for the page that follows one that broke.
-    fn case_text(self) -> Option<String> {
-        match self.case.with_untracked(Case::to_json) {
+    pub(crate) fn case_text(self) -> Option<String> {
+        match self.case.with_untracked(case_text) {
             Ok(text) => {
                 host::keep(&text);
                 Some(text)
             }
-            Err(fault) => {
-                self.fail(fault);
+            Err(error) => {
+                self.fail(Fault::new(
+                    format!("the case cannot be written: {error:?}"),
+                    "case",
+                    "Report this as a defect.",
+                ));
                 None
             }
         }
+    }
+
+    /// Says what is wrong with the text of a case file that did not read.
+    pub(crate) fn explain(self, name: String, case: String) {
+        self.begin();
+        self.bridge.with_value(|bridge| bridge.explain(name, case));
     }
 
     fn begin(self) {
@@ -211,7 +221,7 @@ fn heard(sheet: RwSignal<Option<Arc<Sheet>>>, status: RwSignal<Status>, event: E
         Event::Progress(progress) => status.update(|status| status.progress = Some(progress)),
         Event::Sheet(made) => {
             // The result may hold its own error: what could be read is shown beside it.
-            let fault = made.result.error.clone();
+            let fault = made.error.clone();
             sheet.set(Some(made));
             status.set(Status { fault, ..Status::default() });
         }
@@ -238,7 +248,10 @@ fn settle(bridge: &Bridge, typing: StoredValue<Option<Timeout>, LocalStorage>) {
 /// The case of a page in this window that broke; otherwise the default.
 fn first_case() -> Case {
     // A text that does not read is no case; the page that broke may have been of another version.
-    host::kept().and_then(|text| Case::from_json(&text).ok()).unwrap_or_default()
+    host::kept()
+        .and_then(|text| of_json(&text))
+        .filter(|case: &Case| case.check().is_ok())
+        .unwrap_or_default()
 }
 
 /// The case without what belongs to one file's columns.

@@ -4,7 +4,7 @@ use plotters_canvas::CanvasBackend;
 use wasm_bindgen::JsCast;
 use web_sys::{CanvasRenderingContext2d, HtmlCanvasElement};
 
-use millpond::chart::{self, Basis, FINE, Hits, Measure, Palette, Surface};
+use millpond::chart::{self, Basis, FINE, Hits, Measure, Over, Palette, Surface};
 use millpond::fault::{Fault, Result};
 use millpond::sheet::Sheet;
 
@@ -109,10 +109,10 @@ pub(crate) fn sentence(which: Which, sheet: &Sheet) -> String {
 }
 
 /// Draws it.
-pub(crate) fn draw<S: Surface>(
+pub(crate) fn draw(
     which: Which,
     sheet: &Sheet,
-    surface: S,
+    surface: &mut dyn Surface,
     size: (u32, u32),
     palette: &Palette,
 ) -> Result<Hits> {
@@ -160,7 +160,7 @@ pub(crate) fn on_canvas(
         return Err(no_canvas());
     }
     context.set_line_join("round");
-    draw(which, sheet, surface, size, palette)
+    draw(which, sheet, &mut Over(surface), size, palette)
 }
 
 /// Whether two sheets give the same picture, so that it need not be drawn again.

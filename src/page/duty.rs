@@ -94,7 +94,7 @@ pub(crate) fn station(desk: Desk) -> impl IntoView {
 }
 
 fn question(desk: Desk) -> impl IntoView {
-    let connection = move || desk.of(|sheet| sheet.result.duty.as_ref().map(|duty| duty.connection));
+    let connection = move || desk.of(|sheet| sheet.connection);
     let put = move |connection| set(desk, |case| case.site.connection = Some(connection));
     let guessed = Memo::new(move |_| desk.case.with(|case| case.site.connection.is_none()));
     let note = move || desk.of(|sheet| sheet.duty.notes.join(" "));

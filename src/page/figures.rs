@@ -1,11 +1,8 @@
 //! Key figures beside a sentence or picture, and the fold that lists every figure of the result by its path.
 
 use leptos::prelude::*;
-use serde_json::Value;
 
-use millpond::result::SiteResult;
-use millpond::sheet::{Figure, Sheet, Station};
-use millpond::units::people;
+use millpond::sheet::{Figure, Listed, Sheet, Station};
 
 use super::desk::Desk;
 
@@ -39,7 +36,7 @@ fn figure(figure: Figure) -> impl IntoView {
 /// A fold with every number of parts of the result: name, value, unit.
 pub(crate) fn all_figures(desk: Desk, parts: &'static [&'static str]) -> impl IntoView {
     // The rows stand in the document whether the fold is open or not, so that every figure can be found and read.
-    let rows = Memo::new(move |_| desk.of(|sheet| rows(&sheet.result, parts)));
+    let rows = Memo::new(move |_| desk.of(|sheet| rows(&sheet.listed, parts)));
     view! {
         <details class="fold">
             <summary>"All figures"<span class="count">{move || rows.with(|rows| format!("{} numbers", rows.len()))}</span></summary>
@@ -51,79 +48,15 @@ pub(crate) fn all_figures(desk: Desk, parts: &'static [&'static str]) -> impl In
     }
 }
 
-#[derive(Debug, Clone, PartialEq)]
-struct Row {
-    path: String,
-    value: String,
-    shown: String,
-}
-
-fn row(row: Row) -> impl IntoView {
-    let unit = unit(&row.path);
+fn row(row: Listed) -> impl IntoView {
     let name = row.path.clone();
     view! {
-        <tr><th scope="row">{name}</th><td class="n" data-figure=row.path data-value=row.value>{row.shown}</td><td>{unit}</td></tr>
+        <tr><th scope="row">{name}</th><td class="n" data-figure=row.path data-value=row.value>{row.shown}</td><td>{row.unit}</td></tr>
     }
 }
 
-fn rows(result: &SiteResult, parts: &[&str]) -> Vec<Row> {
-    let mut rows = Vec::new();
-    if let Ok(Value::Object(result)) = serde_json::to_value(result) {
-        for part in parts {
-            if let Some(value) = result.get(*part) {
-                walk(part, value, &mut rows);
-            }
-        }
-    }
-    rows
-}
-
-/// Every scalar below a value, by its path; words and yes or no are left to the sentences and tables.
-fn walk(path: &str, value: &Value, rows: &mut Vec<Row>) {
-    match value {
-        Value::Number(number) => rows.push(Row {
-            path: path.to_owned(),
-            value: number.to_string(),
-            shown: number.as_f64().map(|value| people::significant(value, 6)).unwrap_or_default(),
-        }),
-        Value::Array(list) => {
-            for (i, value) in list.iter().enumerate() {
-                walk(&format!("{path}.{i}"), value, rows);
-            }
-        }
-        Value::Object(fields) => {
-            for (name, value) in fields {
-                walk(&format!("{path}.{name}"), value, rows);
-            }
-        }
-        _ => {}
-    }
-}
-
-/// The unit that a field's name ends in.
-fn unit(path: &str) -> &'static str {
-    const ENDS: [(&str, &str); 16] = [
-        ("_kw_per_s", "kW/s"),
-        ("_wh_per_kg", "Wh/kg"),
-        ("_wh_per_l", "Wh/l"),
-        ("_w_per_kg", "W/kg"),
-        ("_w_per_l", "W/l"),
-        ("_per_h", "1/h"),
-        ("_kwh", "kWh"),
-        ("_kw", "kW"),
-        ("_kg", "kg"),
-        ("_s", "s"),
-        ("_l", "l"),
-        ("_share", "of 1"),
-        ("_efficiency", "of 1"),
-        ("self_consumption", "of 1"),
-        ("self_sufficiency", "of 1"),
-        ("_c", "\u{b0}C"),
-    ];
-    // Fields of a group (losses, a mass at its typical and good end) carry the unit in the group's name.
-    let parent = path.rsplit_once('.').map_or("", |(parent, _)| parent);
-    [path, parent]
-        .iter()
-        .find_map(|name| ENDS.iter().find(|(end, _)| name.ends_with(end)))
-        .map_or("", |(_, unit)| unit)
+/// The numbers of parts of the result.
+fn rows(listed: &[Listed], parts: &[&str]) -> Vec<Listed> {
+    let within = |path: &str| parts.iter().any(|part| path.split('.').next() == Some(part));
+    listed.iter().filter(|row| within(&row.path)).cloned().collect()
 }

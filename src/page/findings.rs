@@ -50,7 +50,7 @@ pub(crate) fn list(desk: Desk) -> impl IntoView {
 }
 
 fn findings<T: Default>(desk: Desk, pick: impl FnOnce(&[Finding]) -> T) -> T {
-    desk.of(|sheet| sheet.result.record.as_ref().map(|record| pick(&record.findings)).unwrap_or_default())
+    desk.of(|sheet| pick(&sheet.findings))
 }
 
 /// The `nth` finding of a kind.

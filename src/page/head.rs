@@ -20,7 +20,7 @@ pub(crate) fn title_block(desk: Desk) -> impl IntoView {
     };
     let changed = Memo::new(move |_| desk.case.with(|case| *case != millpond::case::Case::default()));
     Effect::new(move || {
-        let site = desk.of(|sheet| sheet.result.site.clone());
+        let site = desk.of(|sheet| sheet.site.clone());
         document().set_title(&if site.is_empty() {
             "Millpond".to_owned()
         } else {
@@ -36,7 +36,7 @@ pub(crate) fn title_block(desk: Desk) -> impl IntoView {
                 <span>"Millpond"</span>
             </h1>
             <dl>
-                {entry("Site", |sheet| sheet.result.site.clone(), "none yet")}
+                {entry("Site", |sheet| sheet.site.clone(), "none yet")}
                 {entry("Record", |sheet| sheet.heads.record.clone(), "–")}
                 {entry("Connection", |sheet| sheet.heads.connection.clone(), "–")}
                 {entry("Clock", |sheet| sheet.heads.clock.clone(), "–")}
@@ -45,6 +45,9 @@ pub(crate) fn title_block(desk: Desk) -> impl IntoView {
                     <dd>
                         {move || if changed.get() { "changed " } else { "as guessed " }}
                         <button class="quiet" on:click=move |_| save::case(desk)>"Save"</button>
+                        {move || desk.sheet.with(Option::is_some).then(|| view! {
+                            " "<button class="quiet" data-role="result" on:click=move |_| save::result(desk)>"Save result"</button>
+                        })}
                     </dd>
                 </div>
                 {entry("Version", |sheet| sheet.heads.version.clone(), env!("CARGO_PKG_VERSION"))}

@@ -11,6 +11,8 @@ use web_sys::{DragEvent, File, FileList, HtmlInputElement, Response};
 use millpond::case::Case;
 use millpond::fault::Fault;
 
+use crate::bridge::of_json;
+
 use super::desk::Desk;
 use super::screen;
 
@@ -103,7 +105,7 @@ pub(crate) fn listen(desk: Desk) {
 }
 
 fn demos() -> Vec<Demo> {
-    serde_json::from_str(SITES).unwrap_or_default()
+    of_json(SITES).unwrap_or_default()
 }
 
 fn files(list: Option<FileList>) -> Vec<File> {
@@ -114,34 +116,27 @@ fn files(list: Option<FileList>) -> Vec<File> {
 fn take(desk: Desk, files: Vec<File>) {
     let (cases, meters): (Vec<File>, Vec<File>) =
         files.into_iter().partition(|file| file.name().to_lowercase().ends_with(".json"));
-    if let Some(case) = cases.into_iter().next_back() {
+    if let Some(file) = cases.into_iter().next_back() {
         screen::settled(false);
         spawn_local(async move {
-            match read_case(&case).await {
-                Ok(case) if meters.is_empty() => {
+            let name = file.name();
+            let Some(text) = JsFuture::from(file.text()).await.ok().and_then(|text| text.as_string()) else {
+                return desk.fail(Fault::new("the case file cannot be read", name, "Choose it again."));
+            };
+            match of_json(&text).filter(|case: &Case| case.check().is_ok()) {
+                Some(case) if meters.is_empty() => {
                     if let Err(fault) = desk.edit(move |held| *held = case) {
                         desk.fail(fault);
                     }
                     desk.settle_soon();
                 }
-                Ok(case) => desk.open_with(meters, case),
-                Err(fault) => desk.fail(fault),
+                Some(case) => desk.open_with(meters, case),
+                None => desk.explain(name, text),
             }
         });
         return;
     }
     desk.open(meters);
-}
-
-async fn read_case(file: &File) -> Result<Case, Fault> {
-    let name = file.name();
-    let text = JsFuture::from(file.text())
-        .await
-        .ok()
-        .and_then(|text| text.as_string())
-        .ok_or_else(|| Fault::new("the case file cannot be read", name.as_str(), "Choose it again."))?;
-    Case::from_json(&text)
-        .map_err(|fault| Fault { place: fault.place.replacen("case file", &name, 1), ..fault })
 }
 
 fn open_demo(desk: Desk, name: String) {

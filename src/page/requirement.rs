@@ -142,16 +142,7 @@ fn terms(desk: Desk) -> impl IntoView {
 }
 
 fn criteria(desk: Desk) -> impl IntoView {
-    let rows = Memo::new(move |_| {
-        desk.of(|sheet| {
-            sheet
-                .result
-                .requirement
-                .as_ref()
-                .map(|requirement| requirement.criteria.clone())
-                .unwrap_or_default()
-        })
-    });
+    let rows = Memo::new(move |_| desk.of(|sheet| sheet.criteria.clone()));
     view! {
         <h3>"Criteria"</h3>
         <div class="scroll" tabindex="0" role="region" aria-label="Criteria"><table class="criteria">
@@ -213,11 +204,7 @@ fn quantity(word: &str) -> String {
 }
 
 fn bands(desk: Desk) -> impl IntoView {
-    let rows = Memo::new(move |_| {
-        desk.of(|sheet| {
-            sheet.result.requirement.as_ref().map(|requirement| requirement.bands.clone()).unwrap_or_default()
-        })
-    });
+    let rows = Memo::new(move |_| desk.of(|sheet| sheet.bands.clone()));
     fold(
         "Time-scale bands",
         move || format!("{} bands, which add up to the net power", rows.with(Vec::len)),
@@ -255,16 +242,7 @@ fn band(row: Band) -> impl IntoView {
 }
 
 fn coverage(desk: Desk) -> impl IntoView {
-    let rows = Memo::new(move |_| {
-        desk.of(|sheet| {
-            sheet
-                .result
-                .requirement
-                .as_ref()
-                .map(|requirement| requirement.coverage.clone())
-                .unwrap_or_default()
-        })
-    });
+    let rows = Memo::new(move |_| desk.of(|sheet| sheet.coverage.clone()));
     fold("Least capacity for a power and an unserved share", String::new, false, move || {
         view! {
             <div class="scroll" tabindex="0" role="region" aria-label="Least capacity"><table>

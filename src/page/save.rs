@@ -19,11 +19,21 @@ const DOTS: f64 = 2.0;
 
 /// Saves the case as JSON.
 pub(crate) fn case(desk: Desk) {
-    let name = desk.of(|sheet| sheet.result.site.clone());
+    let name = desk.of(|sheet| sheet.site.clone());
     let name = if name.is_empty() { "case".to_owned() } else { format!("{name} case") };
-    let saved = desk.case.with_untracked(millpond::case::Case::to_json).and_then(|text| {
-        save_text(&format!("{name}.json"), "application/json", &text).map_err(|error| refused(&error))
-    });
+    if let Some(text) = desk.case_text() {
+        json(desk, &name, &text);
+    }
+}
+
+/// Saves the result as JSON: the same bytes that the terminal program writes.
+pub(crate) fn result(desk: Desk) {
+    let (site, text) = desk.of(|sheet| (sheet.site.clone(), sheet.result.clone()));
+    json(desk, &format!("{site} result"), &text);
+}
+
+fn json(desk: Desk, name: &str, text: &str) {
+    let saved = save_text(&format!("{name}.json"), "application/json", text).map_err(|error| refused(&error));
     report(desk, saved);
 }
 
@@ -74,7 +84,7 @@ fn bitmap(which: Which, sheet: &Sheet, size: (u32, u32)) -> Result<String, JsVal
 }
 
 fn file_name(which: Which, sheet: &Sheet, ending: &str) -> String {
-    format!("{} {}.{ending}", sheet.result.site, which.title().to_lowercase())
+    format!("{} {}.{ending}", sheet.site, which.title().to_lowercase())
 }
 
 fn save_text(name: &str, kind: &str, text: &str) -> Result<(), JsValue> {

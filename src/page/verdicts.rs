@@ -3,6 +3,7 @@
 use leptos::prelude::*;
 
 use millpond::chart::Verdict;
+use millpond::numeric::rising;
 use millpond::technology::{Criterion, Screened};
 use millpond::units::people;
 
@@ -43,17 +44,16 @@ pub(crate) fn list(desk: Desk) -> impl IntoView {
     let order = Memo::new(move |_| {
         let all = desk.view.with(|view| view.all_kinds);
         desk.of(|sheet| {
-            let screening = &sheet.result.screening;
-            let mut shown: Vec<usize> =
-                (0..screening.len()).filter(|i| all || screening[*i].default_on).collect();
-            shown.sort_by_key(|i| screening[*i].verdict);
-            shown.into_iter().map(|i| (i, screening[i].technology.clone())).collect::<Vec<_>>()
+            let screening = &sheet.screening;
+            let verdicts: Vec<f64> = screening.iter().map(|kind| f64::from(kind.verdict as u8)).collect();
+            let shown = rising(&verdicts).into_iter().filter(|i| all || screening[*i].default_on);
+            shown.map(|i| (i, screening[i].technology.clone())).collect::<Vec<_>>()
         })
     });
     let cautions = Memo::new(move |_| {
         let shown = order.get();
         desk.of(|sheet| {
-            let kinds = shown.iter().filter_map(|(i, _)| sheet.result.screening.get(*i));
+            let kinds = shown.iter().filter_map(|(i, _)| sheet.screening.get(*i));
             let cautions = kinds.filter(|kind| !kind.hazards.is_empty());
             cautions.map(|kind| (kind.name.clone(), kind.hazards.clone())).collect::<Vec<_>>()
         })
@@ -85,7 +85,7 @@ pub(crate) fn list(desk: Desk) -> impl IntoView {
 }
 
 fn row(desk: Desk, at: usize, id: String) -> impl IntoView {
-    let kind = Memo::new(move |_| desk.of(|sheet| sheet.result.screening.get(at).cloned()));
+    let kind = Memo::new(move |_| desk.of(|sheet| sheet.screening.get(at).cloned()));
     let name = kind.with_untracked(|kind| kind.as_ref().map(|kind| kind.name.clone()).unwrap_or_default());
     let verdict =
         Memo::new(move |_| kind.with(|kind| kind.as_ref().map_or(Verdict::Fails, |kind| kind.verdict)));

@@ -122,16 +122,14 @@ impl Lay {
                 self.pictures.plane = plane;
                 Stage::Words
             }
-            Stage::Words => return Ok(Some(self.sheet())),
+            Stage::Words => return self.sheet().map(Some),
         };
         Ok(None)
     }
 
-    fn sheet(&mut self) -> Sheet {
+    fn sheet(&mut self) -> Result<Sheet> {
         let Some(done) = self.assessment.take() else {
-            // Only reached if asked again after the end, which the trait forbids; an empty sheet would be a lie.
-            let fault = Fault::new("the sheet was laid already", "engine", "Report this as a defect.");
-            return Sheet::failed(&self.record.site, fault);
+            return Err(Fault::new("the sheet was laid already", "engine", "Report this as a defect."));
         };
         let result = done.result();
         let words = words::all(&done, &result, &self.case, &self.view, &self.pictures);
@@ -144,7 +142,7 @@ impl Lay {
             Kind::Limits(limits) => (limits.import_kw, limits.export_kw),
             _ => (None, None),
         };
-        Sheet {
+        Ok(Sheet {
             reading: self.record.reading.clone(),
             heads: heads(&self.record, &done, &result.version),
             record: words.record,
@@ -163,8 +161,8 @@ impl Lay {
                 efficiency_assumed: done.requirement.working.assumed,
             },
             pictures: std::mem::take(&mut self.pictures),
-            result,
-        }
+            ..Sheet::of(&result)?
+        })
     }
 }
 

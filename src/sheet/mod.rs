@@ -4,17 +4,20 @@
 //! nothing; the statement quotes the same words.
 
 mod lay;
+mod listed;
 mod pictures;
 
 pub use lay::Lay;
 
 use serde::{Deserialize, Serialize};
 
+use crate::case::Connection;
 use crate::chart;
 use crate::duty::Duty;
-use crate::fault::Fault;
-use crate::record::Reading;
-use crate::result::SiteResult;
+use crate::fault::{Fault, Result};
+use crate::record::{Finding, Reading};
+use crate::result::{Band, CoverageRow, Criterion, SiteResult};
+use crate::technology::Screened;
 
 /// What the page asks to see; not part of the case, since results do not depend on it.
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
@@ -32,8 +35,26 @@ pub struct View {
 /// Everything the page shows.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct Sheet {
-    /// The result object.
-    pub result: SiteResult,
+    /// The result object as JSON, byte for byte what the terminal writes.
+    pub result: String,
+    /// Name of the site.
+    pub site: String,
+    /// What stopped the work, if anything did.
+    pub error: Option<Fault>,
+    /// Islanded or connected.
+    pub connection: Option<Connection>,
+    /// The audit.
+    pub findings: Vec<Finding>,
+    /// The requirement's criteria.
+    pub criteria: Vec<Criterion>,
+    /// Capacity for each power and unserved share.
+    pub coverage: Vec<CoverageRow>,
+    /// Time-scale bands.
+    pub bands: Vec<Band>,
+    /// Verdicts, kind by kind.
+    pub screening: Vec<Screened>,
+    /// Every number of the result by its path.
+    pub listed: Vec<Listed>,
     /// How the files were read.
     pub reading: Reading,
     /// Title block and rail.
@@ -50,7 +71,7 @@ pub struct Sheet {
     pub episodes: Vec<EpisodeRow>,
     /// Terms of the duty as they are in force (limits filled in where they were guessed).
     pub terms: Terms,
-    /// Names of technologies by verdict row, hazards and siting: in `result.screening`.
+    /// The pictures' series.
     pub pictures: Pictures,
 }
 
@@ -114,6 +135,19 @@ pub struct Method {
     pub source: String,
     /// Limits: where it stops holding.
     pub limits: String,
+}
+
+/// A number of the result, for the folds that list them all.
+#[derive(Debug, Clone, Default, PartialEq, Eq, Serialize, Deserialize)]
+pub struct Listed {
+    /// Path in the result object.
+    pub path: String,
+    /// The unrounded number as JSON writes it.
+    pub value: String,
+    /// Rounded to six places, grouped.
+    pub shown: String,
+    /// Unit; empty for counts.
+    pub unit: String,
 }
 
 /// An episode in the list.
@@ -202,10 +236,26 @@ impl Pictures {
 }
 
 impl Sheet {
-    /// A sheet that only says what stopped the work.
-    pub fn failed(site: &str, fault: Fault) -> Self {
-        Self {
-            result: crate::assess::failed(site, fault),
+    /// A sheet with the result's parts and nothing else yet.
+    ///
+    /// # Errors
+    /// If the result cannot be written as JSON.
+    fn of(result: &SiteResult) -> Result<Self> {
+        let unwritable = |error: serde_json::Error| {
+            Fault::new(format!("the result cannot be written: {error}"), "engine", "Report this as a defect.")
+        };
+        let requirement = result.requirement.as_ref();
+        Ok(Self {
+            result: serde_json::to_string(result).map_err(unwritable)?,
+            site: result.site.clone(),
+            error: result.error.clone(),
+            connection: result.duty.as_ref().map(|duty| duty.connection),
+            findings: result.record.as_ref().map(|record| record.findings.clone()).unwrap_or_default(),
+            criteria: requirement.map(|part| part.criteria.clone()).unwrap_or_default(),
+            coverage: requirement.map(|part| part.coverage.clone()).unwrap_or_default(),
+            bands: requirement.map(|part| part.bands.clone()).unwrap_or_default(),
+            screening: result.screening.clone(),
+            listed: listed::numbers(&serde_json::to_value(result).map_err(unwritable)?),
             reading: Reading::default(),
             heads: Heads::default(),
             record: Station::default(),
@@ -215,7 +265,7 @@ impl Sheet {
             episodes: Vec::new(),
             terms: Terms::default(),
             pictures: Pictures::default(),
-        }
+        })
     }
 }
 
