@@ -30,6 +30,7 @@ impl Tube {
     }
 
     /// The tube within a store's ratings (kW; none = no limit); may come out empty (`lo > hi`).
+    #[must_use]
     pub fn rated(self, charge_kw: Option<f64>, discharge_kw: Option<f64>) -> Self {
         Self {
             lo: charge_kw.map_or(self.lo, |limit| self.lo.max(-limit)),

@@ -1,5 +1,7 @@
 //! The record's clock: a start, a step, and the offset in which people read it.
 
+use std::fmt::Write as _;
+
 use jiff::{Timestamp, civil, tz};
 
 /// A regular clock. Instants are microseconds since 1970-01-01T00:00:00Z, so that steps of a few milliseconds are exact.
@@ -76,9 +78,10 @@ impl Clock {
             read.second()
         );
         if read.subsec_nanosecond() != 0 {
-            text.push_str(&format!(".{:06}", read.subsec_nanosecond() / 1000));
+            // Writing to a text cannot fail.
+            let _ = write!(text, ".{:06}", read.subsec_nanosecond() / 1000);
         }
-        text.push_str(&format!("{sign}{:02}:{:02}", offset / 3600, offset / 60 % 60));
+        let _ = write!(text, "{sign}{:02}:{:02}", offset / 3600, offset / 60 % 60);
         text
     }
 

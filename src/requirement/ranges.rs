@@ -14,7 +14,7 @@ use crate::numeric::Sum;
 #[derive(Debug, Clone)]
 pub struct Ranges {
     /// Falling ranges, kWh inside, falling.
-    ranges: Vec<f64>,
+    falls: Vec<f64>,
     /// Running sums of the ranges, same order.
     sums: Vec<f64>,
     /// Unserved at any capacity, kWh at the terminals: above the power limit, and what the year does not yield.
@@ -70,7 +70,7 @@ impl Ranges {
             .collect();
         let lost = if drift < 0.0 { losses.discharge * -drift } else { 0.0 };
         Self {
-            ranges,
+            falls: ranges,
             sums,
             floor_kwh: above.value() * step_h + lost,
             deficit_kwh: deficit.value() * step_h,
@@ -80,7 +80,7 @@ impl Ranges {
 
     /// Unserved energy (kWh at the terminals, per pass of the record) with a capacity (kWh inside).
     pub fn unserved_kwh(&self, capacity_kwh: f64) -> f64 {
-        let larger = self.ranges.partition_point(|range| *range > capacity_kwh);
+        let larger = self.falls.partition_point(|range| *range > capacity_kwh);
         let sum = if larger == 0 { 0.0 } else { self.sums[larger - 1] - larger as f64 * capacity_kwh };
         self.floor_kwh + self.discharge_efficiency * sum
     }
@@ -109,7 +109,7 @@ impl Ranges {
         // Between two neighbouring ranges the sum is linear; the first segment whose lower end exceeds the room holds the answer.
         for (k, sum) in self.sums.iter().enumerate() {
             let count = (k + 1) as f64;
-            let below = self.ranges.get(k + 1).copied().unwrap_or(0.0);
+            let below = self.falls.get(k + 1).copied().unwrap_or(0.0);
             if sum - count * below >= room {
                 return Some(((sum - room) / count).max(0.0));
             }
@@ -119,13 +119,13 @@ impl Ranges {
 
     /// Capacity (kWh inside) beyond which nothing more is served.
     pub fn greatest_kwh(&self) -> f64 {
-        self.ranges.first().copied().unwrap_or(0.0)
+        self.falls.first().copied().unwrap_or(0.0)
     }
 
     /// Corners of the curve of unserved energy against capacity: capacities (kWh inside), rising from 0, at most about `most`.
     pub fn corners(&self, most: usize) -> Vec<f64> {
         let mut corners = vec![0.0];
-        let stride = self.ranges.len().div_ceil(most.max(1)).max(1);
+        let stride = self.falls.len().div_ceil(most.max(1)).max(1);
         // Always the largest ranges: the curve's long right arm has few corners.
         let mut picked: Vec<f64> = self
             .ranges

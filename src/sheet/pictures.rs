@@ -287,7 +287,7 @@ pub(super) fn cumulative(duty: &Duty, requirement: &Requirement, case: &Case) ->
     // The whole of a connected year; around the critical period of an islanded one, so that its fall can be read.
     let stride = clock.intervals.div_ceil(SAMPLES / 2).max(1);
     let keep = |i: usize| {
-        i % stride == 0
+        i.is_multiple_of(stride)
             || i == clock.intervals
             || period.is_some_and(|period| i == period.from || i == period.to)
     };
@@ -317,7 +317,7 @@ pub(super) fn cumulative(duty: &Duty, requirement: &Requirement, case: &Case) ->
         sum.add(total);
         for i in 0..(period.to - clock.intervals).min(clock.intervals) {
             sum.add(capacity::net_inflow(duty, losses, step_h, i));
-            if (i + 1) % stride == 0 || i + 1 + clock.intervals == period.to {
+            if (i + 1).is_multiple_of(stride) || i + 1 + clock.intervals == period.to {
                 picture.t_us.push(reading_us(clock, i + 1) + span_us);
                 picture.energy_kwh.push(sum.value());
             }

@@ -167,7 +167,7 @@ impl Account {
         self.discharged.add(discharge);
         self.taken.add(discharge * step_h / losses.discharge);
         self.leaked.add(before * leak.lost + flow * leak.inflow_lost);
-        self.held.add((before + after) / 2.0);
+        self.held.add(f64::midpoint(before, after));
     }
 }
 

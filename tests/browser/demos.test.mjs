@@ -2,7 +2,7 @@
 import assert from "node:assert/strict";
 import { readFileSync } from "node:fs";
 import { after, before, test } from "node:test";
-import { assertQuiet, assertSameFigures, chooseFiles, demoFile, demos, dropFiles, figures, openDemo, setUp, settled, shot, terminal } from "./helpers.mjs";
+import { assertQuiet, assertSameFigures, caseFile, chooseFiles, demoFile, demos, dropFiles, figures, openDemo, savedResult, setUp, settled, shot, terminal, terminalText } from "./helpers.mjs";
 
 let site;
 before(async () => {
@@ -22,6 +22,7 @@ for (const demo of demos) {
     assert.equal(result.duty.connection, demo.connection, "the connection is guessed as the site's list says");
     assert.equal(await page.locator("[role=alert]").count(), 0, "nothing is wrong");
     assert.equal(await page.locator("[aria-busy=true]").count(), 0, "nothing is busy once settled");
+    assert.equal(await savedResult(page), terminalText(demoFile(demo)), "the page's result is the terminal's, byte for byte");
     await shot(page, `${demo.name}-1280-light`);
     assertQuiet(page);
     await page.closeAll();
@@ -61,6 +62,41 @@ test("a second site replaces the first", async () => {
   await chooseFiles(page, demoFile(demos[1]));
   await settled(page);
   assertSameFigures(await figures(page), terminal(demoFile(demos[1])));
+  assertQuiet(page);
+  await page.closeAll();
+});
+
+test("every picture is drawn, in more than one colour", async () => {
+  const page = await site.open();
+  await chooseFiles(page, demoFile(demos[0]));
+  await settled(page);
+  const colours = await page.$$eval("section[data-station] canvas", (all) =>
+    all.filter((canvas) => canvas.checkVisibility() && canvas.width > 0).map((canvas) => {
+      const copy = document.createElement("canvas");
+      [copy.width, copy.height] = [canvas.width, canvas.height];
+      const context = copy.getContext("2d");
+      context.drawImage(canvas, 0, 0);
+      const pixels = new Uint32Array(context.getImageData(0, 0, copy.width, copy.height).data.buffer);
+      return new Set(pixels).size;
+    }));
+  assert.ok(colours.length >= 5, `year, net power, coverage, week and plane: ${colours.length} canvases`);
+  for (const count of colours) assert.ok(count > 4, `a picture has ${count} colours`);
+  assertQuiet(page);
+  await page.closeAll();
+});
+
+test("changing the case gives what the terminal program gives with that case", async () => {
+  const page = await site.open();
+  const case_ = {
+    millpond_case: 1,
+    requirement: { charge_efficiency: 0.93, discharge_efficiency: 0.91, standing_kw: 0.2, powers_kw: [10, 25], unserved_shares: [0, 0.02, 0.2] },
+    site: { connection: "connected", mass_budget_kg: 4000, response_s: 1, service_life_years: 15 },
+    stores: [{ kind: "fixed", name: "shed", energy_kwh: 40, charge_kw: 12, discharge_kw: 12, self_discharge_per_h: 0.0004, start: "cyclic" }],
+  };
+  const [file, text] = caseFile(case_);
+  await dropFiles(page, [{ name: "case.json", text }, { name: demos[0].file, text: readFileSync(demoFile(demos[0]), "utf8") }]);
+  await settled(page);
+  assert.equal(await savedResult(page), terminalText(demoFile(demos[0]), ["--case", file]));
   assertQuiet(page);
   await page.closeAll();
 });

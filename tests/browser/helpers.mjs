@@ -2,7 +2,8 @@
 // which a page is driven (data-role) and read (data-figure).
 import assert from "node:assert/strict";
 import { execFileSync } from "node:child_process";
-import { mkdirSync, readFileSync } from "node:fs";
+import { mkdirSync, mkdtempSync, readFileSync, writeFileSync } from "node:fs";
+import { tmpdir } from "node:os";
 import { dirname, join } from "node:path";
 import { fileURLToPath } from "node:url";
 import { chromium } from "playwright-core";
@@ -94,12 +95,29 @@ export function figures(page) {
   );
 }
 
-/** The terminal program's result object for a file or folder. */
-export function terminal(path, extra = []) {
+/** The terminal program's result for a file or folder, as the bytes it writes. */
+export function terminalText(path, extra = []) {
   const program = process.env.MILLPOND_TERMINAL ?? join(process.env.CARGO_TARGET_DIR ?? join(root, "target"), "release/millpond");
   const lines = execFileSync(program, [path, "--out", "json", ...extra], { encoding: "utf8", maxBuffer: 1 << 28 }).trim().split("\n");
   assert.equal(lines.length, 1, "one site gives one line");
-  return JSON.parse(lines[0]);
+  return lines[0];
+}
+
+/** The terminal program's result object for a file or folder. */
+export const terminal = (path, extra) => JSON.parse(terminalText(path, extra));
+
+/** The result as the page saves it. */
+export async function savedResult(page) {
+  const [download] = await Promise.all([page.waitForEvent("download"), page.locator("[data-role=result]").click()]);
+  return readFileSync(await download.path(), "utf8");
+}
+
+/** A case in a file of its own: its path and its text. */
+export function caseFile(content) {
+  const text = JSON.stringify(content);
+  const path = join(mkdtempSync(join(tmpdir(), "millpond-")), "case.json");
+  writeFileSync(path, text);
+  return [path, text];
 }
 
 /** The value at a path such as `duty.deficit_kwh`, `simulations.0.served_kwh` or `simulations[0].served_kwh`. */

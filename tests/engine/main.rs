@@ -1,6 +1,8 @@
 //! The engine against published and independently computed values (tests/reference), and properties that must hold for any
 //! record.
 
+#![allow(clippy::unwrap_used, reason = "a test that cannot go on should say where")]
+
 mod properties;
 mod reference;
 mod site;

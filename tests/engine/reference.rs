@@ -86,16 +86,13 @@ fn capacities_of_the_hand_series_and_the_site() {
         );
         close(result.capacity_range_kwh.unwrap(), number(&expected["range_W"]), 1e-9);
         close(result.least_round_trip_efficiency.unwrap(), number(&expected["deficit_over_surplus"]), 1e-9);
-        match expected["no_deficit_cyclic"].as_f64() {
-            Some(cyclic) => {
-                close(result.capacity_no_deficit_cyclic_kwh.unwrap(), cyclic, 1e-9);
-                close(result.least_capacity_kwh.unwrap(), cyclic, 1e-9);
-                assert!(result.least_discharge_kw.is_some());
-            }
-            None => {
-                assert_eq!(result.capacity_no_deficit_cyclic_kwh, None);
-                assert_eq!((result.least_capacity_kwh, result.least_charge_kw), (None, None));
-            }
+        if let Some(cyclic) = expected["no_deficit_cyclic"].as_f64() {
+            close(result.capacity_no_deficit_cyclic_kwh.unwrap(), cyclic, 1e-9);
+            close(result.least_capacity_kwh.unwrap(), cyclic, 1e-9);
+            assert!(result.least_discharge_kw.is_some());
+        } else {
+            assert_eq!(result.capacity_no_deficit_cyclic_kwh, None);
+            assert_eq!((result.least_capacity_kwh, result.least_charge_kw), (None, None));
         }
     }
 }
@@ -103,21 +100,21 @@ fn capacities_of_the_hand_series_and_the_site() {
 #[test]
 fn capacities_with_self_discharge() {
     let all = json(include_str!("../reference/bc_capacity.json"));
-    let mut infeasible = 0;
+    let mut feasible = 0;
     for row in all["self_discharge_0.95_0.92"].as_array().unwrap() {
         let case = case(0.95, 0.92, number(&row["sigma_per_h"]));
         let duty = duty(&hourly(), &case);
         let losses = Losses::of(&case.requirement);
         close(capacity::balance(&duty, &losses, false).unwrap(), number(&row["noncyclic_kwh"]), 1e-9);
-        match row["cyclic_kwh"].as_f64() {
-            Some(expected) => close(capacity::balance(&duty, &losses, true).unwrap(), expected, 1e-9),
-            None => {
-                infeasible += 1;
-                assert_eq!(capacity::balance(&duty, &losses, true), None);
-            }
+        let repeated = capacity::balance(&duty, &losses, true);
+        if let Some(expected) = row["cyclic_kwh"].as_f64() {
+            feasible += 1;
+            close(repeated.unwrap(), expected, 1e-9);
+        } else {
+            assert_eq!(repeated, None);
         }
     }
-    println!("{infeasible} infeasible rates");
+    assert!(feasible >= 4, "{feasible}");
 }
 
 #[test]

@@ -7,14 +7,14 @@ use millpond::duty::{self, Duty};
 use millpond::record::{Clock, Reading, Record, Series, Zone};
 
 /// A record of net power (kW) with a step in seconds; `None` is a gap.
-pub fn net(step_s: i64, values: &[Option<f64>]) -> Rc<Record> {
+pub(crate) fn net(step_s: i64, values: &[Option<f64>]) -> Rc<Record> {
     let mut record = empty(step_s, values.len());
     record.net_kw = Some(Series::from_values(values).unwrap());
     Rc::new(record)
 }
 
 /// A record of supply and demand.
-pub fn supply_demand(step_s: i64, supply: &[f64], demand: &[f64]) -> Rc<Record> {
+pub(crate) fn supply_demand(step_s: i64, supply: &[f64], demand: &[f64]) -> Rc<Record> {
     let mut record = empty(step_s, supply.len());
     let series =
         |values: &[f64]| Series::from_values(&values.iter().copied().map(Some).collect::<Vec<_>>()).unwrap();
@@ -38,7 +38,7 @@ fn empty(step_s: i64, intervals: usize) -> Record {
 }
 
 /// A table of numbers by column; an empty cell is NaN.
-pub fn table(text: &str) -> Vec<Vec<f64>> {
+pub(crate) fn table(text: &str) -> Vec<Vec<f64>> {
     let mut columns: Vec<Vec<f64>> = Vec::new();
     for line in text.lines().skip(1) {
         for (i, cell) in line.split(',').enumerate() {
@@ -52,13 +52,13 @@ pub fn table(text: &str) -> Vec<Vec<f64>> {
 }
 
 /// The reference site: 672 hours of supply and demand.
-pub fn hourly() -> Rc<Record> {
+pub(crate) fn hourly() -> Rc<Record> {
     let columns = table(include_str!("../reference/site_hourly.csv"));
     supply_demand(3600, &columns[1], &columns[2])
 }
 
 /// A case with these efficiencies and self-discharge.
-pub fn case(charge: f64, discharge: f64, self_discharge_per_h: f64) -> Case {
+pub(crate) fn case(charge: f64, discharge: f64, self_discharge_per_h: f64) -> Case {
     let mut case = Case::default();
     case.requirement.charge_efficiency = charge;
     case.requirement.discharge_efficiency = discharge;
@@ -67,12 +67,12 @@ pub fn case(charge: f64, discharge: f64, self_discharge_per_h: f64) -> Case {
 }
 
 /// The duty of a case.
-pub fn duty(record: &Rc<Record>, case: &Case) -> Duty {
+pub(crate) fn duty(record: &Rc<Record>, case: &Case) -> Duty {
     duty::ask(record, case).unwrap()
 }
 
 /// Limits that let the store recharge from the grid and discharge into it.
-pub fn limits(import: Option<f64>, export: Option<f64>) -> DutyCase {
+pub(crate) fn limits(import: Option<f64>, export: Option<f64>) -> DutyCase {
     DutyCase::Limits {
         import_limit_kw: import,
         export_limit_kw: export,
@@ -83,7 +83,7 @@ pub fn limits(import: Option<f64>, export: Option<f64>) -> DutyCase {
 
 /// Asserts that two numbers agree to a relative tolerance.
 #[track_caller]
-pub fn close(found: f64, expected: f64, relative: f64) {
+pub(crate) fn close(found: f64, expected: f64, relative: f64) {
     let scale = expected.abs().max(1e-300);
     assert!((found - expected).abs() <= relative * scale, "found {found}, expected {expected}");
 }

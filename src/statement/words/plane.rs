@@ -24,7 +24,6 @@ pub(super) fn station(done: &Assessment, result: &SiteResult, case: &Case, view:
     } else {
         let kinds = count(shown.len(), "kind", "kinds");
         let which = match names.as_slice() {
-            [] => String::new(),
             [one] => format!(" {one} carries it."),
             [one, two] => format!(" {one} and {two} carry it."),
             [one, .., last] if names.len() <= 4 => {
