@@ -128,7 +128,7 @@ impl Ranges {
         let stride = self.falls.len().div_ceil(most.max(1)).max(1);
         // Always the largest ranges: the curve's long right arm has few corners.
         let mut picked: Vec<f64> = self
-            .ranges
+            .falls
             .iter()
             .enumerate()
             .filter(|(k, _)| *k < most / 2 || k % stride == 0)
