@@ -162,7 +162,8 @@ impl Bridge {
             Ok(worker) => worker,
             Err(error) => {
                 host::notice(&format!(
-                    "Millpond's worker could not be started: {error:?}\nAllow workers for this page, or open it in another browser."
+                    "Millpond's worker could not be started: {}\nAllow workers for this page, or open it in another browser.",
+                    super::words(&error)
                 ));
                 return;
             }
@@ -230,7 +231,7 @@ impl Bridge {
             }
         });
         if let Err(error) = posted {
-            super::log(&format!("a request could not be sent: {error:?}"));
+            super::log(&format!("a request could not be sent: {}", super::words(&error)));
         }
     }
 
@@ -238,7 +239,7 @@ impl Bridge {
         let answer = match super::open::<Answer>(data) {
             Ok(answer) => answer,
             Err(error) => {
-                super::log(&format!("an answer could not be read: {error:?}"));
+                super::log(&format!("an answer could not be read: {}", super::words(&error)));
                 return self.replace("an answer could not be read");
             }
         };

@@ -137,3 +137,9 @@ pub(crate) fn log(text: &str) {
     // A browser without a console has nowhere to tell it.
     let _ = write();
 }
+
+/// What the browser says of an error. (The tables behind a debug print of it would weigh more than all that it has to say.)
+pub(crate) fn words(error: &JsValue) -> String {
+    let message = Reflect::get(error, &"message".into()).ok().and_then(|text| text.as_string());
+    message.or_else(|| error.as_string()).unwrap_or_else(|| "no reason given".to_owned())
+}

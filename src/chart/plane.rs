@@ -84,7 +84,7 @@ pub fn sentence(data: &Plane) -> String {
 
 fn lower(text: &str) -> String {
     let mut chars = text.chars();
-    chars.next().map_or_else(String::new, |c| c.to_lowercase().chain(chars).collect())
+    chars.next().map_or_else(String::new, |c| std::iter::once(c.to_ascii_lowercase()).chain(chars).collect())
 }
 
 /// Draws the plane.

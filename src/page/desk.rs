@@ -14,7 +14,7 @@ use millpond::sheet::{Sheet, View};
 
 use crate::bridge::Progress;
 use crate::bridge::client::{Bridge, Event};
-use crate::bridge::{case_text, host, of_json};
+use crate::bridge::{case_text, host, of_json, words};
 
 /// A person who types is left to finish, ms.
 const TYPING_MS: u32 = 150;
@@ -191,7 +191,7 @@ impl Desk {
             }
             Err(error) => {
                 self.fail(Fault::new(
-                    format!("the case cannot be written: {error:?}"),
+                    format!("the case cannot be written: {}", words(&error)),
                     "case",
                     "Report this as a defect.",
                 ));
@@ -274,6 +274,6 @@ fn site_name(names: &[String]) -> String {
             common = &common[..shorter];
         }
     }
-    let common = common.trim_end_matches(|c: char| !c.is_alphanumeric());
+    let common = common.trim_end_matches(|c: char| c.is_ascii() && !c.is_ascii_alphanumeric());
     if common.is_empty() { first } else { common.to_owned() }
 }

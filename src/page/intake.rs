@@ -11,7 +11,7 @@ use web_sys::{DragEvent, File, FileList, HtmlInputElement, Response};
 use millpond::case::Case;
 use millpond::fault::Fault;
 
-use crate::bridge::of_json;
+use crate::bridge::{of_json, words};
 
 use super::desk::Desk;
 use super::screen;
@@ -115,7 +115,7 @@ fn files(list: Option<FileList>) -> Vec<File> {
 /// Opens meter files; a case file among them is taken as the case.
 fn take(desk: Desk, files: Vec<File>) {
     let (cases, meters): (Vec<File>, Vec<File>) =
-        files.into_iter().partition(|file| file.name().to_lowercase().ends_with(".json"));
+        files.into_iter().partition(|file| file.name().to_ascii_lowercase().ends_with(".json"));
     if let Some(file) = cases.into_iter().next_back() {
         screen::settled(false);
         spawn_local(async move {
@@ -165,9 +165,4 @@ async fn fetch(name: &str) -> Result<File, JsValue> {
     }
     let bytes = JsFuture::from(answer.array_buffer()?).await?;
     File::new_with_u8_array_sequence(&Array::of1(&Uint8Array::new(&bytes)), name)
-}
-
-fn words(error: &JsValue) -> String {
-    let message = js_sys::Reflect::get(error, &"message".into()).ok().and_then(|text| text.as_string());
-    message.or_else(|| error.as_string()).unwrap_or_else(|| "no reason given".to_owned())
 }

@@ -3,7 +3,6 @@
 use leptos::prelude::*;
 
 use millpond::case::Case;
-use millpond::result::{Band, Bound, Confidence, CoverageRow, Criterion, Origin};
 use millpond::units::asked::Asked;
 use millpond::units::people;
 
@@ -154,53 +153,31 @@ fn criteria(desk: Desk) -> impl IntoView {
     }
 }
 
-fn criterion(row: Criterion) -> impl IntoView {
-    let (number, unit) = scaled(row.value, &row.unit);
-    let origin = match row.origin {
-        Origin::Computed => "computed",
-        Origin::Asked => "asked",
-    };
-    let sure = match row.confidence {
-        Confidence::Measured => "measured",
-        Confidence::BoundedBySampling => "bounded by sampling",
-        Confidence::Assumed => "assumed",
-    };
+fn criterion(row: Vec<String>) -> impl IntoView {
+    // Each cell's class, by its place; a row's class is its origin.
+    const CLASSES: [&str; 7] = ["", "bd", "n", "", "or", "fr", "su"];
+    let origin = row.get(4).cloned().unwrap_or_default();
+    let mut cells = row.into_iter();
+    let head = cells.next();
+    let cells = cells.zip(CLASSES.into_iter().skip(1));
     view! {
         <tr class=origin>
-            <th scope="row">{quantity(&row.quantity)}</th>
-            <td class="bd">{match row.bound { Bound::AtLeast => "at least", Bound::AtMost => "at most" }}</td>
-            <td class="n">{number}</td>
-            <td>{unit}</td>
-            <td class="or">{origin}</td>
-            <td class="fr">{row.from}</td>
-            <td class="su">{sure}</td>
+            <th scope="row">{head}</th>
+            {cells.map(|(cell, class)| view! { <td class=class>{cell}</td> }).collect_view()}
         </tr>
     }
 }
 
-/// A value in a unit of the result format, as people read it.
-fn scaled(value: f64, unit: &str) -> (String, String) {
-    let scaled = match unit {
-        "kWh" => people::energy(value),
-        "kW" => people::power(value),
-        "s" => people::duration(value),
-        "kg" => people::mass(value),
-        "l" => people::volume(value),
-        "" | "1" => people::percent(value),
-        other => return (people::significant(value, 3), other.to_owned()),
-    };
-    (scaled.number, scaled.unit.to_owned())
-}
-
-/// A quantity's word of the result format, as a person reads it.
-fn quantity(word: &str) -> String {
-    let words = if word == "round_trip_efficiency" {
-        "round-trip efficiency".to_owned()
-    } else {
-        word.replace('_', " ")
-    };
-    let mut letters = words.chars();
-    letters.next().map(|first| first.to_uppercase().chain(letters).collect()).unwrap_or_default()
+/// A row of words and numbers: a head, then numbers.
+fn numbers(row: Vec<String>) -> impl IntoView {
+    let mut cells = row.into_iter();
+    let head = cells.next();
+    view! {
+        <tr>
+            <th scope="row">{head}</th>
+            {cells.map(|cell| view! { <td class="n">{cell}</td> }).collect_view()}
+        </tr>
+    }
 }
 
 fn bands(desk: Desk) -> impl IntoView {
@@ -215,30 +192,11 @@ fn bands(desk: Desk) -> impl IntoView {
                     <thead><tr>
                         <th>"Changes"</th><th class="n">"Charge, kW"</th><th class="n">"Discharge, kW"</th><th class="n">"Energy, kWh"</th>
                     </tr></thead>
-                    <tbody>{move || rows.get().into_iter().map(band).collect_view()}</tbody>
+                    <tbody>{move || rows.get().into_iter().map(numbers).collect_view()}</tbody>
                 </table></div>
             }
         },
     )
-}
-
-fn band(row: Band) -> impl IntoView {
-    let span = match (row.faster_than_s, row.slower_than_s) {
-        (Some(fast), Some(slow)) => {
-            format!("within {}, over {}", people::duration(fast), people::duration(slow))
-        }
-        (Some(fast), None) => format!("within {}", people::duration(fast)),
-        (None, Some(slow)) => format!("over {} and more", people::duration(slow)),
-        (None, None) => "all".to_owned(),
-    };
-    view! {
-        <tr>
-            <th scope="row">{span}</th>
-            <td class="n">{people::significant(row.charge_kw, 3)}</td>
-            <td class="n">{people::significant(row.discharge_kw, 3)}</td>
-            <td class="n">{people::significant(row.energy_kwh, 4)}</td>
-        </tr>
-    }
 }
 
 fn coverage(desk: Desk) -> impl IntoView {
@@ -247,18 +205,8 @@ fn coverage(desk: Desk) -> impl IntoView {
         view! {
             <div class="scroll" tabindex="0" role="region" aria-label="Least capacity"><table>
                 <thead><tr><th>"Power both ways"</th><th class="n">"Unserved, %"</th><th class="n">"Capacity inside, kWh"</th></tr></thead>
-                <tbody>{move || rows.get().into_iter().map(coverage_row).collect_view()}</tbody>
+                <tbody>{move || rows.get().into_iter().map(numbers).collect_view()}</tbody>
             </table></div>
         }
     })
-}
-
-fn coverage_row(row: CoverageRow) -> impl IntoView {
-    view! {
-        <tr>
-            <th scope="row">{row.power_kw.map_or_else(|| "no limit".to_owned(), |kw| people::power(kw).to_string())}</th>
-            <td class="n">{people::percent(row.unserved_share).number}</td>
-            <td class="n">{row.capacity_kwh.map_or_else(|| "cannot be reached".to_owned(), |kwh| people::significant(kwh, 4))}</td>
-        </tr>
-    }
 }

@@ -9,6 +9,8 @@ use millpond::chart;
 use millpond::fault::Fault;
 use millpond::sheet::Sheet;
 
+use crate::bridge::words;
+
 use super::desk::Desk;
 use super::drawing::{self, Which};
 
@@ -84,7 +86,7 @@ fn bitmap(which: Which, sheet: &Sheet, size: (u32, u32)) -> Result<String, JsVal
 }
 
 fn file_name(which: Which, sheet: &Sheet, ending: &str) -> String {
-    format!("{} {}.{ending}", sheet.site, which.title().to_lowercase())
+    format!("{} {}.{ending}", sheet.site, which.title().to_ascii_lowercase())
 }
 
 fn save_text(name: &str, kind: &str, text: &str) -> Result<(), JsValue> {
@@ -112,7 +114,7 @@ fn save(name: &str, address: &str) -> Result<(), JsValue> {
 #[cold]
 fn refused(error: &JsValue) -> Fault {
     Fault::new(
-        format!("the browser refused: {}", error.as_string().unwrap_or_else(|| format!("{error:?}"))),
+        format!("the browser refused: {}", words(error)),
         "saving or copying",
         "Allow downloads and the clipboard for this page, then try again.",
     )

@@ -79,17 +79,11 @@ pub(crate) fn error_box(desk: Desk) -> impl IntoView {
         fault.get().map(|Fault { what, place, remedy }| {
             view! {
                 <div class="error" role="alert">
-                    <b>{capital(&what)}</b><span class="wh">{place}</span><span>{remedy}</span>
+                    <b>{people::capital(&what)}</b><span class="wh">{place}</span><span>{remedy}</span>
                 </div>
             }
         })
     }
-}
-
-/// A sentence's first letter as such; faults are written to stand anywhere.
-fn capital(text: &str) -> String {
-    let mut letters = text.chars();
-    letters.next().map(|first| first.to_uppercase().chain(letters).collect()).unwrap_or_default()
 }
 
 /// The line at the foot of the window while something is computed: what, how far, Stop. It stands over the sheet, so that
@@ -101,7 +95,9 @@ pub(crate) fn working(desk: Desk) -> impl IntoView {
         move || desk.status.with(|status| status.progress.as_ref().map_or(0.0, |progress| progress.done));
     let words = move || {
         desk.status.with(|status| match &status.progress {
-            Some(progress) => format!("{}, {}", capital(&progress.what), people::percent(progress.done)),
+            Some(progress) => {
+                format!("{}, {}", people::capital(&progress.what), people::percent(progress.done))
+            }
             None => "Computing".to_owned(),
         })
     };

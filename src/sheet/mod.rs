@@ -16,7 +16,8 @@ use crate::chart;
 use crate::duty::Duty;
 use crate::fault::{Fault, Result};
 use crate::record::{Finding, Reading};
-use crate::result::{Band, CoverageRow, Criterion, SiteResult};
+use crate::result::SiteResult;
+use crate::statement::words::tables;
 use crate::technology::Screened;
 
 /// What the page asks to see; not part of the case, since results do not depend on it.
@@ -45,12 +46,12 @@ pub struct Sheet {
     pub connection: Option<Connection>,
     /// The audit.
     pub findings: Vec<Finding>,
-    /// The requirement's criteria.
-    pub criteria: Vec<Criterion>,
-    /// Capacity for each power and unserved share.
-    pub coverage: Vec<CoverageRow>,
-    /// Time-scale bands.
-    pub bands: Vec<Band>,
+    /// The requirement's criteria in words: quantity, bound, value, unit, origin, from, how sure.
+    pub criteria: Vec<Vec<String>>,
+    /// Capacity in words: power, unserved share (%), least capacity (kWh inside).
+    pub coverage: Vec<Vec<String>>,
+    /// Time-scale bands in words: time scales, charge and discharge (kW), energy (kWh).
+    pub bands: Vec<Vec<String>>,
     /// Verdicts, kind by kind.
     pub screening: Vec<Screened>,
     /// Every number of the result by its path.
@@ -251,9 +252,9 @@ impl Sheet {
             error: result.error.clone(),
             connection: result.duty.as_ref().map(|duty| duty.connection),
             findings: result.record.as_ref().map(|record| record.findings.clone()).unwrap_or_default(),
-            criteria: requirement.map(|part| part.criteria.clone()).unwrap_or_default(),
-            coverage: requirement.map(|part| part.coverage.clone()).unwrap_or_default(),
-            bands: requirement.map(|part| part.bands.clone()).unwrap_or_default(),
+            criteria: requirement.map(|part| tables::criteria(&part.criteria)).unwrap_or_default(),
+            coverage: requirement.map(|part| tables::coverage(&part.coverage)).unwrap_or_default(),
+            bands: requirement.map(|part| tables::bands(&part.bands)).unwrap_or_default(),
             screening: result.screening.clone(),
             listed: listed::numbers(&serde_json::to_value(result).map_err(unwritable)?),
             reading: Reading::default(),

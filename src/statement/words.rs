@@ -4,6 +4,7 @@ mod duty;
 mod plane;
 mod record;
 mod requirement;
+pub(crate) mod tables;
 
 use crate::assess::Assessment;
 use crate::case::{Case, Connection};
@@ -83,12 +84,6 @@ fn surplus_word(connection: Connection) -> &'static str {
 /// A count with its noun.
 fn count(number: usize, one: &str, many: &str) -> String {
     format!("{} {}", people::whole(number as f64), if number == 1 { one } else { many })
-}
-
-/// A text with a capital first letter.
-fn capital(text: &str) -> String {
-    let mut letters = text.chars();
-    letters.next().map_or_else(String::new, |first| first.to_uppercase().chain(letters).collect())
 }
 
 /// A stretch of time as people say it: "one year", "28 days", "36 hours".

@@ -83,6 +83,14 @@ pub fn percent(share: f64) -> Scaled {
     Scaled { number, unit: "%" }
 }
 
+/// A text with a capital first letter, if that is a plain one: these texts are our own, and a table of all letters is heavy.
+pub fn capital(text: &str) -> String {
+    let mut letters = text.chars();
+    letters.next().map_or_else(String::new, |first| {
+        std::iter::once(first.to_ascii_uppercase()).chain(letters).collect()
+    })
+}
+
 /// A number with `places` significant places, grouped.
 pub fn significant(value: f64, places: i32) -> String {
     if value == 0.0 || !value.is_finite() {

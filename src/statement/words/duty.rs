@@ -1,12 +1,12 @@
 //! The Duty station in words.
 
-use super::{capital, count, deficit_word, figure, surplus_word};
+use super::{count, deficit_word, figure, surplus_word};
 use crate::assess::Assessment;
 use crate::case::{Case, Connection};
 use crate::chart::ticks;
 use crate::duty::{Episode, Kind};
 use crate::sheet::{Figure, Method, Station};
-use crate::units::people;
+use crate::units::people::{self, capital};
 
 pub(super) fn station(done: &Assessment, case: &Case) -> Station {
     let duty = &done.duty;

@@ -1,9 +1,9 @@
 //! The Record station in words.
 
-use super::{capital, count, figure, stretch};
+use super::{count, figure, stretch};
 use crate::assess::Assessment;
 use crate::sheet::{Figure, Method, Station};
-use crate::units::people;
+use crate::units::people::{self, capital};
 
 pub(super) fn station(done: &Assessment) -> Station {
     let duty = &done.duty;

@@ -1,12 +1,12 @@
 //! The Requirement station in words.
 
-use super::{capital, deficit_word, figure};
+use super::{deficit_word, figure};
 use crate::assess::Assessment;
 use crate::case::{Case, Connection};
 use crate::chart::ticks;
 use crate::duty::Kind;
 use crate::sheet::{Figure, Method, Pictures, Station};
-use crate::units::people;
+use crate::units::people::{self, capital};
 
 pub(super) fn station(done: &Assessment, case: &Case, pictures: &Pictures) -> Station {
     let asked = done.requirement.asked.as_ref();
