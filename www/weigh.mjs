@@ -7,7 +7,7 @@ const LIMIT_KB = 400;
 const folder = process.argv[2] ?? "dist";
 const FIRST = /^(index\.html|icon\.svg|boot-.*\.js|page-.*\.js|page-.*_bg\.wasm|.*\.css)$/;
 
-const THEN = /^engine-.*\.(js|wasm)$/;
+const THEN = /^engine.*\.(js|wasm)$/;
 
 const weigh = (pattern) => readdirSync(folder)
   .filter((name) => pattern.test(name))
