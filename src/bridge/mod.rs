@@ -139,6 +139,7 @@ pub(crate) fn log(text: &str) {
 }
 
 /// What the browser says of an error. (The tables behind a debug print of it would weigh more than all that it has to say.)
+#[cfg(feature = "page")]
 pub(crate) fn words(error: &JsValue) -> String {
     let message = Reflect::get(error, &"message".into()).ok().and_then(|text| text.as_string());
     message.or_else(|| error.as_string()).unwrap_or_else(|| "no reason given".to_owned())

@@ -86,6 +86,12 @@ fn count(number: usize, one: &str, many: &str) -> String {
     format!("{} {}", people::whole(number as f64), if number == 1 { one } else { many })
 }
 
+/// A small number in words, a large one in figures.
+fn in_words(number: usize) -> String {
+    const WORDS: [&str; 10] = ["no", "one", "two", "three", "four", "five", "six", "seven", "eight", "nine"];
+    WORDS.get(number).map_or_else(|| people::whole(number as f64), |word| (*word).to_owned())
+}
+
 /// A stretch of time as people say it: "one year", "28 days", "36 hours".
 fn stretch(seconds: f64) -> String {
     let days = seconds / 86_400.0;

@@ -134,6 +134,19 @@ fn held_limits(duty: &Duty, limits: &Limits, requirement: &Requirement, case: &C
         }
         picture.curves.push(curve);
     }
+    // More energy than a power can use changes nothing: the limit stays where the power holds it.
+    let reach = 1.1
+        * picture
+            .curves
+            .iter()
+            .filter_map(|curve| curve.energy_kwh.last())
+            .fold(0.0, |most: f64, energy| most.max(*energy));
+    for curve in &mut picture.curves {
+        if let Some(held) = curve.value.last().copied() {
+            curve.energy_kwh.push(reach);
+            curve.value.push(held);
+        }
+    }
     // The same power twice says nothing.
     if picture.curves.len() == 3 && picture.curves[2].power_kw == picture.curves[0].power_kw {
         picture.curves.pop();

@@ -17,7 +17,9 @@ pub(super) fn station(done: &Assessment) -> Station {
             format!("{} to read; none changes figures.", capital(&count(notes, "note", "notes")))
         }
         (1, _) => "One finding changes figures; it did not stop the reading.".to_owned(),
-        (many, _) => format!("{many} findings change figures; none stopped the reading."),
+        (many, _) => {
+            format!("{} findings change figures; none stopped the reading.", capital(&super::in_words(many)))
+        }
     };
     let intervals = people::whole(totals.intervals as f64);
     let covered = if totals.missing_intervals == 0 {
