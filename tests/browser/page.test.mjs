@@ -3,7 +3,7 @@ import assert from "node:assert/strict";
 import { readFileSync } from "node:fs";
 import { createRequire } from "node:module";
 import { after, before, test } from "node:test";
-import { assertQuiet, chooseFiles, demoFile, demos, setUp, settled, shot } from "./helpers.mjs";
+import { assertQuiet, chooseFiles, demoFile, demos, figures, setUp, settled, shot } from "./helpers.mjs";
 
 const axe = readFileSync(createRequire(import.meta.url).resolve("axe-core/axe.min.js"), "utf8");
 const STATIONS = ["record", "duty", "requirement", "plane", "simulation", "outlook", "statement"];
@@ -100,5 +100,34 @@ test("a broken page says so, whatever broke", async () => {
   const notice = page.locator(".notice[role=alert]");
   await notice.waitFor();
   assert.match(await notice.innerText(), /Millpond stopped: .*tried on purpose/);
+  await page.closeAll();
+});
+
+test("a worker that dies is replaced, idle or at work, and nothing of the case is lost", async () => {
+  const page = await site.open();
+  await chooseFiles(page, demoFile(demos[0]));
+  await settled(page);
+  const before = await figures(page);
+  const die = async () => {
+    const worker = page.workers().at(-1);
+    const gone = new Promise((done) => worker.once("close", done));
+    await worker.evaluate(() => void setTimeout(() => { throw new Error("a fault made by the test"); }));
+    await gone;
+  };
+
+  await die();
+  const share = page.getByRole("textbox", { name: "Share of the deficit served" });
+  await share.fill("80 %");
+  await share.blur();
+  await settled(page);
+  const asked = (all) => Number(all.find(({ path }) => path === "requirement.asked.served_share").value);
+  assert.equal(asked(before), 0.9);
+  assert.equal(asked(await figures(page)), 0.8, "the new worker was given the files and the case");
+
+  await share.fill("70 %");
+  await share.blur();
+  await die();
+  await settled(page);
+  assert.equal(asked(await figures(page)), 0.7, "what was asked of the dead worker was asked anew");
   await page.closeAll();
 });
