@@ -4,16 +4,14 @@
 //! scaled once: an SVG by its view box, a canvas by its transform. Text is placed by fixed metrics; a backend's own
 //! measure of text is never asked.
 
-use plotters_backend::text_anchor::{HPos, Pos, VPos};
-use plotters_backend::{
-    BackendColor, BackendCoord, BackendStyle, BackendTextStyle, DrawingBackend, DrawingErrorKind, FontFamily,
-    FontStyle,
-};
+use plotters_backend::text_anchor::HPos;
+use plotters_backend::{BackendColor, BackendCoord};
 
 use super::label::Patch;
 use super::metrics;
 use super::palette::{Palette, Rgb};
 use super::shape::{self, Lie, Point};
+use super::surface::{Drawn, Letters, Surface};
 use crate::fault::{Fault, Result};
 
 /// Steps of a surface's coordinates per px. The context of a canvas must be scaled by `devicePixelRatio / FINE`.
@@ -26,125 +24,8 @@ pub(super) const LABEL: f64 = 14.0;
 /// Typefaces, the one that the metrics are of first.
 pub(super) const FAMILY: &str =
     "'Source Sans 3', 'Segoe UI', 'Noto Sans', 'Liberation Sans', Arial, sans-serif";
-/// Opacity that marks a text to be outlined in its own colour, on surfaces that can (see [`Surface::OUTLINES`]).
+/// Opacity that marks a text to be outlined in its own colour, on surfaces that can (see [`super::surface::Backend::OUTLINES`]).
 pub(super) const OUTLINED: f64 = 0.999;
-
-/// A backend, with what plotters leaves open about text: its size and where it stands.
-pub trait Backend: DrawingBackend {
-    /// By what the backend divides the size of a font.
-    const SHRINKS: f64;
-    /// The upright anchor to ask for.
-    const STANDS: VPos;
-    /// Height of that anchor above the baseline, em.
-    const RISE: f64;
-    /// Whether texts drawn at the opacity of the halo are outlined afterwards; otherwise the pen draws them eight times.
-    const OUTLINES: bool;
-}
-
-impl Backend for plotters::backend::SVGBackend<'_> {
-    // It writes fonts 1.24 times smaller than asked, and the top anchor as a shift of 0.76 em.
-    const SHRINKS: f64 = 1.24;
-    const STANDS: VPos = VPos::Top;
-    const RISE: f64 = 0.76;
-    const OUTLINES: bool = true;
-}
-
-#[cfg(feature = "page")]
-impl Backend for plotters_canvas::CanvasBackend {
-    // The middle of the em box of this face lies 0.219 em above the baseline (ascent 1024, descent 400, scaled to 1000).
-    const SHRINKS: f64 = 1.0;
-    const STANDS: VPos = VPos::Center;
-    const RISE: f64 = 0.219;
-    const OUTLINES: bool = false;
-}
-
-/// What a picture is drawn on: a [`Backend`] behind calls that no longer know which, so that the pictures are in the program once
-/// and not once for each backend. A failure comes back in words.
-pub trait Surface {
-    /// Readies the backend.
-    fn ready(&mut self) -> Drawn;
-    /// Shows what was drawn.
-    fn show(&mut self) -> Drawn;
-    /// A line through points, its width in the backend's steps.
-    fn path(&mut self, points: &[BackendCoord], colour: BackendColor, width: u32) -> Drawn;
-    /// A filled polygon.
-    fn polygon(&mut self, points: &[BackendCoord], colour: BackendColor) -> Drawn;
-    /// A filled rectangle between two corners.
-    fn rectangle(&mut self, corners: (BackendCoord, BackendCoord), colour: BackendColor) -> Drawn;
-    /// A filled circle.
-    fn circle(&mut self, centre: BackendCoord, radius: u32, colour: BackendColor) -> Drawn;
-    /// A text with its baseline at a point (px).
-    fn letters(&mut self, at: (f64, f64), text: &str, look: &Letters) -> Drawn;
-    /// See [`Backend::OUTLINES`].
-    fn outlines(&self) -> bool;
-}
-
-/// Whether something was drawn; if not, why.
-pub type Drawn = std::result::Result<(), String>;
-
-/// A backend as a [`Surface`].
-#[derive(Debug)]
-pub struct Over<B>(pub B);
-
-/// A line's style in the backend's own steps.
-struct Stroke(BackendColor, u32);
-
-impl BackendStyle for Stroke {
-    fn color(&self) -> BackendColor {
-        self.0
-    }
-
-    fn stroke_width(&self) -> u32 {
-        self.1
-    }
-}
-
-fn worded<E: std::error::Error + Send + Sync>(drawn: std::result::Result<(), DrawingErrorKind<E>>) -> Drawn {
-    drawn.map_err(|error| error.to_string())
-}
-
-impl<B: Backend> Surface for Over<B> {
-    fn ready(&mut self) -> Drawn {
-        worded(self.0.ensure_prepared())
-    }
-
-    fn show(&mut self) -> Drawn {
-        worded(self.0.present())
-    }
-
-    fn path(&mut self, points: &[BackendCoord], colour: BackendColor, width: u32) -> Drawn {
-        worded(self.0.draw_path(points.iter().copied(), &Stroke(colour, width)))
-    }
-
-    fn polygon(&mut self, points: &[BackendCoord], colour: BackendColor) -> Drawn {
-        worded(self.0.fill_polygon(points.iter().copied(), &colour))
-    }
-
-    fn rectangle(&mut self, corners: (BackendCoord, BackendCoord), colour: BackendColor) -> Drawn {
-        worded(self.0.draw_rect(corners.0, corners.1, &colour, true))
-    }
-
-    fn circle(&mut self, centre: BackendCoord, radius: u32, colour: BackendColor) -> Drawn {
-        worded(self.0.draw_circle(centre, radius, &colour, true))
-    }
-
-    fn letters(&mut self, (x, y): (f64, f64), text: &str, look: &Letters) -> Drawn {
-        let style = Type { text: look.text, shrinks: B::SHRINKS, stands: B::STANDS, colour: look.colour };
-        worded(self.0.draw_text(text, &style, coord((x, y - B::RISE * look.text.size))))
-    }
-
-    fn outlines(&self) -> bool {
-        B::OUTLINES
-    }
-}
-
-/// How a text is drawn on a [`Surface`].
-#[derive(Clone, Copy)]
-#[allow(missing_debug_implementations, reason = "plotters' colours and anchors have none")]
-pub struct Letters {
-    text: Text,
-    colour: BackendColor,
-}
 
 /// A line's colour, opacity and width (px).
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -167,10 +48,10 @@ impl Ink {
 /// How a text looks and where it stands to its point.
 #[derive(Clone, Copy)]
 pub(super) struct Text {
-    size: f64,
-    bold: bool,
+    pub(super) size: f64,
+    pub(super) bold: bool,
     colour: Rgb,
-    anchor: HPos,
+    pub(super) anchor: HPos,
     halo: bool,
 }
 
@@ -213,52 +94,6 @@ impl Text {
             HPos::Right => x - width,
         };
         Patch { x0, y0: y - 0.72 * self.size, x1: x0 + width, y1: y + 0.22 * self.size }
-    }
-}
-
-/// A text as the backend takes it.
-struct Type {
-    text: Text,
-    shrinks: f64,
-    stands: VPos,
-    colour: BackendColor,
-}
-
-impl BackendTextStyle for Type {
-    type FontError = std::fmt::Error;
-
-    fn color(&self) -> BackendColor {
-        self.colour
-    }
-
-    fn size(&self) -> f64 {
-        self.text.size * FINE * self.shrinks
-    }
-
-    fn style(&self) -> FontStyle {
-        if self.text.bold { FontStyle::Bold } else { FontStyle::Normal }
-    }
-
-    fn anchor(&self) -> Pos {
-        Pos::new(self.text.anchor, self.stands)
-    }
-
-    fn family(&self) -> FontFamily<'_> {
-        FontFamily::Name(FAMILY)
-    }
-
-    fn layout_box(&self, text: &str) -> std::result::Result<((i32, i32), (i32, i32)), Self::FontError> {
-        Ok(((0, 0), (fine(self.text.width(text)), fine(self.text.size))))
-    }
-
-    fn draw<E, F: FnMut(i32, i32, BackendColor) -> std::result::Result<(), E>>(
-        &self,
-        _: &str,
-        _: BackendCoord,
-        _: F,
-    ) -> std::result::Result<std::result::Result<(), E>, Self::FontError> {
-        // Only backends that set pixels themselves ask for this; no font is carried for them.
-        Ok(Ok(()))
     }
 }
 
@@ -502,7 +337,7 @@ pub(super) fn crisp(at: f64) -> f64 {
     libm::floor(at) + 0.5
 }
 
-fn fine(px: f64) -> i32 {
+pub(super) fn fine(px: f64) -> i32 {
     // Far outside every picture, and still far from the ends of the type.
     libm::round(px.clamp(-1e5, 1e5) * FINE) as i32
 }
@@ -512,7 +347,7 @@ pub(super) fn roomy((width, height): (u32, u32)) -> (u32, u32) {
     (width.max(240), height.max(160))
 }
 
-fn coord((x, y): Point) -> BackendCoord {
+pub(super) fn coord((x, y): Point) -> BackendCoord {
     (fine(x), fine(y))
 }
 

@@ -5,7 +5,8 @@ use std::fmt::Write as _;
 use plotters::backend::SVGBackend;
 
 use super::frame::Hits;
-use super::pen::{FAMILY, FINE, OUTLINED, Over, Surface};
+use super::pen::{FAMILY, FINE, OUTLINED};
+use super::surface::{Over, Surface};
 use crate::fault::Result;
 
 /// Draws a picture of a size in px to SVG text, with a sentence as its text equivalent.
