@@ -111,7 +111,7 @@ pub fn coverage(
 
 fn axes(pen: &mut Pen<'_>, plot: (f64, f64, f64, f64), data: &Coverage) -> Frame {
     let share = data.measure != Measure::HeldImportKw;
-    let found = extent(data.curves.iter().map(|c| &c.value));
+    let found = extent(&data.curves.iter().map(|c| c.value.as_slice()).collect::<Vec<_>>());
     // Shares are their own unit.
     let (kw, power) = if share { (1.0, "") } else { power_unit(found.map_or(1.0, |e| e.1)) };
     let ((low, high), upright) = if data.measure == Measure::ServedShare {
@@ -122,7 +122,8 @@ fn axes(pen: &mut Pen<'_>, plot: (f64, f64, f64, f64), data: &Coverage) -> Frame
         let rounded = ticks::rounded(in_unit((low, high), kw), zero, 5);
         if share { ((rounded.0.0.max(0.0), rounded.0.1.min(1.0)), rounded.1) } else { rounded }
     };
-    let most = extent(data.curves.iter().map(|c| &c.energy_kwh)).map_or(1.0, |e| e.1);
+    let most =
+        extent(&data.curves.iter().map(|c| c.energy_kwh.as_slice()).collect::<Vec<_>>()).map_or(1.0, |e| e.1);
     let marked = data.marks.iter().map(|m| m.energy_kwh).filter(|e| e.is_finite()).fold(0.0, f64::max);
     let most = if most.max(marked) > 0.0 { most.max(marked) } else { 1.0 };
     let frame = Frame::new(plot, (0.0, most), (low * kw, high * kw));
@@ -234,13 +235,10 @@ fn draw_names(pen: &mut Pen<'_>, frame: &Frame, data: &Coverage, placer: &mut Pl
                 let energy = share * frame.x.to;
                 if let Some(value) = at(&curve.energy_kwh, &curve.value, energy) {
                     let (x, y) = frame.px(energy, value);
-                    options.extend([(x, y - 7.0), (x, y + 17.0)]);
+                    options.extend([((x, y - 7.0), text.as_str()), ((x, y + 17.0), text.as_str())]);
                 }
             }
-            let patches: Vec<Patch> = options.iter().map(|o| look.patch(*o, &text)).collect();
-            if let Some(found) = placer.first_clear(&patches) {
-                pen.text(options[found], &text, look);
-            }
+            pen.text_at(placer, &options, look);
         }
         return;
     }

@@ -27,7 +27,7 @@ fn plot_height(width: u32) -> f64 {
 
 /// What it shows, in a sentence.
 pub fn sentence(data: &Cumulative) -> String {
-    if extent([&data.energy_kwh]).is_none() {
+    if extent(&[&data.energy_kwh]).is_none() {
         return "Net energy since the start, after losses: no data.".to_owned();
     }
     match &data.critical {
@@ -69,7 +69,7 @@ pub fn cumulative(
     let critical = data
         .critical
         .filter(|c| (c.from_us + c.to_us + c.from_kwh + c.to_kwh).is_finite() && c.to_us > c.from_us);
-    let levels = extent([&data.energy_kwh]).unwrap_or((0.0, 1.0));
+    let levels = extent(&[&data.energy_kwh]).unwrap_or((0.0, 1.0));
     let levels = critical.map_or(levels, |c| (levels.0.min(c.to_kwh), levels.1.max(c.from_kwh)));
     // A flat line has no span of its own.
     let levels =
@@ -80,7 +80,7 @@ pub fn cumulative(
     let per_px = span / (y1 - y0 - below - above);
     let (low, high) = (levels.0 - below * per_px, levels.1 + above * per_px);
     let (size_kwh, unit) = energy_unit(levels.0.abs().max(levels.1.abs()));
-    let frame = Frame::new(plot, extent([&data.t_us]).unwrap_or((0.0, 1.0)), (low, high));
+    let frame = Frame::new(plot, extent(&[&data.t_us]).unwrap_or((0.0, 1.0)), (low, high));
     let marks = ticks::linear(low / size_kwh, high / size_kwh, 7);
     let tick = Text::tick(palette);
     for &v in &marks.values {
@@ -175,23 +175,17 @@ fn dimensions(pen: &mut Pen<'_>, frame: &Frame, c: &Critical, line: &[Point]) {
             x0 + 4.0,
         ] {
             if at + wide <= x1 {
-                options.push(((at, top - 8.0), text));
+                options.push(((at, top - 8.0), text.as_str()));
             }
         }
     }
-    let patches: Vec<Patch> = options.iter().map(|(at, text)| look.patch(*at, text)).collect();
-    if let Some(found) = placer.first_clear(&patches) {
-        pen.text(options[found].0, options[found].1, look);
-    }
+    pen.text_at(&mut placer, &options, look);
     let words = [format!("critical period, {}", period(c)), period(c)];
     let mut options = Vec::new();
     for text in &words {
         let half = look.width(text) / 2.0;
-        options.push((f64::midpoint(left, right).clamp(x0 + half, (x1 - half).max(x0 + half)), text));
+        let x = f64::midpoint(left, right).clamp(x0 + half, (x1 - half).max(x0 + half));
+        options.push(((x, base - 7.0), text.as_str()));
     }
-    let patches: Vec<Patch> =
-        options.iter().map(|(x, text)| look.middle().patch((*x, base - 7.0), text)).collect();
-    if let Some(found) = placer.first_clear(&patches) {
-        pen.text((options[found].0, base - 7.0), options[found].1, look.middle());
-    }
+    pen.text_at(&mut placer, &options, look.middle());
 }

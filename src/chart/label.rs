@@ -1,8 +1,7 @@
 //! Placing labels: none may overlap another or leave its frame; the least important, which comes last, yields.
 
-use crate::numeric::rising;
-
 use super::shape::Point;
+use crate::numeric::rising;
 
 /// A rectangle taken by a text or a mark, px.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -85,16 +84,16 @@ impl Placer {
     }
 
     /// Takes the first free patch, with 2 px around it.
-    pub(super) fn first_free(&mut self, patches: impl IntoIterator<Item = Patch>) -> Option<usize> {
-        let found = patches.into_iter().enumerate().find(|(_, p)| self.free(p))?;
-        self.take(found.1.grown(2.0));
-        Some(found.0)
+    pub(super) fn first_free(&mut self, patches: &[Patch]) -> Option<usize> {
+        let index = patches.iter().position(|p| self.free(p))?;
+        self.take(patches[index].grown(2.0));
+        Some(index)
     }
 
     /// Takes the first patch that is free and crossed by no line, or else the first free one.
     pub(super) fn first_clear(&mut self, patches: &[Patch]) -> Option<usize> {
         let Some(index) = patches.iter().position(|p| self.clear(p)) else {
-            return self.first_free(patches.iter().copied());
+            return self.first_free(patches);
         };
         self.take(patches[index].grown(2.0));
         Some(index)
@@ -132,8 +131,8 @@ mod tests {
     fn the_least_important_yields() {
         let mut placer = Placer::new(Patch { x0: 0.0, y0: 0.0, x1: 20.0, y1: 10.0 });
         let patch = Patch { x0: 1.0, y0: 1.0, x1: 19.0, y1: 9.0 };
-        assert_eq!(placer.first_free([patch]), Some(0));
-        assert_eq!(placer.first_free([patch]), None);
+        assert_eq!(placer.first_free(&[patch]), Some(0));
+        assert_eq!(placer.first_free(&[patch]), None);
     }
 
     #[test]

@@ -31,7 +31,7 @@ fn plot_height(width: u32) -> f64 {
 
 /// What it shows, in a sentence.
 pub fn sentence(data: &NetPower) -> String {
-    let (Some((least, _)), Some((_, greatest))) = (extent([&data.least_kw]), extent([&data.greatest_kw]))
+    let (Some((least, _)), Some((_, greatest))) = (extent(&[&data.least_kw]), extent(&[&data.greatest_kw]))
     else {
         return "Net power over a window of the record: no data.".to_owned();
     };
@@ -81,13 +81,13 @@ pub fn net_power(
     let mut pen = Pen::new(surface, size, palette);
     let narrow = size.0 < NARROW;
     let plot = (44.0, TOP, pen.width - 6.0, TOP + plot_height(size.0));
-    let mut powers = extent([&data.least_kw, &data.greatest_kw]).unwrap_or((0.0, 1.0));
+    let mut powers = extent(&[&data.least_kw, &data.greatest_kw]).unwrap_or((0.0, 1.0));
     for limit in data.limits_kw.iter().filter(|l| l.is_finite()) {
         powers = (powers.0.min(*limit), powers.1.max(*limit));
     }
     let (kw, unit) = power_unit(most(powers));
     let ((low, high), marks) = ticks::roomy(in_unit(powers, kw), 0.05, 6);
-    let shown = extent([&data.t_us]).unwrap_or((0.0, 1.0));
+    let shown = extent(&[&data.t_us]).unwrap_or((0.0, 1.0));
     let window = if data.window_us.1 > data.window_us.0 { data.window_us } else { shown };
     let frame = Frame::new(plot, window, (low * kw, high * kw));
     let tick = Text::tick(palette);
@@ -103,7 +103,7 @@ pub fn net_power(
     draw_areas(&mut pen, &frame, data);
     let zero = frame.y.px(0.0);
     pen.level(plot.0, plot.2, zero, pen.axis_ink());
-    if data.t_us.is_empty() || extent([&data.greatest_kw]).is_none() {
+    if data.t_us.is_empty() || extent(&[&data.greatest_kw]).is_none() {
         pen.nothing(plot);
     }
     draw_limits(&mut pen, &frame, &data.limits_kw);
@@ -127,7 +127,7 @@ pub(super) fn time_axis(pen: &mut Pen<'_>, frame: &Frame, y: f64) {
         pen.upright(x.min(x1 - 0.5), y, y + if long { 6.0 } else { 3.0 }, pen.axis_ink());
         if let Some(text) = label {
             let at = (x + 3.0, y + 17.0);
-            if placer.first_free([look.patch(at, &text)]).is_some() {
+            if placer.first_free(&[look.patch(at, &text)]).is_some() {
                 pen.text(at, &text, look);
             }
         }
@@ -266,7 +266,7 @@ fn draw_episodes(pen: &mut Pen<'_>, frame: &Frame, episodes: &[EpisodeMark], nar
             let middle = f64::midpoint(left, right).clamp(x0 + half, x1 - half);
             let patch = look.patch((middle, base), &text).grown(4.0);
             let free = Patch { x0: patch.x0.max(x0), x1: patch.x1.min(x1), ..patch };
-            if placer.first_free([Patch { y0: base - 10.0, y1: base + 3.0, ..free }]).is_none() {
+            if placer.first_free(&[Patch { y0: base - 10.0, y1: base + 3.0, ..free }]).is_none() {
                 continue;
             }
             drawn += 1;
@@ -285,7 +285,7 @@ fn draw_strip(
 ) -> (Option<Frame>, Vec<Spot>) {
     let (x0, y0, x1, y1) = area;
     let count = data.strip_us.len().min(data.strip_kw.len());
-    let (Some((least, greatest)), true) = (extent([&data.strip_kw]), count > 1) else {
+    let (Some((least, greatest)), true) = (extent(&[&data.strip_kw]), count > 1) else {
         return (None, Vec::new());
     };
     let cell = (data.strip_us[count - 1] - data.strip_us[0]) / (count - 1) as f64;

@@ -7,7 +7,7 @@
 use plotters_backend::text_anchor::HPos;
 use plotters_backend::{BackendColor, BackendCoord};
 
-use super::label::Patch;
+use super::label::{Patch, Placer};
 use super::metrics;
 use super::palette::{Palette, Rgb};
 use super::shape::{self, Lie, Point};
@@ -261,6 +261,15 @@ impl<'p> Pen<'p> {
             }
         }
         self.write(at, &text, look, 1.0);
+    }
+
+    /// A text at the first of some places where it covers nothing and no line crosses it, or else the first free one;
+    /// nowhere if there is none.
+    pub(super) fn text_at(&mut self, placer: &mut Placer, places: &[(Point, &str)], look: Text) {
+        let patches: Vec<Patch> = places.iter().map(|(at, text)| look.patch(*at, text)).collect();
+        if let Some((at, text)) = placer.first_clear(&patches).and_then(|i| places.get(i)) {
+            self.text(*at, text, look);
+        }
     }
 
     fn write(&mut self, at: Point, text: &str, look: Text, alpha: f64) {

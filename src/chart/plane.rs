@@ -354,11 +354,9 @@ fn requirement(
     }
     let look = Text::label(palette.ink);
     if let Some(at) = data.point.map(|(e, p)| frame.px(e, p)).filter(|at| frame.holds(*at)) {
-        let slope = {
-            let (a, b) = (frame.px(1.0, 1.0), frame.px(10.0, 10.0));
-            libm::atan2(b.1 - a.1, b.0 - a.0)
-        };
-        let square = (-libm::sin(slope), libm::cos(slope));
+        let (a, b) = (frame.px(1.0, 1.0), frame.px(10.0, 10.0));
+        let length = libm::hypot(b.0 - a.0, b.1 - a.1);
+        let square = ((a.1 - b.1) / length, (b.0 - a.0) / length);
         let ends = [-20.0, 20.0].map(|r| (at.0 + square.0 * r, at.1 + square.1 * r));
         pen.line(&ends, ink);
         taken.push(

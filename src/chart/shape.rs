@@ -1,5 +1,7 @@
 //! Plane geometry of the pen: cutting lines into dashes, and hatching areas with clipped lines.
 
+use crate::numeric::sort_rising;
+
 /// A position on the picture, px, y downwards.
 pub(super) type Point = (f64, f64);
 
@@ -53,7 +55,7 @@ pub(super) fn hatch(areas: &[Vec<Point>], lie: Lie, step: f64) -> Vec<[Point; 2]
     for (k, mut row) in crossings.into_iter().enumerate() {
         let at = place(first + k as f64);
         let back = |x: f64| if lie == Lie::Level { (x, at) } else { (x, at - x) };
-        row.sort_by(f64::total_cmp);
+        sort_rising(&mut row);
         let mut open: Option<(f64, f64)> = None;
         for pair in row.chunks_exact(2) {
             match open {

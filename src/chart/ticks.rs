@@ -1,8 +1,6 @@
 //! Tick marks: steps of 1, 2 and 5, decades, and civil time.
 
-use jiff::civil::{Date, DateTime, Weekday};
-use jiff::{Timestamp, tz::Offset};
-
+use crate::units::civil::{Date, Reading};
 use crate::units::people;
 
 /// Ticks of a linear axis.
@@ -136,68 +134,50 @@ pub struct TimeTick {
 /// Microseconds in a day.
 pub const DAY_US: f64 = 86_400e6;
 
-/// The reading of a clock as a civil date and time; none outside the calendar.
-pub fn civil(us: f64) -> Option<DateTime> {
-    if !us.is_finite() {
-        return None;
-    }
-    Timestamp::from_microsecond(us as i64).ok().map(|t| Offset::UTC.to_datetime(t))
-}
-
-fn reading(date: Date) -> Option<i64> {
-    Offset::UTC.to_timestamp(date.at(0, 0, 0, 0)).ok().map(Timestamp::as_microsecond)
-}
-
 /// A civil date in words: "5 Feb".
 pub fn day(date: Date) -> String {
-    format!("{} {}", date.day(), month(date))
+    format!("{} {}", date.parts().2, month(date))
 }
 
-/// A clock reading in words: "Mon 5 Feb 18:30".
+/// The same with its weekday: "Mon 5 Feb".
+pub fn full_day(date: Date) -> String {
+    format!("{} {}", weekday(date), day(date))
+}
+
+/// A clock reading in words: "Mon 5 Feb 18:30"; nothing outside the calendar.
 pub fn moment(us: f64) -> String {
-    civil(us).map_or_else(String::new, |t| {
-        format!("{} {} {:02}:{:02}", weekday(t.date()), day(t.date()), t.hour(), t.minute())
-    })
+    Reading::new(us).map_or_else(String::new, |t| format!("{} {}", full_day(t.date), t.time()))
 }
 
 /// The short name of a date's month.
 pub fn month(date: Date) -> &'static str {
     const NAMES: [&str; 12] =
         ["Jan", "Feb", "Mar", "Apr", "May", "Jun", "Jul", "Aug", "Sep", "Oct", "Nov", "Dec"];
-    NAMES[usize::from(date.month().unsigned_abs() - 1)]
+    NAMES[date.parts().1 as usize - 1]
 }
 
 /// The short name of a date's weekday.
 pub fn weekday(date: Date) -> &'static str {
-    match date.weekday() {
-        Weekday::Monday => "Mon",
-        Weekday::Tuesday => "Tue",
-        Weekday::Wednesday => "Wed",
-        Weekday::Thursday => "Thu",
-        Weekday::Friday => "Fri",
-        Weekday::Saturday => "Sat",
-        Weekday::Sunday => "Sun",
-    }
+    ["Mon", "Tue", "Wed", "Thu", "Fri", "Sat", "Sun"][date.weekday()]
 }
 
 /// Ticks of civil time on an axis `px` wide, as the span asks: hours, days with Mondays long, Mondays with months long,
 /// months with Januaries long, or years.
 pub fn time(from_us: f64, to_us: f64, px: f64) -> Vec<TimeTick> {
-    let (Some(from), Some(to)) = (civil(from_us), civil(to_us)) else { return Vec::new() };
+    let (Some(from), Some(to)) = (Reading::new(from_us), Reading::new(to_us)) else { return Vec::new() };
+    let (from, to) = (from.date, to.date);
     let days = (to_us - from_us) / DAY_US;
     if !(days > 0.0 && px > 0.0) {
         return Vec::new();
     }
     let per_day = px / days;
     if per_day >= 150.0 {
-        return hours(from.date(), (from_us, to_us), per_day);
+        return hours(from, (from_us, to_us), per_day);
     }
     let mut ticks = Vec::new();
-    let push = |ticks: &mut Vec<TimeTick>, date: Date, long: bool, label: Option<String>| {
-        if let Some(us) = reading(date)
-            && us as f64 >= from_us
-            && us as f64 <= to_us
-        {
+    let mut push = |date: Date, long: bool, label: Option<String>| {
+        let us = date.start_us();
+        if us as f64 >= from_us && us as f64 <= to_us {
             ticks.push(TimeTick { us, long, label });
         }
     };
@@ -206,59 +186,53 @@ pub fn time(from_us: f64, to_us: f64, px: f64) -> Vec<TimeTick> {
         let close = (1..=3).find(|n| days < 16.0 && per_day * f64::from(*n) >= 62.0);
         let weeks = libm::ceil(62.0 / (7.0 * per_day)).max(1.0) as i32;
         let apart = f64::from(close.unwrap_or(7 * weeks)) * per_day;
-        let (mut date, mut count, mut mondays) = (from.date(), 0, 0);
-        while date <= to.date() {
-            let monday = date.weekday() == Weekday::Monday;
+        let (mut date, mut count, mut mondays) = (from, 0, 0);
+        while date <= to {
+            let monday = date.weekday() == 0;
             let named = close.map_or(monday && mondays % weeks == 0, |every| count % every == 0);
-            let full = apart >= 84.0;
-            let label =
-                named.then(|| if full { format!("{} {}", weekday(date), day(date)) } else { day(date) });
-            push(&mut ticks, date, monday || close.is_some() && named, label);
+            let label = named.then(|| if apart >= 84.0 { full_day(date) } else { day(date) });
+            push(date, monday || close.is_some() && named, label);
             count += 1;
             mondays += i32::from(monday);
-            let Ok(next) = date.tomorrow() else { break };
-            date = next;
+            date = date.tomorrow();
         }
         // A span without a Monday still says where it lies.
         if ticks.iter().all(|t| t.label.is_none())
             && let Some(first) = ticks.first_mut()
-            && let Some(at) = civil(first.us as f64)
+            && let Some(at) = Reading::new(first.us as f64)
         {
-            first.label = Some(day(at.date()));
+            first.label = Some(day(at.date));
         }
         return ticks;
     }
     let per_month = per_day * 30.4;
     // A span that ends with its year lies in one.
-    let many_years = civil(to_us - 1.0).is_some_and(|last| last.date().year() != from.date().year());
-    if per_month >= 8.0 {
-        let every = [1, 2, 3, 6, 12].into_iter().find(|n| per_month * f64::from(*n) >= 40.0).unwrap_or(12);
-        for date in months(from.date(), to.date()) {
-            let january = date.month() == 1;
-            let named = (date.month() - 1) % every == 0;
+    let many_years = Reading::new(to_us - 1.0).is_some_and(|last| last.date.parts().0 != from.parts().0);
+    let by_months = per_month >= 8.0;
+    let every_month = [1, 2, 3, 6, 12].into_iter().find(|n| per_month * *n as f64 >= 40.0).unwrap_or(12);
+    let every_year = step(days / 365.25, (px / 50.0).max(1.0) as usize).max(1.0) as i64;
+    let mut date = from.month_start();
+    while date <= to {
+        let (year, number, _) = date.parts();
+        let january = number == 1;
+        if by_months {
+            let named = (number - 1) % every_month == 0;
             let label = named.then(|| {
-                if january && many_years && per_month * f64::from(every) >= 62.0 {
-                    format!("Jan {}", date.year())
+                if january && many_years && per_month * every_month as f64 >= 62.0 {
+                    format!("Jan {year}")
                 } else if january && many_years {
-                    date.year().to_string()
+                    year.to_string()
                 } else {
                     month(date).to_owned()
                 }
             });
-            push(&mut ticks, date, january || per_month >= 30.0, label);
+            push(date, january || per_month >= 30.0, label);
+        } else if january {
+            push(date, true, (year % every_year == 0).then(|| year.to_string()));
         }
-        return ticks;
-    }
-    let every = step(days / 365.25, (px / 50.0).max(1.0) as usize).max(1.0) as i16;
-    for date in months(from.date(), to.date()).filter(|d| d.month() == 1) {
-        push(&mut ticks, date, true, (date.year() % every == 0).then(|| date.year().to_string()));
+        date = date.next_month();
     }
     ticks
-}
-
-fn months(from: Date, to: Date) -> impl Iterator<Item = Date> {
-    std::iter::successors(Some(from.first_of_month()), |d| d.last_of_month().tomorrow().ok())
-        .take_while(move |d| *d <= to)
 }
 
 /// Ticks at round hours, midnight long with its date.
@@ -269,20 +243,22 @@ fn hours(first: Date, (from_us, to_us): (f64, f64), per_day: f64) -> Vec<TimeTic
     let steps =
         [60.0, 120.0, 300.0, 600.0, 900.0, 1800.0, 3600.0, 7200.0, 10_800.0, 21_600.0, 43_200.0, 86_400.0];
     let every_s = steps.into_iter().find(|s| s / 3600.0 * per_hour >= 52.0).unwrap_or(86_400.0);
-    let Some(midnight) = reading(first) else { return Vec::new() };
+    let midnight = first.start_us();
     let every_us = every_s / 3600.0 * HOUR_US;
     let start = libm::ceil((from_us - midnight as f64) / every_us).max(0.0);
     let count = (libm::floor((to_us - midnight as f64) / every_us) - start + 1.0).clamp(0.0, 500.0) as usize;
     (0..count)
         .map(|k| {
             let us = midnight + ((start + k as f64) * every_us) as i64;
-            let at = civil(us as f64).unwrap_or_default();
-            let long = at.hour() == 0 && at.minute() == 0;
+            let Some(at) = Reading::new(us as f64) else {
+                return TimeTick { us, long: false, label: None };
+            };
+            let long = at.minute == 0;
             let label = if long {
                 let wide = per_hour * every_s / 3600.0 >= 76.0;
-                if wide { format!("{} {}", weekday(at.date()), day(at.date())) } else { day(at.date()) }
+                if wide { full_day(at.date) } else { day(at.date) }
             } else {
-                format!("{:02}:{:02}", at.hour(), at.minute())
+                at.time()
             };
             TimeTick { us, long, label: Some(label) }
         })

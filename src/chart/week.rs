@@ -9,7 +9,7 @@ use super::label::{Patch, Placer};
 use super::net::time_axis;
 use super::palette::Palette;
 use super::pen::{Ink, Pen, Text, roomy};
-use super::shape::{self, Point};
+use super::shape::Point;
 use super::surface::Surface;
 use super::ticks;
 use super::words::{extent, in_unit, most, power_unit};
@@ -35,7 +35,7 @@ fn unserved_word(data: &Week) -> &str {
 
 /// What it shows, in a sentence.
 pub fn sentence(data: &Week) -> String {
-    let (Some((from, to)), Some(_)) = (extent([&data.t_us]), extent([&data.asked_kw])) else {
+    let (Some((from, to)), Some(_)) = (extent(&[&data.t_us]), extent(&[&data.asked_kw])) else {
         return "Power asked of the store and carried by it: no data.".to_owned();
     };
     let mut unserved = 0.0;
@@ -54,7 +54,7 @@ pub fn sentence(data: &Week) -> String {
         let _ = write!(text, " ({})", data.store);
     }
     let _ = write!(text, ": {} {}", people::energy(unserved), unserved_word(data));
-    if let Some((low, high)) = extent([&data.level]) {
+    if let Some((low, high)) = extent(&[&data.level]) {
         let _ =
             write!(text, "; its level runs between {} and {}", people::percent(low), people::percent(high));
     }
@@ -70,7 +70,7 @@ pub fn week(surface: &mut dyn Surface, size: (u32, u32), palette: &Palette, data
     let mut pen = Pen::new(surface, size, palette);
     let (x0, x1) = (44.0, pen.width - 6.0);
     let plot = (x0, TOP, x1, TOP + plot_height(size.0));
-    let powers = extent([&data.asked_kw, &data.carried_kw]).unwrap_or((0.0, 1.0));
+    let powers = extent(&[&data.asked_kw, &data.carried_kw]).unwrap_or((0.0, 1.0));
     let (kw, unit) = power_unit(most(powers));
     let ((low, high), marks) = ticks::roomy(in_unit(powers, kw), 0.14, 6);
     let span = held_span(&data.t_us);
@@ -90,7 +90,7 @@ pub fn week(surface: &mut dyn Surface, size: (u32, u32), palette: &Palette, data
         }
         pen.text((x0 - 6.0, y + 4.5), &marks.text(p), tick.end());
     }
-    if data.t_us.is_empty() || extent([&data.asked_kw]).is_none() {
+    if data.t_us.is_empty() || extent(&[&data.asked_kw]).is_none() {
         pen.nothing(plot);
     }
     draw_powers(&mut pen, &frame, data);
@@ -160,9 +160,7 @@ fn draw_powers(pen: &mut Pen<'_>, frame: &Frame, data: &Week) {
     pen.lining(&curtailed, 0.45);
     let unserved = between(&served_down, &asked_down);
     pen.ground(&unserved);
-    for part in steps_of(&asked) {
-        pen.line(&part, Ink::new(palette.muted, 0.9 * palette.pens.thin));
-    }
+    pen.line(&asked, Ink::new(palette.muted, 0.9 * palette.pens.thin));
     pen.line(&carried, Ink::new(palette.level, palette.pens.line));
     for (line, other) in [(&asked_down, &served_down)] {
         for part in apart(line, other) {
@@ -171,10 +169,6 @@ fn draw_powers(pen: &mut Pen<'_>, frame: &Frame, data: &Week) {
     }
     pen.level(frame.plot.0, frame.plot.2, zero, pen.axis_ink());
     labels(pen, frame, data, [&served_down, &asked_down, &asked_up, &served_up, &carried]);
-}
-
-fn steps_of(line: &[Point]) -> Vec<Vec<Point>> {
-    shape::runs(line).map(<[Point]>::to_vec).collect()
 }
 
 /// The parts of a line that lie away from another of the same x.

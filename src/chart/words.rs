@@ -1,7 +1,5 @@
 //! Numbers and units as the pictures write them.
 
-use super::data::Column;
-
 /// The unit in which energies up to `most` kWh read well on an axis, and kWh in one of it.
 pub(super) fn energy_unit(most: f64) -> (f64, &'static str) {
     unit(most, &[(1.0, "kWh"), (1e3, "MWh"), (1e6, "GWh"), (1e9, "TWh")], (1e-3, "Wh"))
@@ -32,12 +30,13 @@ fn unit(most: f64, rising: &[(f64, &'static str)], least: (f64, &'static str)) -
 }
 
 /// Least and greatest number of some series; none without a number.
-pub(super) fn extent<'a>(columns: impl IntoIterator<Item = &'a Column>) -> Option<(f64, f64)> {
-    columns
-        .into_iter()
-        .flatten()
-        .filter(|v| v.is_finite())
-        .fold(None, |found: Option<(f64, f64)>, &v| Some(found.map_or((v, v), |(a, b)| (a.min(v), b.max(v)))))
+#[inline(never)]
+pub(super) fn extent(columns: &[&[f64]]) -> Option<(f64, f64)> {
+    let mut found: Option<(f64, f64)> = None;
+    for v in columns.iter().copied().flatten().copied().filter(|v| v.is_finite()) {
+        found = Some(found.map_or((v, v), |(a, b)| (a.min(v), b.max(v))));
+    }
+    found
 }
 
 /// Value of a piecewise linear curve; none outside it or where it has no numbers.
@@ -73,6 +72,6 @@ mod tests {
         assert_eq!(at(&[0.0, 2.0], &[0.0, 4.0], 1.0), Some(2.0));
         assert_eq!(at(&[0.0, 2.0], &[0.0, f64::NAN], 1.0), None);
         assert_eq!(at(&[], &[], 1.0), None);
-        assert_eq!(extent([&vec![f64::NAN, 2.0, -1.0]]), Some((-1.0, 2.0)));
+        assert_eq!(extent(&[&[f64::NAN, 2.0, -1.0]]), Some((-1.0, 2.0)));
     }
 }

@@ -15,6 +15,8 @@ use super::ticks::{self, DAY_US};
 use super::words::extent;
 use super::year_curve::{self, Place};
 use crate::fault::Result;
+use crate::numeric::sort_rising;
+use crate::units::civil::Reading;
 use crate::units::people;
 
 const TOP: f64 = 26.0;
@@ -43,7 +45,7 @@ pub fn sentence(data: &YearSheet, curve: &DurationCurve) -> String {
     let short = data.net_kw.iter().filter(|p| **p < 0.0).count() as f64;
     let mut text = format!(
         "Net power, a row per week from {} on, beside its duration curve: {} in {} of the time, {} surplus and {} {}.",
-        ticks::civil(data.start_us).map_or_else(String::new, |t| ticks::day(t.date())),
+        Reading::new(data.start_us).map_or_else(String::new, |t| ticks::day(t.date)),
         word(curve),
         people::percent(short / known),
         people::energy(curve.surplus_kwh),
@@ -89,7 +91,7 @@ pub fn year_sheet(
     let tall = sheet_height(size.0, rows);
     let wide = if narrow { width - LEFT - 12.0 } else { libm::floor((width - LEFT - 114.0) * 0.715) };
     let sheet = (LEFT, TOP, LEFT + wide.max(60.0), TOP + tall);
-    let powers = extent([&data.net_kw, &curve.net_kw]);
+    let powers = extent(&[&data.net_kw, &curve.net_kw]);
     let scale = Scale::of(powers.unwrap_or((0.0, 0.0)));
 
     let main = draw_sheet(&mut pen, sheet, data, rows, &scale);
@@ -140,7 +142,7 @@ impl Scale {
             edges.extend([-self.steps.0 * f64::from(k), self.steps.1 * f64::from(k)]);
         }
         edges.retain(|e| *e >= low && *e <= high);
-        edges.sort_by(f64::total_cmp);
+        sort_rising(&mut edges);
         edges.dedup();
         edges.windows(2).map(|w| (w[0], w[1], self.class(f64::midpoint(w[0], w[1])))).collect()
     }
@@ -251,18 +253,18 @@ fn heads(pen: &mut Pen<'_>, (x0, y0, x1, y1): (f64, f64, f64, f64), data: &YearS
                 pen.upright(left, y0, y1, seam);
             }
             if step >= 30.0
-                && let Some(at) = ticks::civil(data.start_us + k as f64 * DAY_US)
+                && let Some(at) = Reading::new(data.start_us + k as f64 * DAY_US)
             {
-                pen.text((left + step / 2.0, y0 - 8.0), ticks::weekday(at.date()), look);
+                pen.text((left + step / 2.0, y0 - 8.0), ticks::weekday(at.date), look);
             }
         }
     } else if days <= 1.0 {
-        for hour in [0.0, 6.0, 12.0, 18.0] {
+        for (hour, name) in [(0.0, "00:00"), (6.0, "06:00"), (12.0, "12:00"), (18.0, "18:00")] {
             let left = x0 + (x1 - x0) * hour / 24.0;
             if hour > 0.0 {
                 pen.upright(left, y0, y1, seam);
             }
-            pen.text((left, y0 - 8.0), &format!("{hour:02}:00"), Text::tick(pen.palette));
+            pen.text((left, y0 - 8.0), name, Text::tick(pen.palette));
         }
     }
 }
@@ -276,24 +278,24 @@ fn sides(pen: &mut Pen<'_>, (x0, y0, _, y1): (f64, f64, f64, f64), data: &YearSh
     let mut before = None;
     for row in 0..rows {
         let from = data.start_us + row as f64 * row_us(data);
-        let (Some(first), Some(last)) = (ticks::civil(from), ticks::civil(from + row_us(data) - 1.0)) else {
+        let (Some(first), Some(last)) = (Reading::new(from), Reading::new(from + row_us(data) - 1.0)) else {
             continue;
         };
         let y = y0 + tall * row as f64;
         if tall >= 15.0 {
-            pen.text((x0 - 8.0, y + tall / 2.0 + 4.5), &ticks::day(first.date()), look);
+            pen.text((x0 - 8.0, y + tall / 2.0 + 4.5), &ticks::day(first.date), look);
             continue;
         }
         // The row that holds the first of a month, and the row at the top.
-        let month = last.date().first_of_month();
-        if before == Some(month) || row > 0 && first.date() > month {
+        let month = last.date.month_start();
+        if before == Some(month) || row > 0 && first.date > month {
             continue;
         }
         before = Some(month);
         pen.level(x0 - 5.0, x0 - 1.0, y, ink);
         let text = ticks::month(month);
         let at = (x0 - 8.0, y + 10.0);
-        if placer.first_free([look.patch(at, text)]).is_some() {
+        if placer.first_free(&[look.patch(at, text)]).is_some() {
             pen.text(at, text, look);
         }
     }

@@ -128,7 +128,7 @@ fn hour_ticks(pen: &mut Pen<'_>, frame: &Frame) {
         let look =
             if i == last && x + look.width(&text) / 2.0 > pen.width { look.end() } else { look.middle() };
         let at = (if i == last { x.min(pen.width) } else { x }, y1 + 18.0);
-        if placer.first_free([look.patch(at, &text)]).is_some() {
+        if placer.first_free(&[look.patch(at, &text)]).is_some() {
             pen.text(at, &text, look);
         }
     }
@@ -150,11 +150,8 @@ fn labels(pen: &mut Pen<'_>, frame: &Frame, curve: &DurationCurve, (above, below
         placer.take(Patch { x0, y0: y - 2.0, x1, y1: y + 2.0 });
         let look = Text::label(palette.ink);
         let text = format!("import limit, {}", people::power(limit));
-        let options = [(x0 + 6.0, y + 17.0), (x0 + 6.0, y - 6.0)];
-        let patches: Vec<Patch> = options.iter().map(|o| look.patch(*o, &text)).collect();
-        if let Some(i) = placer.first_clear(&patches) {
-            pen.text(options[i], &text, look);
-        }
+        let options = [(x0 + 6.0, y + 17.0), (x0 + 6.0, y - 6.0)].map(|at| (at, text.as_str()));
+        pen.text_at(&mut placer, &options, look);
     }
     let (heard, short) = (curve.surplus_kwh, curve.deficit_kwh.abs());
     let sides = [
@@ -203,12 +200,9 @@ fn labels(pen: &mut Pen<'_>, frame: &Frame, curve: &DurationCurve, (above, below
         for y in [18.0, 32.0, 46.0, 60.0, 80.0, 110.0] {
             for across in [0.55, 0.8, 0.3, 1.0, 0.1] {
                 let x = x0 + 6.0 + across * (x1 - x0 - wide - 10.0).max(0.0);
-                options.push((x, if up { zero - y + 12.0 } else { zero + y }));
+                options.push(((x, if up { zero - y + 12.0 } else { zero + y }), line.as_str()));
             }
         }
-        let patches: Vec<Patch> = options.iter().map(|o| look.patch(*o, &line)).collect();
-        if let Some(i) = placer.first_clear(&patches) {
-            pen.text(options[i], &line, look);
-        }
+        pen.text_at(&mut placer, &options, look);
     }
 }

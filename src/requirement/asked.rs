@@ -5,6 +5,7 @@ use super::coverage::Curve;
 use super::{Losses, Ranges, forced_powers};
 use crate::case::{Balance, Case, Connection, FixedStore, RequirementCase, Start};
 use crate::duty::{Duty, Kind};
+use crate::numeric::sort_falling;
 use crate::result::{AskedPoint, SimulationResult};
 use crate::simulation;
 
@@ -142,7 +143,7 @@ fn power_above(duty: &Duty, losses: &Losses) -> f64 {
         .map(|net| losses.standing_kw - net)
         .filter(|deficit| *deficit > 0.0)
         .collect();
-    deficits.sort_unstable_by(|a, b| b.total_cmp(a));
+    sort_falling(&mut deficits);
     let allowed = ABOVE_POWER * deficits.iter().sum::<f64>();
     // The energy above level p falls linearly between two neighbouring powers.
     let mut sum = 0.0;

@@ -8,7 +8,7 @@
 
 use super::Losses;
 use crate::duty::Duty;
-use crate::numeric::Sum;
+use crate::numeric::{Sum, sort_falling};
 
 /// The exact coverage of a duty's deficit by a store of one power limit, for every capacity. Without self-discharge.
 #[derive(Debug, Clone)]
@@ -59,7 +59,7 @@ impl Ranges {
         }
         let sign = if drift < 0.0 { -1.0 } else { 1.0 };
         let mut ranges = falling_ranges(&points, sign);
-        ranges.sort_unstable_by(|a, b| b.total_cmp(a));
+        sort_falling(&mut ranges);
         let mut sum = Sum::default();
         let sums = ranges
             .iter()

@@ -280,13 +280,10 @@ fn episodes(duty: &Duty) -> Vec<EpisodeRow> {
     [-1.0, 1.0]
         .into_iter()
         .flat_map(|sign| {
-            let mut side: Vec<_> =
+            // They come in the order of their starts, which equal energies keep.
+            let side: Vec<_> =
                 duty.episodes.iter().filter(|episode| episode.energy_kwh * sign > 0.0).collect();
-            side.sort_by(|a, b| {
-                b.energy_kwh.abs().total_cmp(&a.energy_kwh.abs()).then(a.start.cmp(&b.start))
-            });
-            side.truncate(LISTED);
-            side
+            pictures::largest(&side, LISTED)
         })
         .map(|episode| {
             let end = episode.start + episode.steps;

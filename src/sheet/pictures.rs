@@ -3,8 +3,8 @@
 use super::View;
 use crate::case::{Balance, Case, Connection};
 use crate::chart::{Critical, Cumulative, DurationCurve, EpisodeMark, Measure, NetPower, Week, YearSheet};
-use crate::duty::{Duty, Kind};
-use crate::numeric::Sum;
+use crate::duty::{Duty, Episode, Kind};
+use crate::numeric::{Sum, rising, sort_falling};
 use crate::record::Clock;
 use crate::requirement::capacity::{self, CriticalPeriod};
 use crate::requirement::{Asked, Requirement};
@@ -91,7 +91,7 @@ pub(super) fn year(duty: &Duty, critical: Option<&CriticalPeriod>) -> YearSheet 
 /// The duration curve of net power.
 pub(super) fn duration(duty: &Duty) -> DurationCurve {
     let mut values: Vec<f64> = (0..duty.intervals()).filter_map(|i| duty.net_kw(i)).collect();
-    values.sort_unstable_by(|a, b| b.total_cmp(a));
+    sort_falling(&mut values);
     let step_h = duty.record.step_h();
     let most = 600.min(values.len());
     let at = |k: usize| if most < 2 { 0 } else { k * (values.len() - 1) / (most - 1) };
@@ -140,15 +140,13 @@ pub(super) fn net(duty: &Duty, view: &View) -> NetPower {
         picture.least_kw.push(if there { least } else { f64::NAN });
         picture.greatest_kw.push(if there { greatest } else { f64::NAN });
     }
-    let mut inside: Vec<_> = duty
+    let inside: Vec<_> = duty
         .episodes
         .iter()
         .filter(|episode| episode.start < to && episode.start + episode.steps > from)
         .collect();
-    inside.sort_by(|a, b| b.energy_kwh.abs().total_cmp(&a.energy_kwh.abs()));
-    picture.episodes = inside
+    picture.episodes = largest(&inside, NAMED)
         .into_iter()
-        .take(NAMED)
         .map(|episode| EpisodeMark {
             from_us: reading_us(clock, episode.start),
             to_us: reading_us(clock, episode.start + episode.steps),
@@ -166,6 +164,12 @@ pub(super) fn net(duty: &Duty, view: &View) -> NetPower {
         picture.strip_kw.push(if count == 0 { f64::NAN } else { sum.value() / count as f64 });
     }
     picture
+}
+
+/// The episodes of most energy, at most `most`; of equal ones those that were given first.
+pub(super) fn largest<'d>(episodes: &[&'d Episode], most: usize) -> Vec<&'d Episode> {
+    let keys: Vec<f64> = episodes.iter().map(|episode| -episode.energy_kwh.abs()).collect();
+    rising(&keys).into_iter().take(most).map(|i| episodes[i]).collect()
 }
 
 /// Intervals in a cell of the strip: a day, or less where the record is short.
