@@ -288,12 +288,18 @@ pub(super) fn cumulative(duty: &Duty, requirement: &Requirement, case: &Case) ->
     let losses = &requirement.working.losses;
     let step_h = duty.record.step_h();
     let period = critical(duty, requirement, case);
-    // The whole of a connected year; around the critical period of an islanded one, so that its fall can be read.
-    let stride = clock.intervals.div_ceil(SAMPLES / 2).max(1);
+    // The whole of a connected year; the surroundings of the critical period of an islanded one, so that its fall can be read.
+    let (first, last) =
+        period.filter(|period| period.to <= clock.intervals).map_or((0, clock.intervals), |period| {
+            let around = (period.to - period.from).max(libm::round(3.0 * 86_400.0 / clock.step_s()) as usize);
+            (period.from.saturating_sub(around), (period.to + around).min(clock.intervals))
+        });
+    let stride = (last - first).div_ceil(SAMPLES / 2).max(1);
     let keep = |i: usize| {
-        i.is_multiple_of(stride)
-            || i == clock.intervals
-            || period.is_some_and(|period| i == period.from || i == period.to)
+        (first..=last).contains(&i)
+            && ((i - first).is_multiple_of(stride)
+                || i == last
+                || period.is_some_and(|period| i == period.from || i == period.to))
     };
     let mut picture = Cumulative::default();
     let mut sum = Sum::default();

@@ -1,9 +1,10 @@
 //! The engine against published and independently computed values (tests/reference), and properties that must hold for any
 //! record.
 
-#![allow(clippy::unwrap_used, reason = "a test that cannot go on should say where")]
+#![allow(clippy::unwrap_used, clippy::expect_used, reason = "a test that cannot go on should say where")]
 
 mod properties;
 mod reference;
+mod sheet;
 mod site;
 mod terminal;

@@ -308,7 +308,9 @@ fn methods(done: &Assessment) -> Vec<Method> {
                 .to_owned(),
             formula: "K(t) = max(0, K(t−1) − w(t))    capacity = max K".to_owned(),
             source: "Thomas and Burden 1963 (from memory); mass curve, Rippl 1883 (from memory)".to_owned(),
-            limits: "Exact for intervals of constant power. It does not know another year.".to_owned(),
+            limits: "Exact for intervals of constant power, with no limit of power: a limit on charging asks for more energy. It does not \
+                     know another year."
+                .to_owned(),
         },
     ]
 }
