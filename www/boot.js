@@ -105,6 +105,8 @@
     for (const name of ["pointerover", "dragenter", "focusin", "keydown", "touchstart"]) {
       addEventListener(name, () => fetchEngine().catch(() => {}), { once: true, passive: true });
     }
+    // Whoever reads the page first finds it there as well; not at once, so that the page itself is never kept waiting.
+    setTimeout(() => fetchEngine().catch(() => {}), 1500);
   }
 
   /** Only once the page runs, so that the first download is not slowed. Browsers allow it on https and on this machine. */
