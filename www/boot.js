@@ -76,8 +76,29 @@
     return engine;
   }
 
+  function started({ module, script }) {
+    const worker = new Worker(script);
+    // What it says before anyone listens (its first sign of life) is kept for whoever takes it.
+    const said = [];
+    const hold = (event) => said.push(event.data);
+    worker.addEventListener("message", hold);
+    worker.said = () => { worker.removeEventListener("message", hold); return said; };
+    worker.postMessage({ module });
+    return worker;
+  }
+
+  let spare = null;
+
+  /** Has the engine fetched and a worker running before the first file comes. */
+  function prepare() {
+    fetchEngine().then((engine) => { if (!spawned) spare ??= started(engine); }, () => {});
+  }
+
+  let spawned = false;
+
   /** A worker with the engine. What is posted to it before the engine is there is held back. */
   function spawn() {
+    spawned = true;
     const early = [];
     let worker = null;
     let ended = false;
@@ -85,14 +106,15 @@
     const port = new EventTarget();
     port.postMessage = (data) => (worker ? worker.postMessage(data) : early.push(data));
     port.terminate = () => { ended = true; worker?.terminate(); };
-    fetchEngine().then(({ module, script }) => {
+    fetchEngine().then((engine) => {
       if (ended) return;
-      worker = new Worker(script);
+      worker = spare ?? started(engine);
+      spare = null;
       for (const name of ["message", "messageerror"]) {
         worker.addEventListener(name, (event) => port.dispatchEvent(new MessageEvent(name, { data: event.data })));
       }
       worker.addEventListener("error", (event) => { event.preventDefault(); port.dispatchEvent(new Event("error")); });
-      worker.postMessage({ module });
+      for (const data of worker.said()) port.dispatchEvent(new MessageEvent("message", { data }));
       for (const data of early) worker.postMessage(data);
     }, (error) => {
       notice(`The engine could not be loaded: ${error?.message ?? error}\nCheck the connection and reload the page.`);
@@ -103,10 +125,10 @@
   /** Fetches the engine at the first sign of use, so that it is there when the first file comes. */
   function fetchEngineEarly() {
     for (const name of ["pointerover", "dragenter", "focusin", "keydown", "touchstart"]) {
-      addEventListener(name, () => fetchEngine().catch(() => {}), { once: true, passive: true });
+      addEventListener(name, prepare, { once: true, passive: true });
     }
     // Whoever reads the page first finds it there as well; not at once, so that the page itself is never kept waiting.
-    setTimeout(() => fetchEngine().catch(() => {}), 1500);
+    setTimeout(prepare, 1500);
   }
 
   /** Only once the page runs, so that the first download is not slowed. Browsers allow it on https and on this machine. */
