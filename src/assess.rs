@@ -29,16 +29,17 @@ pub struct Assessment {
 /// Takes a record through all stages.
 ///
 /// # Errors
-/// If the record lacks what the duty needs.
+/// If the record lacks what the duty needs, or the case edits a kind of storage that is not there.
 pub fn assess(record: &Rc<Record>, case: &Case, catalogue: &Catalogue) -> Result<Assessment> {
+    let catalogue = catalogue.edited(&case.catalogue)?;
     let duty = duty::ask(record, case)?;
     let requirement = requirement::derive(&duty, case);
-    let (need, screening) = screen(&duty, &requirement, case, catalogue);
+    let (need, screening) = screen(&duty, &requirement, case, &catalogue);
     let simulations = case.stores.iter().enumerate().map(|(i, store)| simulate(&duty, store, i)).collect();
     Ok(Assessment { duty, requirement, need, screening, simulations })
 }
 
-/// Judges the catalogue on a requirement.
+/// Judges a catalogue, edited as the case has it, on a requirement.
 pub fn screen(
     duty: &Duty,
     requirement: &Requirement,

@@ -1,49 +1,39 @@
 //! Ranges of the case's numbers, each stated once.
 
-use super::{Case, DutyCase, Store, VERSION};
-use crate::fault::{Fault, Result};
+use super::carried::LARGEST;
+use super::{Case, DutyCase, PriceCase, RangeEdit, Store, VERSION};
+use crate::fault::{Fault, Result, quote};
 use crate::units::people::percent;
 
 /// Powers and energies beyond this (kW, kWh, kg, l) are slips of the pen: a thousand times the largest plants.
 const MOST: f64 = 1e12;
 
-/// Longest lists and names.
+/// Longest lists.
 const MOST_ENTRIES: usize = 200;
 
-/// Refuses a version from the future before the fields are looked at, so that the remedy is the right one.
-pub(super) fn version(text: &str) -> Result<()> {
-    #[derive(serde::Deserialize)]
-    struct Head {
-        millpond_case: Option<serde_json::Value>,
-    }
-    let head: Head = serde_json::from_str(text).map_err(|error| {
-        Fault::new(
-            format!("this is not a case file: {error}"),
-            format!("case file, row {}, column {}", error.line(), error.column()),
-            "Choose a case file (JSON) that this program wrote.",
-        )
-    })?;
-    match head.millpond_case.as_ref().map(serde_json::Value::as_u64) {
-        Some(Some(version)) if version == u64::from(VERSION) => Ok(()),
-        Some(Some(version)) if version > u64::from(VERSION) => Err(Fault::new(
-            format!("the case is of version {version}; this program reads up to version {VERSION}"),
-            "case file, at millpond_case",
-            "Open it with a newer Millpond.",
-        )),
-        _ => Err(Fault::new(
-            "the case does not state its version",
-            "case file, at millpond_case",
-            format!("Add \"millpond_case\": {VERSION}."),
-        )),
-    }
-}
+/// Longest names and longest free texts, in letters.
+const LONGEST_NAME: usize = 300;
+const LONGEST_TEXT: usize = 20_000;
 
 pub(super) fn ranges(case: &Case) -> Result<()> {
     number("millpond_case", f64::from(case.millpond_case), f64::from(VERSION), f64::from(VERSION), "")?;
+    word("name", &case.name)?;
+    text("notes", &case.notes)?;
+    text("site.notes", &case.site.notes)?;
     let record = &case.record;
     optional("record.step_s", record.step_s, 1e-3, 31_536_000.0, "s")?;
     count("record.roles", record.roles.len())?;
     count("record.units", record.units.len())?;
+    for (header, unit) in &record.units {
+        word(&format!("record.units.{}", quote(header)), unit)?;
+    }
+    for (field, headers) in [
+        ("record.roles", record.roles.keys().collect::<Vec<_>>()),
+        ("record.units", record.units.keys().collect()),
+    ] {
+        headers.into_iter().try_for_each(|header| word(field, header))?;
+    }
+    word("record.zone", record.zone.as_deref().unwrap_or_default())?;
     for (field, mark, allowed) in
         [("record.separator", record.separator, ",;\t|"), ("record.decimal", record.decimal, ".,")]
     {
@@ -108,8 +98,87 @@ pub(super) fn ranges(case: &Case) -> Result<()> {
         number(&at("discharge_efficiency"), store.discharge_efficiency, 1e-3, 1.0, "")?;
         number(&at("self_discharge_per_h"), store.self_discharge_per_h, 0.0, 1e3, "1/h")?;
         number(&at("standing_kw"), store.standing_kw, 0.0, MOST, "kW")?;
+        word(&at("name"), &store.name)?;
+    }
+    edits(&case.catalogue)?;
+    prices(&case.prices)?;
+    count("files", case.files.len())?;
+    for (i, file) in case.files.iter().enumerate() {
+        word(&format!("files[{i}].name"), &file.name)?;
+        number(&format!("files[{i}].bytes"), file.bytes as f64, 0.0, LARGEST as f64, "bytes")?;
     }
     Ok(())
+}
+
+fn edits(edits: &[RangeEdit]) -> Result<()> {
+    count("catalogue", edits.len())?;
+    for (i, edit) in edits.iter().enumerate() {
+        let at = |field: &str| format!("catalogue[{i}].{field}");
+        word(&at("technology"), &edit.technology)?;
+        word(&at("source"), &edit.source)?;
+        for (field, value) in [("low", edit.low), ("typical", edit.typical), ("high", edit.high)] {
+            number(&at(field), value, -MOST, MOST, "in the catalogue's unit")?;
+        }
+        if edit.low > edit.typical || edit.typical > edit.high {
+            return Err(Fault::new(
+                format!("{} to {} does not hold the typical value {}", edit.low, edit.high, edit.typical),
+                format!("case, at {}", at("typical")),
+                "Give low, typical and high in rising order.",
+            ));
+        }
+        if let Some(earlier) = edits[..i]
+            .iter()
+            .position(|other| (&other.technology, other.quantity) == (&edit.technology, edit.quantity))
+        {
+            return Err(Fault::new(
+                format!("the {} of {} is edited twice", edit.quantity.word(), quote(&edit.technology)),
+                format!("case, at catalogue[{i}], first at catalogue[{earlier}]"),
+                "Keep one of the two.",
+            ));
+        }
+    }
+    Ok(())
+}
+
+fn prices(prices: &PriceCase) -> Result<()> {
+    word("prices.currency", &prices.currency)?;
+    optional("prices.charging_per_kwh", prices.charging_per_kwh, -MOST, MOST, "per kWh")?;
+    optional("prices.discount_rate", prices.discount_rate, 0.0, 1.0, "")?;
+    count("prices.stores", prices.stores.len())?;
+    for (i, price) in prices.stores.iter().enumerate() {
+        let at = |field: &str| format!("prices.stores[{i}].{field}");
+        word(&at("technology"), &price.technology)?;
+        number(&at("per_kw"), price.per_kw, 0.0, MOST, "per kW")?;
+        number(&at("per_kwh"), price.per_kwh, 0.0, MOST, "per kWh")?;
+        number(&at("fixed"), price.fixed, 0.0, MOST, "in the currency")?;
+        number(&at("yearly_share"), price.yearly_share, 0.0, 1.0, "")?;
+    }
+    Ok(())
+}
+
+/// A name: one line, short.
+fn word(field: &str, value: &str) -> Result<()> {
+    written(field, value, LONGEST_NAME, |c| c.is_control())
+}
+
+/// Free text: lines are allowed.
+fn text(field: &str, value: &str) -> Result<()> {
+    written(field, value, LONGEST_TEXT, |c| c.is_control() && !matches!(c, '\n' | '\t' | '\r'))
+}
+
+fn written(field: &str, value: &str, most: usize, forbidden: fn(char) -> bool) -> Result<()> {
+    let letters = value.chars().count();
+    let (what, remedy) = if letters > most {
+        (format!("{field} has {letters} letters"), format!("Keep at most {most}."))
+    } else if let Some(c) = value.chars().find(|c| forbidden(*c)) {
+        (
+            format!("{field} holds a control character, U+{:04X}: {}", u32::from(c), quote(value)),
+            "Write it without.".to_owned(),
+        )
+    } else {
+        return Ok(());
+    };
+    Err(Fault::new(what, format!("case, at {field}"), remedy))
 }
 
 fn number(field: &str, value: f64, least: f64, greatest: f64, unit: &str) -> Result<()> {

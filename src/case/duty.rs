@@ -4,6 +4,7 @@ use serde::{Deserialize, Serialize};
 
 /// What storage is asked to do.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(tag = "kind", rename_all = "snake_case", deny_unknown_fields)]
 pub enum DutyCase {
     /// What fits the record: `limits` for a record of demand alone, `balance` otherwise.
@@ -47,6 +48,7 @@ impl Default for DutyCase {
 
 /// What a positive value of a given duty means.
 #[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(rename_all = "snake_case")]
 pub enum Positive {
     /// Charging.

@@ -3,8 +3,12 @@
 //! The same case and the same version give the same results, bit for bit. Unknown fields are errors that name their path;
 //! a missing field takes its default; every number is checked for its range when the case is read.
 
+mod carried;
+pub mod change;
 mod check;
 mod duty;
+mod edits;
+mod read;
 mod record;
 mod requirement;
 mod site;
@@ -12,7 +16,9 @@ mod store;
 
 use serde::{Deserialize, Serialize};
 
+pub use carried::CarriedFile;
 pub use duty::{DutyCase, Positive};
+pub use edits::{PriceCase, RangeEdit, StorePrice};
 pub use record::{DateOrder, GapRemedy, RecordCase, Remedies, RepeatRemedy, Stamp, Values};
 pub use requirement::{Balance, RequirementCase};
 pub use site::{Connection, SiteCase};
@@ -23,15 +29,19 @@ use crate::fault::{Fault, Result};
 /// The version of the case format that this program writes.
 pub const VERSION: u32 = 1;
 
-/// Longest case file that is read, in bytes.
-const LONGEST: usize = 4 << 20;
-
 /// Everything a person chose.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields)]
 pub struct Case {
     /// Version of the format.
     pub millpond_case: u32,
+    /// Name of the case.
+    #[serde(default)]
+    pub name: String,
+    /// Remarks, free text.
+    #[serde(default)]
+    pub notes: String,
     /// How the record is read.
     #[serde(default)]
     pub record: RecordCase,
@@ -47,17 +57,39 @@ pub struct Case {
     /// Stores to be simulated.
     #[serde(default)]
     pub stores: Vec<Store>,
+    /// Ranges of the catalogue with numbers of the person's own.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub catalogue: Vec<RangeEdit>,
+    /// Prices.
+    #[serde(default)]
+    pub prices: PriceCase,
+    /// Seed of everything that is sampled, so that a sample can be drawn again; kept for the outlook.
+    #[serde(default = "first_seed")]
+    pub seed: u32,
+    /// The record's files, where the case carries them.
+    #[serde(default, skip_serializing_if = "Vec::is_empty")]
+    pub files: Vec<CarriedFile>,
+}
+
+fn first_seed() -> u32 {
+    1
 }
 
 impl Default for Case {
     fn default() -> Self {
         Self {
             millpond_case: VERSION,
+            name: String::new(),
+            notes: String::new(),
             record: RecordCase::default(),
             duty: DutyCase::default(),
             requirement: RequirementCase::default(),
             site: SiteCase::default(),
             stores: Vec::new(),
+            catalogue: Vec::new(),
+            prices: PriceCase::default(),
+            seed: first_seed(),
+            files: Vec::new(),
         }
     }
 }
@@ -78,33 +110,7 @@ impl Case {
     /// # Ok::<(), millpond::fault::Fault>(())
     /// ```
     pub fn from_json(text: &str) -> Result<Self> {
-        if text.len() > LONGEST {
-            return Err(Fault::new(
-                format!("the case file is {} bytes long, more than {LONGEST}", text.len()),
-                "case file",
-                "Choose a case file that this program wrote.",
-            ));
-        }
-        check::version(text)?;
-        let mut reader = serde_json::Deserializer::from_str(text);
-        let case: Self = serde_path_to_error::deserialize(&mut reader).map_err(|error| {
-            let path = error.path().to_string();
-            let place = if path == "." { "case file".to_owned() } else { format!("case file, at {path}") };
-            Fault::new(
-                format!("the case does not read: {}", error.into_inner()),
-                place,
-                "Correct or remove that field; the fields are listed in DEVELOPERS.md.",
-            )
-        })?;
-        reader.end().map_err(|error| {
-            Fault::new(
-                format!("text follows the case: {error}"),
-                "case file",
-                "Remove what follows the closing brace.",
-            )
-        })?;
-        case.check()?;
-        Ok(case)
+        read::case(text)
     }
 
     /// The case as JSON, for people: indented.

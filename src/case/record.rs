@@ -8,6 +8,7 @@ use crate::record::Role;
 
 /// How the record is read; what is not given is guessed.
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields, default)]
 pub struct RecordCase {
     /// Whether a stamp marks the start (the default) or the end of its interval.
@@ -19,8 +20,10 @@ pub struct RecordCase {
     /// Length of an interval in seconds.
     pub step_s: Option<f64>,
     /// Role of each column by its header (or `file/header`).
+    #[serde(deserialize_with = "super::read::each_once")]
     pub roles: BTreeMap<String, Role>,
     /// Unit of each column by its header (or `file/header`): W, kW, MW, Wh, kWh, MWh.
+    #[serde(deserialize_with = "super::read::each_once")]
     pub units: BTreeMap<String, String>,
     /// Separator of cells, where the guess is wrong.
     pub separator: Option<char>,
@@ -34,6 +37,7 @@ pub struct RecordCase {
 
 /// Which end of the interval a stamp marks.
 #[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(rename_all = "snake_case")]
 pub enum Stamp {
     /// The start.
@@ -45,6 +49,7 @@ pub enum Stamp {
 
 /// What a value stands for.
 #[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(rename_all = "snake_case")]
 pub enum Values {
     /// The average power of the interval, or the energy in it.
@@ -56,6 +61,7 @@ pub enum Values {
 
 /// The order of day, month and year in a stamp.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(rename_all = "snake_case")]
 pub enum DateOrder {
     /// 2026-03-31
@@ -68,6 +74,7 @@ pub enum DateOrder {
 
 /// Remedies for gaps and repeats.
 #[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields, default)]
 pub struct Remedies {
     /// For missing values.
@@ -78,6 +85,7 @@ pub struct Remedies {
 
 /// What is done about missing values.
 #[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(rename_all = "snake_case")]
 pub enum GapRemedy {
     /// The interval ends an episode and contributes nothing.
@@ -95,6 +103,7 @@ pub enum GapRemedy {
 
 /// What is done about stamps that come more than once.
 #[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(rename_all = "snake_case")]
 pub enum RepeatRemedy {
     /// The first row counts.

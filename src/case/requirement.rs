@@ -4,6 +4,7 @@ use serde::{Deserialize, Serialize};
 
 /// Terms of the requirement.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields, default)]
 pub struct RequirementCase {
     /// Charge efficiency, connection point to store.
@@ -56,6 +57,7 @@ impl Default for RequirementCase {
 
 /// Whether a store must end as full as it began.
 #[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(rename_all = "snake_case")]
 pub enum Balance {
     /// It must: the record is repeated.

@@ -4,6 +4,7 @@ use serde::{Deserialize, Serialize};
 
 /// Facts about the site; what is null is not asked.
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields, default)]
 pub struct SiteCase {
     /// Islanded or connected; none = guessed.
@@ -30,6 +31,7 @@ pub struct SiteCase {
 
 /// How the site stands to a grid.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(rename_all = "snake_case")]
 pub enum Connection {
     /// No grid.

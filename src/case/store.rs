@@ -4,6 +4,7 @@ use serde::{Deserialize, Serialize};
 
 /// A store to be simulated.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(tag = "kind", rename_all = "snake_case")]
 pub enum Store {
     /// A store of fixed efficiencies.
@@ -12,6 +13,7 @@ pub enum Store {
 
 /// A store of fixed efficiencies; powers at the terminals, energy inside.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields, default)]
 pub struct FixedStore {
     /// Name for tables.
@@ -52,6 +54,7 @@ impl Default for FixedStore {
 
 /// Level of a store at the start.
 #[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(rename_all = "snake_case")]
 pub enum Start {
     /// Full.

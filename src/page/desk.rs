@@ -10,6 +10,7 @@ use web_sys::File;
 use millpond::case::Case;
 use millpond::chart::Scheme;
 use millpond::fault::{Fault, Result};
+use millpond::record::site_of;
 use millpond::sheet::{Sheet, View};
 
 use crate::bridge::Progress;
@@ -86,7 +87,7 @@ impl Desk {
             return;
         }
         let names: Vec<String> = files.iter().map(File::name).collect();
-        let site = site_name(&names);
+        let site = site_of(&names);
         self.files.set(names);
         self.case.set(case);
         self.view.update(|view| view.window_us = None);
@@ -260,20 +261,4 @@ fn afresh(case: &Case) -> Case {
     let remedies = case.record.remedies;
     case.record = millpond::case::RecordCase { remedies, ..Default::default() };
     case
-}
-
-/// A site's name from its files': the only file's without its ending, or what the names begin with.
-fn site_name(names: &[String]) -> String {
-    let stem = |name: &String| name.rsplit_once('.').map_or(name.as_str(), |(stem, _)| stem).to_owned();
-    let Some((first, rest)) = names.split_first() else { return String::new() };
-    let first = stem(first);
-    let mut common = first.as_str();
-    for name in rest {
-        while !name.starts_with(common) {
-            let shorter = common.char_indices().next_back().map_or(0, |(at, _)| at);
-            common = &common[..shorter];
-        }
-    }
-    let common = common.trim_end_matches(|c: char| c.is_ascii() && !c.is_ascii_alphanumeric());
-    if common.is_empty() { first } else { common.to_owned() }
 }

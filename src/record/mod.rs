@@ -29,7 +29,7 @@ pub use read::{Reader, read};
 pub use series::Series;
 #[cfg(not(target_arch = "wasm32"))]
 pub use source::Disk;
-pub use source::{Memory, Source, site_name};
+pub use source::{Memory, Source, site_name, site_of};
 
 use serde::{Deserialize, Serialize};
 
@@ -94,6 +94,7 @@ impl Record {
 
 /// What a column stands for (see the case file's `record.roles`).
 #[derive(Debug, Clone, Copy, PartialEq, Eq, Hash, PartialOrd, Ord, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(rename_all = "snake_case")]
 pub enum Role {
     /// Date and time together.

@@ -37,6 +37,28 @@ pub fn site_name(file: &str) -> String {
     if is_compressed { stem(&stem(file)) } else { stem(file) }
 }
 
+/// The name of a site after its files: the only file's, or what the names begin with.
+///
+/// ```
+/// use millpond::record::site_of;
+/// assert_eq!(site_of(&["hill-farm.csv"]), "hill-farm");
+/// assert_eq!(site_of(&["hill-farm load.csv", "hill-farm pv.csv"]), "hill-farm");
+/// assert_eq!(site_of(&["load.csv", "pv.csv"]), "load");
+/// ```
+pub fn site_of<T: AsRef<str>>(files: &[T]) -> String {
+    let Some((first, rest)) = files.split_first() else { return String::new() };
+    let first = site_name(first.as_ref());
+    let mut common = first.as_str();
+    for name in rest {
+        while !name.as_ref().starts_with(common) {
+            let shorter = common.char_indices().next_back().map_or(0, |(at, _)| at);
+            common = &common[..shorter];
+        }
+    }
+    let common = common.trim_end_matches(|c: char| c.is_ascii() && !c.is_ascii_alphanumeric());
+    if common.is_empty() { first } else { common.to_owned() }
+}
+
 /// A source of bytes in memory.
 #[derive(Debug, Clone)]
 pub struct Memory {

@@ -1,5 +1,6 @@
 //! Laying the sheet: the stages and the pictures, one slice of work at a time.
 
+use std::borrow::Cow;
 use std::rc::Rc;
 
 use super::{Heads, Pictures, Sheet, Terms, View, episodes, pictures};
@@ -57,6 +58,9 @@ impl Lay {
     /// Does one stage and returns the sheet after the last.
     fn stage(&mut self) -> Result<Option<Sheet>> {
         let Some(done) = &mut self.assessment else {
+            if let Cow::Owned(edited) = self.catalogue.edited(&self.case.catalogue)? {
+                self.catalogue = Rc::new(edited);
+            }
             let duty = duty::ask(&self.record, &self.case)?;
             let requirement = requirement::derive(&duty, &self.case);
             self.assessment = Some(Assessment {

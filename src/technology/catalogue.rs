@@ -4,16 +4,20 @@
 //! say which number decided and whether anyone has read it. How the tables came about, where sources disagree and what
 //! the numbers must not be used for is written in the notes beside them; the short of it: screening only.
 
+use std::borrow::Cow;
+
 use serde::{Deserialize, Serialize};
 
 use super::rows::{CircuitRow, RangeRow, SitingRow, table};
-use crate::fault::{Fault, Result};
+use crate::case::RangeEdit;
+use crate::fault::{Fault, Result, quote};
 
 /// Kinds of storage that the catalogue must hold.
 const KINDS: usize = 27;
 
 /// A numeric quantity of the catalogue.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(rename_all = "snake_case")]
 pub enum Quantity {
     /// Rated energy per mass, Wh/kg, on the kind's own mass basis.
@@ -307,6 +311,34 @@ impl Catalogue {
         self.technologies.iter().find(|technology| technology.id == id)
     }
 
+    /// The catalogue with a person's own numbers in place of published ones; the original as it stands where there are none.
+    ///
+    /// # Errors
+    /// If an edit names a kind that the catalogue does not hold.
+    pub fn edited(&self, edits: &[RangeEdit]) -> Result<Cow<'_, Self>> {
+        if edits.is_empty() {
+            return Ok(Cow::Borrowed(self));
+        }
+        let mut catalogue = self.clone();
+        for (i, edit) in edits.iter().enumerate() {
+            let found = catalogue.technologies.iter_mut().find(|kind| kind.id == edit.technology);
+            let Some(kind) = found else {
+                let ids: Vec<&str> = self.technologies.iter().map(|kind| kind.id.as_str()).collect();
+                return Err(Fault::new(
+                    format!("the catalogue holds no kind {}", quote(&edit.technology)),
+                    format!("case, at catalogue[{i}].technology"),
+                    format!("Give one of: {}.", ids.join(", ")),
+                ));
+            };
+            let range = &mut kind.ranges[edit.quantity as usize];
+            (range.low, range.typical, range.high) = (edit.low, edit.typical, edit.high);
+            range.verified = !edit.source.is_empty();
+            range.source.clone_from(&edit.source);
+            "given in the case".clone_into(&mut range.source_detail);
+        }
+        Ok(Cow::Owned(catalogue))
+    }
+
     fn read(ranges: &str, circuits: &str, siting: &str) -> Result<Self> {
         let ranges: Vec<RangeRow> = table(ranges, "technologies.csv")?;
         let circuits: Vec<CircuitRow> = table(circuits, "technology_circuits.csv")?;
@@ -430,6 +462,28 @@ mod tests {
         assert_eq!(hydro.siting.packing, None);
         assert_eq!(hydro.circuit.model, Model::Fixed);
         assert_eq!(catalogue.find("flywheel_steel").unwrap().range(Quantity::SelfDischarge).unit, "%/h");
+    }
+
+    #[test]
+    fn numbers_of_ones_own_take_the_place_of_published_ones() {
+        let catalogue = Catalogue::published().unwrap();
+        let edit = |technology: &str, source: &str| RangeEdit {
+            technology: technology.to_owned(),
+            quantity: Quantity::CycleLife,
+            low: 10.0,
+            typical: 20.0,
+            high: 30.0,
+            source: source.to_owned(),
+        };
+        let edited = catalogue.edited(&[edit("li_ion_lfp", "supplier's sheet")]).unwrap();
+        let range = edited.find("li_ion_lfp").unwrap().range(Quantity::CycleLife);
+        assert_eq!((range.low, range.typical, range.high, range.verified), (10.0, 20.0, 30.0, true));
+        assert_eq!(range.unit, "cycles", "the unit stays");
+        let edited = catalogue.edited(&[edit("li_ion_lfp", "")]).unwrap();
+        assert!(!edited.find("li_ion_lfp").unwrap().range(Quantity::CycleLife).verified);
+        let fault = catalogue.edited(&[edit("perpetual_motion", "")]).unwrap_err();
+        assert_eq!(fault.place, "case, at catalogue[0].technology");
+        assert!(fault.remedy.contains("li_ion_lfp"));
     }
 
     #[test]

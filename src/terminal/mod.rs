@@ -1,9 +1,10 @@
 //! The terminal program: many files in, one row per site out, on the engine that the page uses.
 
+mod fields;
 mod sites;
 mod write;
 
-use std::path::PathBuf;
+use std::path::{Path, PathBuf};
 use std::process::ExitCode;
 use std::rc::Rc;
 use std::sync::mpsc;
@@ -15,7 +16,7 @@ use crate::assess::{assess, failed};
 use crate::case::{Case, DutyCase};
 use crate::fault::{Fault, Result};
 use crate::job::finish;
-use crate::record::{Disk, Source, read};
+use crate::record::{Disk, Memory, Source, read, site_of};
 use crate::result::SiteResult;
 use crate::technology::Catalogue;
 use sites::Site;
@@ -26,15 +27,21 @@ use sites::Site;
 #[derive(Debug, Parser)]
 #[command(name = "millpond", version)]
 struct Call {
-    /// Files and folders, each one site.
+    /// Files and folders, each one site; also case files that carry their record.
     #[arg(value_name = "PATH")]
     paths: Vec<PathBuf>,
     /// A folder of which every entry is a site.
     #[arg(long, value_name = "FOLDER")]
     each: Vec<PathBuf>,
-    /// The case: what a person chose, as JSON.
+    /// The case: what a person chose, as JSON. Without a PATH its own record is taken.
     #[arg(long, value_name = "FILE")]
     case: Option<PathBuf>,
+    /// Writes the list of a case file's fields, and ends.
+    #[arg(long)]
+    case_fields: bool,
+    /// Writes the JSON Schema of a case file, and ends.
+    #[arg(long)]
+    case_schema: bool,
     /// The form of the output: one object, row or paragraph a site.
     #[arg(long, value_enum, default_value = "text")]
     out: Form,
@@ -78,6 +85,14 @@ pub fn main() -> ExitCode {
             return ExitCode::from(if wrong { 2 } else { 0 });
         }
     };
+    if call.case_fields {
+        print!("{}", fields::list());
+        return ExitCode::SUCCESS;
+    }
+    if call.case_schema {
+        println!("{:#}", fields::schema());
+        return ExitCode::SUCCESS;
+    }
     match run(&call) {
         Ok(true) => ExitCode::SUCCESS,
         Ok(false) => ExitCode::from(1),
@@ -95,7 +110,11 @@ fn run(call: &Call) -> Result<bool> {
         Some(path) => Case::from_json(&text_of(path)?)?,
     };
     let catalogue = Catalogue::published()?;
-    let mut sites = sites::list(&call.paths, &call.each)?;
+    let mut paths = call.paths.clone();
+    if paths.is_empty() && call.each.is_empty() && !case.files.is_empty() {
+        paths.extend(call.case.clone());
+    }
+    let mut sites = sites::list(&paths, &call.each)?;
     if let Some((k, n)) = call.part {
         sites = sites.into_iter().skip(k - 1).step_by(n).collect();
     }
@@ -132,7 +151,7 @@ fn run(call: &Call) -> Result<bool> {
     Ok(all_well)
 }
 
-fn text_of(path: &std::path::Path) -> Result<String> {
+fn text_of(path: &Path) -> Result<String> {
     std::fs::read_to_string(path).map_err(|error| {
         Fault::new(
             format!("the case file cannot be read: {error}"),
@@ -160,15 +179,48 @@ fn guarded(site: &Site, case: &Case, catalogue: &Catalogue) -> SiteResult {
 }
 
 fn one(site: &Site, case: &Case, catalogue: &Catalogue) -> Result<SiteResult> {
+    if let [only] = site.files.as_slice()
+        && sites::is_case(only)?
+    {
+        return carried(only, catalogue);
+    }
     let sources = site
         .files
         .iter()
         .map(|path| Disk::open(path).map(|disk| Box::new(disk) as Box<dyn Source>))
         .collect::<Result<Vec<_>>>()?;
+    through(&site.name, sources, case, catalogue)
+}
+
+/// A site whose case carries its record.
+fn carried(path: &Path, catalogue: &Catalogue) -> Result<SiteResult> {
+    let mut case = Case::from_json(&text_of(path)?)?;
+    let files = std::mem::take(&mut case.files);
+    if files.is_empty() {
+        return Err(Fault::new(
+            "the case carries no record",
+            path.display().to_string(),
+            "Name the meter file, and give the case by --case.",
+        ));
+    }
+    let names: Vec<&str> = files.iter().map(|file| file.name.as_str()).collect();
+    let sources = files
+        .iter()
+        .map(|file| Ok(Box::new(Memory::new(&file.name, file.unpack()?)) as Box<dyn Source>))
+        .collect::<Result<Vec<_>>>()?;
+    through(&site_of(&names), sources, &case, catalogue)
+}
+
+fn through(
+    name: &str,
+    sources: Vec<Box<dyn Source>>,
+    case: &Case,
+    catalogue: &Catalogue,
+) -> Result<SiteResult> {
     let named: Vec<String> = match &case.duty {
         DutyCase::Given { column, .. } => vec![column.clone()],
         _ => Vec::new(),
     };
-    let record = Rc::new(finish(read(&site.name, sources, &case.record, &named)?)?);
+    let record = Rc::new(finish(read(name, sources, &case.record, &named)?)?);
     Ok(assess(&record, case, catalogue)?.result())
 }

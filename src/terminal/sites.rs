@@ -3,6 +3,7 @@
 use std::path::{Path, PathBuf};
 
 use crate::fault::{Fault, Result};
+use crate::record::{Disk, Source};
 
 /// A site: its name and the files that are read together.
 #[derive(Debug, Clone, PartialEq, Eq)]
@@ -27,6 +28,15 @@ pub(super) fn list(paths: &[PathBuf], each: &[PathBuf]) -> Result<Vec<Site>> {
         ));
     }
     Ok(sites)
+}
+
+/// Whether a file is a case file: an object of JSON, which no meter file is.
+pub(super) fn is_case(path: &Path) -> Result<bool> {
+    let mut head = [0; 64];
+    let mut file = Disk::open(path)?;
+    let count = file.read_at(0, &mut head)?;
+    let head = head[..count].strip_prefix(b"\xef\xbb\xbf").unwrap_or(&head[..count]);
+    Ok(head.trim_ascii_start().first() == Some(&b'{'))
 }
 
 fn site(path: &Path) -> Result<Site> {

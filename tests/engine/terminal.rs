@@ -139,3 +139,38 @@ fn the_table_has_a_row_a_site_under_one_header() {
     assert_eq!(rows[2][column("site")], "'=bad", "guarded against spreadsheets");
     assert!(!rows[2][column("error.what")].is_empty());
 }
+
+#[test]
+fn a_case_that_carries_its_record_is_a_site() {
+    use millpond::case::{CarriedFile, Case};
+    use millpond::record::Memory;
+    let folder = folder("carried");
+    let file = write(&folder, "farm.csv", GOOD);
+    let mut case = Case::default();
+    case.requirement.charge_efficiency = 0.9;
+    let bare = write(&folder, "bare.json", &case.to_json().unwrap());
+    case.files.push(CarriedFile::pack(&mut Memory::new("farm.csv", GOOD)).unwrap());
+    let whole = write(&folder, "whole.json", &case.to_json().unwrap());
+
+    let expected = millpond(&[&file, "--case", &bare, "--out", "json"]).stdout;
+    assert!(!expected.is_empty());
+    for call in [
+        vec![whole.as_str(), "--out", "json"],
+        vec!["--case", &whole, "--out", "json"],
+        vec![&file, "--case", &whole, "--out", "json"],
+    ] {
+        assert_eq!(millpond(&call).stdout, expected, "{call:?}");
+    }
+    let output = millpond(&[&bare, "--out", "json"]);
+    assert_eq!(output.status.code(), Some(1));
+    assert_eq!(objects(&output)[0]["error"]["what"], "the case carries no record");
+}
+
+#[test]
+fn the_fields_and_the_schema_of_a_case_are_told() {
+    let fields = String::from_utf8(millpond(&["--case-fields"]).stdout).unwrap();
+    assert!(fields.contains("`duty.import_limit_kw`: number | null. Greatest import, kW"), "{fields}");
+    let schema: Value = serde_json::from_slice(&millpond(&["--case-schema"]).stdout).unwrap();
+    assert_eq!(schema["properties"]["millpond_case"]["type"], "integer");
+    assert_eq!(schema["additionalProperties"], false, "unknown fields are errors there too");
+}
