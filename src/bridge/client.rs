@@ -30,6 +30,12 @@ pub(crate) enum Event {
     Sheet(Arc<Sheet>),
     /// What stopped the work.
     Fault(Fault),
+    /// A case file that was read, and the files of its record.
+    Case { case: String, files: Vec<File> },
+    /// A case file with its record.
+    Packed(String),
+    /// What stopped an errand; the figures are not concerned.
+    Failed(Fault),
     /// The worker died or hung; another one has taken over and begins anew.
     Restarted,
 }
@@ -49,6 +55,9 @@ struct Inner {
     view: View,
     revision: u32,
     waiting: bool,
+    /// The errand that is awaited, with the files it is about.
+    errand: Option<(Request, Vec<File>)>,
+    errands: u32,
     unheard: u32,
     deaths: u32,
     /// Whether the worker that is there now has the files.
@@ -71,6 +80,8 @@ impl Bridge {
             view: View::default(),
             revision: 0,
             waiting: false,
+            errand: None,
+            errands: 0,
             unheard: 0,
             deaths: 0,
             fed: false,
@@ -114,13 +125,49 @@ impl Bridge {
         self.post_or_feed(&request);
     }
 
-    /// Has the engine say what is wrong with the text of a case file.
-    pub(crate) fn explain(&self, name: String, case: String) {
+    /// Has the engine read the text of a case file.
+    pub(crate) fn read_case(&self, name: String, text: String) {
+        self.send_out(|errand| Request::ReadCase { errand, name, text }, Vec::new());
+    }
+
+    /// Has the engine pack the open files into a case.
+    pub(crate) fn pack(&self, case: String) {
+        let files = self.0.borrow().files.clone();
+        self.send_out(|errand| Request::Pack { errand, case }, files);
+    }
+
+    /// Sends an errand; one that is still out is forgotten.
+    fn send_out(&self, request: impl FnOnce(u32) -> Request, files: Vec<File>) {
         if self.0.borrow().worker.is_none() {
             self.spawn();
         }
-        let request = Request::Explain { revision: self.0.borrow_mut().ask(), name, case };
-        self.post(&request);
+        {
+            let mut inner = self.0.borrow_mut();
+            inner.errands += 1;
+            inner.deaths = 0;
+            inner.unheard = 0;
+            inner.errand = Some((request(inner.errands), files));
+        }
+        self.post_errand();
+    }
+
+    fn post_errand(&self) {
+        let errand = self.0.borrow().errand.clone();
+        if let Some((request, files)) = errand {
+            let files: Array = files.iter().collect();
+            self.post_with(&request, |envelope| super::beside(envelope, "files", &files));
+        }
+    }
+
+    /// Whether that errand is the one awaited; it then no longer is.
+    fn back(&self, number: u32) -> bool {
+        let mut inner = self.0.borrow_mut();
+        let awaited = inner.errands == number && inner.errand.is_some();
+        if awaited {
+            inner.errand = None;
+            inner.deaths = 0;
+        }
+        awaited
     }
 
     /// Shows something else of the same results.
@@ -149,7 +196,8 @@ impl Bridge {
 
     /// Whether an answer is awaited.
     pub(crate) fn waiting(&self) -> bool {
-        self.0.borrow().waiting
+        let inner = self.0.borrow();
+        inner.waiting || inner.errand.is_some()
     }
 
     /// Whether files are open.
@@ -259,6 +307,16 @@ impl Bridge {
                 self.answered();
                 tell(Event::Fault(fault));
             }
+            Answer::Case { errand, case, names } if self.back(errand) => {
+                let all = super::list(data, "files");
+                let file = |(bytes, name): (JsValue, String)| {
+                    File::new_with_u8_array_sequence(&Array::of1(&bytes), &name).ok()
+                };
+                let files = all.iter().zip(names).filter_map(file).collect();
+                tell(Event::Case { case, files });
+            }
+            Answer::Packed { errand, text } if self.back(errand) => tell(Event::Packed(text)),
+            Answer::Failed { errand, fault } if self.back(errand) => tell(Event::Failed(fault)),
             Answer::Died { text } => self.replace(&text),
             _ => {}
         }
@@ -273,7 +331,7 @@ impl Bridge {
     fn watch(&self) {
         let hung = {
             let mut inner = self.0.borrow_mut();
-            if !inner.waiting || !inner.alive {
+            if !(inner.waiting || inner.errand.is_some()) || !inner.alive {
                 return;
             }
             inner.unheard += 1;
@@ -299,14 +357,17 @@ impl Bridge {
             let again = inner.deaths < DEATHS;
             if !again {
                 inner.waiting = false;
+                inner.errand = None;
             }
             (again, Rc::clone(&inner.tell))
         };
         self.spawn();
         if again {
-            if self.waiting() {
+            let waiting = self.0.borrow().waiting;
+            if waiting {
                 self.feed();
             }
+            self.post_errand();
             return tell(Event::Restarted);
         }
         tell(Event::Fault(Fault::new(

@@ -44,21 +44,47 @@ pub(crate) fn keep(case: &str) {
 
 /// The case that a page in this window left when it broke.
 pub(crate) fn kept() -> Option<String> {
-    let text = storage("getItem", &[LEFT]).ok()?.as_string();
+    let text = remembered(Memory::Window, LEFT);
     // It is taken over once: a later reload starts afresh.
-    storage("removeItem", &[LEFT]).ok()?;
+    remember(Memory::Window, LEFT, None);
     text
+}
+
+/// Where the browser remembers a word for the page.
+#[derive(Clone, Copy)]
+pub(crate) enum Memory {
+    /// As long as the window is there.
+    Window,
+    /// Until it is removed.
+    Browser,
+}
+
+/// A word that the browser remembers; none too where it refuses to remember anything.
+pub(crate) fn remembered(memory: Memory, name: &str) -> Option<String> {
+    storage(memory, "getItem", &[name]).ok()?.as_string()
+}
+
+/// Has the browser remember a word, or forget it; whether it did.
+pub(crate) fn remember(memory: Memory, name: &str, word: Option<&str>) -> bool {
+    match word {
+        Some(word) => storage(memory, "setItem", &[name, word]).is_ok(),
+        None => storage(memory, "removeItem", &[name]).is_ok(),
+    }
 }
 
 /// Leaves the case to the page that follows, if there is one to leave.
 fn leave_case() -> bool {
     CASE.with(|held| {
-        held.try_borrow().is_ok_and(|case| !case.is_empty() && storage("setItem", &[LEFT, &case]).is_ok())
+        held.try_borrow().is_ok_and(|case| !case.is_empty() && remember(Memory::Window, LEFT, Some(&case)))
     })
 }
 
-fn storage(method: &str, arguments: &[&str]) -> Result<JsValue, JsValue> {
-    let storage = Reflect::get(&global(), &"sessionStorage".into())?;
+fn storage(memory: Memory, method: &str, arguments: &[&str]) -> Result<JsValue, JsValue> {
+    let area = match memory {
+        Memory::Window => "sessionStorage",
+        Memory::Browser => "localStorage",
+    };
+    let storage = Reflect::get(&global(), &area.into())?;
     let method: Function = Reflect::get(&storage, &method.into())?.dyn_into()?;
     method.apply(&storage, &arguments.iter().map(|argument| JsValue::from(*argument)).collect())
 }

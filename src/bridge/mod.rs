@@ -1,5 +1,7 @@
 //! Page and worker: typed requests one way, typed answers the other.
 //!
+//! Beside that work there are errands, a case file to be read or written: they neither wait for it nor disturb it.
+//!
 //! One worker owns the files and the record. The page posts what it wants with a revision; the worker works in slices, one
 //! per turn of its loop, so that it hears the next request, and drops what it was doing when one comes. Answers carry the
 //! revision they were asked for; the page drops stale ones. Long series travel as transferred buffers beside the envelope.
@@ -15,9 +17,13 @@ pub(crate) mod client;
 #[cfg(feature = "page")]
 pub(crate) mod host;
 #[cfg(feature = "engine")]
+mod keeper;
+#[cfg(feature = "page")]
+pub(crate) mod keeping;
+#[cfg(feature = "engine")]
 pub(crate) mod worker;
 
-use js_sys::{Array, Float64Array, Function, Object, Reflect, global};
+use js_sys::{Array, Float64Array, Function, Object, Reflect, Uint8Array, global};
 use serde::de::DeserializeOwned;
 use serde::{Deserialize, Serialize};
 use wasm_bindgen::{JsCast, JsValue};
@@ -32,10 +38,14 @@ pub(crate) enum Request {
     Open { revision: u32, site: String, case: String, view: View },
     /// Does again what a changed case changes.
     Change { revision: u32, case: String, view: View },
-    /// Says what is wrong with the text of a case file, by its name.
-    Explain { revision: u32, name: String, case: String },
+    /// Reads the text of a case file, by its name.
+    ReadCase { errand: u32, name: String, text: String },
+    /// Packs files (beside the envelope) into a case.
+    Pack { errand: u32, case: String },
     /// Shows something else of the same results.
     Look { revision: u32, view: View },
+    /// Has something kept in the browser, or taken from there; what is to be kept stands beside the envelope.
+    Keep { number: u32, act: Act },
     /// Leaves off.
     Stop,
     /// Asks whether the worker still turns.
@@ -51,10 +61,44 @@ pub(crate) enum Answer {
     Sheet { revision: u32, sheet: Box<Sheet> },
     /// What stopped the work.
     Fault { revision: u32, fault: Fault },
+    /// A case file that was read: the case as the text of its file, without its record; that stands beside the envelope.
+    Case { errand: u32, case: String, names: Vec<String> },
+    /// A case file with its record.
+    Packed { errand: u32, text: String },
+    /// What stopped an errand.
+    Failed { errand: u32, fault: Fault },
+    /// What became of keeping; what was taken from there stands beside the envelope.
+    Kept { number: u32, trouble: Option<Trouble> },
     /// It still turns.
     Pong,
     /// It stopped for good, with what it said last.
     Died { text: String },
+}
+
+/// What is done with kept cases.
+#[derive(Debug, Clone, Serialize, Deserialize)]
+pub(crate) enum Act {
+    /// Lists them.
+    List,
+    /// Writes one (the first thing beside the envelope), and its files (the second) where there is a second.
+    Put { id: String, record: bool },
+    /// Fetches the files of one.
+    Files { id: String },
+    /// Removes one.
+    Remove { id: String },
+    /// Removes all.
+    Clear,
+}
+
+/// Why something could not be kept.
+#[derive(Debug, Clone, Copy, PartialEq, Eq, Serialize, Deserialize)]
+pub(crate) enum Trouble {
+    /// The browser does not let this page keep anything.
+    Denied,
+    /// It has no room left.
+    Full,
+    /// It did not do it.
+    Refused,
 }
 
 /// How far the worker is.
@@ -68,10 +112,11 @@ pub(crate) struct Progress {
     pub(crate) done: f64,
 }
 
-/// An envelope around a message; what travels beside it (files, series) is added by [`beside`].
+/// An envelope around a message, in a compact form that both programs share (they are of one build); what travels beside it (files, series) is added by [`beside`].
 pub(crate) fn envelope<T: Serialize>(message: &T) -> Result<Object, JsValue> {
     let envelope = Object::new();
-    Reflect::set(&envelope, &"message".into(), &serde_wasm_bindgen::to_value(message)?)?;
+    let bytes = postcard::to_allocvec(message).map_err(|_unwritten| JsValue::from("the message cannot be written"))?;
+    Reflect::set(&envelope, &"message".into(), &Uint8Array::from(bytes.as_slice()))?;
     Ok(envelope)
 }
 
@@ -82,7 +127,8 @@ pub(crate) fn beside(envelope: &Object, name: &str, list: &Array) -> Result<(), 
 
 /// The message in an envelope.
 pub(crate) fn open<T: DeserializeOwned>(envelope: &JsValue) -> Result<T, JsValue> {
-    Ok(serde_wasm_bindgen::from_value(Reflect::get(envelope, &"message".into())?)?)
+    let bytes: Uint8Array = Reflect::get(envelope, &"message".into())?.dyn_into()?;
+    postcard::from_bytes(&bytes.to_vec()).map_err(|_unread| JsValue::from("the message cannot be read"))
 }
 
 /// A list that came with an envelope; empty if there was none.

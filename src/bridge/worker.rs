@@ -4,11 +4,11 @@ use std::cell::RefCell;
 use std::rc::Rc;
 
 use gloo::events::EventListener;
-use js_sys::{Function, Reflect, global};
+use js_sys::{Array, Function, Reflect, Uint8Array, global};
 use wasm_bindgen::{JsCast, JsValue};
 use web_sys::{DedicatedWorkerGlobalScope, File, MessageChannel, MessageEvent, MessagePort};
 
-use millpond::case::{Case, DutyCase, RecordCase};
+use millpond::case::{CarriedFile, Case, DutyCase, RecordCase};
 use millpond::fault::{Fault, Result};
 use millpond::job::Job;
 use millpond::record::{self, Record, Source};
@@ -16,7 +16,7 @@ use millpond::sheet::{Lay, View};
 use millpond::technology::Catalogue;
 
 use super::blob::BlobSource;
-use super::{Answer, Progress, Request};
+use super::{Act, Answer, Progress, Request};
 
 /// How long a slice should take, ms: short enough to hear the next request at once.
 const SLICE_MS: f64 = 16.0;
@@ -114,8 +114,7 @@ impl Worker {
         let Ok(request) = super::open::<Request>(data) else { return };
         match request {
             Request::Open { revision, site, case, view } => {
-                self.files =
-                    super::list(data, "files").iter().filter_map(|file| file.dyn_into().ok()).collect();
+                self.files = files_beside(data);
                 self.record = None;
                 (self.site, self.view, self.revision) = (site, view, revision);
                 self.begin_with(&case);
@@ -124,17 +123,15 @@ impl Worker {
                 (self.view, self.revision) = (view, revision);
                 self.begin_with(&case);
             }
-            Request::Explain { revision, name, case } => {
-                self.revision = revision;
-                let fault = Case::from_json(&case).err().unwrap_or_else(|| {
-                    Fault::new(
-                        "the page cannot take this case over, though it reads",
-                        "case file",
-                        "Report this as a defect.",
-                    )
+            Request::ReadCase { errand, name, text } => self.read_case(errand, &name, &text),
+            Request::Pack { errand, case } => {
+                let packed = pack(&case, &files_beside(data));
+                self.answer(&match packed {
+                    Ok(text) => Answer::Packed { errand, text },
+                    Err(fault) => Answer::Failed { errand, fault },
                 });
-                self.fail(Fault { place: fault.place.replacen("case file", &name, 1), ..fault });
             }
+            Request::Keep { number, act } => keep(self.scope.clone(), number, act, super::list(data, "kept")),
             Request::Look { revision, view } => {
                 (self.view, self.revision) = (view, revision);
                 self.begin();
@@ -151,6 +148,34 @@ impl Worker {
                 self.begin();
             }
             Err(fault) => self.fail(fault),
+        }
+    }
+
+    /// Reads a case file whole, or says what is wrong with it.
+    fn read_case(&self, errand: u32, name: &str, text: &str) {
+        let read = || -> Result<(String, Vec<String>, Array)> {
+            let mut case = Case::from_json(text)?;
+            let (mut names, bytes) = (Vec::new(), Array::new());
+            for file in std::mem::take(&mut case.files) {
+                bytes.push(&Uint8Array::from(file.unpack()?.as_slice()));
+                names.push(file.name);
+            }
+            Ok((case.to_json()?, names, bytes))
+        };
+        match read() {
+            Ok((case, names, bytes)) => {
+                let posted = super::envelope(&Answer::Case { errand, case, names }).and_then(|envelope| {
+                    super::beside(&envelope, "files", &bytes)?;
+                    self.scope.post_message(&envelope)
+                });
+                if let Err(error) = posted {
+                    self.undelivered(&error);
+                }
+            }
+            Err(fault) => {
+                let fault = Fault { place: fault.place.replacen("case file", name, 1), ..fault };
+                self.answer(&Answer::Failed { errand, fault });
+            }
         }
     }
 
@@ -285,6 +310,37 @@ impl Worker {
         super::log(&text);
         last_words(&self.scope, text);
     }
+}
+
+/// Keeps something, or takes it from there, and answers when that is done.
+fn keep(scope: DedicatedWorkerGlobalScope, number: u32, act: Act, beside: Array) {
+    wasm_bindgen_futures::spawn_local(async move {
+        let (trouble, found) = match super::keeper::keep(act, &beside).await {
+            Ok(found) => (None, found),
+            Err(trouble) => (Some(trouble), Array::new()),
+        };
+        let posted = super::envelope(&Answer::Kept { number, trouble }).and_then(|envelope| {
+            super::beside(&envelope, "kept", &found)?;
+            scope.post_message(&envelope)
+        });
+        if let Err(error) = posted {
+            super::log(&format!("an answer could not be sent: {error:?}"));
+        }
+    });
+}
+
+/// The files that came with an envelope.
+fn files_beside(data: &JsValue) -> Vec<File> {
+    super::list(data, "files").iter().filter_map(|file| file.dyn_into().ok()).collect()
+}
+
+/// The text of a case file that carries these files.
+fn pack(case: &str, files: &[File]) -> Result<String> {
+    let mut case = Case::from_json(case)?;
+    for file in files {
+        case.files.push(CarriedFile::pack(&mut BlobSource::new(file.clone())?)?);
+    }
+    case.to_json()
 }
 
 enum Done {

@@ -1,6 +1,6 @@
 //! A change of the case in words, for the list of steps: read off the names of the fields, so that every field has its words.
 
-use super::Case;
+use std::fmt::Write;
 
 /// One leaf of the case that changed.
 #[derive(Debug, Clone, PartialEq, Eq)]
@@ -61,11 +61,14 @@ pub fn words(changes: &[Change]) -> String {
             Err(_) => part.replace('_', " "),
         };
         within = &first.path[depth];
-        match depth {
-            0 => name.push_str(&crate::units::people::capital(&part)),
-            1 => name.push_str(&format!(": {part}")),
-            _ => name.push_str(&format!(" {part}")),
-        }
+        let joint = match depth {
+            0 => "",
+            1 => ": ",
+            _ => " ",
+        };
+        let part = if depth == 0 { crate::units::people::capital(&part) } else { part };
+        // Writing to a text cannot fail.
+        let _ = write!(name, "{joint}{part}");
     }
     let mut text = match (first.old.as_str(), first.new.as_str()) {
         ("", "") => name,
@@ -80,7 +83,9 @@ pub fn words(changes: &[Change]) -> String {
     match rest.len() {
         0 => {}
         1 => text.push_str(", and one more"),
-        more => text.push_str(&format!(", and {more} more")),
+        more => {
+            let _ = write!(text, ", and {more} more");
+        }
     }
     text
 }
@@ -95,18 +100,6 @@ fn value(text: &str) -> String {
         _ if text.parse::<f64>().is_ok() => text.to_owned(),
         _ => text.replace('_', " "),
     }
-}
-
-/// Whether two cases differ in nothing but what does not change a figure: name and notes.
-pub fn only_words(a: &Case, b: &Case) -> bool {
-    let bare = |case: &Case| {
-        let mut case = case.clone();
-        case.name.clear();
-        case.notes.clear();
-        case.site.notes.clear();
-        case
-    };
-    bare(a) == bare(b)
 }
 
 #[cfg(test)]

@@ -158,7 +158,7 @@ fn prices(prices: &PriceCase) -> Result<()> {
 
 /// A name: one line, short.
 fn word(field: &str, value: &str) -> Result<()> {
-    written(field, value, LONGEST_NAME, |c| c.is_control())
+    written(field, value, LONGEST_NAME, char::is_control)
 }
 
 /// Free text: lines are allowed.

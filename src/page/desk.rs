@@ -1,6 +1,7 @@
 //! What the page holds: the files' names, the case, the view, the last sheet and the state of the work. Everything else
 //! is derived from these.
 
+use std::rc::Rc;
 use std::sync::Arc;
 
 use gloo::timers::callback::Timeout;
@@ -16,6 +17,9 @@ use millpond::sheet::{Sheet, View};
 use crate::bridge::Progress;
 use crate::bridge::client::{Bridge, Event};
 use crate::bridge::{case_text, host, of_json, words};
+
+use super::keep::{self, Keeping, Kept};
+use super::steps::{Step, Steps, Trail};
 
 /// A person who types is left to finish, ms.
 const TYPING_MS: u32 = 150;
@@ -35,8 +39,32 @@ pub(crate) struct Desk {
     pub(crate) status: RwSignal<Status>,
     /// The colours that pictures are drawn in.
     pub(crate) scheme: RwSignal<Scheme>,
+    /// The steps taken, for the list of them.
+    pub(crate) trail: RwSignal<Trail>,
+    /// Whether and how the case is kept in the browser.
+    pub(crate) keeping: RwSignal<Keeping>,
+    /// What is kept there.
+    pub(crate) kept: RwSignal<Vec<Kept>>,
+    steps: StoredValue<Steps, LocalStorage>,
+    /// Meter files that came together with a case file, until that is read.
+    meters: StoredValue<Vec<File>, LocalStorage>,
     bridge: StoredValue<Bridge, LocalStorage>,
+    waits: Waits,
+}
+
+/// What the page waits for beside the worker.
+#[derive(Clone, Copy)]
+struct Waits {
+    /// A person who types.
     typing: StoredValue<Option<Timeout>, LocalStorage>,
+    /// Files on their way, or a kept case.
+    fetching: StoredValue<u32, LocalStorage>,
+}
+
+impl Waits {
+    fn none(self) -> bool {
+        self.typing.with_value(Option::is_none) && self.fetching.get_value() == 0
+    }
 }
 
 /// What is being done, and what last went wrong.
@@ -57,19 +85,38 @@ impl Desk {
     pub(crate) fn new() -> Self {
         let sheet = RwSignal::new(None);
         let status = RwSignal::new(Status::default());
+        let first = first_case();
+        let steps = StoredValue::new_local(Steps::new(first.clone(), keep::new_id()));
         let (files, case, view) =
-            (RwSignal::new(Vec::new()), RwSignal::new(first_case()), RwSignal::new(View::default()));
+            (RwSignal::new(Vec::new()), RwSignal::new(first), RwSignal::new(View::default()));
         let scheme = super::screen::scheme();
-        let typing = StoredValue::new_local(None);
+        let waits = Waits { typing: StoredValue::new_local(None), fetching: StoredValue::new_local(0) };
+        let desk = StoredValue::<Option<Self>, LocalStorage>::new_local(None);
         let bridge = StoredValue::<Option<Bridge>, LocalStorage>::new_local(None);
         let made = Bridge::new(move |event| {
-            heard(sheet, status, event);
+            heard(sheet, status, desk, event);
             if let Some(bridge) = bridge.get_value() {
-                settle(&bridge, typing);
+                settle(&bridge, waits);
             }
         });
         bridge.set_value(Some(made.clone()));
-        Self { files, case, view, sheet, status, scheme, bridge: StoredValue::new_local(made), typing }
+        let this = Self {
+            files,
+            case,
+            view,
+            sheet,
+            status,
+            scheme,
+            trail: RwSignal::new(Trail::default()),
+            keeping: RwSignal::new(Keeping::Starting),
+            kept: RwSignal::new(Vec::new()),
+            steps,
+            meters: StoredValue::new_local(Vec::new()),
+            bridge: StoredValue::new_local(made),
+            waits,
+        };
+        desk.set_value(Some(this));
+        this
     }
 
     /// Opens files in place of those that are open; the case stays, but for what was corrected of other files' reading.
@@ -78,24 +125,114 @@ impl Desk {
             .files
             .with_untracked(|open| open.iter().eq(files.iter().map(File::name).collect::<Vec<_>>().iter()));
         let case = self.case.with_untracked(|case| if again { case.clone() } else { afresh(case) });
-        self.open_with(files, case);
+        self.open_as(files, case, !again);
     }
 
     /// Opens files with a case of their own.
     pub(crate) fn open_with(self, files: Vec<File>, case: Case) {
+        self.open_as(files, case, true);
+    }
+
+    /// Opens files as a step; another site is kept as a case of its own.
+    fn open_as(self, files: Vec<File>, case: Case, another: bool) {
         if files.is_empty() {
             return;
         }
         let names: Vec<String> = files.iter().map(File::name).collect();
-        let site = site_of(&names);
-        self.files.set(names);
-        self.case.set(case);
-        self.view.update(|view| view.window_us = None);
-        self.typing.set_value(None);
-        self.begin();
-        if let Some(case) = self.case_text() {
-            self.bridge.with_value(|bridge| bridge.open(files, site, case, self.view.get_untracked()));
+        let words = format!("Opened {}", names.join(", "));
+        let files = Rc::new(files);
+        self.steps.update_value(|steps| {
+            let first = steps.here().files.is_empty();
+            let untouched = first && steps.list.len() == 1;
+            let id = if another && !first { keep::new_id() } else { Rc::clone(&steps.here().id) };
+            if first {
+                // What was chosen before there were files is about these.
+                for step in &mut steps.list {
+                    step.files = Rc::clone(&files);
+                }
+            }
+            let step = Step::first(words, case, files, id);
+            if untouched { *steps = Steps { list: vec![step], at: 0 } } else { steps.push(step) }
+        });
+        self.arrive(true);
+    }
+
+    /// Takes up steps that were kept. Without files the case is there, and its record has to be handed over again.
+    pub(crate) fn resume(self, steps: Steps) {
+        let files = !steps.here().files.is_empty();
+        self.steps.set_value(steps);
+        self.arrive(files);
+    }
+
+    /// One step back.
+    pub(crate) fn undo(self) {
+        if let Some(at) = self.steps.with_value(|steps| steps.at.checked_sub(1)) {
+            self.go(at);
         }
+    }
+
+    /// One step forward again.
+    pub(crate) fn redo(self) {
+        self.go(self.steps.with_value(|steps| steps.at + 1));
+    }
+
+    /// Goes to a step of the list.
+    pub(crate) fn go(self, at: usize) {
+        let other = self.steps.try_update_value(|steps| {
+            if at == steps.at || at >= steps.list.len() {
+                return None;
+            }
+            let before = Rc::clone(&steps.here().files);
+            steps.at = at;
+            Some(!Rc::ptr_eq(&before, &steps.here().files))
+        });
+        if let Some(Some(other)) = other {
+            self.arrive(other);
+        }
+    }
+
+    /// Something of the steps.
+    pub(crate) fn with_steps<T>(self, pick: impl FnOnce(&Steps) -> T) -> T {
+        self.steps.with_value(pick)
+    }
+
+    /// Puts what the present step holds on the desk, and has it computed.
+    fn arrive(self, open: bool) {
+        let Step { case, files, .. } = self.steps.with_value(|steps| steps.here().clone());
+        self.waits.typing.set_value(None);
+        self.case.set(case);
+        if open {
+            let names: Vec<String> = files.iter().map(File::name).collect();
+            let site = site_of(&names);
+            self.files.set(names);
+            self.view.update(|view| view.window_us = None);
+            self.begin();
+            if let Some(case) = self.case_text() {
+                let files = files.as_slice().to_vec();
+                self.bridge.with_value(|bridge| bridge.open(files, site, case, self.view.get_untracked()));
+            }
+        } else {
+            self.post_case();
+        }
+        self.told();
+    }
+
+    /// After every step: the list shows it, and the browser keeps it.
+    fn told(self) {
+        self.trail.set(self.steps.with_value(Steps::trail));
+        keep::soon(self);
+    }
+
+    /// Waits for something that is on its way; the page is not settled before [`Self::fetched`].
+    pub(crate) fn fetch(self) {
+        super::screen::settled(false);
+        self.waits.fetching.update_value(|count| *count += 1);
+    }
+
+    /// What was on its way is here, or will not come.
+    pub(crate) fn fetched(self) {
+        self.waits.fetching.update_value(|count| *count = count.saturating_sub(1));
+        self.settle_soon();
     }
 
     /// Changes the case at once.
@@ -103,8 +240,8 @@ impl Desk {
     /// # Errors
     /// If a number is out of its range; the case is then as it was.
     pub(crate) fn edit(self, change: impl FnOnce(&mut Case)) -> Result<()> {
-        self.take(change)?;
-        self.typing.set_value(None);
+        self.take(change, false)?;
+        self.waits.typing.set_value(None);
         self.post_case();
         Ok(())
     }
@@ -114,15 +251,38 @@ impl Desk {
     /// # Errors
     /// As [`Self::edit`].
     pub(crate) fn type_in(self, change: impl FnOnce(&mut Case)) -> Result<()> {
-        self.take(change)?;
+        self.take(change, true)?;
         if self.bridge.with_value(Bridge::has_files) {
             self.begin();
-            self.typing.set_value(Some(Timeout::new(TYPING_MS, move || {
-                self.typing.set_value(None);
+            self.waits.typing.set_value(Some(Timeout::new(TYPING_MS, move || {
+                self.waits.typing.set_value(None);
                 self.post_case();
             })));
         }
         Ok(())
+    }
+
+    /// Changes words of the case as a person types them; no figure depends on them, so nothing is computed.
+    ///
+    /// # Errors
+    /// As [`Self::edit`].
+    pub(crate) fn type_words(self, change: impl FnOnce(&mut Case)) -> Result<()> {
+        self.take(change, true)
+    }
+
+    /// Name of the case for people: its own, or that of the site.
+    pub(crate) fn name(self) -> String {
+        let own = self.case.with_untracked(|case| case.name.clone());
+        if !own.is_empty() {
+            return own;
+        }
+        let names = self.files.get_untracked();
+        if names.is_empty() { "case without a record".to_owned() } else { site_of(&names) }
+    }
+
+    /// Says something in passing.
+    pub(crate) fn remark(self, words: &'static str) {
+        self.status.update(|status| status.remark = words);
     }
 
     /// Changes what is looked at.
@@ -141,7 +301,7 @@ impl Desk {
 
     /// Leaves off; the old figures stay and say so.
     pub(crate) fn stop(self) {
-        self.typing.set_value(None);
+        self.waits.typing.set_value(None);
         self.bridge.with_value(Bridge::stop);
         self.status.set(Status {
             remark: "Stopped. The figures are of the case before; change any term to compute again.",
@@ -158,7 +318,7 @@ impl Desk {
 
     /// Marks the page as settled once what is shown has been drawn and nothing is awaited.
     pub(crate) fn settle_soon(self) {
-        self.bridge.with_value(|bridge| settle(bridge, self.typing));
+        self.bridge.with_value(|bridge| settle(bridge, self.waits));
     }
 
     /// Something of the sheet, or its default without one.
@@ -166,11 +326,13 @@ impl Desk {
         self.sheet.with(|sheet| sheet.as_deref().map(pick).unwrap_or_default())
     }
 
-    fn take(self, change: impl FnOnce(&mut Case)) -> Result<()> {
+    fn take(self, change: impl FnOnce(&mut Case), typed: bool) -> Result<()> {
         let mut case = self.case.get_untracked();
         change(&mut case);
         case.check()?;
+        self.steps.update_value(|steps| steps.change(case.clone(), typed));
         self.case.set(case);
+        self.told();
         Ok(())
     }
 
@@ -201,10 +363,40 @@ impl Desk {
         }
     }
 
-    /// Says what is wrong with the text of a case file that did not read.
-    pub(crate) fn explain(self, name: String, case: String) {
-        self.begin();
-        self.bridge.with_value(|bridge| bridge.explain(name, case));
+    /// Has the engine read the text of a case file; it becomes the case if all of it reads.
+    pub(crate) fn read_case(self, name: String, text: String, meters: Vec<File>) {
+        super::screen::settled(false);
+        self.meters.set_value(meters);
+        self.bridge.with_value(|bridge| bridge.read_case(name, text));
+    }
+
+    /// Has the engine pack the open files into the case, to be saved.
+    pub(crate) fn pack(self) {
+        super::screen::settled(false);
+        if let Some(case) = self.case_text() {
+            self.bridge.with_value(|bridge| bridge.pack(case));
+        }
+    }
+
+    /// Takes over a case that was read, with the files of its record if it carries them.
+    fn take_over(self, text: &str, files: Vec<File>) {
+        let Some(case) = of_json::<Case>(text) else {
+            return self.fail(Fault::new(
+                "the page cannot take this case over, though it reads",
+                "case file",
+                "Report this as a defect.",
+            ));
+        };
+        let files = match self.meters.try_update_value(std::mem::take) {
+            Some(chosen) if !chosen.is_empty() => chosen,
+            _ => files,
+        };
+        if !files.is_empty() {
+            return self.open_with(files, case);
+        }
+        if let Err(fault) = self.edit(move |held| *held = case) {
+            self.fail(fault);
+        }
     }
 
     fn begin(self) {
@@ -217,7 +409,12 @@ impl Desk {
     }
 }
 
-fn heard(sheet: RwSignal<Option<Arc<Sheet>>>, status: RwSignal<Status>, event: Event) {
+fn heard(
+    sheet: RwSignal<Option<Arc<Sheet>>>,
+    status: RwSignal<Status>,
+    desk: StoredValue<Option<Desk>, LocalStorage>,
+    event: Event,
+) {
     match event {
         Event::Progress(progress) => status.update(|status| status.progress = Some(progress)),
         Event::Sheet(made) => {
@@ -227,6 +424,17 @@ fn heard(sheet: RwSignal<Option<Arc<Sheet>>>, status: RwSignal<Status>, event: E
             status.set(Status { fault, ..Status::default() });
         }
         Event::Fault(fault) => status.set(Status { fault: Some(fault), ..Status::default() }),
+        Event::Case { case, files } => {
+            if let Some(desk) = desk.get_value() {
+                desk.take_over(&case, files);
+            }
+        }
+        Event::Packed(text) => {
+            if let Some(desk) = desk.get_value() {
+                super::save::packed(desk, &text);
+            }
+        }
+        Event::Failed(fault) => status.update(|status| status.fault = Some(fault)),
         Event::Restarted => {
             status.update(|status| {
                 status.remark = "The computation stopped and was started anew with the same case.";
@@ -236,10 +444,10 @@ fn heard(sheet: RwSignal<Option<Arc<Sheet>>>, status: RwSignal<Status>, event: E
 }
 
 /// The flag turns true only after effects have drawn, and not if more was asked meanwhile.
-fn settle(bridge: &Bridge, typing: StoredValue<Option<Timeout>, LocalStorage>) {
+fn settle(bridge: &Bridge, waits: Waits) {
     let bridge = bridge.clone();
     Timeout::new(0, move || {
-        if !bridge.waiting() && typing.with_value(Option::is_none) {
+        if !bridge.waiting() && waits.none() {
             super::screen::settled(true);
         }
     })

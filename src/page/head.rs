@@ -6,8 +6,8 @@ use leptos::prelude::*;
 use millpond::sheet::Sheet;
 
 use super::desk::Desk;
+use super::screen;
 use super::station::{LATER, PLACES, Place};
-use super::{save, screen};
 
 /// The title block across the top.
 pub(crate) fn title_block(desk: Desk) -> impl IntoView {
@@ -43,11 +43,7 @@ pub(crate) fn title_block(desk: Desk) -> impl IntoView {
                 <div>
                     <dt>"Case"</dt>
                     <dd>
-                        {move || if changed.get() { "changed " } else { "as guessed " }}
-                        <button class="quiet" on:click=move |_| save::case(desk)>"Save"</button>
-                        {move || desk.sheet.with(Option::is_some).then(|| view! {
-                            " "<button class="quiet" data-role="result" on:click=move |_| save::result(desk)>"Save result"</button>
-                        })}
+                        {move || if changed.get() { "changed" } else { "as guessed" }}
                     </dd>
                 </div>
                 {entry("Version", |sheet| sheet.heads.version.clone(), env!("CARGO_PKG_VERSION"))}

@@ -69,8 +69,8 @@ fn entry(desk: Desk, demo: Demo) -> impl IntoView {
     }
 }
 
-/// Listens for files dropped anywhere, and for a demo site named after the hash.
-pub(crate) fn listen(desk: Desk) {
+/// Listens for files dropped anywhere, and for a demo site named after the hash; whether one is named there now.
+pub(crate) fn listen(desk: Desk) -> bool {
     let options = EventListenerOptions::enable_prevent_default();
     let root = document();
     for name in ["dragenter", "dragover", "dragleave", "drop"] {
@@ -94,14 +94,16 @@ pub(crate) fn listen(desk: Desk) {
     }
     let by_hash = move || {
         let hash = window().location().hash().unwrap_or_default();
-        if let Some(name) = hash.strip_prefix("#demo=")
-            && let Some(demo) = demos().into_iter().find(|demo| demo.name == name)
-        {
-            open_demo(desk, demo.file);
-        }
+        let demo =
+            hash.strip_prefix("#demo=").and_then(|name| demos().into_iter().find(|demo| demo.name == name));
+        demo.map(|demo| open_demo(desk, demo.file)).is_some()
     };
-    by_hash();
-    EventListener::new(&window(), "hashchange", move |_| by_hash()).forget();
+    let named = by_hash();
+    EventListener::new(&window(), "hashchange", move |_| {
+        by_hash();
+    })
+    .forget();
+    named
 }
 
 fn demos() -> Vec<Demo> {
@@ -117,22 +119,15 @@ fn take(desk: Desk, files: Vec<File>) {
     let (cases, meters): (Vec<File>, Vec<File>) =
         files.into_iter().partition(|file| file.name().to_ascii_lowercase().ends_with(".json"));
     if let Some(file) = cases.into_iter().next_back() {
-        screen::settled(false);
+        desk.fetch();
         spawn_local(async move {
             let name = file.name();
-            let Some(text) = JsFuture::from(file.text()).await.ok().and_then(|text| text.as_string()) else {
-                return desk.fail(Fault::new("the case file cannot be read", name, "Choose it again."));
-            };
-            match of_json(&text).filter(|case: &Case| case.check().is_ok()) {
-                Some(case) if meters.is_empty() => {
-                    if let Err(fault) = desk.edit(move |held| *held = case) {
-                        desk.fail(fault);
-                    }
-                    desk.settle_soon();
-                }
-                Some(case) => desk.open_with(meters, case),
-                None => desk.explain(name, text),
+            match JsFuture::from(file.text()).await.ok().and_then(|text| text.as_string()) {
+                // The engine reads it, since the browser's own reader would let the last of two equal keys win in silence.
+                Some(text) => desk.read_case(name, text, meters),
+                None => desk.fail(Fault::new("the case file cannot be read", name, "Choose it again.")),
             }
+            desk.fetched();
         });
         return;
     }
@@ -140,7 +135,7 @@ fn take(desk: Desk, files: Vec<File>) {
 }
 
 fn open_demo(desk: Desk, name: String) {
-    screen::settled(false);
+    desk.fetch();
     spawn_local(async move {
         match fetch(&name).await {
             Ok(file) => {
@@ -153,6 +148,7 @@ fn open_demo(desk: Desk, name: String) {
                 "Check the connection, then try again; files of your own can be read without one.",
             )),
         }
+        desk.fetched();
     });
 }
 

@@ -1,6 +1,7 @@
 //! The page: one sheet with a station per stage, each in its own file. It lays out what the engine computed, and computes
 //! nothing itself.
 
+mod case_line;
 mod desk;
 mod drawing;
 mod duty;
@@ -10,6 +11,7 @@ mod findings;
 mod fold;
 mod head;
 mod intake;
+mod keep;
 mod picture;
 mod plane;
 mod reading;
@@ -19,6 +21,7 @@ mod requirement;
 mod save;
 mod screen;
 mod station;
+mod steps;
 mod tables;
 mod verdicts;
 
@@ -33,13 +36,16 @@ pub(crate) fn mount() {
 
 fn sheet() -> impl IntoView {
     let desk = Desk::new();
-    intake::listen(desk);
+    steps::listen(desk);
+    let asked_for = intake::listen(desk);
+    keep::begin(desk, asked_for);
     desk.settle_soon();
     view! {
         <a class="skip" href="#record">"To the stations"</a>
         {verdicts::symbols()}
         <div class="sheet">
             {head::title_block(desk)}
+            {case_line::line(desk)}
             {head::contents_line(desk)}
             <div class="cols">
                 {head::rail(desk)}

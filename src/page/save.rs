@@ -21,11 +21,14 @@ const DOTS: f64 = 2.0;
 
 /// Saves the case as JSON.
 pub(crate) fn case(desk: Desk) {
-    let name = desk.of(|sheet| sheet.site.clone());
-    let name = if name.is_empty() { "case".to_owned() } else { format!("{name} case") };
     if let Some(text) = desk.case_text() {
-        json(desk, &name, &text);
+        json(desk, &format!("{} case", desk.name()), &text);
     }
+}
+
+/// Saves a case that carries its record.
+pub(crate) fn packed(desk: Desk, text: &str) {
+    json(desk, &format!("{} case with record", desk.name()), text);
 }
 
 /// Saves the result as JSON: the same bytes that the terminal program writes.
@@ -34,7 +37,8 @@ pub(crate) fn result(desk: Desk) {
     json(desk, &format!("{site} result"), &text);
 }
 
-fn json(desk: Desk, name: &str, text: &str) {
+/// Saves text of JSON under a name.
+pub(crate) fn json(desk: Desk, name: &str, text: &str) {
     let saved = save_text(&format!("{name}.json"), "application/json", text).map_err(|error| refused(&error));
     report(desk, saved);
 }

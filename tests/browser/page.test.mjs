@@ -109,10 +109,12 @@ test("a worker that dies is replaced, idle or at work, and nothing of the case i
   await settled(page);
   const before = await figures(page);
   const die = async () => {
-    const worker = page.workers().at(-1);
-    const gone = new Promise((done) => worker.once("close", done));
-    await worker.evaluate(() => void setTimeout(() => { throw new Error("a fault made by the test"); }));
-    await gone;
+    // All of them: the one that computes and the one that keeps.
+    await Promise.all(page.workers().map(async (worker) => {
+      const gone = new Promise((done) => worker.once("close", done));
+      await worker.evaluate(() => void setTimeout(() => { throw new Error("a fault made by the test"); }));
+      await gone;
+    }));
   };
 
   await die();

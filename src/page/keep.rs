@@ -1,0 +1,477 @@
+//! Keeping cases in the browser: by itself, several by name, with or without the record; and keeping nothing at all.
+//!
+//! Kept are the steps with the case after each, and the record's files. A case is open for keeping in one tab at a time (Web
+//! Locks); another tab works on a copy.
+
+use std::cell::{Cell, RefCell};
+use std::rc::Rc;
+
+use gloo::events::EventListener;
+use js_sys::{Array, Date, Function, JSON, Math, Object, Promise, Reflect};
+use leptos::prelude::*;
+use leptos::task::spawn_local;
+use serde::{Deserialize, Serialize};
+use wasm_bindgen::closure::Closure;
+use wasm_bindgen::{JsCast, JsValue};
+use wasm_bindgen_futures::JsFuture;
+use web_sys::File;
+
+use millpond::case::Case;
+use millpond::fault::Fault;
+
+use crate::bridge::host::{Memory, remember, remembered};
+use crate::bridge::keeping::keep;
+use crate::bridge::{Act, Trouble, case_text, of_json};
+
+use super::desk::Desk;
+use super::save;
+use super::steps::{Step, Steps};
+
+/// The word that a person left: `nothing` = keep nothing on this computer; `bare` = without the record.
+const WISH: &str = "millpond-keep";
+/// Says that something was kept here, so that its loss can be told.
+const TRACE: &str = "millpond-kept";
+/// The case that this tab is at.
+const HERE: &str = "millpond-tab";
+
+/// Whether and how the case is kept.
+#[derive(Clone, Copy, Default, PartialEq)]
+pub(crate) enum Keeping {
+    /// Not known yet.
+    #[default]
+    Starting,
+    /// Everything so far is kept, with the record or without.
+    On { record: bool },
+    /// The person wants nothing kept.
+    Nothing,
+    /// Kept without the record, since there is no room for it.
+    NoRoom,
+    /// It cannot be kept, and why.
+    Cannot(&'static str),
+}
+
+impl Keeping {
+    /// The state in words.
+    pub(crate) fn words(self) -> &'static str {
+        match self {
+            Self::Starting => "",
+            Self::On { record: true } => "Kept in this browser, with the record.",
+            Self::On { record: false } => "Kept in this browser, without the record.",
+            Self::Nothing => "Nothing is kept on this computer.",
+            Self::NoRoom => {
+                "The browser has no room for the record: the case is kept without it. Save it with its record as a file."
+            }
+            Self::Cannot(why) => why,
+        }
+    }
+}
+
+const FROM_DISK: &str = "A page opened from disk keeps nothing. Save the case as a file.";
+const DENIED: &str = "This browser does not let the page keep anything (a private window, or a setting). Save the case as a file before you leave.";
+const FULL: &str = "The browser has no room left to keep the case. Save it as a file, or remove kept cases.";
+const REFUSED: &str = "The browser did not keep the last step. Save the case as a file.";
+const EVICTED: &str = "What was kept here is gone: browsers remove it when they need room, or when their data are cleared. Case files are not concerned.";
+const ELSEWHERE: &str =
+    "That case is open in another tab. What you see here is a copy, kept as a case of its own.";
+const WAITS: &str =
+    "The case you were at last is open in another tab. Open it from the kept cases to work on a copy here.";
+const BARE: &str = "The case was kept without its record: hand over the meter file again.";
+
+/// A kept case.
+#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
+pub(crate) struct Kept {
+    /// Its key.
+    pub(crate) id: String,
+    /// Its name for people.
+    pub(crate) name: String,
+    /// When it was changed last, ms since 1970.
+    pub(crate) changed_ms: f64,
+    /// Names of its record's files.
+    pub(crate) files: Vec<String>,
+    /// Whether those are kept too.
+    pub(crate) record: bool,
+    at: usize,
+    /// Each step in words, and the case after it as the text of its file.
+    steps: Vec<(String, String)>,
+    /// What cannot be read, as it stands.
+    #[serde(skip)]
+    pub(crate) damaged: Option<String>,
+}
+
+impl Kept {
+    /// When it was changed last, on this computer's clock.
+    pub(crate) fn when(&self) -> String {
+        let date = Date::new(&self.changed_ms.into());
+        let two = |number: u32| format!("{number:02}");
+        format!(
+            "{}-{}-{} {}:{}",
+            date.get_full_year(),
+            two(date.get_month() + 1),
+            two(date.get_date()),
+            two(date.get_hours()),
+            two(date.get_minutes())
+        )
+    }
+}
+
+/// A case by its key, and the files of its record.
+type Written = (Rc<str>, Rc<Vec<File>>);
+
+#[derive(Default)]
+struct Keeper {
+    /// Whether nothing is to be kept.
+    off: Cell<bool>,
+    writing: Cell<bool>,
+    again: Cell<bool>,
+    /// The case and the files that were written last.
+    written: RefCell<Option<Written>>,
+    /// The case that this tab holds, and what lets go of it.
+    held: RefCell<Option<(Rc<str>, Function)>>,
+}
+
+thread_local! {
+    static KEEPER: Keeper = Keeper::default();
+}
+
+/// A key that no other case has.
+pub(crate) fn new_id() -> Rc<str> {
+    format!("{:x}-{:x}", Date::now() as u64, (Math::random() * 4_294_967_296.0) as u64).into()
+}
+
+/// Begins to keep, and takes up the case that this tab, or else the last one, was at. `fresh` = only begin.
+pub(crate) fn begin(desk: Desk, fresh: bool) {
+    // Another tab may be told to keep nothing; that holds for all.
+    EventListener::new(&window(), "storage", move |_| {
+        if wish().as_deref() == Some("nothing") && desk.keeping.get_untracked() != Keeping::Nothing {
+            stop(desk, Keeping::Nothing);
+        }
+    })
+    .forget();
+    if window().location().protocol().is_ok_and(|protocol| protocol == "file:") {
+        return stop(desk, Keeping::Cannot(FROM_DISK));
+    }
+    if wish().as_deref() == Some("nothing") {
+        return stop(desk, Keeping::Nothing);
+    }
+    if remembered(Memory::Browser, TRACE).is_none() {
+        // Nothing to take up: the worker that keeps is called when there is something to keep.
+        return;
+    }
+    desk.fetch();
+    spawn_local(async move {
+        start(desk, fresh).await;
+        desk.fetched();
+    });
+}
+
+async fn start(desk: Desk, fresh: bool) {
+    let mut kept: Vec<Kept> = match keep(Act::List, &Array::new()).await {
+        Ok(all) => all.iter().map(entry).collect(),
+        Err(trouble) => return desk.keeping.set(Keeping::Cannot(sentence(trouble))),
+    };
+    kept.sort_by(|a, b| b.changed_ms.total_cmp(&a.changed_ms));
+    if kept.is_empty() && remembered(Memory::Browser, TRACE).is_some() {
+        remember(Memory::Browser, TRACE, None);
+        desk.remark(EVICTED);
+    }
+    let here = remembered(Memory::Window, HERE);
+    let last = kept
+        .iter()
+        .find(|kept| here.as_deref() == Some(kept.id.as_str()))
+        .or_else(|| kept.first())
+        .filter(|kept| kept.damaged.is_none())
+        .cloned();
+    desk.kept.set(kept);
+    if !fresh && let Some(last) = last {
+        if hold(&last.id).await {
+            take_up(desk, &last, last.id.as_str().into()).await;
+        } else {
+            desk.remark(WAITS);
+        }
+    }
+    soon(desk);
+}
+
+fn sentence(trouble: Trouble) -> &'static str {
+    match trouble {
+        Trouble::Denied => DENIED,
+        Trouble::Full => FULL,
+        Trouble::Refused => REFUSED,
+    }
+}
+
+/// A kept case, or what is left of it.
+fn entry(value: JsValue) -> Kept {
+    let text = JSON::stringify(&value).ok().map(String::from).unwrap_or_default();
+    let id = Reflect::get(&value, &"id".into()).ok().and_then(|id| id.as_string()).unwrap_or_default();
+    let kept: Option<Kept> = serde_wasm_bindgen::from_value(value).ok();
+    match kept {
+        Some(kept)
+            if kept.at < kept.steps.len() && kept.steps.iter().all(|(_, case)| case_of(case).is_some()) =>
+        {
+            kept
+        }
+        _ => Kept { name: "damaged".to_owned(), id, damaged: Some(text), ..Kept::default() },
+    }
+}
+
+fn case_of(text: &str) -> Option<Case> {
+    of_json(text).filter(|case: &Case| case.check().is_ok())
+}
+
+/// Opens a kept case in place of what is on the desk; one that another tab holds as a copy.
+pub(crate) fn open(desk: Desk, kept: Kept) {
+    desk.fetch();
+    spawn_local(async move {
+        if hold(&kept.id).await {
+            take_up(desk, &kept, kept.id.as_str().into()).await;
+        } else {
+            take_up(desk, &kept, new_id()).await;
+            desk.remark(ELSEWHERE);
+        }
+        desk.fetched();
+    });
+}
+
+async fn take_up(desk: Desk, kept: &Kept, id: Rc<str>) {
+    let files = if kept.record { files_of(&kept.id).await } else { None };
+    if files.is_none() && !kept.files.is_empty() {
+        desk.remark(BARE);
+    }
+    let files = Rc::new(files.unwrap_or_default());
+    let list = kept
+        .steps
+        .iter()
+        .filter_map(|(words, case)| {
+            Some(Step::first(words.clone(), case_of(case)?, Rc::clone(&files), Rc::clone(&id)))
+        })
+        .collect();
+    if *id == *kept.id {
+        KEEPER.with(|keeper| *keeper.written.borrow_mut() = Some((id, files)));
+    }
+    desk.resume(Steps { list, at: kept.at });
+}
+
+async fn files_of(id: &str) -> Option<Vec<File>> {
+    let files = keep(Act::Files { id: id.to_owned() }, &Array::new()).await.ok()?;
+    let files: Vec<File> = files.iter().filter_map(|file| file.dyn_into().ok()).collect();
+    (!files.is_empty()).then_some(files)
+}
+
+/// Keeps the present state, as soon as what is being written is done.
+pub(crate) fn soon(desk: Desk) {
+    let go = KEEPER.with(|keeper| {
+        if keeper.off.get() {
+            return false;
+        }
+        keeper.again.set(true);
+        !keeper.writing.replace(true)
+    });
+    if !go {
+        return;
+    }
+    spawn_local(async move {
+        while KEEPER.with(|keeper| keeper.again.replace(false)) {
+            write(desk).await;
+        }
+        KEEPER.with(|keeper| keeper.writing.set(false));
+    });
+}
+
+async fn write(desk: Desk) {
+    let (id, files, kept) = desk.with_steps(|steps| {
+        let here = steps.here();
+        // Steps on other files are remembered by this page, not by the browser.
+        let same: Vec<&Step> =
+            steps.list.iter().filter(|step| Rc::ptr_eq(&step.files, &here.files)).collect();
+        let at = same.iter().position(|step| std::ptr::eq(*step, here)).unwrap_or(0);
+        let kept = Kept {
+            id: here.id.to_string(),
+            name: desk.name(),
+            changed_ms: Date::now(),
+            files: here.files.iter().map(File::name).collect(),
+            record: false,
+            at,
+            steps: same
+                .into_iter()
+                .filter_map(|step| Some((step.words.clone(), case_text(&step.case).ok()?)))
+                .collect(),
+            damaged: None,
+        };
+        (Rc::clone(&here.id), Rc::clone(&here.files), kept)
+    });
+    if files.is_empty() && kept.steps.len() < 2 {
+        return;
+    }
+    let holds = KEEPER.with(|keeper| keeper.held.borrow().as_ref().is_some_and(|(held, _)| *held == id));
+    if !holds && !hold(&id).await {
+        // Steps back led to a case that another tab has taken meanwhile.
+        return desk.keeping.set(Keeping::Cannot(ELSEWHERE));
+    }
+    remember(Memory::Window, HERE, Some(&id));
+    remember(Memory::Browser, TRACE, Some("yes"));
+    let record = with_record();
+    let outcome = match put(&kept, &files, record).await {
+        Err(Trouble::Full) if record => put(&kept, &files, false).await.map(|kept| (kept, Keeping::NoRoom)),
+        outcome => outcome.map(|kept| (kept, Keeping::On { record })),
+    };
+    let state = match outcome {
+        Ok(_) if KEEPER.with(|keeper| keeper.off.get()) => return,
+        Ok((kept, state)) => {
+            KEEPER.with(|keeper| *keeper.written.borrow_mut() = Some((id, files)));
+            desk.kept.update(|all| {
+                all.retain(|other| other.id != kept.id);
+                all.insert(0, kept);
+            });
+            state
+        }
+        Err(trouble) => Keeping::Cannot(sentence(trouble)),
+    };
+    desk.keeping.set(state);
+}
+
+/// Writes a case, and its files where they are not there yet.
+async fn put(kept: &Kept, files: &Rc<Vec<File>>, record: bool) -> Result<Kept, Trouble> {
+    if KEEPER.with(|keeper| keeper.off.get()) {
+        // The person wished for nothing to be kept while this was on its way.
+        return Ok(kept.clone());
+    }
+    let there = KEEPER.with(|keeper| {
+        keeper.written.borrow().as_ref().is_some_and(|(id, last)| **id == *kept.id && Rc::ptr_eq(last, files))
+    });
+    let record = record && !files.is_empty();
+    let kept = Kept { record, ..kept.clone() };
+    let value = serde_wasm_bindgen::to_value(&kept).map_err(|_unwritten| Trouble::Refused)?;
+    let beside = Array::of1(&value);
+    if record && !there {
+        beside.push(&files.iter().collect::<Array>());
+    }
+    keep(Act::Put { id: kept.id.clone(), record }, &beside).await.map(|_| kept)
+}
+
+/// Removes a kept case from the browser.
+pub(crate) fn remove(desk: Desk, id: String) {
+    spawn_local(async move {
+        if let Err(trouble) = keep(Act::Remove { id: id.clone() }, &Array::new()).await {
+            return desk.keeping.set(Keeping::Cannot(sentence(trouble)));
+        }
+        desk.kept.update(|all| all.retain(|kept| kept.id != id));
+        if desk.kept.with_untracked(Vec::is_empty) {
+            remember(Memory::Browser, TRACE, None);
+        }
+        desk.remark("Removed from this browser.");
+    });
+}
+
+/// Saves what is left of a damaged case, as it stands.
+pub(crate) fn rescue(desk: Desk, kept: &Kept) {
+    if let Some(text) = &kept.damaged {
+        save::json(desk, "damaged case", text);
+    }
+}
+
+/// Keeps nothing on this computer from here on, and removes what was kept.
+pub(crate) fn nothing(desk: Desk) {
+    let count = desk.kept.with_untracked(Vec::len);
+    stop(desk, Keeping::Nothing);
+    remember(Memory::Browser, TRACE, None);
+    remember(Memory::Window, HERE, None);
+    let remembers = remember(Memory::Browser, WISH, Some("nothing"));
+    spawn_local(async move {
+        if keep(Act::Clear, &Array::new()).await.is_err() {
+            return desk.fail(Fault::new(
+                "the browser did not remove what was kept",
+                "kept cases",
+                "Clear the data of this page in the browser's settings.",
+            ));
+        }
+        desk.remark(match (count, remembers) {
+            (0, true) => "Nothing is kept from here on; one word remembers that.",
+            (_, true) => "The kept cases are removed from this browser. Nothing is kept from here on; one word remembers that.",
+            (_, false) => "The kept cases are removed from this browser. Nothing is kept until the page is opened again.",
+        });
+    });
+}
+
+/// Keeps cases again.
+pub(crate) fn again(desk: Desk) {
+    remember(Memory::Browser, WISH, None);
+    KEEPER.with(|keeper| keeper.off.set(false));
+    desk.keeping.set(Keeping::Starting);
+    desk.fetch();
+    spawn_local(async move {
+        start(desk, true).await;
+        desk.fetched();
+    });
+}
+
+/// Keeps the record as well, or the case alone.
+pub(crate) fn set_record(desk: Desk, record: bool) {
+    remember(Memory::Browser, WISH, (!record).then_some("bare"));
+    KEEPER.with(|keeper| *keeper.written.borrow_mut() = None);
+    soon(desk);
+}
+
+fn wish() -> Option<String> {
+    remembered(Memory::Browser, WISH)
+}
+
+fn with_record() -> bool {
+    wish().is_none()
+}
+
+/// Keeps nothing from here on, and leaves the case that this tab holds.
+fn stop(desk: Desk, state: Keeping) {
+    KEEPER.with(|keeper| {
+        keeper.off.set(true);
+        *keeper.written.borrow_mut() = None;
+        release(keeper);
+    });
+    desk.keeping.set(state);
+    desk.kept.set(Vec::new());
+}
+
+fn release(keeper: &Keeper) {
+    if let Some((_, release)) = keeper.held.borrow_mut().take() {
+        // The promise that it resolves has no other holder.
+        let _ = release.call0(&JsValue::NULL);
+    }
+}
+
+/// Takes a case for this tab, and lets go of the one held before; whether no other tab has it. A browser without locks (a
+/// page over plain http) cannot tell: then the last one to write wins.
+async fn hold(id: &str) -> bool {
+    let get = |of: &JsValue, name: &str| Reflect::get(of, &name.into()).ok();
+    let locks = get(&window().navigator(), "locks").filter(|locks| !locks.is_undefined());
+    let request = locks.as_ref().and_then(|locks| get(locks, "request")?.dyn_into::<Function>().ok());
+    let (Some(locks), Some(request)) = (locks, request) else { return true };
+    let mine = KEEPER.with(|keeper| keeper.held.borrow().as_ref().is_some_and(|(held, _)| &**held == id));
+    if mine {
+        return true;
+    }
+    let options = Object::new();
+    // A plain object takes any property.
+    let _ = Reflect::set(&options, &"ifAvailable".into(), &JsValue::TRUE);
+    let held_until = Rc::new(RefCell::new(None::<Function>));
+    let (until, name) = (Rc::clone(&held_until), JsValue::from(format!("millpond-{id}")));
+    // The lock lasts as long as the promise that its callback gives back.
+    let answered = Promise::new(&mut |answer, _| {
+        let until = Rc::clone(&until);
+        let granted = Closure::once_into_js(move |lock: JsValue| -> JsValue {
+            let _ = answer.call1(&JsValue::NULL, &JsValue::from(!lock.is_null()));
+            if lock.is_null() {
+                return JsValue::UNDEFINED;
+            }
+            Promise::new(&mut |release, _| *until.borrow_mut() = Some(release)).into()
+        });
+        let _ = request.call3(&locks, &name, &options, &granted);
+    });
+    let free = JsFuture::from(answered).await.is_ok_and(|answer| answer.is_truthy());
+    if free && let Some(function) = held_until.borrow_mut().take() {
+        KEEPER.with(|keeper| {
+            release(keeper);
+            *keeper.held.borrow_mut() = Some((id.into(), function));
+        });
+    }
+    free
+}

@@ -1,0 +1,174 @@
+//! The steps that the person took: undo and redo over the whole case and the files it is about.
+
+use std::rc::Rc;
+
+use gloo::events::{EventListener, EventListenerOptions};
+use js_sys::{JSON, Object, Reflect};
+use leptos::prelude::*;
+use serde::Serialize;
+use wasm_bindgen::{JsCast, JsValue};
+use web_sys::{Element, File, KeyboardEvent};
+
+use millpond::case::Case;
+use millpond::case::change::{Change, words};
+
+use super::desk::Desk;
+
+/// Steps that are remembered.
+const MOST: usize = 200;
+
+/// The case after a step, and what led to it.
+#[derive(Clone)]
+pub(crate) struct Step {
+    /// What was done.
+    pub(crate) words: String,
+    /// The case since then.
+    pub(crate) case: Case,
+    /// The files it is about.
+    pub(crate) files: Rc<Vec<File>>,
+    /// Under which name it is kept in the browser.
+    pub(crate) id: Rc<str>,
+    /// The field that was being typed in, which the next letter may go on with.
+    typed: Option<Vec<String>>,
+}
+
+/// All steps, and the one that the page is at.
+pub(crate) struct Steps {
+    pub(crate) list: Vec<Step>,
+    pub(crate) at: usize,
+}
+
+/// What the page shows of the steps.
+#[derive(Clone, Default, PartialEq)]
+pub(crate) struct Trail {
+    /// Each step in words.
+    pub(crate) words: Vec<String>,
+    /// The one that the page is at.
+    pub(crate) at: usize,
+}
+
+impl Step {
+    /// A step that begins something.
+    pub(crate) fn first(words: String, case: Case, files: Rc<Vec<File>>, id: Rc<str>) -> Self {
+        Self { words, case, files, id, typed: None }
+    }
+}
+
+impl Steps {
+    /// A desk on which nothing has been done.
+    pub(crate) fn new(case: Case, id: Rc<str>) -> Self {
+        Self { list: vec![Step::first("Start".to_owned(), case, Rc::default(), id)], at: 0 }
+    }
+
+    /// The step that the page is at.
+    pub(crate) fn here(&self) -> &Step {
+        &self.list[self.at]
+    }
+
+    /// A changed case. Letters typed into one field make one step.
+    pub(crate) fn change(&mut self, case: Case, typed: bool) {
+        let here = self.here();
+        let goes_on = typed && here.typed.is_some() && self.at + 1 == self.list.len() && self.at > 0;
+        if goes_on {
+            let before = &self.list[self.at - 1];
+            let changes = differences(&before.case, &case);
+            if changes.is_empty() {
+                self.list.pop();
+                self.at -= 1;
+                return;
+            }
+            if changes.first().map(|change| &change.path) == here.typed.as_ref() {
+                let words = words(&changes);
+                let here = &mut self.list[self.at];
+                (here.words, here.case) = (words, case);
+                return;
+            }
+        }
+        let changes = differences(&here.case, &case);
+        let field = changes.first().map(|change| change.path.clone());
+        let Some(field) = field else { return };
+        let step = Step { words: words(&changes), case, typed: typed.then_some(field), ..here.clone() };
+        self.push(step);
+    }
+
+    /// A step after the one that the page is at; what had been undone is gone.
+    pub(crate) fn push(&mut self, step: Step) {
+        self.list.truncate(self.at + 1);
+        self.list.push(step);
+        if self.list.len() > MOST {
+            self.list.remove(0);
+        }
+        self.at = self.list.len() - 1;
+    }
+
+    /// What the page shows of it.
+    pub(crate) fn trail(&self) -> Trail {
+        Trail { words: self.list.iter().map(|step| step.words.clone()).collect(), at: self.at }
+    }
+}
+
+/// Undo and redo by the keys that every editor has.
+pub(crate) fn listen(desk: Desk) {
+    let options = EventListenerOptions::enable_prevent_default();
+    EventListener::new_with_options(&document(), "keydown", options, move |event| {
+        let Some(key) = event.dyn_ref::<KeyboardEvent>() else { return };
+        if !(key.ctrl_key() || key.meta_key()) || key.alt_key() {
+            return;
+        }
+        let back = match (key.key().as_str(), key.shift_key()) {
+            ("z", false) => true,
+            ("z" | "Z", true) | ("y", false) => false,
+            _ => return,
+        };
+        // What does not read has not reached the case: there the browser takes letters back.
+        let target = event.target().and_then(|target| target.dyn_into::<Element>().ok());
+        if target.is_some_and(|target| target.get_attribute("aria-invalid").is_some()) {
+            return;
+        }
+        event.prevent_default();
+        if back { desk.undo() } else { desk.redo() }
+    })
+    .forget();
+}
+
+/// The leaves in which two cases differ, in the order of the fields.
+fn differences(old: &Case, new: &Case) -> Vec<Change> {
+    let mut changes = Vec::new();
+    let value = |case: &Case| case.serialize(&serde_wasm_bindgen::Serializer::json_compatible());
+    if let (Ok(old), Ok(new)) = (value(old), value(new)) {
+        compare(&old, &new, &mut Vec::new(), &mut changes);
+    }
+    changes
+}
+
+fn compare(old: &JsValue, new: &JsValue, path: &mut Vec<String>, changes: &mut Vec<Change>) {
+    if old.is_object() || new.is_object() {
+        let mut names = keys(old);
+        names.extend(keys(new).into_iter().filter(|name| !names.contains(name)).collect::<Vec<_>>());
+        for name in names {
+            let of =
+                |value: &JsValue| Reflect::get(value, &name.as_str().into()).unwrap_or(JsValue::UNDEFINED);
+            let (old, new) = (of(old), of(new));
+            path.push(name);
+            compare(&old, &new, path, changes);
+            path.pop();
+        }
+        return;
+    }
+    let (old, new) = (leaf(old), leaf(new));
+    if old != new {
+        changes.push(Change { path: path.clone(), old, new });
+    }
+}
+
+fn keys(value: &JsValue) -> Vec<String> {
+    let keys = value.dyn_ref::<Object>().map(Object::keys);
+    keys.map(|keys| keys.iter().filter_map(|key| key.as_string()).collect()).unwrap_or_default()
+}
+
+fn leaf(value: &JsValue) -> String {
+    if value.is_null() || value.is_undefined() {
+        return String::new();
+    }
+    value.as_string().or_else(|| JSON::stringify(value).ok()?.as_string()).unwrap_or_default()
+}
