@@ -115,7 +115,8 @@ pub(crate) struct Progress {
 /// An envelope around a message, in a compact form that both programs share (they are of one build); what travels beside it (files, series) is added by [`beside`].
 pub(crate) fn envelope<T: Serialize>(message: &T) -> Result<Object, JsValue> {
     let envelope = Object::new();
-    let bytes = postcard::to_allocvec(message).map_err(|_unwritten| JsValue::from("the message cannot be written"))?;
+    let bytes = postcard::to_allocvec(message)
+        .map_err(|_unwritten| JsValue::from("the message cannot be written"))?;
     Reflect::set(&envelope, &"message".into(), &Uint8Array::from(bytes.as_slice()))?;
     Ok(envelope)
 }
@@ -134,14 +135,6 @@ pub(crate) fn open<T: DeserializeOwned>(envelope: &JsValue) -> Result<T, JsValue
 /// A list that came with an envelope; empty if there was none.
 pub(crate) fn list(envelope: &JsValue, name: &str) -> Array {
     Reflect::get(envelope, &name.into()).ok().and_then(|list| list.dyn_into().ok()).unwrap_or_default()
-}
-
-/// A case as the text of its file, written by the browser's own JSON, so that the page carries no writer of its own.
-#[cfg(feature = "page")]
-pub(crate) fn case_text(case: &millpond::case::Case) -> Result<String, JsValue> {
-    let value = case.serialize(&serde_wasm_bindgen::Serializer::json_compatible())?;
-    let text = js_sys::JSON::stringify_with_replacer_and_space(&value, &JsValue::NULL, &JsValue::from(2))?;
-    Ok(text.into())
 }
 
 /// A value in the text of a JSON file; none if it does not read, which the engine can put in words.

@@ -173,7 +173,9 @@ impl Worker {
                 }
             }
             Err(fault) => {
-                let fault = Fault { place: fault.place.replacen("case file", name, 1), ..fault };
+                let place = &fault.place;
+                let within = place.strip_prefix("case file").or_else(|| place.strip_prefix("case"));
+                let fault = Fault { place: format!("{name}{}", within.unwrap_or_default()), ..fault };
                 self.answer(&Answer::Failed { errand, fault });
             }
         }

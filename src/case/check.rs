@@ -15,13 +15,51 @@ const MOST_ENTRIES: usize = 200;
 const LONGEST_NAME: usize = 300;
 const LONGEST_TEXT: usize = 20_000;
 
+/// Ranges of numbers at fixed paths: path, least, greatest, unit (none for shares).
+const RANGES: [(&str, f64, f64, &str); 19] = [
+    ("record.step_s", 1e-3, 31_536_000.0, "s"),
+    ("duty.import_limit_kw", 0.0, MOST, "kW"),
+    ("duty.export_limit_kw", 0.0, MOST, "kW"),
+    ("requirement.charge_efficiency", 1e-3, 1.0, ""),
+    ("requirement.discharge_efficiency", 1e-3, 1.0, ""),
+    ("requirement.self_discharge_per_h", 0.0, 1e3, "1/h"),
+    ("requirement.standing_kw", 0.0, MOST, "kW"),
+    ("requirement.served_share", 0.0, 1.0, ""),
+    ("requirement.served_power_kw", 0.0, MOST, "kW"),
+    ("requirement.depth", 1e-2, 1.0, ""),
+    ("requirement.end_of_life", 1e-2, 1.0, ""),
+    ("requirement.margin", 0.0, 10.0, ""),
+    ("site.mass_budget_kg", 1e-6, MOST, "kg"),
+    ("site.volume_budget_l", 1e-6, MOST, "l"),
+    ("site.service_life_years", 0.01, 1000.0, "years"),
+    ("site.response_s", 0.0, 1e9, "s"),
+    ("site.transfer_s", 0.0, 1e9, "s"),
+    ("site.ambient_least_c", -273.15, 200.0, "degrees Celsius"),
+    ("site.ambient_greatest_c", -273.15, 200.0, "degrees Celsius"),
+];
+
+/// Checks a number for the range of the field at a path.
+///
+/// # Errors
+/// If it is out of that range.
+pub fn number_at(path: &str, value: f64) -> Result<()> {
+    match RANGES.iter().find(|(known, ..)| *known == path) {
+        Some((_, least, greatest, unit)) => number(path, value, *least, *greatest, unit),
+        None => Ok(()),
+    }
+}
+
+fn optional_at(path: &str, value: Option<f64>) -> Result<()> {
+    value.map_or(Ok(()), |value| number_at(path, value))
+}
+
 pub(super) fn ranges(case: &Case) -> Result<()> {
     number("millpond_case", f64::from(case.millpond_case), f64::from(VERSION), f64::from(VERSION), "")?;
     word("name", &case.name)?;
     text("notes", &case.notes)?;
     text("site.notes", &case.site.notes)?;
     let record = &case.record;
-    optional("record.step_s", record.step_s, 1e-3, 31_536_000.0, "s")?;
+    optional_at("record.step_s", record.step_s)?;
     count("record.roles", record.roles.len())?;
     count("record.units", record.units.len())?;
     for (header, unit) in &record.units {
@@ -48,19 +86,19 @@ pub(super) fn ranges(case: &Case) -> Result<()> {
         }
     }
     if let DutyCase::Limits { import_limit_kw, export_limit_kw, .. } = &case.duty {
-        optional("duty.import_limit_kw", *import_limit_kw, 0.0, MOST, "kW")?;
-        optional("duty.export_limit_kw", *export_limit_kw, 0.0, MOST, "kW")?;
+        optional_at("duty.import_limit_kw", *import_limit_kw)?;
+        optional_at("duty.export_limit_kw", *export_limit_kw)?;
     }
     let requirement = &case.requirement;
-    number("requirement.charge_efficiency", requirement.charge_efficiency, 1e-3, 1.0, "")?;
-    number("requirement.discharge_efficiency", requirement.discharge_efficiency, 1e-3, 1.0, "")?;
-    number("requirement.self_discharge_per_h", requirement.self_discharge_per_h, 0.0, 1e3, "1/h")?;
-    number("requirement.standing_kw", requirement.standing_kw, 0.0, MOST, "kW")?;
-    optional("requirement.served_share", requirement.served_share, 0.0, 1.0, "")?;
-    optional("requirement.served_power_kw", requirement.served_power_kw, 0.0, MOST, "kW")?;
-    number("requirement.depth", requirement.depth, 1e-2, 1.0, "")?;
-    number("requirement.end_of_life", requirement.end_of_life, 1e-2, 1.0, "")?;
-    number("requirement.margin", requirement.margin, 0.0, 10.0, "")?;
+    number_at("requirement.charge_efficiency", requirement.charge_efficiency)?;
+    number_at("requirement.discharge_efficiency", requirement.discharge_efficiency)?;
+    number_at("requirement.self_discharge_per_h", requirement.self_discharge_per_h)?;
+    number_at("requirement.standing_kw", requirement.standing_kw)?;
+    optional_at("requirement.served_share", requirement.served_share)?;
+    optional_at("requirement.served_power_kw", requirement.served_power_kw)?;
+    number_at("requirement.depth", requirement.depth)?;
+    number_at("requirement.end_of_life", requirement.end_of_life)?;
+    number_at("requirement.margin", requirement.margin)?;
     list("requirement.unserved_shares", &requirement.unserved_shares, 0.0, 1.0, "")?;
     list("requirement.powers_kw", &requirement.powers_kw, 0.0, MOST, "kW")?;
     list("requirement.band_edges_s", &requirement.band_edges_s, 1e-3, 1e10, "s")?;
@@ -72,13 +110,13 @@ pub(super) fn ranges(case: &Case) -> Result<()> {
         ));
     }
     let site = &case.site;
-    optional("site.mass_budget_kg", site.mass_budget_kg, 1e-6, MOST, "kg")?;
-    optional("site.volume_budget_l", site.volume_budget_l, 1e-6, MOST, "l")?;
-    optional("site.service_life_years", site.service_life_years, 0.01, 1000.0, "years")?;
-    optional("site.response_s", site.response_s, 0.0, 1e9, "s")?;
-    optional("site.transfer_s", site.transfer_s, 0.0, 1e9, "s")?;
-    optional("site.ambient_least_c", site.ambient_least_c, -273.15, 200.0, "degrees Celsius")?;
-    optional("site.ambient_greatest_c", site.ambient_greatest_c, -273.15, 200.0, "degrees Celsius")?;
+    optional_at("site.mass_budget_kg", site.mass_budget_kg)?;
+    optional_at("site.volume_budget_l", site.volume_budget_l)?;
+    optional_at("site.service_life_years", site.service_life_years)?;
+    optional_at("site.response_s", site.response_s)?;
+    optional_at("site.transfer_s", site.transfer_s)?;
+    optional_at("site.ambient_least_c", site.ambient_least_c)?;
+    optional_at("site.ambient_greatest_c", site.ambient_greatest_c)?;
     if let (Some(least), Some(greatest)) = (site.ambient_least_c, site.ambient_greatest_c)
         && least > greatest
     {
@@ -192,7 +230,7 @@ fn number(field: &str, value: f64, least: f64, greatest: f64, unit: &str) -> Res
         format!(" {unit}")
     };
     Err(Fault::new(
-        format!("{field} is {value}"),
+        if value.abs() < 1e15 { format!("{field} is {value}") } else { format!("{field} is {value:e}") },
         format!("case, at {field}"),
         format!("Give a number from {least} to {greatest}{unit}."),
     ))

@@ -17,6 +17,7 @@ mod store;
 use serde::{Deserialize, Serialize};
 
 pub use carried::CarriedFile;
+pub use check::number_at;
 pub use duty::{DutyCase, Positive};
 pub use edits::{PriceCase, RangeEdit, StorePrice};
 pub use record::{DateOrder, GapRemedy, RecordCase, Remedies, RepeatRemedy, Stamp, Values};
@@ -28,6 +29,9 @@ use crate::fault::{Fault, Result};
 
 /// The version of the case format that this program writes.
 pub const VERSION: u32 = 1;
+
+/// The case of a person who has not chosen anything, as the text of its file: what the page begins with.
+pub const UNTOUCHED: &str = include_str!("untouched.json");
 
 /// Everything a person chose.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
@@ -129,5 +133,21 @@ impl Case {
     /// If one is out of range, named by its path.
     pub fn check(&self) -> Result<()> {
         check::ranges(self)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_untouched_case_is_the_default() {
+        assert_eq!(Case::from_json(UNTOUCHED).unwrap(), Case::default());
+        let written = Case::default().to_json().unwrap();
+        assert_eq!(
+            UNTOUCHED.trim_end(),
+            written,
+            "src/case/untouched.json is what `millpond --case-untouched` writes"
+        );
     }
 }

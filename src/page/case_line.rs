@@ -12,7 +12,7 @@ const LONGEST: u32 = 80;
 
 /// The line.
 pub(crate) fn line(desk: Desk) -> impl IntoView {
-    let name = Memo::new(move |_| desk.case.with(|case| case.name.clone()));
+    let name = Memo::new(move |_| desk.case.with(|case| case.word(&["name"]).to_owned()));
     let site = Memo::new(move |_| desk.of(|sheet| sheet.site.clone()));
     let back = Memo::new(move |_| desk.trail.with(|trail| trail.at > 0));
     let forth = Memo::new(move |_| desk.trail.with(|trail| trail.at + 1 < trail.words.len()));
@@ -20,9 +20,7 @@ pub(crate) fn line(desk: Desk) -> impl IntoView {
     let open = Memo::new(move |_| !desk.files.with(Vec::is_empty));
     let rename = move |event| {
         let name = event_target_value(&event);
-        if let Err(fault) = desk.type_words(|case| case.name = name) {
-            desk.fail(fault);
-        }
+        desk.type_words(|case| case.put(&["name"], name.as_str()));
     };
     view! {
         <section class="case" aria-label="Case">
@@ -75,17 +73,15 @@ fn steps(desk: Desk) -> impl IntoView {
 }
 
 fn notes(desk: Desk) -> impl IntoView {
-    let notes = Memo::new(move |_| desk.case.with(|case| case.notes.clone()));
+    let notes = Memo::new(move |_| desk.case.with(|case| case.word(&["notes"]).to_owned()));
     let write = move |event| {
         let notes = event_target_value(&event);
-        if let Err(fault) = desk.type_words(|case| case.notes = notes) {
-            desk.fail(fault);
-        }
+        desk.type_words(|case| case.put(&["notes"], notes.as_str()));
     };
     let count = move || if notes.with(String::is_empty) { "none" } else { "written" }.to_owned();
     fold("Notes", count, false, move || {
         view! {
-            <textarea aria-label="Notes on the case" rows="5" prop:value=move || notes.get() on:input=write></textarea>
+            <textarea aria-label="Notes on the case" rows="5" maxlength="20000" prop:value=move || notes.get() on:input=write></textarea>
             <p class="note">"They travel with the case."</p>
         }
     })

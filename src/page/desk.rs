@@ -8,18 +8,18 @@ use gloo::timers::callback::Timeout;
 use leptos::prelude::*;
 use web_sys::File;
 
-use millpond::case::Case;
 use millpond::chart::Scheme;
-use millpond::fault::{Fault, Result};
+use millpond::fault::Fault;
 use millpond::record::site_of;
 use millpond::sheet::{Sheet, View};
 
 use crate::bridge::Progress;
 use crate::bridge::client::{Bridge, Event};
-use crate::bridge::{case_text, host, of_json, words};
+use crate::bridge::host;
 
 use super::keep::{self, Keeping, Kept};
 use super::steps::{Step, Steps, Trail};
+use super::tree::Tree;
 
 /// A person who types is left to finish, ms.
 const TYPING_MS: u32 = 150;
@@ -30,7 +30,7 @@ pub(crate) struct Desk {
     /// Names of the open files.
     pub(crate) files: RwSignal<Vec<String>>,
     /// Everything that the person chose.
-    pub(crate) case: RwSignal<Case>,
+    pub(crate) case: RwSignal<Tree>,
     /// What the person looks at.
     pub(crate) view: RwSignal<View>,
     /// What the engine made of it last.
@@ -129,12 +129,12 @@ impl Desk {
     }
 
     /// Opens files with a case of their own.
-    pub(crate) fn open_with(self, files: Vec<File>, case: Case) {
+    pub(crate) fn open_with(self, files: Vec<File>, case: Tree) {
         self.open_as(files, case, true);
     }
 
     /// Opens files as a step; another site is kept as a case of its own.
-    fn open_as(self, files: Vec<File>, case: Case, another: bool) {
+    fn open_as(self, files: Vec<File>, case: Tree, another: bool) {
         if files.is_empty() {
             return;
         }
@@ -207,10 +207,8 @@ impl Desk {
             self.files.set(names);
             self.view.update(|view| view.window_us = None);
             self.begin();
-            if let Some(case) = self.case_text() {
-                let files = files.as_slice().to_vec();
-                self.bridge.with_value(|bridge| bridge.open(files, site, case, self.view.get_untracked()));
-            }
+            let (files, case) = (files.as_slice().to_vec(), self.case_text());
+            self.bridge.with_value(|bridge| bridge.open(files, site, case, self.view.get_untracked()));
         } else {
             self.post_case();
         }
@@ -236,22 +234,15 @@ impl Desk {
     }
 
     /// Changes the case at once.
-    ///
-    /// # Errors
-    /// If a number is out of its range; the case is then as it was.
-    pub(crate) fn edit(self, change: impl FnOnce(&mut Case)) -> Result<()> {
-        self.take(change, false)?;
+    pub(crate) fn edit(self, change: impl FnOnce(&mut Tree)) {
+        self.take(change, false);
         self.waits.typing.set_value(None);
         self.post_case();
-        Ok(())
     }
 
     /// Changes the case as a person types: computed after a pause.
-    ///
-    /// # Errors
-    /// As [`Self::edit`].
-    pub(crate) fn type_in(self, change: impl FnOnce(&mut Case)) -> Result<()> {
-        self.take(change, true)?;
+    pub(crate) fn type_in(self, change: impl FnOnce(&mut Tree)) {
+        self.take(change, true);
         if self.bridge.with_value(Bridge::has_files) {
             self.begin();
             self.waits.typing.set_value(Some(Timeout::new(TYPING_MS, move || {
@@ -259,20 +250,16 @@ impl Desk {
                 self.post_case();
             })));
         }
-        Ok(())
     }
 
     /// Changes words of the case as a person types them; no figure depends on them, so nothing is computed.
-    ///
-    /// # Errors
-    /// As [`Self::edit`].
-    pub(crate) fn type_words(self, change: impl FnOnce(&mut Case)) -> Result<()> {
-        self.take(change, true)
+    pub(crate) fn type_words(self, change: impl FnOnce(&mut Tree)) {
+        self.take(change, true);
     }
 
     /// Name of the case for people: its own, or that of the site.
     pub(crate) fn name(self) -> String {
-        let own = self.case.with_untracked(|case| case.name.clone());
+        let own = self.case.with_untracked(|case| case.word(&["name"]).to_owned());
         if !own.is_empty() {
             return own;
         }
@@ -326,41 +313,27 @@ impl Desk {
         self.sheet.with(|sheet| sheet.as_deref().map(pick).unwrap_or_default())
     }
 
-    fn take(self, change: impl FnOnce(&mut Case), typed: bool) -> Result<()> {
+    fn take(self, change: impl FnOnce(&mut Tree), typed: bool) {
         let mut case = self.case.get_untracked();
         change(&mut case);
-        case.check()?;
         self.steps.update_value(|steps| steps.change(case.clone(), typed));
         self.case.set(case);
         self.told();
-        Ok(())
     }
 
     fn post_case(self) {
         if self.bridge.with_value(Bridge::has_files) {
             self.begin();
-            if let Some(case) = self.case_text() {
-                self.bridge.with_value(|bridge| bridge.change(case, self.view.get_untracked()));
-            }
+            let case = self.case_text();
+            self.bridge.with_value(|bridge| bridge.change(case, self.view.get_untracked()));
         }
     }
 
     /// The case as the text of its file, also kept for the page that follows one that broke.
-    pub(crate) fn case_text(self) -> Option<String> {
-        match self.case.with_untracked(case_text) {
-            Ok(text) => {
-                host::keep(&text);
-                Some(text)
-            }
-            Err(error) => {
-                self.fail(Fault::new(
-                    format!("the case cannot be written: {}", words(&error)),
-                    "case",
-                    "Report this as a defect.",
-                ));
-                None
-            }
-        }
+    pub(crate) fn case_text(self) -> String {
+        let text = self.case.with_untracked(Tree::text);
+        host::keep(&text);
+        text
     }
 
     /// Has the engine read the text of a case file; it becomes the case if all of it reads.
@@ -373,20 +346,13 @@ impl Desk {
     /// Has the engine pack the open files into the case, to be saved.
     pub(crate) fn pack(self) {
         super::screen::settled(false);
-        if let Some(case) = self.case_text() {
-            self.bridge.with_value(|bridge| bridge.pack(case));
-        }
+        let case = self.case_text();
+        self.bridge.with_value(|bridge| bridge.pack(case));
     }
 
     /// Takes over a case that was read, with the files of its record if it carries them.
     fn take_over(self, text: &str, files: Vec<File>) {
-        let Some(case) = of_json::<Case>(text) else {
-            return self.fail(Fault::new(
-                "the page cannot take this case over, though it reads",
-                "case file",
-                "Report this as a defect.",
-            ));
-        };
+        let Some(case) = Tree::of_case(text) else { return };
         let files = match self.meters.try_update_value(std::mem::take) {
             Some(chosen) if !chosen.is_empty() => chosen,
             _ => files,
@@ -394,9 +360,7 @@ impl Desk {
         if !files.is_empty() {
             return self.open_with(files, case);
         }
-        if let Err(fault) = self.edit(move |held| *held = case) {
-            self.fail(fault);
-        }
+        self.edit(move |held| *held = case);
     }
 
     fn begin(self) {
@@ -455,18 +419,22 @@ fn settle(bridge: &Bridge, waits: Waits) {
 }
 
 /// The case of a page in this window that broke; otherwise the default.
-fn first_case() -> Case {
+fn first_case() -> Tree {
     // A text that does not read is no case; the page that broke may have been of another version.
-    host::kept()
-        .and_then(|text| of_json(&text))
-        .filter(|case: &Case| case.check().is_ok())
-        .unwrap_or_default()
+    host::kept().and_then(|text| Tree::of_case(&text)).unwrap_or_else(Tree::untouched)
 }
 
 /// The case without what belongs to one file's columns.
-fn afresh(case: &Case) -> Case {
+fn afresh(case: &Tree) -> Tree {
     let mut case = case.clone();
-    let remedies = case.record.remedies;
-    case.record = millpond::case::RecordCase { remedies, ..Default::default() };
+    read_afresh(&mut case);
     case
+}
+
+/// Forgets what was corrected of the reading, but for the remedies.
+pub(crate) fn read_afresh(case: &mut Tree) {
+    let remedies = case.get(&["record", "remedies"]).clone();
+    let record = Tree::untouched().get(&["record"]).clone();
+    case.put(&["record"], record);
+    case.put(&["record", "remedies"], remedies);
 }

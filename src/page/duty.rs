@@ -2,18 +2,19 @@
 
 use leptos::prelude::*;
 
-use millpond::case::{Connection, DutyCase, Positive};
+use millpond::case::Connection;
 use millpond::sheet::EpisodeRow;
 use millpond::units::asked::Asked;
 use millpond::units::people;
 
 use super::desk::Desk;
 use super::drawing::Which;
-use super::field::{Field, answer, choice, input, set, tick};
+use super::field::{Empty, Field, answer, choice, input_with, named, tick};
 use super::figures::{all_figures, figures};
 use super::fold::{fold, method, methods_from};
 use super::picture::{picture, show_window};
 use super::station::{self, PLACES};
+use super::tree::Tree;
 
 /// Episodes that stand open.
 const FIRST: usize = 5;
@@ -30,43 +31,26 @@ const IMPORT: Field = Field {
     asked: Asked::Power,
     name: "Import limit",
     size: 9,
-    get: |case| match &case.duty {
-        DutyCase::Limits { import_limit_kw, .. } => *import_limit_kw,
-        _ => None,
-    },
-    set: |case, value| {
-        if let DutyCase::Limits { import_limit_kw, .. } = limits(&mut case.duty) {
-            *import_limit_kw = value;
-        }
-    },
+    path: &["duty", "import_limit_kw"],
+    empty: Empty::Nothing,
 };
 
 const EXPORT: Field = Field {
     asked: Asked::Power,
     name: "Export limit",
     size: 9,
-    get: |case| match &case.duty {
-        DutyCase::Limits { export_limit_kw, .. } => *export_limit_kw,
-        _ => None,
-    },
-    set: |case, value| {
-        if let DutyCase::Limits { export_limit_kw, .. } = limits(&mut case.duty) {
-            *export_limit_kw = value;
-        }
-    },
+    path: &["duty", "export_limit_kw"],
+    empty: Empty::Nothing,
 };
 
-/// The duty as one that holds limits, made one if it was another.
-pub(crate) fn limits(duty: &mut DutyCase) -> &mut DutyCase {
-    if !matches!(duty, DutyCase::Limits { .. }) {
-        *duty = DutyCase::Limits {
-            import_limit_kw: None,
-            export_limit_kw: None,
-            recharge_from_grid: true,
-            discharge_to_grid: false,
-        };
+const SIGNS: [(&str, &str); 2] = [("charge", "charges"), ("discharge", "discharges")];
+
+/// Makes the duty one that holds limits, if it was another.
+pub(crate) fn hold_limits(case: &mut Tree) {
+    if case.word(&["duty", "kind"]) != "limits" {
+        case.put(&["duty"], Tree::None);
+        case.put(&["duty", "kind"], "limits");
     }
-    duty
 }
 
 /// The station.
@@ -95,16 +79,16 @@ pub(crate) fn station(desk: Desk) -> impl IntoView {
 
 fn question(desk: Desk) -> impl IntoView {
     let connection = move || desk.of(|sheet| sheet.connection);
-    let put = move |connection| set(desk, |case| case.site.connection = Some(connection));
-    let guessed = Memo::new(move |_| desk.case.with(|case| case.site.connection.is_none()));
+    let put = move |connection: &'static str| desk.edit(|case| case.put(&["site", "connection"], connection));
+    let guessed = Memo::new(move |_| desk.case.with(|case| case.word(&["site", "connection"]).is_empty()));
     let note = move || desk.of(|sheet| sheet.duty.notes.join(" "));
     view! {
         <fieldset class="ask">
             <legend>"Is the site islanded or connected to a grid?"</legend>
-            {answer("connection", "islanded", move || connection() == Some(Connection::Islanded), move || put(Connection::Islanded))}
-            {answer("connection", "connected", move || connection() == Some(Connection::Connected), move || put(Connection::Connected))}
+            {answer("connection", "islanded", move || connection() == Some(Connection::Islanded), move || put("islanded"))}
+            {answer("connection", "connected", move || connection() == Some(Connection::Connected), move || put("connected"))}
             {move || (!guessed.get()).then(|| view! {
-                <button class="quiet" on:click=move |_| set(desk, |case| case.site.connection = None)>"Guess again"</button>
+                <button class="quiet" on:click=move |_| put("")>"Guess again"</button>
             })}
             <span class="note">{note}</span>
         </fieldset>
@@ -114,10 +98,10 @@ fn question(desk: Desk) -> impl IntoView {
 fn terms(desk: Desk) -> impl IntoView {
     let kind = Memo::new(move |_| {
         let in_force = desk.of(|sheet| sheet.terms.kind.clone());
-        desk.case.with(|case| match &case.duty {
-            DutyCase::Limits { .. } => Kind::Limits,
-            DutyCase::Given { .. } => Kind::Given,
-            DutyCase::Guess {} if in_force == "limits" => Kind::Limits,
+        desk.case.with(|case| match case.word(&["duty", "kind"]) {
+            "limits" => Kind::Limits,
+            "given" => Kind::Given,
+            "guess" | "" if in_force == "limits" => Kind::Limits,
             _ => Kind::Balance,
         })
     });
@@ -132,11 +116,15 @@ fn terms(desk: Desk) -> impl IntoView {
     });
     let put = move |kind: Kind| {
         let column = columns.with_untracked(|columns| columns.first().cloned());
-        set(desk, |case| {
-            case.duty = match (kind, column) {
-                (Kind::Given, Some(column)) => DutyCase::Given { column, positive: Positive::Charge },
-                (Kind::Limits, _) => limits(&mut DutyCase::Guess {}).clone(),
-                _ => DutyCase::Balance {},
+        desk.edit(|case| {
+            case.put(&["duty"], Tree::None);
+            match (kind, column) {
+                (Kind::Given, Some(column)) => {
+                    case.put(&["duty", "kind"], "given");
+                    case.put(&["duty", "column"], column.as_str());
+                }
+                (Kind::Limits, _) => hold_limits(case),
+                _ => case.put(&["duty", "kind"], "balance"),
             }
         });
     };
@@ -169,66 +157,42 @@ fn limit_terms(desk: Desk) -> impl IntoView {
             None => "no limit".to_owned(),
         }
     };
-    let flag = move |pick: fn(&DutyCase) -> Option<bool>, other: bool| {
-        move || desk.case.with(|case| pick(&case.duty).unwrap_or(other))
+    // A duty that was guessed becomes one that was chosen as soon as one of its terms is.
+    let allowed = move |words, name: &'static str, usual: bool| {
+        tick(
+            words,
+            move || desk.case.with(|case| case.flag(&["duty", name]).unwrap_or(usual)),
+            move |yes| {
+                desk.edit(|case| {
+                    hold_limits(case);
+                    case.put(&["duty", name], yes);
+                });
+            },
+        )
     };
     view! {
-        <li>"Keep import at or below "{input(desk, IMPORT, in_force(|terms| terms.import_limit_kw))}"."</li>
-        <li>"Keep export at or below "{input(desk, EXPORT, in_force(|terms| terms.export_limit_kw))}"."</li>
-        <li>
-            {tick("recharge from the grid, below the import limit", flag(|duty| match duty {
-                DutyCase::Limits { recharge_from_grid, .. } => Some(*recharge_from_grid),
-                _ => None,
-            }, true), move |yes| set(desk, |case| {
-                if let DutyCase::Limits { recharge_from_grid, .. } = limits(&mut case.duty) {
-                    *recharge_from_grid = yes;
-                }
-            }))}
-        </li>
-        <li>
-            {tick("discharge to the grid, below the export limit", flag(|duty| match duty {
-                DutyCase::Limits { discharge_to_grid, .. } => Some(*discharge_to_grid),
-                _ => None,
-            }, false), move |yes| set(desk, |case| {
-                if let DutyCase::Limits { discharge_to_grid, .. } = limits(&mut case.duty) {
-                    *discharge_to_grid = yes;
-                }
-            }))}
-        </li>
+        <li>"Keep import at or below "{input_with(desk, IMPORT, in_force(|terms| terms.import_limit_kw), hold_limits)}"."</li>
+        <li>"Keep export at or below "{input_with(desk, EXPORT, in_force(|terms| terms.export_limit_kw), hold_limits)}"."</li>
+        <li>{allowed("recharge from the grid, below the import limit", "recharge_from_grid", true)}</li>
+        <li>{allowed("discharge to the grid, below the export limit", "discharge_to_grid", false)}</li>
     }
 }
 
 fn given_terms(desk: Desk, columns: Memo<Vec<String>>) -> impl IntoView {
     let at = move || {
-        let named = desk.case.with(|case| match &case.duty {
-            DutyCase::Given { column, .. } => column.clone(),
-            _ => String::new(),
-        });
+        let named = desk.case.with(|case| case.word(&["duty", "column"]).to_owned());
         columns.with(|columns| columns.iter().position(|column| *column == named).unwrap_or(0))
     };
     let names = move || columns.get().into_iter().enumerate().collect::<Vec<_>>();
-    let sign = move || {
-        desk.case.with(|case| match &case.duty {
-            DutyCase::Given { positive, .. } => *positive,
-            _ => Positive::Charge,
-        })
-    };
     view! {
         <li>
             "Carry "
-            {move || choice("Column to carry", names(), at, move |at| set(desk, |case| {
+            {move || choice("Column to carry", names(), at, move |at| {
                 let name = columns.with_untracked(|columns| columns.get(at).cloned());
-                if let (DutyCase::Given { column, .. }, Some(name)) = (&mut case.duty, name) {
-                    *column = name;
-                }
-            }))}
+                desk.edit(|case| case.put(&["duty", "column"], name.as_deref()));
+            })}
             ", where a positive value "
-            {choice("A positive value", vec![(Positive::Charge, "charges".to_owned()), (Positive::Discharge, "discharges".to_owned())],
-                sign, move |sign| set(desk, |case| {
-                    if let DutyCase::Given { positive, .. } = &mut case.duty {
-                        *positive = sign;
-                    }
-                }))}
+            {named(desk, "A positive value", &["duty", "positive"], &SIGNS)}
             " the store."
         </li>
     }

@@ -3,11 +3,12 @@
 
 use leptos::prelude::*;
 
-use millpond::case::Case;
+use millpond::case;
 use millpond::fault::Fault;
 use millpond::units::asked::Asked;
 
 use super::desk::Desk;
+use super::tree::Tree;
 
 /// A field of the case.
 #[derive(Clone, Copy)]
@@ -18,10 +19,21 @@ pub(crate) struct Field {
     pub(crate) name: &'static str,
     /// Width in letters.
     pub(crate) size: u8,
-    /// Its value in the case.
-    pub(crate) get: fn(&Case) -> Option<f64>,
-    /// Puts a value in; none is what an empty field means.
-    pub(crate) set: fn(&mut Case, Option<f64>),
+    /// Its path in the case.
+    pub(crate) path: &'static [&'static str],
+    /// What it means when it is empty.
+    pub(crate) empty: Empty,
+}
+
+/// What an empty field means.
+#[derive(Clone, Copy)]
+pub(crate) enum Empty {
+    /// That nothing is asked, or that the engine chooses.
+    Nothing,
+    /// This value, which is shown as an empty field too.
+    As(f64),
+    /// This value, which the field then shows.
+    Shown(f64),
 }
 
 /// The field as an input, with the remedy under it when what is typed does not read. `empty` is shown in muted ink while it
@@ -31,11 +43,24 @@ pub(crate) fn input(
     field: Field,
     empty: impl Fn() -> String + Send + Sync + 'static,
 ) -> impl IntoView {
-    let Field { asked, name, size, get, set } = field;
+    input_with(desk, field, empty, |_| {})
+}
+
+/// The same, where the case has to be prepared for the value to have its place.
+pub(crate) fn input_with(
+    desk: Desk,
+    field: Field,
+    empty: impl Fn() -> String + Send + Sync + 'static,
+    prepare: fn(&mut Tree),
+) -> impl IntoView {
+    let Field { asked, name, size, path, empty: means } = field;
     // What the person typed stands as typed, as long as it means what the case holds.
     let typed = RwSignal::new(String::new());
     let remedy = RwSignal::new(None::<String>);
-    let value = Memo::new(move |_| desk.case.with(get));
+    let value = Memo::new(move |_| {
+        let held = desk.case.with(|case| case.number(path));
+        if let Empty::As(value) = means { held.filter(|held| *held != value) } else { held }
+    });
     let text = move || {
         let held = value.get();
         let typed = typed.get();
@@ -46,8 +71,19 @@ pub(crate) fn input(
         let entered = event_target_value(&event);
         let read = asked.read(&entered);
         typed.set(entered);
-        let taken = read
-            .and_then(|value| desk.type_in(|case| set(case, value)).map_err(|Fault { remedy, .. }| remedy));
+        let taken = read.and_then(|value| {
+            let value = match means {
+                Empty::Nothing => value,
+                Empty::As(usual) | Empty::Shown(usual) => Some(value.unwrap_or(usual)),
+            };
+            let checked = value.map_or(Ok(()), |value| case::number_at(&path.join("."), value));
+            checked.map_err(|Fault { remedy, .. }| remedy)?;
+            desk.type_in(|case| {
+                prepare(case);
+                case.put(path, value);
+            });
+            Ok(())
+        });
         remedy.set(taken.err());
     };
     let id = format!("f-{}", name.replace(' ', "-"));
@@ -99,6 +135,24 @@ pub(crate) fn choice<T: Copy + PartialEq + Send + Sync + 'static>(
     view! { <select aria-label=name.into() on:change=chosen>{options.collect_view()}</select> }
 }
 
+/// A choice among the words that a field of the case knows, each with its words for people. The first stands for a field that is
+/// not there.
+pub(crate) fn named(
+    desk: Desk,
+    name: &'static str,
+    path: &'static [&'static str],
+    words: &'static [(&'static str, &'static str)],
+) -> impl IntoView {
+    let options = words.iter().map(|(word, shown)| (*word, (*shown).to_owned())).collect();
+    let held = move || {
+        desk.case.with(|case| {
+            let held = case.word(path);
+            words.iter().map(|(word, _)| *word).find(|word| *word == held).unwrap_or(words[0].0)
+        })
+    };
+    choice(name, options, held, move |word| desk.edit(|case| case.put(path, word)))
+}
+
 /// A yes or no with its words.
 pub(crate) fn tick(
     words: &'static str,
@@ -125,12 +179,5 @@ pub(crate) fn answer(
             <input type="radio" name=group prop:checked=held on:change=move |_| take() />
             <span>{words}</span>
         </label>
-    }
-}
-
-/// Takes an edit whose values come from a list, so that none can be out of range.
-pub(crate) fn set(desk: Desk, change: impl FnOnce(&mut Case)) {
-    if let Err(fault) = desk.edit(change) {
-        desk.fail(fault);
     }
 }

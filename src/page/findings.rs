@@ -2,26 +2,21 @@
 
 use leptos::prelude::*;
 
-use millpond::case::{GapRemedy, RepeatRemedy};
 use millpond::record::{Finding, FindingKind};
 use millpond::units::people;
 
 use super::desk::Desk;
-use super::field::{choice, set};
+use super::field::named;
 
-const GAPS: [(GapRemedy, &str); 5] = [
-    (GapRemedy::LeaveOut, "left out"),
-    (GapRemedy::Hold, "last value held"),
-    (GapRemedy::Line, "joined by a line"),
-    (GapRemedy::Zero, "taken as zero"),
-    (GapRemedy::NeighbourDays, "as on neighbouring days"),
+const GAPS: [(&str, &str); 5] = [
+    ("leave_out", "left out"),
+    ("hold", "last value held"),
+    ("line", "joined by a line"),
+    ("zero", "taken as zero"),
+    ("neighbour_days", "as on neighbouring days"),
 ];
 
-const REPEATS: [(RepeatRemedy, &str); 3] = [
-    (RepeatRemedy::First, "first kept"),
-    (RepeatRemedy::Last, "last kept"),
-    (RepeatRemedy::Mean, "mean taken"),
-];
+const REPEATS: [(&str, &str); 3] = [("first", "first kept"), ("last", "last kept"), ("mean", "mean taken")];
 
 /// The list of findings.
 pub(crate) fn list(desk: Desk) -> impl IntoView {
@@ -61,20 +56,10 @@ fn row(desk: Desk, kind: FindingKind, nth: usize, changes: bool) -> impl IntoVie
     let text = move || finding.with(|finding| finding.as_ref().map(|finding| finding.text.clone()));
     let rows = move || finding.with(|finding| finding.as_ref().map(first_row).unwrap_or_default());
     let remedy = match kind {
-        FindingKind::Gap => choice(
-            "Remedy for gaps",
-            GAPS.map(|(remedy, words)| (remedy, words.to_owned())).to_vec(),
-            move || desk.case.with(|case| case.record.remedies.gap),
-            move |remedy| set(desk, |case| case.record.remedies.gap = remedy),
-        )
-        .into_any(),
-        FindingKind::Repeat | FindingKind::Conflict => choice(
-            "Remedy for repeats",
-            REPEATS.map(|(remedy, words)| (remedy, words.to_owned())).to_vec(),
-            move || desk.case.with(|case| case.record.remedies.repeat),
-            move |remedy| set(desk, |case| case.record.remedies.repeat = remedy),
-        )
-        .into_any(),
+        FindingKind::Gap => named(desk, "Remedy for gaps", &["record", "remedies", "gap"], &GAPS).into_any(),
+        FindingKind::Repeat | FindingKind::Conflict => {
+            named(desk, "Remedy for repeats", &["record", "remedies", "repeat"], &REPEATS).into_any()
+        }
         _ => {
             view! { {move || finding.with(|finding| finding.as_ref().map(|finding| finding.remedy.clone()))} }
                 .into_any()

@@ -8,6 +8,7 @@ use millpond::sheet::Sheet;
 use super::desk::Desk;
 use super::screen;
 use super::station::{LATER, PLACES, Place};
+use super::tree::Tree;
 
 /// The title block across the top.
 pub(crate) fn title_block(desk: Desk) -> impl IntoView {
@@ -18,7 +19,7 @@ pub(crate) fn title_block(desk: Desk) -> impl IntoView {
         });
         view! { <div><dt>{name}</dt><dd>{move || words.get()}</dd></div> }
     };
-    let changed = Memo::new(move |_| desk.case.with(|case| *case != millpond::case::Case::default()));
+    let changed = Memo::new(move |_| desk.case.with(|case| *case != Tree::untouched()));
     Effect::new(move || {
         let site = desk.of(|sheet| sheet.site.clone());
         document().set_title(&if site.is_empty() {

@@ -8,13 +8,13 @@ use wasm_bindgen::{JsCast, JsValue};
 use wasm_bindgen_futures::JsFuture;
 use web_sys::{DragEvent, File, FileList, HtmlInputElement, Response};
 
-use millpond::case::Case;
 use millpond::fault::Fault;
 
 use crate::bridge::{of_json, words};
 
 use super::desk::Desk;
 use super::screen;
+use super::tree::Tree;
 
 /// The demo sites that come with the page.
 const SITES: &str = include_str!("../../demo-profiles/sites.json");
@@ -140,7 +140,7 @@ fn open_demo(desk: Desk, name: String) {
         match fetch(&name).await {
             Ok(file) => {
                 // A demo site is a fresh start: no case of another site is carried over to it.
-                desk.open_with(vec![file], Case::default());
+                desk.open_with(vec![file], Tree::untouched());
             }
             Err(error) => desk.fail(Fault::new(
                 "the demo site could not be fetched",

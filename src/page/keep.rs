@@ -16,16 +16,16 @@ use wasm_bindgen::{JsCast, JsValue};
 use wasm_bindgen_futures::JsFuture;
 use web_sys::File;
 
-use millpond::case::Case;
 use millpond::fault::Fault;
 
 use crate::bridge::host::{Memory, remember, remembered};
 use crate::bridge::keeping::keep;
-use crate::bridge::{Act, Trouble, case_text, of_json};
+use crate::bridge::{Act, Trouble};
 
 use super::desk::Desk;
 use super::save;
 use super::steps::{Step, Steps};
+use super::tree::Tree;
 
 /// The word that a person left: `nothing` = keep nothing on this computer; `bare` = without the record.
 const WISH: &str = "millpond-keep";
@@ -207,16 +207,13 @@ fn entry(value: JsValue) -> Kept {
     let kept: Option<Kept> = serde_wasm_bindgen::from_value(value).ok();
     match kept {
         Some(kept)
-            if kept.at < kept.steps.len() && kept.steps.iter().all(|(_, case)| case_of(case).is_some()) =>
+            if kept.at < kept.steps.len()
+                && kept.steps.iter().all(|(_, case)| Tree::of_case(case).is_some()) =>
         {
             kept
         }
         _ => Kept { name: "damaged".to_owned(), id, damaged: Some(text), ..Kept::default() },
     }
-}
-
-fn case_of(text: &str) -> Option<Case> {
-    of_json(text).filter(|case: &Case| case.check().is_ok())
 }
 
 /// Opens a kept case in place of what is on the desk; one that another tab holds as a copy.
@@ -243,7 +240,7 @@ async fn take_up(desk: Desk, kept: &Kept, id: Rc<str>) {
         .steps
         .iter()
         .filter_map(|(words, case)| {
-            Some(Step::first(words.clone(), case_of(case)?, Rc::clone(&files), Rc::clone(&id)))
+            Some(Step::first(words.clone(), Tree::of_case(case)?, Rc::clone(&files), Rc::clone(&id)))
         })
         .collect();
     if *id == *kept.id {
@@ -292,10 +289,7 @@ async fn write(desk: Desk) {
             files: here.files.iter().map(File::name).collect(),
             record: false,
             at,
-            steps: same
-                .into_iter()
-                .filter_map(|step| Some((step.words.clone(), case_text(&step.case).ok()?)))
-                .collect(),
+            steps: same.into_iter().map(|step| (step.words.clone(), step.case.text())).collect(),
             damaged: None,
         };
         (Rc::clone(&here.id), Rc::clone(&here.files), kept)

@@ -23,6 +23,7 @@ mod screen;
 mod station;
 mod steps;
 mod tables;
+mod tree;
 mod verdicts;
 
 use leptos::prelude::*;

@@ -10,14 +10,12 @@ use wasm_bindgen::JsCast;
 use wasm_bindgen::closure::Closure;
 use web_sys::{HtmlCanvasElement, KeyboardEvent, PointerEvent, ResizeObserver};
 
-use millpond::case::DutyCase;
 use millpond::chart::{Basis, Hits, Measure, nearest};
 use millpond::sheet::Sheet;
 use millpond::units::people;
 
 use super::desk::Desk;
 use super::drawing::{self, Which};
-use super::field::set;
 use super::fold::fold;
 use super::readout::{self, Readout};
 use super::{save, screen, tables};
@@ -352,12 +350,11 @@ fn ask(desk: Desk, energy_kwh: f64) {
     });
     match point {
         Some((Measure::ServedShare, share)) => {
-            set(desk, |case| case.requirement.served_share = Some((share * 1e4).round() / 1e4));
+            desk.edit(|case| case.put(&["requirement", "served_share"], (share * 1e4).round() / 1e4));
         }
-        Some((Measure::HeldImportKw, kw)) => set(desk, |case| {
-            if let DutyCase::Limits { import_limit_kw, .. } = super::duty::limits(&mut case.duty) {
-                *import_limit_kw = Some((kw * 100.0).round() / 100.0);
-            }
+        Some((Measure::HeldImportKw, kw)) => desk.edit(|case| {
+            super::duty::hold_limits(case);
+            case.put(&["duty", "import_limit_kw"], (kw * 100.0).round() / 100.0);
         }),
         _ => {}
     }

@@ -6,7 +6,7 @@ use millpond::units::asked::Asked;
 
 use super::desk::Desk;
 use super::drawing::Which;
-use super::field::{Field, answer, choice, input, set, tick};
+use super::field::{Empty, Field, answer, choice, input, tick};
 use super::figures::{all_figures, figures};
 use super::fold::{method, methods_from};
 use super::picture::{BASES, picture};
@@ -17,56 +17,56 @@ const MASS: Field = Field {
     asked: Asked::Mass,
     name: "Mass budget",
     size: 8,
-    get: |case| case.site.mass_budget_kg,
-    set: |case, value| case.site.mass_budget_kg = value,
+    path: &["site", "mass_budget_kg"],
+    empty: Empty::Nothing,
 };
 
 const VOLUME: Field = Field {
     asked: Asked::Volume,
     name: "Volume budget",
     size: 8,
-    get: |case| case.site.volume_budget_l,
-    set: |case, value| case.site.volume_budget_l = value,
+    path: &["site", "volume_budget_l"],
+    empty: Empty::Nothing,
 };
 
 const RESPONSE: Field = Field {
     asked: Asked::Seconds,
     name: "Time to full power",
     size: 7,
-    get: |case| case.site.response_s,
-    set: |case, value| case.site.response_s = value,
+    path: &["site", "response_s"],
+    empty: Empty::Nothing,
 };
 
 const TRANSFER: Field = Field {
     asked: Asked::Seconds,
     name: "Break at take-over",
     size: 7,
-    get: |case| case.site.transfer_s,
-    set: |case, value| case.site.transfer_s = value,
+    path: &["site", "transfer_s"],
+    empty: Empty::Nothing,
 };
 
 const LIFE: Field = Field {
     asked: Asked::Years,
     name: "Service life",
     size: 8,
-    get: |case| case.site.service_life_years,
-    set: |case, value| case.site.service_life_years = value,
+    path: &["site", "service_life_years"],
+    empty: Empty::Nothing,
 };
 
 const COLDEST: Field = Field {
     asked: Asked::Temperature,
     name: "Lowest air temperature",
     size: 7,
-    get: |case| case.site.ambient_least_c,
-    set: |case, value| case.site.ambient_least_c = value,
+    path: &["site", "ambient_least_c"],
+    empty: Empty::Nothing,
 };
 
 const WARMEST: Field = Field {
     asked: Asked::Temperature,
     name: "Highest air temperature",
     size: 7,
-    get: |case| case.site.ambient_greatest_c,
-    set: |case, value| case.site.ambient_greatest_c = value,
+    path: &["site", "ambient_greatest_c"],
+    empty: Empty::Nothing,
 };
 
 /// The station.
@@ -138,8 +138,8 @@ fn terms(desk: Desk) -> impl IntoView {
             </li>
             <li>
                 "It serves "{input(desk, LIFE, any)}", in air from "{input(desk, COLDEST, any)}" to "{input(desk, WARMEST, any)}", "
-                {choice("Where it stands", places, move || desk.case.with(|case| case.site.indoors),
-                    move |indoors| set(desk, |case| case.site.indoors = indoors))}
+                {choice("Where it stands", places, move || desk.case.with(|case| case.flag(&["site", "indoors"])),
+                    move |indoors| desk.edit(|case| case.put(&["site", "indoors"], indoors)))}
                 "."
             </li>
         </ol>

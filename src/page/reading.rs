@@ -2,39 +2,38 @@
 
 use leptos::prelude::*;
 
-use millpond::case::{DateOrder, RecordCase, Stamp, Values};
 use millpond::record::{ColumnReading, FileReading, Role};
 use millpond::units::asked::Asked;
 
-use super::desk::Desk;
-use super::field::{Field, choice, input, set};
+use super::desk::{Desk, read_afresh};
+use super::field::{Empty, Field, choice, input, named};
 use super::fold::fold;
 
 /// Rows shown of each file.
 const ROWS: usize = 3;
 
-/// Roles as a person names them, in the order of a list.
-const ROLES: [(Role, &str); 20] = [
-    (Role::Time, "time"),
-    (Role::Date, "date alone"),
-    (Role::Clock, "time of day alone"),
-    (Role::Supply, "supply"),
-    (Role::Demand, "demand"),
-    (Role::NetImport, "net, import positive"),
-    (Role::NetExport, "net, export positive"),
-    (Role::Import, "import"),
-    (Role::Export, "export"),
-    (Role::Generation, "generation"),
-    (Role::StoreCharge, "charging of a store"),
-    (Role::StoreDischarge, "discharging of a store"),
-    (Role::Asked, "asked of a store"),
-    (Role::Critical, "critical demand"),
-    (Role::Schedule, "schedule"),
-    (Role::Price, "price"),
-    (Role::Frequency, "frequency"),
-    (Role::Reactive, "reactive power"),
-    (Role::Quality, "quality"),
-    (Role::Ignore, "not used"),
+/// Roles as the case and as a person names them, in the order of a list.
+const ROLES: [(Role, &str, &str); 20] = [
+    (Role::Time, "time", "time"),
+    (Role::Date, "date", "date alone"),
+    (Role::Clock, "clock", "time of day alone"),
+    (Role::Supply, "supply", "supply"),
+    (Role::Demand, "demand", "demand"),
+    (Role::NetImport, "net_import", "net, import positive"),
+    (Role::NetExport, "net_export", "net, export positive"),
+    (Role::Import, "import", "import"),
+    (Role::Export, "export", "export"),
+    (Role::Generation, "generation", "generation"),
+    (Role::StoreCharge, "store_charge", "charging of a store"),
+    (Role::StoreDischarge, "store_discharge", "discharging of a store"),
+    (Role::Asked, "asked", "asked of a store"),
+    (Role::Critical, "critical", "critical demand"),
+    (Role::Schedule, "schedule", "schedule"),
+    (Role::Price, "price", "price"),
+    (Role::Frequency, "frequency", "frequency"),
+    (Role::Reactive, "reactive", "reactive power"),
+    (Role::Quality, "quality", "quality"),
+    (Role::Ignore, "ignore", "not used"),
 ];
 
 const UNITS: [&str; 6] = ["W", "kW", "MW", "Wh", "kWh", "MWh"];
@@ -166,8 +165,9 @@ fn column_choices(desk: Desk, file: usize, at: usize) -> impl IntoView {
     let unit_name = format!("Unit of {header}");
     view! {
         <span class="choices" title=why>
-            {choice(format!("Role of {header}"), ROLES.map(|(role, words)| (role, words.to_owned())).to_vec(), role, move |role| {
-                set(desk, |case| { case.record.roles.insert(of_role.clone(), role); });
+            {choice(format!("Role of {header}"), ROLES.map(|(role, _, words)| (role, words.to_owned())).to_vec(), role, move |role| {
+                let word = ROLES.iter().find(|(known, ..)| *known == role).map(|(_, word, _)| *word);
+                desk.edit(|case| case.put(&["record", "roles", &of_role], word));
             })}
             {move || has_unit.get().then(|| {
                 let header = of_unit.clone();
@@ -176,7 +176,7 @@ fn column_choices(desk: Desk, file: usize, at: usize) -> impl IntoView {
                     units.insert(0, ("", "unit?".to_owned()));
                 }
                 choice(unit_name.clone(), units, unit, move |unit| {
-                    set(desk, |case| { case.record.units.insert(header.clone(), unit.to_owned()); });
+                    desk.edit(|case| case.put(&["record", "units", &header], unit));
                 })
             })}
         </span>
@@ -205,72 +205,60 @@ const fn is_power(role: Role) -> bool {
     )
 }
 
+const SEPARATORS: [(&str, &str); 5] =
+    [("", "as guessed"), (",", "comma"), (";", "semicolon"), ("\t", "tab"), ("|", "bar")];
+const DECIMALS: [(&str, &str); 3] = [("", "as guessed"), (".", "point"), (",", "comma")];
+const ORDERS: [(&str, &str); 4] = [
+    ("", "as guessed"),
+    ("year_first", "year first"),
+    ("day_first", "day first"),
+    ("month_first", "month first"),
+];
+const STAMPS: [(&str, &str); 2] = [("start", "the start"), ("end", "the end")];
+const READINGS: [(&str, &str); 2] =
+    [("intervals", "averages of their intervals"), ("samples", "instantaneous samples")];
+
 /// Further corrections of the reading.
 fn corrections(desk: Desk) -> impl IntoView {
-    let held = move |pick: fn(&RecordCase) -> Option<char>| move || desk.case.with(|case| pick(&case.record));
-    let words = |list: &[(&'static str, char)]| {
-        let mut options = vec![(None, "as guessed".to_owned())];
-        options.extend(list.iter().map(|(words, mark)| (Some(*mark), (*words).to_owned())));
-        options
-    };
-    let separators = words(&[("comma", ','), ("semicolon", ';'), ("tab", '\t'), ("bar", '|')]);
-    let decimals = words(&[("point", '.'), ("comma", ',')]);
-    let orders = vec![
-        (None, "as guessed".to_owned()),
-        (Some(DateOrder::YearFirst), "year first".to_owned()),
-        (Some(DateOrder::DayFirst), "day first".to_owned()),
-        (Some(DateOrder::MonthFirst), "month first".to_owned()),
-    ];
-    let stamps = vec![(Stamp::Start, "the start".to_owned()), (Stamp::End, "the end".to_owned())];
-    let readings = vec![
-        (Values::Intervals, "averages of their intervals".to_owned()),
-        (Values::Samples, "instantaneous samples".to_owned()),
-    ];
     let step = Field {
         asked: Asked::Seconds,
         name: "Step",
         size: 9,
-        get: |case| case.record.step_s,
-        set: |case, value| case.record.step_s = value,
+        path: &["record", "step_s"],
+        empty: Empty::Nothing,
     };
     let zone = move |event| {
         let name = event_target_value(&event).trim().to_owned();
         // The zone is looked up while reading; a name that is not known comes back as a fault that says so.
-        set(desk, |case| case.record.zone = (!name.is_empty()).then_some(name));
+        desk.edit(|case| case.put(&["record", "zone"], name.as_str()));
     };
     view! {
         <ol class="terms">
             <li>"Cells are separated by "
-                {choice("Separator", separators, held(|record| record.separator), move |mark| set(desk, |case| case.record.separator = mark))}
+                {named(desk, "Separator", &["record", "separator"], &SEPARATORS)}
                 ", the decimal mark is "
-                {choice("Decimal mark", decimals, held(|record| record.decimal), move |mark| set(desk, |case| case.record.decimal = mark))}
+                {named(desk, "Decimal mark", &["record", "decimal"], &DECIMALS)}
                 "."
             </li>
             <li>"Dates are written "
-                {choice("Order of dates", orders, move || desk.case.with(|case| case.record.date_order),
-                    move |order| set(desk, |case| case.record.date_order = order))}
+                {named(desk, "Order of dates", &["record", "date_order"], &ORDERS)}
                 "; a stamp marks "
-                {choice("Stamp marks", stamps, move || desk.case.with(|case| case.record.stamp),
-                    move |stamp| set(desk, |case| case.record.stamp = stamp))}
+                {named(desk, "Stamp marks", &["record", "stamp"], &STAMPS)}
                 " of its interval."
             </li>
             <li>"Values are "
-                {choice("Values are", readings, move || desk.case.with(|case| case.record.reading),
-                    move |reading| set(desk, |case| case.record.reading = reading))}
+                {named(desk, "Values are", &["record", "reading"], &READINGS)}
                 "; an interval lasts "
                 {input(desk, step, || "as found".to_owned())}"."
             </li>
             <li>"The clock is that of "
                 <input type="text" size="18" aria-label="Zone" autocomplete="off" placeholder="no zone"
-                    prop:value=move || desk.case.with(|case| case.record.zone.clone().unwrap_or_default())
+                    prop:value=move || desk.case.with(|case| case.word(&["record", "zone"]).to_owned())
                     on:change=zone />
                 " (a name such as Europe/Oslo)."
             </li>
             <li>
-                <button class="quiet" on:click=move |_| set(desk, |case| {
-                    let remedies = case.record.remedies;
-                    case.record = RecordCase { remedies, ..RecordCase::default() };
-                })>"Read as guessed again"</button>
+                <button class="quiet" on:click=move |_| desk.edit(read_afresh)>"Read as guessed again"</button>
             </li>
         </ol>
     }

@@ -2,13 +2,12 @@
 
 use leptos::prelude::*;
 
-use millpond::case::Case;
 use millpond::units::asked::Asked;
 use millpond::units::people;
 
 use super::desk::Desk;
 use super::drawing::Which;
-use super::field::{Field, input};
+use super::field::{Empty, Field, input};
 use super::figures::{all_figures, figures};
 use super::fold::{fold, method, methods_from};
 use super::picture::picture;
@@ -18,62 +17,56 @@ const SERVED: Field = Field {
     asked: Asked::Share,
     name: "Share of the deficit served",
     size: 5,
-    get: |case| case.requirement.served_share,
-    set: |case, value| case.requirement.served_share = value,
+    path: &["requirement", "served_share"],
+    empty: Empty::Nothing,
 };
 
 const POWER: Field = Field {
     asked: Asked::Power,
     name: "Greatest power",
     size: 8,
-    get: |case| case.requirement.served_power_kw,
-    set: |case, value| case.requirement.served_power_kw = value,
+    path: &["requirement", "served_power_kw"],
+    empty: Empty::Nothing,
 };
 
 const CHARGE: Field = Field {
     asked: Asked::Share,
     name: "Charge efficiency",
     size: 5,
-    get: |case| stated(case, case.requirement.charge_efficiency),
-    set: |case, value| case.requirement.charge_efficiency = value.unwrap_or(1.0),
+    path: &["requirement", "charge_efficiency"],
+    empty: Empty::As(1.0),
 };
 
 const DISCHARGE: Field = Field {
     asked: Asked::Share,
     name: "Discharge efficiency",
     size: 5,
-    get: |case| stated(case, case.requirement.discharge_efficiency),
-    set: |case, value| case.requirement.discharge_efficiency = value.unwrap_or(1.0),
+    path: &["requirement", "discharge_efficiency"],
+    empty: Empty::As(1.0),
 };
-
-/// A lossless store is none that was stated: the engine then assumes losses, which the empty field shows.
-fn stated(case: &Case, efficiency: f64) -> Option<f64> {
-    let lossless = case.requirement.charge_efficiency == 1.0 && case.requirement.discharge_efficiency == 1.0;
-    (!lossless).then_some(efficiency)
-}
 
 const DEPTH: Field = Field {
     asked: Asked::Share,
     name: "Usable depth",
     size: 5,
-    get: |case| Some(case.requirement.depth),
-    set: |case, value| case.requirement.depth = value.unwrap_or(0.9),
+    path: &["requirement", "depth"],
+    empty: Empty::Shown(0.9),
 };
 
 const END: Field = Field {
     asked: Asked::Share,
     name: "Capacity left at end of life",
     size: 5,
-    get: |case| Some(case.requirement.end_of_life),
-    set: |case, value| case.requirement.end_of_life = value.unwrap_or(0.8),
+    path: &["requirement", "end_of_life"],
+    empty: Empty::Shown(0.8),
 };
 
 const MARGIN: Field = Field {
     asked: Asked::Share,
     name: "Margin on nameplate energy",
     size: 5,
-    get: |case| Some(case.requirement.margin),
-    set: |case, value| case.requirement.margin = value.unwrap_or(0.0),
+    path: &["requirement", "margin"],
+    empty: Empty::Shown(0.0),
 };
 
 /// The station.

@@ -21,9 +21,7 @@ const DOTS: f64 = 2.0;
 
 /// Saves the case as JSON.
 pub(crate) fn case(desk: Desk) {
-    if let Some(text) = desk.case_text() {
-        json(desk, &format!("{} case", desk.name()), &text);
-    }
+    json(desk, &format!("{} case", desk.name()), &desk.case_text());
 }
 
 /// Saves a case that carries its record.

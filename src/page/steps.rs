@@ -3,16 +3,14 @@
 use std::rc::Rc;
 
 use gloo::events::{EventListener, EventListenerOptions};
-use js_sys::{JSON, Object, Reflect};
 use leptos::prelude::*;
-use serde::Serialize;
-use wasm_bindgen::{JsCast, JsValue};
+use wasm_bindgen::JsCast;
 use web_sys::{Element, File, KeyboardEvent};
 
-use millpond::case::Case;
 use millpond::case::change::{Change, words};
 
 use super::desk::Desk;
+use super::tree::Tree;
 
 /// Steps that are remembered.
 const MOST: usize = 200;
@@ -23,7 +21,7 @@ pub(crate) struct Step {
     /// What was done.
     pub(crate) words: String,
     /// The case since then.
-    pub(crate) case: Case,
+    pub(crate) case: Tree,
     /// The files it is about.
     pub(crate) files: Rc<Vec<File>>,
     /// Under which name it is kept in the browser.
@@ -49,14 +47,14 @@ pub(crate) struct Trail {
 
 impl Step {
     /// A step that begins something.
-    pub(crate) fn first(words: String, case: Case, files: Rc<Vec<File>>, id: Rc<str>) -> Self {
+    pub(crate) fn first(words: String, case: Tree, files: Rc<Vec<File>>, id: Rc<str>) -> Self {
         Self { words, case, files, id, typed: None }
     }
 }
 
 impl Steps {
     /// A desk on which nothing has been done.
-    pub(crate) fn new(case: Case, id: Rc<str>) -> Self {
+    pub(crate) fn new(case: Tree, id: Rc<str>) -> Self {
         Self { list: vec![Step::first("Start".to_owned(), case, Rc::default(), id)], at: 0 }
     }
 
@@ -66,7 +64,7 @@ impl Steps {
     }
 
     /// A changed case. Letters typed into one field make one step.
-    pub(crate) fn change(&mut self, case: Case, typed: bool) {
+    pub(crate) fn change(&mut self, case: Tree, typed: bool) {
         let here = self.here();
         let goes_on = typed && here.typed.is_some() && self.at + 1 == self.list.len() && self.at > 0;
         if goes_on {
@@ -132,43 +130,31 @@ pub(crate) fn listen(desk: Desk) {
 }
 
 /// The leaves in which two cases differ, in the order of the fields.
-fn differences(old: &Case, new: &Case) -> Vec<Change> {
+fn differences(old: &Tree, new: &Tree) -> Vec<Change> {
     let mut changes = Vec::new();
-    let value = |case: &Case| case.serialize(&serde_wasm_bindgen::Serializer::json_compatible());
-    if let (Ok(old), Ok(new)) = (value(old), value(new)) {
-        compare(&old, &new, &mut Vec::new(), &mut changes);
-    }
+    compare(old, new, &mut Vec::new(), &mut changes);
     changes
 }
 
-fn compare(old: &JsValue, new: &JsValue, path: &mut Vec<String>, changes: &mut Vec<Change>) {
-    if old.is_object() || new.is_object() {
-        let mut names = keys(old);
-        names.extend(keys(new).into_iter().filter(|name| !names.contains(name)).collect::<Vec<_>>());
-        for name in names {
-            let of =
-                |value: &JsValue| Reflect::get(value, &name.as_str().into()).unwrap_or(JsValue::UNDEFINED);
-            let (old, new) = (of(old), of(new));
-            path.push(name);
-            compare(&old, &new, path, changes);
-            path.pop();
+fn compare(old: &Tree, new: &Tree, path: &mut Vec<String>, changes: &mut Vec<Change>) {
+    let (before, now) = (old.inside(), new.inside());
+    if before.is_empty() && now.is_empty() {
+        let (old, new) = (old.leaf(), new.leaf());
+        if old != new {
+            changes.push(Change { path: path.clone(), old, new });
         }
         return;
     }
-    let (old, new) = (leaf(old), leaf(new));
-    if old != new {
-        changes.push(Change { path: path.clone(), old, new });
+    let of = |list: &[(String, &Tree)], name: &str| {
+        list.iter().find(|(other, _)| other == name).map_or(Tree::None, |(_, value)| (*value).clone())
+    };
+    let added = now.iter().filter(|(name, _)| before.iter().all(|(other, _)| other != name));
+    for (name, _) in before.iter().chain(added) {
+        let (old, new) = (of(&before, name), of(&now, name));
+        if old != new {
+            path.push(name.clone());
+            compare(&old, &new, path, changes);
+            path.pop();
+        }
     }
-}
-
-fn keys(value: &JsValue) -> Vec<String> {
-    let keys = value.dyn_ref::<Object>().map(Object::keys);
-    keys.map(|keys| keys.iter().filter_map(|key| key.as_string()).collect()).unwrap_or_default()
-}
-
-fn leaf(value: &JsValue) -> String {
-    if value.is_null() || value.is_undefined() {
-        return String::new();
-    }
-    value.as_string().or_else(|| JSON::stringify(value).ok()?.as_string()).unwrap_or_default()
 }

@@ -39,6 +39,9 @@ struct Call {
     /// Writes the list of a case file's fields, and ends.
     #[arg(long)]
     case_fields: bool,
+    /// Writes a case file with every field at its default, to be edited, and ends.
+    #[arg(long)]
+    case_untouched: bool,
     /// Writes the JSON Schema of a case file, and ends.
     #[arg(long)]
     case_schema: bool,
@@ -88,6 +91,15 @@ pub fn main() -> ExitCode {
     if call.case_fields {
         print!("{}", fields::list());
         return ExitCode::SUCCESS;
+    }
+    if call.case_untouched {
+        return match Case::default().to_json() {
+            Ok(text) => {
+                println!("{text}");
+                ExitCode::SUCCESS
+            }
+            Err(_) => ExitCode::from(1),
+        };
     }
     if call.case_schema {
         println!("{:#}", fields::schema());
