@@ -7,8 +7,11 @@ use flate2::bufread::MultiGzDecoder;
 use super::Source;
 use crate::fault::{Fault, Result};
 
-/// Most bytes that a gzipped file may hold.
-const MOST_BYTES: u64 = 4 << 30;
+/// Most bytes that a packed file may hold.
+pub(super) const MOST_BYTES: u64 = 4 << 30;
+
+/// Most bytes that packed bytes may become, each: readings of nothing but zeros stay below it.
+const MOST_GROWTH: u64 = 500;
 
 /// Longest row in bytes: past it a quote was opened and never closed.
 const LONGEST_ROW: u64 = 4 << 20;
@@ -16,9 +19,25 @@ const LONGEST_ROW: u64 = 4 << 20;
 /// Bytes looked at before the whole file is read.
 pub(super) const HEAD: usize = 256 << 10;
 
+/// What kind of file it is.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Kind {
+    /// Text that may be a table.
+    Text,
+    /// A zip archive, which a newer workbook is too.
+    Zip,
+    /// A container of an older workbook.
+    Compound,
+    /// Usage data in XML (ESPI).
+    Usage,
+    /// Interval data in records (NEM12).
+    Nem12,
+}
+
 /// What a file is, decided on its first bytes.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub(super) struct Container {
+    pub(super) kind: Kind,
     gzip: bool,
     encoding: Encoding,
     bom: usize,
@@ -149,7 +168,10 @@ pub(super) fn look(source: Box<dyn Source>) -> (Box<dyn Source>, Result<Looked>)
         Err(error) => Err(fault(&error, &name, gzip)),
     };
     match found {
-        Ok(container) => {
+        Ok(container) if matches!(container.kind, Kind::Zip | Kind::Compound) => {
+            (source, Ok((container, Vec::new())))
+        }
+        Ok(mut container) => {
             let mut decoded = Decoded::open(source, &container);
             let mut text = vec![0; room];
             let read = decoded.read_full(&mut text);
@@ -159,8 +181,11 @@ pub(super) fn look(source: Box<dyn Source>) -> (Box<dyn Source>, Result<Looked>)
                 text.truncate(count);
                 text
             });
-            let text = text.map_err(|error| fault(&error, &name, gzip));
-            (source, text.map(|text| (container, text)))
+            let looked = text.map_err(|error| fault(&error, &name, gzip)).and_then(|text| {
+                container.kind = kind_of_text(&name, &text)?;
+                Ok((container, text))
+            });
+            (source, looked)
         }
         Err(fault) => (source, Err(fault)),
     }
@@ -188,24 +213,31 @@ fn container(name: &str, gzip: bool, head: &[u8]) -> Result<Container> {
     let refuse = |what: &str, remedy: &str| {
         Err(Fault::new(format!("the file is {what}, not a text table"), name, remedy))
     };
-    let sheet = "Export the sheet as CSV and choose that file.";
     let table =
         "Choose a text table (CSV): one row per reading, columns separated by comma, semicolon or tab.";
     let starts = |magic: &[u8]| head.starts_with(magic);
-    if starts(b"PK\x03\x04") || starts(b"PK\x05\x06") {
-        let holds = |part: &[u8]| head.windows(part.len()).take(1 << 14).any(|window| window == part);
-        return if holds(b"xl/") || holds(b"[Content_Types].xml") {
-            refuse("an Excel workbook (.xlsx)", sheet)
-        } else if holds(b"opendocument.spreadsheet") {
-            refuse("an OpenDocument spreadsheet (.ods)", sheet)
-        } else {
-            refuse("a zip archive", "Unpack the archive and choose the text table (CSV) inside.")
-        };
+    let kind = if starts(b"PK\x03\x04") || starts(b"PK\x05\x06") {
+        Some(Kind::Zip)
+    } else {
+        starts(b"\xd0\xcf\x11\xe0\xa1\xb1\x1a\xe1").then_some(Kind::Compound)
+    };
+    if let Some(kind) = kind {
+        if gzip {
+            return refuse("an archive or workbook, gzipped", "Unpack the file once and choose the result.");
+        }
+        let carriage_returns = Returns::None;
+        return Ok(Container {
+            kind,
+            gzip,
+            encoding: Encoding::Bytes,
+            bom: 0,
+            carriage_returns,
+            words: String::new(),
+        });
     }
     for (magic, what, remedy) in [
-        (&b"\xd0\xcf\x11\xe0"[..], "an old Excel workbook (.xls)", sheet),
         (
-            b"%PDF",
+            &b"%PDF"[..],
             "a PDF document",
             "Ask for the readings as a text table (CSV); a PDF is a picture of them.",
         ),
@@ -252,17 +284,6 @@ fn container(name: &str, gzip: bool, head: &[u8]) -> Result<Container> {
         if strange * 50 > head.len() {
             return refuse("binary (it holds bytes that no text has)", table);
         }
-        let trimmed = head.trim_ascii_start();
-        let begins = trimmed.get(..trimmed.len().min(9)).unwrap_or(&[]).to_ascii_lowercase();
-        if begins.starts_with(b"<!doctype") || begins.starts_with(b"<html") || begins.starts_with(b"<?xml") {
-            return refuse(
-                "a page or XML document",
-                "Export the readings as a text table (CSV) and choose that file.",
-            );
-        }
-        if trimmed.starts_with(b"{") || trimmed.starts_with(b"[{") || trimmed.starts_with(b"[[") {
-            return refuse("JSON", "Export the readings as a text table (CSV) and choose that file.");
-        }
         // The head may end within a character: only an error before its last bytes counts.
         if let Err(error) = std::str::from_utf8(head)
             && (error.error_len().is_some() || error.valid_up_to() + 4 < head.len())
@@ -277,7 +298,57 @@ fn container(name: &str, gzip: bool, head: &[u8]) -> Result<Container> {
         (true, false) => Returns::Alone,
     };
     let words = if gzip { format!("{words}, gzip") } else { words.to_owned() };
-    Ok(Container { gzip, encoding, bom, carriage_returns, words })
+    Ok(Container { kind: Kind::Text, gzip, encoding, bom, carriage_returns, words })
+}
+
+/// What kind of text it is, from its first characters.
+fn kind_of_text(name: &str, head: &[u8]) -> Result<Kind> {
+    let trimmed = head.trim_ascii_start();
+    let begins =
+        |with: &[u8]| trimmed.get(..with.len()).is_some_and(|begins| begins.eq_ignore_ascii_case(with));
+    let refuse = |what: &str| {
+        Err(Fault::new(
+            format!("the file is {what}, not a text table"),
+            name,
+            "Export the readings as a text table (CSV) and choose that file.",
+        ))
+    };
+    if trimmed.first() == Some(&b'<') {
+        let espi = b"naesb.org/espi";
+        return if trimmed.windows(espi.len()).any(|window| window == espi) {
+            Ok(Kind::Usage)
+        } else if [&b"<!doctype"[..], b"<html", b"<?xml", b"<feed", b"<!--"].iter().any(|with| begins(with)) {
+            refuse("a page or XML document")
+        } else {
+            Ok(Kind::Text)
+        };
+    }
+    if begins(b"{") || begins(b"[{") || begins(b"[[") {
+        return refuse("JSON");
+    }
+    if begins(b"100,NEM13") {
+        return Err(Fault::new(
+            "the file is NEM13: readings of a register weeks apart, not of intervals",
+            name,
+            "Ask for the interval data of the same meter (NEM12).",
+        ));
+    }
+    Ok(if begins(b"100,NEM12") { Kind::Nem12 } else { Kind::Text })
+}
+
+/// Whether `unpacked` bytes out of `packed` ones are more than any meter file would be.
+pub(super) fn grows_without_end(unpacked: u64, packed: u64) -> bool {
+    unpacked > 1 << 20 && unpacked / MOST_GROWTH > packed + (1 << 16)
+}
+
+/// The fault of a packed file that [`grows_without_end`].
+#[cold]
+pub(super) fn endless(name: &str) -> Fault {
+    Fault::new(
+        format!("the compressed file unpacks to more than {MOST_GROWTH} times its size; no meter file does"),
+        name,
+        "Choose the file that holds the readings.",
+    )
 }
 
 /// Whether nearly every second byte is zero, as in ASCII text written as UTF-16; true for big-endian.
@@ -320,6 +391,11 @@ impl Decoded {
         self.feed.into_source()
     }
 
+    /// The file's name.
+    pub(super) fn name(&self) -> &str {
+        &self.name
+    }
+
     /// Says that a row was completed: the next may be as long again.
     pub(super) fn row_done(&mut self) {
         self.allowance = LONGEST_ROW;
@@ -355,12 +431,8 @@ impl Decoded {
                 "Cut the file into shorter spans.",
             )));
         }
-        if self.total > 1 << 20 && self.total / 500 > self.feed.offset() + (1 << 16) {
-            return Err(io::Error::other(Fault::new(
-                "the compressed file unpacks to more than five hundred times its size; no meter file does",
-                self.name.clone(),
-                "Choose the file that holds the readings.",
-            )));
+        if grows_without_end(self.total, self.feed.offset()) {
+            return Err(io::Error::other(endless(&self.name)));
         }
         if count == 0 {
             self.ended = true;
