@@ -15,6 +15,8 @@ pub(crate) mod client;
 #[cfg(feature = "page")]
 pub(crate) mod host;
 #[cfg(feature = "engine")]
+mod workbook;
+#[cfg(feature = "engine")]
 pub(crate) mod worker;
 
 use js_sys::{Array, Float64Array, Function, Object, Reflect, global};

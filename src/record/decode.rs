@@ -7,6 +7,10 @@ use flate2::bufread::MultiGzDecoder;
 use super::Source;
 use crate::fault::{Fault, Result};
 
+mod sniff;
+
+use sniff::{container, kind_of_text};
+
 /// Most bytes that a packed file may hold.
 pub(super) const MOST_BYTES: u64 = 4 << 30;
 
@@ -78,6 +82,8 @@ pub(super) struct Decoded {
     last: u8,
     carry: Vec<u8>,
     ended: bool,
+    /// Characters left out because nobody sees them.
+    hidden: u64,
 }
 
 enum Feed {
@@ -202,138 +208,12 @@ fn fill(feed: &mut Feed, buffer: &mut [u8]) -> io::Result<usize> {
     Ok(count)
 }
 
-fn container(name: &str, gzip: bool, head: &[u8]) -> Result<Container> {
-    if head.is_empty() {
-        return Err(Fault::new(
-            "the compressed file holds nothing",
-            name,
-            "Choose the file that holds the readings.",
-        ));
-    }
-    let refuse = |what: &str, remedy: &str| {
-        Err(Fault::new(format!("the file is {what}, not a text table"), name, remedy))
-    };
-    let table =
-        "Choose a text table (CSV): one row per reading, columns separated by comma, semicolon or tab.";
-    let starts = |magic: &[u8]| head.starts_with(magic);
-    let kind = if starts(b"PK\x03\x04") || starts(b"PK\x05\x06") {
-        Some(Kind::Zip)
-    } else {
-        starts(b"\xd0\xcf\x11\xe0\xa1\xb1\x1a\xe1").then_some(Kind::Compound)
-    };
-    if let Some(kind) = kind {
-        if gzip {
-            return refuse("an archive or workbook, gzipped", "Unpack the file once and choose the result.");
-        }
-        let carriage_returns = Returns::None;
-        return Ok(Container {
-            kind,
-            gzip,
-            encoding: Encoding::Bytes,
-            bom: 0,
-            carriage_returns,
-            words: String::new(),
-        });
-    }
-    for (magic, what, remedy) in [
-        (
-            &b"%PDF"[..],
-            "a PDF document",
-            "Ask for the readings as a text table (CSV); a PDF is a picture of them.",
-        ),
-        (b"\x89PNG", "a PNG picture", table),
-        (b"\xff\xd8\xff", "a JPEG picture", table),
-        (b"GIF8", "a GIF picture", table),
-        (b"{\\rtf", "a rich text document", table),
-        (b"7z\xbc\xaf", "a 7z archive", "Unpack the archive and choose the text table (CSV) inside."),
-        (b"Rar!", "a RAR archive", "Unpack the archive and choose the text table (CSV) inside."),
-        (
-            b"\x28\xb5\x2f\xfd",
-            "compressed with zstd",
-            "Unpack the file and choose the text table (CSV) inside.",
-        ),
-        (b"BZh", "compressed with bzip2", "Unpack the file and choose the text table (CSV) inside."),
-        (b"\xfd7zXZ", "compressed with xz", "Unpack the file and choose the text table (CSV) inside."),
-        (b"PAR1", "a Parquet file", "Export the table as CSV and choose that file."),
-        (b"SQLite format 3", "a SQLite database", "Export the table as CSV and choose that file."),
-        (b"\x1f\x8b", "gzipped twice", "Unpack the file once and choose the result."),
-    ] {
-        if starts(magic) {
-            return refuse(what, remedy);
-        }
-    }
-    let (encoding, bom, mut words) = if starts(b"\xef\xbb\xbf") {
-        (Encoding::Bytes, 3, "UTF-8 with byte order mark")
-    } else if starts(b"\xff\xfe") {
-        (Encoding::Utf16 { big: false }, 2, "UTF-16 (little-endian)")
-    } else if starts(b"\xfe\xff") {
-        (Encoding::Utf16 { big: true }, 2, "UTF-16 (big-endian)")
-    } else if let Some(big) = bare_utf16(head) {
-        (Encoding::Utf16 { big }, 0, "UTF-16 without byte order mark")
-    } else {
-        (Encoding::Bytes, 0, "UTF-8")
-    };
-    if encoding == Encoding::Bytes {
-        if head.contains(&0) {
-            return refuse("binary (it holds bytes that no text has)", table);
-        }
-        let strange = head
-            .iter()
-            .filter(|byte| **byte < 32 && !matches!(**byte, b'\t' | b'\n' | b'\r' | 12 | 26))
-            .count();
-        if strange * 50 > head.len() {
-            return refuse("binary (it holds bytes that no text has)", table);
-        }
-        // The head may end within a character: only an error before its last bytes counts.
-        if let Err(error) = std::str::from_utf8(head)
-            && (error.error_len().is_some() || error.valid_up_to() + 4 < head.len())
-        {
-            words = "Windows-1252 (the bytes are not UTF-8)";
-        }
-    }
-    let plain = |byte: u8| head.contains(&byte);
-    let carriage_returns = match (plain(b'\r'), plain(b'\n')) {
-        (false, _) => Returns::None,
-        (true, true) => Returns::BeforeLineFeed,
-        (true, false) => Returns::Alone,
-    };
-    let words = if gzip { format!("{words}, gzip") } else { words.to_owned() };
-    Ok(Container { kind: Kind::Text, gzip, encoding, bom, carriage_returns, words })
-}
-
-/// What kind of text it is, from its first characters.
-fn kind_of_text(name: &str, head: &[u8]) -> Result<Kind> {
-    let trimmed = head.trim_ascii_start();
-    let begins =
-        |with: &[u8]| trimmed.get(..with.len()).is_some_and(|begins| begins.eq_ignore_ascii_case(with));
-    let refuse = |what: &str| {
-        Err(Fault::new(
-            format!("the file is {what}, not a text table"),
-            name,
-            "Export the readings as a text table (CSV) and choose that file.",
-        ))
-    };
-    if trimmed.first() == Some(&b'<') {
-        let espi = b"naesb.org/espi";
-        return if trimmed.windows(espi.len()).any(|window| window == espi) {
-            Ok(Kind::Usage)
-        } else if [&b"<!doctype"[..], b"<html", b"<?xml", b"<feed", b"<!--"].iter().any(|with| begins(with)) {
-            refuse("a page or XML document")
-        } else {
-            Ok(Kind::Text)
-        };
-    }
-    if begins(b"{") || begins(b"[{") || begins(b"[[") {
-        return refuse("JSON");
-    }
-    if begins(b"100,NEM13") {
-        return Err(Fault::new(
-            "the file is NEM13: readings of a register weeks apart, not of intervals",
-            name,
-            "Ask for the interval data of the same meter (NEM12).",
-        ));
-    }
-    Ok(if begins(b"100,NEM12") { Kind::Nem12 } else { Kind::Text })
+/// Whether the text goes on with a character that is not seen: U+200B to U+200F, U+202A to U+202E, U+2060 to U+2069, U+FEFF.
+fn hidden(bytes: &[u8]) -> bool {
+    matches!(
+        bytes,
+        [0xe2, 0x80, 0x8b..=0x8f | 0xaa..=0xae, ..] | [0xe2, 0x81, 0xa0..=0xa9, ..] | [0xef, 0xbb, 0xbf, ..]
+    )
 }
 
 /// Whether `unpacked` bytes out of `packed` ones are more than any meter file would be.
@@ -349,21 +229,6 @@ pub(super) fn endless(name: &str) -> Fault {
         name,
         "Choose the file that holds the readings.",
     )
-}
-
-/// Whether nearly every second byte is zero, as in ASCII text written as UTF-16; true for big-endian.
-fn bare_utf16(head: &[u8]) -> Option<bool> {
-    let pairs = head.len() / 2;
-    let zero = |at: usize| head.iter().skip(at).step_by(2).filter(|byte| **byte == 0).count();
-    let (even, odd) = (zero(0), zero(1));
-    (pairs > 4).then_some(())?;
-    if odd * 10 > pairs * 8 && even * 20 < pairs {
-        Some(false)
-    } else if even * 10 > pairs * 8 && odd * 20 < pairs {
-        Some(true)
-    } else {
-        None
-    }
 }
 
 impl Decoded {
@@ -383,6 +248,7 @@ impl Decoded {
             last: b'\n',
             carry: Vec::new(),
             ended: false,
+            hidden: 0,
         }
     }
 
@@ -394,6 +260,11 @@ impl Decoded {
     /// The file's name.
     pub(super) fn name(&self) -> &str {
         &self.name
+    }
+
+    /// How many characters were left out so far because nobody sees them.
+    pub(super) fn hidden(&self) -> u64 {
+        self.hidden
     }
 
     /// Says that a row was completed: the next may be as long again.
@@ -437,6 +308,10 @@ impl Decoded {
         if count == 0 {
             self.ended = true;
             self.raw.clear();
+            if self.container.encoding == Encoding::Bytes {
+                self.raw.append(&mut self.carry);
+            }
+            self.last = self.raw.last().copied().unwrap_or(self.last);
             if self.last != b'\n' {
                 self.raw.push(b'\n');
                 self.last = b'\n';
@@ -451,6 +326,7 @@ impl Decoded {
         if let Encoding::Utf16 { big } = self.container.encoding {
             self.convert_utf16(big);
         }
+        self.leave_out_hidden();
         match self.container.carriage_returns {
             Returns::None => {}
             // A return without a line feed after it is left to the row splitter, which takes it as a row's end too.
@@ -467,6 +343,35 @@ impl Decoded {
             self.last = *last;
         }
         Ok(())
+    }
+
+    /// Leaves out what stands between the characters and is not seen: zero-width spaces, marks of direction, byte order marks.
+    fn leave_out_hidden(&mut self) {
+        if self.container.encoding == Encoding::Bytes && !self.carry.is_empty() {
+            self.carry.append(&mut self.raw);
+            std::mem::swap(&mut self.carry, &mut self.raw);
+        }
+        if !self.raw.iter().any(|byte| matches!(byte, 0xe2 | 0xef)) {
+            return;
+        }
+        let (mut from, mut to) = (0, 0);
+        while from < self.raw.len() {
+            let rest = &self.raw[from..];
+            if hidden(rest) {
+                self.hidden += 1;
+                from += 3;
+                continue;
+            }
+            // A character that is cut off waits for the next bytes.
+            if rest.len() < 3 && matches!(rest[0], 0xe2 | 0xef) && self.container.encoding == Encoding::Bytes
+            {
+                self.carry.extend_from_slice(rest);
+                break;
+            }
+            self.raw[to] = self.raw[from];
+            (from, to) = (from + 1, to + 1);
+        }
+        self.raw.truncate(to);
     }
 
     fn convert_utf16(&mut self, big: bool) {

@@ -14,13 +14,19 @@ const MOST_VALUES: usize = 8 << 20;
 /// Most values of one series with the same stamp.
 const MOST_REPEATS: u32 = 100;
 
+/// Row of a table (from 1) from which on its rows stand for a row of the file.
+pub(super) type Runs = Rc<[(u64, u64)]>;
+
+/// A table, and what is known of it.
+pub(super) type Table = (String, Made);
+
 /// What is known of a table that was made from another kind of file.
 #[derive(Debug, Clone, Default)]
 pub(super) struct Made {
     /// The kind of file in words, for people.
     pub(super) words: String,
-    /// Row of the table (from 1) from which on its rows stand for a row of the file; empty if they are the same.
-    pub(super) runs: Rc<[(u64, u64)]>,
+    /// Which rows of the file its rows stand for; empty if they are the same.
+    pub(super) runs: Runs,
     /// The sheets of a workbook, the one taken first.
     pub(super) sheets: Vec<String>,
     /// Whether numbers are known to be written with a decimal point.
@@ -36,11 +42,18 @@ pub(super) fn row_in_file(runs: &[(u64, u64)], row: u64) -> u64 {
     }
 }
 
+/// One row: the file's row, and a cell for each series that has one.
+#[derive(Debug)]
+struct Row {
+    row: u64,
+    cells: Vec<Option<Box<str>>>,
+}
+
 /// Series being laid beside each other by their stamps.
 #[derive(Debug, Default)]
 pub(super) struct Merge {
-    /// By the interval's start (s since 1970, UTC) and how often that stamp has come: the file's row, and a cell per series.
-    rows: BTreeMap<(i64, u32), (u64, Vec<Option<Box<str>>>)>,
+    /// By the interval's start (s since 1970, UTC) and how often that stamp has come.
+    rows: BTreeMap<(i64, u32), Row>,
     values: usize,
 }
 
@@ -65,7 +78,8 @@ impl Merge {
             ));
         }
         for again in 0..MOST_REPEATS {
-            let (_, cells) = self.rows.entry((start_s, again)).or_insert_with(|| (row, Vec::new()));
+            let Row { cells, .. } =
+                self.rows.entry((start_s, again)).or_insert_with(|| Row { row, cells: Vec::new() });
             if cells.len() <= column {
                 cells.resize(column + 1, None);
             }
@@ -90,7 +104,7 @@ impl Merge {
         headers: &[String],
         offset_s: i32,
         shift_s: i64,
-    ) -> Result<(String, Rc<[(u64, u64)]>)> {
+    ) -> Result<(String, Runs)> {
         let beyond = || Fault::new("a stamp lies beyond the calendar", file, "Ask for the readings again.");
         let offset = Offset::from_seconds(offset_s).map_err(|_beyond| beyond())?;
         let (sign, minutes) = (if offset_s < 0 { '-' } else { '+' }, offset_s.unsigned_abs() / 60);
@@ -103,7 +117,7 @@ impl Merge {
         text.push('\n');
         // The header stands for no row, so that it comes before the first row whatever the order of the file.
         let mut runs = vec![(1, 0)];
-        for (table_row, ((start_s, _), (row, cells))) in (2..).zip(self.rows) {
+        for (table_row, ((start_s, _), Row { row, cells })) in (2..).zip(self.rows) {
             let at = Timestamp::from_second(start_s.saturating_add(shift_s)).map_err(|_beyond| beyond())?;
             let civil = offset.to_datetime(at);
             // Writing to a string cannot fail.

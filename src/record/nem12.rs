@@ -9,19 +9,16 @@ use std::collections::BTreeMap;
 use csv::ByteRecord;
 
 use super::decode::{self, Decoded, text};
-use super::made::{Made, Merge};
+use super::made::{Made, Merge, Table};
 use super::rows::Rows;
 use super::stamp;
 use super::unit::{self, Stated};
-use super::{Finding, FindingKind, Source};
+use super::{Finding, FindingKind};
 use crate::case::Stamp;
 use crate::fault::{Fault, Result, quote};
 
 /// Market time (s east of UTC).
 const MARKET_S: i32 = 10 * 3600;
-
-/// A table made of the file, with what is known of it.
-pub(super) type Table = (String, Made);
 
 /// A stream of values: one channel of one meter, by its interval's length.
 #[derive(Debug, Clone, PartialEq, Eq, PartialOrd, Ord)]
@@ -59,17 +56,8 @@ struct Reading {
 ///
 /// # Errors
 /// If its records do not follow each other as they should, or hold no energy or power.
-pub(super) fn tables(
-    text: Decoded,
-    mark: Stamp,
-    findings: &mut Vec<Finding>,
-) -> (Box<dyn Source>, Result<Vec<Table>>) {
+pub(super) fn tables(text: Decoded, mark: Stamp, findings: &mut Vec<Finding>) -> Result<Vec<Table>> {
     let mut rows = Rows::new(text, b',');
-    let made = read(&mut rows, mark, findings);
-    (rows.into_text().into_source(), made)
-}
-
-fn read(rows: &mut Rows<Decoded>, mark: Stamp, findings: &mut Vec<Finding>) -> Result<Vec<Table>> {
     let mut reading = Reading { file: rows.text().name().to_owned(), ..Reading::default() };
     let mut record = ByteRecord::new();
     let mut ended = false;

@@ -335,6 +335,7 @@ impl Job for Reader {
                     }
                     if ended && let Stage::Scan(rows, scan) = std::mem::replace(&mut self.stage, Stage::Plan)
                     {
+                        self.hidden(at, rows.text().hidden());
                         self.give_back(at, rows);
                         self.files[at].scanned = Some(scan.finish(self.terms.date_order.is_some()));
                         self.passed += self.sources[at].as_ref().map_or(0, |source| source.len());

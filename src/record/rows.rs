@@ -5,7 +5,7 @@ use std::rc::Rc;
 
 use csv::ByteRecord;
 
-use super::made;
+use super::made::{self, Runs};
 use crate::fault::Fault;
 
 /// Most lines in a row: past them a quotation mark stands where it should not.
@@ -17,7 +17,7 @@ pub(super) struct Rows<R> {
     /// Line feeds inside quoted cells so far: a spreadsheet shows such a cell in one row.
     inside: u64,
     /// Where the rows stand for others: see [`super::made::Made::runs`].
-    runs: Rc<[(u64, u64)]>,
+    runs: Runs,
 }
 
 impl<R: Read> Rows<R> {
@@ -33,7 +33,7 @@ impl<R: Read> Rows<R> {
     }
 
     /// The same rows with the numbers of the rows that they were made from.
-    pub(super) fn numbered(self, runs: Rc<[(u64, u64)]>) -> Self {
+    pub(super) fn numbered(self, runs: Runs) -> Self {
         Self { runs, ..self }
     }
 

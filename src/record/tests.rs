@@ -11,6 +11,7 @@ use crate::job::{Job, finish};
 
 mod containers;
 mod dialects;
+mod encodings;
 mod usage;
 mod workbooks;
 

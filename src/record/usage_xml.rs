@@ -12,8 +12,8 @@ use quick_xml::Reader;
 use quick_xml::events::{BytesStart, Event};
 
 use super::decode::{self, Decoded};
-use super::made::{Made, Merge};
-use super::{Finding, FindingKind, Source};
+use super::made::{Made, Merge, Table};
+use super::{Finding, FindingKind};
 use crate::case::Stamp;
 use crate::fault::{Fault, Result, quote};
 
@@ -30,7 +30,7 @@ const LONGEST_TEXT: usize = 4096;
 struct Value {
     start_s: i64,
     duration_s: i64,
-    value: i64,
+    amount: i64,
 }
 
 /// What an entry of the feed is.
@@ -95,11 +95,7 @@ impl Read for Text {
 ///
 /// # Errors
 /// If it is no well-formed feed, or does not say what its values are.
-pub(super) fn tables(
-    text: Decoded,
-    mark: Stamp,
-    findings: &mut Vec<Finding>,
-) -> (Box<dyn Source>, Result<Vec<(String, Made)>>) {
+pub(super) fn tables(text: Decoded, mark: Stamp, findings: &mut Vec<Finding>) -> Result<Vec<Table>> {
     let name = text.name().to_owned();
     let mut text = BufReader::with_capacity(1 << 16, Text(text));
     // The declaration names the encoding that the file had before it was decoded.
@@ -107,13 +103,9 @@ pub(super) fn tables(
     let passed = if declared { text.skip_until(b'>').map(|_| ()) } else { Ok(()) };
     let mut reader = Reader::from_reader(text);
     let mut feed = Feed::default();
-    let read = match passed {
-        Ok(()) => feed.read(&mut reader, &name),
-        Err(error) => Err(decode::fault(&error, &name, true)),
-    };
-    let source = reader.into_inner().into_inner().0.into_source();
-    let made = read.and_then(|()| feed.table(&name, mark, findings)).map(|table| vec![table]);
-    (source, made)
+    passed.map_err(|error| decode::fault(&error, &name, true))?;
+    feed.read(&mut reader, &name)?;
+    feed.table(&name, mark, findings).map(|table| vec![table])
 }
 
 impl Feed {
@@ -228,7 +220,7 @@ impl Feed {
                 self.estimated += u64::from(matches!(number(), Some(8 | 9 | 12)));
             }
             "tzOffset" => {
-                self.offset_s = number().and_then(|s| i32::try_from(s).ok()).filter(|s| s.abs() < 54_000)
+                self.offset_s = number().and_then(|s| i32::try_from(s).ok()).filter(|s| s.abs() < 54_000);
             }
             "IntervalReading" => {
                 if self.values.len() == MOST_READINGS {
@@ -247,7 +239,7 @@ impl Feed {
                         "Ask for the readings again, or as a text table (CSV).",
                     ));
                 };
-                self.values.push(Value { start_s, duration_s, value });
+                self.values.push(Value { start_s, duration_s, amount: value });
             }
             "entry" => {
                 if let Some(from) = self.block.take() {
@@ -304,7 +296,7 @@ impl Feed {
         found
     }
 
-    fn table(&self, file: &str, mark: Stamp, findings: &mut Vec<Finding>) -> Result<(String, Made)> {
+    fn table(&self, file: &str, mark: Stamp, findings: &mut Vec<Finding>) -> Result<Table> {
         let ask = "Ask for the readings with their reading types, or as a text table (CSV).";
         if self.values.is_empty() {
             return Err(Fault::new("the feed holds no interval readings", file, ask));
@@ -398,7 +390,7 @@ impl Feed {
                 };
                 let shift_s = if mark == Stamp::End { kind.length(value) } else { 0 };
                 // The exponent keeps the value the exact decimal that it is.
-                let text = format!("{}e{}", value.value, kind.power_of_ten);
+                let text = format!("{}e{}", value.amount, kind.power_of_ten);
                 merge.put(
                     file,
                     (value.start_s.saturating_add(shift_s), column),

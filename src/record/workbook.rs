@@ -7,7 +7,7 @@ use std::io::Cursor;
 
 use calamine::{Data, Dimensions, ExcelDateTime, Ods, Reader, Sheets, Xls, Xlsx};
 
-use super::WorkbookSheet;
+use super::{WorkbookSheet, stamp};
 use crate::fault::{Fault, Result};
 
 /// Most bytes of text that a workbook may become.
@@ -116,7 +116,7 @@ fn value(cell: Data) -> Value {
         Data::Int(whole) => Value::Number(whole as f64),
         Data::Float(number) => Value::Number(number),
         Data::Bool(is) => Value::Text(if is { "TRUE" } else { "FALSE" }.to_owned()),
-        Data::DateTime(moment) => Value::Stamp(stamp(moment)),
+        Data::DateTime(moment) => Value::Stamp(written(moment)),
         Data::DateTimeIso(text) => Value::Stamp(text),
         Data::DurationIso(text) => Value::Stamp(clock(&text).unwrap_or(text)),
         Data::Error(error) => Value::Text(error.to_string()),
@@ -126,7 +126,7 @@ fn value(cell: Data) -> Value {
 
 /// `2026-01-31 00:15:00`, or `00:15:00` where there is no day. Serial days are binary fractions: what lies a few milliseconds
 /// beside a whole second is that second.
-fn stamp(moment: ExcelDateTime) -> String {
+fn written(moment: ExcelDateTime) -> String {
     let serial = moment.as_f64();
     let seconds = libm::round(serial * 86_400.0);
     if moment.is_duration() || (0.0..1.0).contains(&serial) {
@@ -135,18 +135,20 @@ fn stamp(moment: ExcelDateTime) -> String {
         return format!("{:02}:{:02}:{:02}", seconds / 3600, seconds / 60 % 60, seconds % 60);
     }
     let (year, month, day, hour, minute, second, milli) = moment.to_ymd_hms_milli();
-    let near = (1..=20).contains(&milli) || (980..1000).contains(&milli);
-    let exact = |text: jiff::civil::DateTime| {
-        let fraction = if near || milli == 0 { String::new() } else { format!(".{milli:03}") };
-        format!("{} {:02}:{:02}:{:02}{fraction}", text.date(), text.hour(), text.minute(), text.second())
-    };
-    let (year, month, day) = (i16::try_from(year).unwrap_or(0), month as i8, day as i8);
-    let civil = jiff::civil::DateTime::new(year, month, day, hour as i8, minute as i8, second as i8, 0);
-    let civil = civil.and_then(|civil| {
-        if milli >= 980 { civil.checked_add(jiff::SignedDuration::from_secs(1)) } else { Ok(civil) }
+    let near = milli <= 20 || milli >= 980;
+    let civil = stamp::days(year.into(), month.into(), day.into()).and_then(|days| {
+        let clock = i64::from(hour) * 3600 + i64::from(minute) * 60 + i64::from(second);
+        let second = days * 86_400 + clock + i64::from(milli >= 980);
+        jiff::Timestamp::from_second(second).ok().map(|at| jiff::tz::Offset::UTC.to_datetime(at))
     });
-    // The day that spreadsheets believe 1900 to have had stays the number that it is.
-    civil.map_or_else(|_no_such_day| serial.to_string(), exact)
+    match civil {
+        Some(civil) => {
+            let fraction = if near { String::new() } else { format!(".{milli:03}") };
+            format!("{} {}{fraction}", civil.date(), civil.time())
+        }
+        // The day that spreadsheets believe 1900 to have had stays the number that it is.
+        None => serial.to_string(),
+    }
 }
 
 /// The time of day of an ISO duration such as PT06H15M00S.

@@ -43,6 +43,9 @@ enum Workbook {
     Given(Result<Vec<WorkbookSheet>>),
 }
 
+/// Turns the bytes of a workbook into its sheets.
+type BookReader = fn(Vec<u8>) -> Result<Vec<WorkbookSheet>>;
+
 /// What there is to look at.
 pub(super) struct Look {
     queue: VecDeque<Waiting>,
@@ -55,13 +58,13 @@ pub(super) struct Look {
     /// Names of the workbooks that were read.
     workbooks: Vec<String>,
     /// Reads workbooks, where it is part of this program.
-    reader: Option<fn(Vec<u8>) -> Result<Vec<WorkbookSheet>>>,
+    reader: Option<BookReader>,
 }
 
 impl Look {
     pub(super) fn new(sources: Vec<Box<dyn Source>>) -> Self {
         #[cfg(feature = "sheets")]
-        let reader: Option<fn(Vec<u8>) -> Result<Vec<WorkbookSheet>>> = Some(super::super::workbook_sheets);
+        let reader: Option<BookReader> = Some(super::super::workbook_sheets);
         #[cfg(not(feature = "sheets"))]
         let reader = None;
         Self {
@@ -234,8 +237,7 @@ impl Reader {
             Kind::Nem12 | Kind::Usage => {
                 let text = Decoded::open(source, &container);
                 let make = if container.kind == Kind::Nem12 { nem12::tables } else { usage_xml::tables };
-                let (_, made) = make(text, self.terms.stamp, &mut self.findings);
-                for (text, made) in made? {
+                for (text, made) in make(text, self.terms.stamp, &mut self.findings)? {
                     self.made_table(&name, text, made)?;
                 }
                 Ok(())
@@ -317,6 +319,26 @@ impl Reader {
             self.look.queue.push_front(Waiting { source: Box::new(source), within: Some(at) });
         }
         Ok(())
+    }
+
+    /// Tells of characters that were left out because nobody sees them.
+    pub(super) fn hidden(&mut self, at: usize, count: u64) {
+        if count == 0 {
+            return;
+        }
+        self.findings.push(Finding {
+            kind: FindingKind::Ignored,
+            count,
+            first_row: None,
+            file: self.files[at].name.clone(),
+            remedy: "left out".to_owned(),
+            text: format!(
+                "{count} character{} that cannot be seen (zero-width spaces, marks of direction or of byte order) {} left out.",
+                if count == 1 { "" } else { "s" },
+                if count == 1 { "was" } else { "were" }
+            ),
+            changes_figures: false,
+        });
     }
 
     /// Has a workbook turned into text tables, here or by the caller.

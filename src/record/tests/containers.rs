@@ -15,7 +15,7 @@ pub(super) fn zip(files: &[(&str, &[u8])]) -> Vec<u8> {
     let mut bytes = Vec::new();
     let mut archive = ZipArchiveWriter::new(&mut bytes);
     for (name, content) in files {
-        let deflate = !name.ends_with(".gz");
+        let deflate = !name.contains(".gz");
         let method = if deflate { CompressionMethod::DEFLATE } else { CompressionMethod::STORE };
         let (mut entry, config) = archive.new_file(name).compression_method(method).start().unwrap();
         let descriptor = if deflate {

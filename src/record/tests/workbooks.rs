@@ -226,7 +226,7 @@ fn a_cell_in_the_far_corner_is_no_burden() {
 }
 
 /// `mill.xls` was written by the npm package `xlsx` 0.18.5 (Apache-2.0): a title, an empty row, headers, and four quarters of an
-/// hour of 2026-01-31 as serial days, the third value an error. That writer leaves out the dates' format.
+/// hour of 2026-01-31 as serial days, the third value an error.
 #[test]
 fn older_workbooks_are_read() {
     let record = read_book(include_bytes!("mill.xls"), &RecordCase::default()).unwrap();
@@ -234,6 +234,7 @@ fn older_workbooks_are_read() {
     assert_eq!((record.clock.civil(0).day, record.clock.civil(3).minute), (31, 45));
     let file = &record.reading.files[0];
     assert_eq!((file.header_row, file.first_row, &file.sheets[..]), (Some(3), 4, &["Last".to_owned()][..]));
+    assert_eq!(file.sample[0].1, ["2026-01-31 00:00:00", "0.125"]);
     let text = found(&record, FindingKind::Text).unwrap();
     assert!(text.first_row == Some(6) && text.text.contains("#DIV/0!"), "{}", text.text);
 }
