@@ -351,7 +351,7 @@ impl Decoded {
             self.carry.append(&mut self.raw);
             std::mem::swap(&mut self.carry, &mut self.raw);
         }
-        if !self.raw.iter().any(|byte| matches!(byte, 0xe2 | 0xef)) {
+        if !self.raw.iter().any(|byte| matches!(byte, 0xc2 | 0xe2 | 0xef)) {
             return;
         }
         let (mut from, mut to) = (0, 0);
@@ -362,9 +362,19 @@ impl Decoded {
                 from += 3;
                 continue;
             }
+            // A space that does not break is a space, in a stamp as between them.
+            if rest.starts_with(&[0xc2, 0xa0]) {
+                self.raw[to] = b' ';
+                (from, to) = (from + 2, to + 1);
+                continue;
+            }
             // A character that is cut off waits for the next bytes.
-            if rest.len() < 3 && matches!(rest[0], 0xe2 | 0xef) && self.container.encoding == Encoding::Bytes
-            {
+            let whole = match rest[0] {
+                0xc2 => 2,
+                0xe2 | 0xef => 3,
+                _ => 1,
+            };
+            if rest.len() < whole && self.container.encoding == Encoding::Bytes {
                 self.carry.extend_from_slice(rest);
                 break;
             }
