@@ -96,7 +96,7 @@ fn damage_is_told_with_its_place() {
         .collect();
     let long = format!("time,load kW\n{rows}");
     let late = |odd: &str| format!("{long}2026-12-31 00:00,{odd}\n");
-    let nul = read_bytes(late("1\03").as_bytes()).unwrap();
+    let nul = read_bytes(late("1\u{0}3").as_bytes()).unwrap();
     let text = found(&nul, FindingKind::Text).unwrap();
     assert_eq!(text.first_row, Some(20_002));
     let ragged = read_text(&late("7,8,9,10\n2026-12-31 00:15"));
