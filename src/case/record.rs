@@ -25,6 +25,9 @@ pub struct RecordCase {
     /// Unit of each column by its header (or `file/header`): W, kW, MW, Wh, kWh, MWh.
     #[serde(deserialize_with = "super::read::each_once")]
     pub units: BTreeMap<String, String>,
+    /// The sheet to read of each workbook, by the workbook's file name, where the guess is wrong.
+    #[serde(deserialize_with = "super::read::each_once")]
+    pub sheets: BTreeMap<String, String>,
     /// Separator of cells, where the guess is wrong.
     pub separator: Option<char>,
     /// Decimal mark, where the guess is wrong.

@@ -3,21 +3,25 @@
 use jiff::tz::TimeZone;
 
 use super::decode::{self, Container, Decoded};
-use super::dialect::{self, Dialect};
+use super::dialect::Dialect;
 use super::fill::{FilePlan, Fill, Table};
 use super::grid::{self, Grid};
-use super::roles::{self, Column};
+use super::made::Made;
+use super::roles::Column;
 use super::rows::Rows;
 use super::scan::{Scan, Scanned};
 use super::settle::{Settle, Settled, Shape};
-use super::timing::{self, Timing};
+use super::timing::Timing;
 use super::zone::Resolver;
 use super::{FileReading, Finding, Reading, Record, Source, Zone};
 use crate::case::{RecordCase, Stamp, Values};
 use crate::fault::{Fault, Result, quote};
 use crate::job::{Job, Progress};
 
+mod look;
 mod plan;
+
+use look::Look;
 
 /// Reads the files of one site into a record.
 ///
@@ -69,8 +73,9 @@ pub fn read(
     };
     Ok(Reader {
         site: site.to_owned(),
-        total: sources.iter().map(|source| source.len()).sum::<u64>().max(1),
-        sources: sources.into_iter().map(Some).collect(),
+        total: 1,
+        sources: Vec::new(),
+        look: Look::new(sources),
         terms: terms.clone(),
         named: named.to_vec(),
         zone,
@@ -89,6 +94,9 @@ pub fn read(
 /// A record being read; see [`read`].
 pub struct Reader {
     site: String,
+    /// What is still to be looked at.
+    look: Look,
+    /// The tables found.
     sources: Vec<Option<Box<dyn Source>>>,
     terms: RecordCase,
     named: Vec<String>,
@@ -120,6 +128,7 @@ impl std::fmt::Debug for Reader {
 struct File {
     name: String,
     container: Container,
+    made: Made,
     dialect: Dialect,
     timing: Timing,
     columns: Vec<Column>,
@@ -137,14 +146,15 @@ enum Stage {
 }
 
 impl Reader {
-    /// The sources again, for another reading. One that was lost to a fault of the system is left out.
+    /// The sources again, for another reading: of an archive, a workbook or a file of records the tables found in it. One that
+    /// was lost to a fault of the system is left out.
     pub fn into_sources(mut self) -> Vec<Box<dyn Source>> {
         let at = self.at;
         match std::mem::replace(&mut self.stage, Stage::Done) {
             Stage::Scan(rows, _) | Stage::Fill(Some((rows, _))) => self.give_back(at, rows),
             _ => {}
         }
-        self.sources.into_iter().flatten().collect()
+        self.sources.into_iter().flatten().chain(self.look.into_sources()).collect()
     }
 
     fn give_back(&mut self, at: usize, rows: Rows<Decoded>) {
@@ -157,26 +167,11 @@ impl Reader {
         let source = self.sources.get_mut(at).and_then(Option::take);
         match (source, self.files.get(at)) {
             (Some(source), Some(file)) => {
-                Ok(Rows::new(Decoded::open(source, &file.container), file.dialect.separator))
+                let text = Decoded::open(source, &file.container);
+                Ok(Rows::new(text, file.dialect.separator).numbered(file.made.runs.clone()))
             }
             _ => Err(Fault::new("a file is no longer there", self.site.clone(), "Choose the files again.")),
         }
-    }
-
-    /// Looks at the head of the file at hand: container, dialect, stamps, columns.
-    fn look(&mut self) -> Result<()> {
-        let Some(source) = self.sources.get_mut(self.at).and_then(Option::take) else { return Ok(()) };
-        let name = source.name().to_owned();
-        let (source, looked) = decode::look(source);
-        self.sources[self.at] = Some(source);
-        let (container, head) = looked?;
-        let dialect = dialect::decide(&name, &head, &self.terms)?;
-        let stated =
-            |column: usize| roles::stated(&self.terms.roles, &name, &dialect.headers[column]).copied();
-        let timing = timing::choose(&name, &dialect, &stated)?;
-        let columns = roles::columns(&name, &dialect, timing, &self.terms, &self.named)?;
-        self.files.push(File { name, container, dialect, timing, columns, scanned: None });
-        Ok(())
     }
 
     fn start_scan(&mut self) -> Result<()> {
@@ -285,6 +280,7 @@ impl File {
         FileReading {
             name: self.name.clone(),
             container: self.container.words.clone(),
+            sheets: self.made.sheets.clone(),
             separator: char::from(dialect.separator),
             decimal: char::from(dialect.marks.decimal),
             thousands: dialect.thousands,
@@ -313,13 +309,12 @@ impl Job for Reader {
             let at = self.at;
             match &mut self.stage {
                 Stage::Look => {
-                    self.look()?;
-                    left = left.saturating_sub(10_000);
-                    self.at += 1;
-                    if self.at == self.sources.len() {
-                        self.at = 0;
+                    if self.look()? {
                         self.start_scan()?;
+                    } else if self.waits() {
+                        return Ok(None);
                     }
+                    left = left.saturating_sub(10_000);
                 }
                 Stage::Scan(rows, scan) => {
                     let first = self.files[at].dialect.first_row;
@@ -340,6 +335,7 @@ impl Job for Reader {
                     }
                     if ended && let Stage::Scan(rows, scan) = std::mem::replace(&mut self.stage, Stage::Plan)
                     {
+                        self.hidden(at, rows.text().hidden());
                         self.give_back(at, rows);
                         self.files[at].scanned = Some(scan.finish(self.terms.date_order.is_some()));
                         self.passed += self.sources[at].as_ref().map_or(0, |source| source.len());
