@@ -82,8 +82,7 @@ pub fn screen(
 
 /// Runs one of the case's stores; a store without a name is called by its place in the list.
 pub fn simulate(duty: &Duty, store: &Store, place: usize) -> SimulationResult {
-    let Store::Fixed(store) = store;
-    let mut result = simulation::run(duty, store, |_| {});
+    let mut result = simulation::run_circuit(duty, store, |_| {});
     if result.store.is_empty() {
         result.store = format!("store {}", place + 1);
     }

@@ -6,6 +6,7 @@
 mod carried;
 pub mod change;
 mod check;
+mod circuit;
 mod duty;
 mod edits;
 mod read;
@@ -17,12 +18,13 @@ mod store;
 use serde::{Deserialize, Serialize};
 
 pub use carried::CarriedFile;
+pub use circuit::{Battery, Capacitor, Coil, Converter, CurveStore, Flywheel, Reservoir};
 pub use duty::{DutyCase, Positive};
 pub use edits::{PriceCase, RangeEdit, StorePrice};
 pub use record::{DateOrder, GapRemedy, RecordCase, Remedies, RepeatRemedy, Stamp, Values};
 pub use requirement::{Balance, RequirementCase};
 pub use site::{Connection, SiteCase};
-pub use store::{FixedStore, Start, Store};
+pub use store::{FixedStore, Start, Store, Terminals};
 
 use crate::fault::{Fault, Result};
 
