@@ -180,3 +180,33 @@ fn the_window_of_a_fixed_store_is_that_of_the_trace() {
     close(least, books["stored_min_kwh"].as_f64().unwrap(), 1e-9);
     assert!(run.account_residual_kwh.abs() < 1e-9);
 }
+
+#[test]
+fn random_powers_that_hit_limits_agree_with_an_independent_integration() {
+    let all: Value = serde_json::from_str(include_str!("../reference/circuit_runs.json")).unwrap();
+    let runs = all.as_array().unwrap();
+    assert_eq!(runs.len(), 13);
+    for (k, expected) in runs.iter().enumerate() {
+        let store = store(&expected["store"].to_string());
+        let powers: Vec<f64> =
+            expected["powers_w"].as_array().unwrap().iter().map(|v| v.as_f64().unwrap()).collect();
+        let found = run(&store, expected["step_s"].as_i64().unwrap(), &powers);
+        let asked: f64 = powers.iter().map(|power| power.abs()).sum::<f64>() * expected["step_s"].as_f64().unwrap();
+        let near = |found_kwh: f64, name: &str, expected: &Value| {
+            let (found, expected) = (found_kwh * 3.6e6, expected.as_f64().unwrap());
+            assert!((found - expected).abs() <= 1e-8 * asked, "run {k}, {name}: {found}, expected {expected}");
+        };
+        near(found.served_kwh, "served", &expected["served_j"]);
+        near(found.unserved_kwh, "unserved", &expected["unserved_j"]);
+        near(found.curtailed_kwh, "curtailed", &expected["curtailed_j"]);
+        near(found.stored_end_kwh, "stored", &expected["stored_end_j"]);
+        let lost = serde_json::to_value(found.losses_kwh).unwrap();
+        for (cause, joule) in expected["losses_j"].as_object().unwrap() {
+            near(lost[cause].as_f64().unwrap(), cause, joule);
+        }
+        close(found.state_end.unwrap(), expected["state_end"].as_f64().unwrap(), 1e-7);
+        let causes = found.unserved_by_cause;
+        close(causes.power + causes.energy, found.unserved_kwh, 1e-9);
+        assert!(found.account_residual_kwh.abs() * 3.6e6 < 1e-11 * asked, "run {k}: {}", found.account_residual_kwh);
+    }
+}

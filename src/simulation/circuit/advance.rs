@@ -17,8 +17,8 @@ const OF_FLOW: f64 = 1e-9;
 /// The same, share of the energy moved or held.
 const OF_SCALE: f64 = 1e-14;
 
-/// Halvings with which an event is found in a step.
-const HALVINGS: usize = 48;
+/// Trials with which an event is found in a step.
+const MOST_TRIALS: usize = 60;
 
 /// Shortest step, share of the interval.
 const SHORTEST: f64 = 1e-12;
@@ -78,6 +78,17 @@ enum Event {
     Line,
     /// The limit has begun or ended.
     Turn(Mode),
+}
+
+impl Event {
+    /// How closely it must be found, share of the interval: an end sets the energy, at the others all is continuous.
+    fn width(self) -> f64 {
+        match self {
+            Self::End(_) | Self::Empty => 1e-14,
+            Self::Turn(_) => 1e-11,
+            Self::Line => 1e-8,
+        }
+    }
 }
 
 /// The power asked in an interval.
@@ -319,23 +330,54 @@ impl Machine<'_> {
         let Some(mut event) = self.event(whole.after, segment, mode, pinned, asked) else {
             return (span_s, whole, None);
         };
+        let distance = |event: Event, at: State| self.distance(event, at, segment, asked);
         let (mut before, mut after, mut trial) = (0.0, span_s, whole);
-        for _ in 0..HALVINGS {
-            if after - before <= SHORTEST * 1e-2 * seconds {
+        let (mut from, mut guess) = (distance(event, at), 0.0);
+        for _ in 0..MOST_TRIALS {
+            if after - before <= event.width() * seconds {
                 break;
             }
-            let middle = f64::midpoint(before, after);
+            // The secant's root, and from it a little to the side on which the last trial did not lie: both ends close in.
+            let to = distance(event, trial.after);
+            let root = before + (after - before) * from / (from - to);
+            let nudge = (0.01 * (root - guess).abs()).max(0.2 * event.width() * seconds);
+            let aimed = if root - before < after - root { root + nudge } else { root - nudge };
+            guess = root;
+            let middle = if aimed > before && aimed < after { aimed } else { f64::midpoint(before, after) };
             let tried = self.trial(at, segment, mode, pinned, asked, middle);
             match self.event(tried.after, segment, mode, pinned, asked) {
                 Some(found) => {
+                    if found != event {
+                        event = found;
+                        from = f64::NAN;
+                    }
                     after = middle;
                     trial = tried;
-                    event = found;
                 }
-                None => before = middle,
+                None => {
+                    before = middle;
+                    from = distance(event, tried.after);
+                }
             }
         }
         (after, trial, Some(event))
+    }
+
+    /// How far a state is from an event, in a measure that changes its sign there; not a number where there is none.
+    fn distance(&self, event: Event, at: State, segment: usize, asked: &Asked) -> f64 {
+        match event {
+            Event::End(energy_j) => at.energy_j - energy_j,
+            Event::Empty => at.energy_j,
+            Event::Line => {
+                let (low, high) = self.element.span_j(segment);
+                // The line's end on the side to which the energy moves is the nearer one.
+                if at.energy_j - low < high - at.energy_j { at.energy_j - low } else { at.energy_j - high }
+            }
+            Event::Turn(_) => {
+                let limit_w = self.element.limit_w(at, segment, asked.discharging);
+                if limit_w.is_finite() { limit_w - asked.inner_w.abs() } else { f64::NAN }
+            }
+        }
     }
 
     fn event(&self, at: State, segment: usize, mode: Mode, pinned: bool, asked: &Asked) -> Option<Event> {
