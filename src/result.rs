@@ -42,6 +42,8 @@ pub struct SiteResult {
     pub screening: Vec<Screened>,
     /// Stores run on the duty.
     pub simulations: Vec<SimulationResult>,
+    /// The least size of every kind; empty unless the case asks for it.
+    pub sizings: Vec<Sizing>,
 }
 
 /// What the record holds.
@@ -294,6 +296,33 @@ pub struct SimulationResult {
     /// Least import limit that this store can hold, kW (kind `limits`).
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub least_import_limit_kw: Option<f64>,
+}
+
+/// The least size of a kind with which a run meets the asked point; null where no size does.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Sizing {
+    /// Identifier in the catalogue.
+    pub technology: String,
+    /// Energy delivered at the connection point from full to empty, at the asked power or the kind's reference power if that is less, kWh.
+    pub delivered_kwh: Option<f64>,
+    /// Usable energy inside, kWh.
+    pub usable_kwh: Option<f64>,
+    /// Usable share of the rated energy.
+    pub depth: f64,
+    /// Rated energy at the start of life, kWh: with what fades until its end, and the margin.
+    pub nameplate_kwh: Option<f64>,
+    /// Power both ways at the terminals, kW.
+    pub power_kw: Option<f64>,
+    /// Installed mass, kg; null also where the published figure is not a plant's mass.
+    pub mass_kg: Option<f64>,
+    /// Installed volume, l; null likewise.
+    pub volume_l: Option<f64>,
+    /// Share served in the run of this size, of what is asked without the store's own standing load.
+    pub served_share: Option<f64>,
+    /// Runs that it took.
+    pub runs: usize,
+    /// Remark; empty = none.
+    pub note: String,
 }
 
 /// Unserved energy by what was missing, kWh.

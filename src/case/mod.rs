@@ -71,6 +71,9 @@ pub struct Case {
     /// The record's files, where the case carries them.
     #[serde(default, skip_serializing_if = "Vec::is_empty")]
     pub files: Vec<CarriedFile>,
+    /// Whether every kind of the catalogue is sized for the asked point.
+    #[serde(default)]
+    pub sizings: bool,
 }
 
 fn first_seed() -> u32 {
@@ -92,6 +95,7 @@ impl Default for Case {
             prices: PriceCase::default(),
             seed: first_seed(),
             files: Vec::new(),
+            sizings: false,
         }
     }
 }

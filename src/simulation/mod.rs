@@ -4,10 +4,14 @@
 
 mod circuit;
 mod limit;
+mod run_of;
+mod size;
 mod tally;
+mod unit;
 
 pub use circuit::run as run_circuit;
 pub use limit::least_import_limit;
+pub use size::Sizes;
 
 use crate::case::{FixedStore, Start};
 use crate::duty::{Duty, Kind, Limits};
@@ -220,8 +224,7 @@ fn settled(duty: &Duty, store: &FixedStore, losses: &Losses, leak: Leak) -> f64 
     let step_h = duty.record.step_h();
     let window = Window::of(store);
     let wanted = |i: usize| {
-        asked(duty, losses, i)
-            .map_or((0.0, 0.0), |asked| within(asked, store.charge_kw, store.discharge_kw))
+        asked(duty, losses, i).map_or((0.0, 0.0), |asked| within(asked, store.charge_kw, store.discharge_kw))
     };
     if window.least > 0.0 && leak.lost > 0.0 {
         // Below the window only self-discharge goes on, so that a pass is no clamp of a line: the passes themselves, falling from full.

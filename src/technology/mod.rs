@@ -26,9 +26,9 @@ mod site;
 mod size;
 
 pub use catalogue::{
-    Catalogue, CircuitData, Indoors, Market, MassBasis, Model, Quantity, Range, Siting, Technology,
+    Catalogue, CircuitData, Indoors, Market, MassBasis, Model, Quantity, Range, Siting, Standing, Technology,
 };
-pub use curve::{Circuit, Meeting};
+pub use curve::{Circuit, Lumped, Meeting};
 pub use family::{Design, PLACES, Per};
 pub use hazards::{caution, hazard_words};
 pub use need::{Criterion, Judged, Need, Pair, Screened, Screening};

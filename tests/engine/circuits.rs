@@ -58,8 +58,7 @@ pub(crate) const BATTERY: &str = r#"{"kind": "battery", "charge_coulomb": 72000,
 const CAPACITOR: &str = r#"{"kind": "capacitor", "farad": 60, "series_ohm": 0.02, "leak_ohm": 5000, "start_v": 380, "least_v": 200}"#;
 const RESERVOIR: &str = r#"{"kind": "reservoir", "area_m2": 5000, "head_m": 80, "start_m3": 12000, "pipe_pa_s2_m6": 7355,
     "turbine_efficiency": 0.9, "pump_efficiency": 0.88, "leak_m3_s_pa": 1e-9}"#;
-const FLYWHEEL: &str =
-    r#"{"kind": "flywheel", "inertia_kg_m2": 40, "viscous_nms": 1e-4, "coulomb_nm": 0.2, "start_rad_s": 1200}"#;
+const FLYWHEEL: &str = r#"{"kind": "flywheel", "inertia_kg_m2": 40, "viscous_nms": 1e-4, "coulomb_nm": 0.2, "start_rad_s": 1200}"#;
 const COIL: &str = r#"{"kind": "coil", "henry": 2, "series_ohm": 0.001, "start_a": 1800}"#;
 
 #[test]
@@ -112,7 +111,8 @@ fn closed_forms_and_limits_of_the_circuits() {
     let all: Value = serde_json::from_str(include_str!("../reference/g_circuits.json")).unwrap();
     let number = |value: &Value| value.as_f64().unwrap();
     // Flywheel without Coulomb drag.
-    let wheel = store(r#"{"kind": "flywheel", "inertia_kg_m2": 40, "viscous_nms": 1e-4, "start_rad_s": 1200}"#);
+    let wheel =
+        store(r#"{"kind": "flywheel", "inertia_kg_m2": 40, "viscous_nms": 1e-4, "start_rad_s": 1200}"#);
     close(
         run(&wheel, 60, &[20_000.0]).state_end.unwrap(),
         number(&all["flywheel"]["exact_step_no_coulomb_20kW_60s_omega"]),
@@ -134,7 +134,8 @@ fn closed_forms_and_limits_of_the_circuits() {
 #[test]
 fn a_converter_takes_its_quadratic() {
     let all: Value = serde_json::from_str(include_str!("../reference/g_circuits.json")).unwrap();
-    let fields = COIL.replace("\"start_a\"", r#""converter": {"a_w": 150, "b": 0.01, "c_per_w": 5e-7}, "start_a""#);
+    let fields =
+        COIL.replace("\"start_a\"", r#""converter": {"a_w": 150, "b": 0.01, "c_per_w": 5e-7}, "start_a""#);
     let fields = fields.replace("0.001", "0");
     for row in all["converter"]["rows"].as_array().unwrap() {
         let (bus, loss) = (row[0].as_f64().unwrap(), row[1].as_f64().unwrap());
@@ -191,10 +192,14 @@ fn random_powers_that_hit_limits_agree_with_an_independent_integration() {
         let powers: Vec<f64> =
             expected["powers_w"].as_array().unwrap().iter().map(|v| v.as_f64().unwrap()).collect();
         let found = run(&store, expected["step_s"].as_i64().unwrap(), &powers);
-        let asked: f64 = powers.iter().map(|power| power.abs()).sum::<f64>() * expected["step_s"].as_f64().unwrap();
+        let asked: f64 =
+            powers.iter().map(|power| power.abs()).sum::<f64>() * expected["step_s"].as_f64().unwrap();
         let near = |found_kwh: f64, name: &str, expected: &Value| {
             let (found, expected) = (found_kwh * 3.6e6, expected.as_f64().unwrap());
-            assert!((found - expected).abs() <= 1e-8 * asked, "run {k}, {name}: {found}, expected {expected}");
+            assert!(
+                (found - expected).abs() <= 1e-8 * asked,
+                "run {k}, {name}: {found}, expected {expected}"
+            );
         };
         near(found.served_kwh, "served", &expected["served_j"]);
         near(found.unserved_kwh, "unserved", &expected["unserved_j"]);
@@ -207,6 +212,10 @@ fn random_powers_that_hit_limits_agree_with_an_independent_integration() {
         close(found.state_end.unwrap(), expected["state_end"].as_f64().unwrap(), 1e-7);
         let causes = found.unserved_by_cause;
         close(causes.power + causes.energy, found.unserved_kwh, 1e-9);
-        assert!(found.account_residual_kwh.abs() * 3.6e6 < 1e-11 * asked, "run {k}: {}", found.account_residual_kwh);
+        assert!(
+            found.account_residual_kwh.abs() * 3.6e6 < 1e-11 * asked,
+            "run {k}: {}",
+            found.account_residual_kwh
+        );
     }
 }

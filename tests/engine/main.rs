@@ -12,4 +12,5 @@ mod properties;
 mod reference;
 mod sheet;
 mod site;
+mod sizing;
 mod terminal;

@@ -60,9 +60,7 @@ impl Fields<'_> {
             ));
         }
         match start.1 {
-            Some(value) => {
-                self.inside(start.0, value, 0.0, greatest.1.unwrap_or(LARGE), unit)
-            }
+            Some(value) => self.inside(start.0, value, 0.0, greatest.1.unwrap_or(LARGE), unit),
             None if greatest.1.is_none() => Err(self.wrong(
                 start.0,
                 "is missing".to_owned(),
@@ -170,7 +168,12 @@ pub(super) fn check(store: &Store, place: &str) -> Result<()> {
             is.inside("turbine_efficiency", store.turbine_efficiency, 1e-3, 1.0, "")?;
             is.inside("pump_efficiency", store.pump_efficiency, 1e-3, 1.0, "")?;
             is.from_zero("leak_m3_s_pa", store.leak_m3_s_pa, "m3/(s Pa)")?;
-            is.bounds(("start_m3", None), ("greatest_m3", store.greatest_m3), ("start_m3", store.start_m3), "m3")
+            is.bounds(
+                ("start_m3", None),
+                ("greatest_m3", store.greatest_m3),
+                ("start_m3", store.start_m3),
+                "m3",
+            )
         }
         Store::Flywheel(store) => {
             is.above("inertia_kg_m2", store.inertia_kg_m2, "kg m2")?;

@@ -149,8 +149,7 @@ impl Machine<'_> {
         while left > 0.0 {
             segment = self.aligned(state, segment, mode, &asked);
             sum.fully &= mode == Mode::Asked || asked.bus_w == 0.0;
-            let pinned =
-                state.energy_j <= 0.0 && self.rates(state, segment, mode, &asked).energy_w < 0.0;
+            let pinned = state.energy_j <= 0.0 && self.rates(state, segment, mode, &asked).energy_w < 0.0;
             if mode == Mode::Rest && pinned && state.pair_v == 0.0 {
                 sum.rested_s += left;
                 break;
@@ -304,7 +303,9 @@ impl Machine<'_> {
         let start = [at.energy_j, at.pair_v, 0.0, 0.0, 0.0, 0.0, 0.0];
         let (y, errors) = ode::step(&start, seconds, rate);
         let scale_j = at.energy_j.abs() + asked.inner_w.abs() * seconds;
-        let mut error = (errors[0] / (OF_STATE * at.energy_j.abs().max(y[0].abs()) + OF_SCALE * scale_j + f64::MIN_POSITIVE)).abs();
+        let mut error = (errors[0]
+            / (OF_STATE * at.energy_j.abs().max(y[0].abs()) + OF_SCALE * scale_j + f64::MIN_POSITIVE))
+            .abs();
         error = worse(error, errors[1] / (OF_STATE * at.pair_v.abs().max(y[1].abs()) + 1e-10));
         for j in 2..7 {
             error = worse(error, errors[j] / (OF_FLOW * y[j].abs() + OF_SCALE * scale_j + f64::MIN_POSITIVE));

@@ -6,6 +6,7 @@ use super::element::{
 };
 use super::table::Table;
 use crate::case;
+use crate::technology::Lumped;
 
 /// Segment of a capacitor whose greatest power is that of the matched load; below it its least voltage decides.
 const MATCHED: usize = 1;
@@ -46,9 +47,8 @@ impl Battery {
     fn holding_a(&self, at: State, segment: usize) -> f64 {
         let open_v = self.table.height(segment, at.energy_j);
         let slope = self.table.slope(segment);
-        let (sum, push) = self
-            .pair
-            .map_or((slope, 0.0), |(ohm, farad)| (slope + 1.0 / farad, at.pair_v / (ohm * farad)));
+        let (sum, push) =
+            self.pair.map_or((slope, 0.0), |(ohm, farad)| (slope + 1.0 / farad, at.pair_v / (ohm * farad)));
         if sum > 0.0 { (push - slope * open_v * self.leak_s) / sum } else { 0.0 }
     }
 }
@@ -142,9 +142,25 @@ pub(super) struct Capacitor {
     start_v: f64,
     least_v: f64,
     greatest_v: Option<f64>,
+    /// Energies between which it works, whatever its terminals allow, J.
+    ends_j: (f64, f64),
 }
 
 impl Capacitor {
+    /// A circuit of the catalogue, or the dual of one: 1 V at full.
+    pub(super) fn of(lumped: &Lumped) -> Self {
+        let half = 0.5 * lumped.capacitance;
+        Self {
+            farad: lumped.capacitance,
+            series_ohm: lumped.resistance,
+            leak_s: half * lumped.decay_per_h,
+            start_v: 1.0,
+            least_v: 0.0,
+            greatest_v: None,
+            ends_j: (half * lumped.floor, half),
+        }
+    }
+
     pub(super) fn new(store: &case::Capacitor) -> Self {
         Self {
             farad: store.farad,
@@ -153,6 +169,7 @@ impl Capacitor {
             start_v: store.start_v.or(store.greatest_v).unwrap_or(0.0),
             least_v: store.least_v.unwrap_or(0.0),
             greatest_v: store.greatest_v,
+            ends_j: (0.0, f64::INFINITY),
         }
     }
 
@@ -160,7 +177,7 @@ impl Capacitor {
         (2.0 * at.energy_j.max(0.0) / self.farad).sqrt()
     }
 
-    fn energy_j(&self, volt: f64) -> f64 {
+    pub(super) fn energy_j(&self, volt: f64) -> f64 {
         0.5 * self.farad * volt * volt
     }
 
@@ -206,11 +223,7 @@ impl Element for Capacitor {
         let volt = self.volt(at);
         let amps = if self.series_ohm > 0.0 { current(power_w, volt, self.series_ohm) } else { 0.0 };
         let (series_w, leak_w) = (self.series_ohm * amps * amps, volt * volt * self.leak_s);
-        Flow {
-            energy_w: -power_w - series_w - leak_w,
-            pair_v_per_s: 0.0,
-            lost_w: [series_w, 0.0, leak_w],
-        }
+        Flow { energy_w: -power_w - series_w - leak_w, pair_v_per_s: 0.0, lost_w: [series_w, 0.0, leak_w] }
     }
 
     fn limit_w(&self, at: State, _segment: usize, discharging: bool) -> f64 {
@@ -233,7 +246,7 @@ impl Element for Capacitor {
     }
 
     fn ends_j(&self) -> (f64, f64) {
-        (0.0, f64::INFINITY)
+        self.ends_j
     }
 
     fn start(&self) -> State {
@@ -352,9 +365,7 @@ impl Element for Coil {
 
     fn exact(&self, at: State, _segment: usize, drive: Drive, seconds: f64) -> Option<Exact> {
         match drive {
-            Drive::Power(power) => {
-                Some(decaying(at, power, 2.0 * self.series_ohm / self.henry, seconds, 0))
-            }
+            Drive::Power(power) => Some(decaying(at, power, 2.0 * self.series_ohm / self.henry, seconds, 0)),
             Drive::Limit { .. } => None,
         }
     }

@@ -19,11 +19,12 @@ use self::advance::{Carried, Machine};
 use self::element::{Cause, Element, State};
 use super::tally::{Tally, rainflow_cycles, shares};
 use super::{Step, asked, within};
-use crate::case::{FixedStore, Store};
+use crate::case::{Converter, FixedStore, Store};
 use crate::duty::Duty;
 use crate::numeric::Sum;
 use crate::requirement::Losses;
 use crate::result::{CircuitLosses, LossesByCause, SimulationResult};
+use crate::technology::Lumped;
 
 /// Joules in a kilowatt-hour.
 const J_PER_KWH: f64 = 3.6e6;
@@ -71,8 +72,7 @@ pub fn run(duty: &Duty, store: &Store, mut see: impl FnMut(&Step)) -> Simulation
         let (after, carried) = machine.advance(state, (discharge - charge) * 1000.0, seconds);
         state = after;
         account.add(&carried, element.idle());
-        let given_kw =
-            if carried.fully { discharge - charge } else { carried.given_j / seconds / 1000.0 };
+        let given_kw = if carried.fully { discharge - charge } else { carried.given_j / seconds / 1000.0 };
         let level = (before, kwh(state));
         levels.push(level.1);
         let short_of_energy = asked_now.discharge.min(discharge) * carried.rested_s / seconds;
@@ -115,6 +115,24 @@ pub fn run(duty: &Duty, store: &Store, mut see: impl FnMut(&Step)) -> Simulation
         stored_end_kwh: stored.1,
         state_end: Some(element.value(state)),
         least_import_limit_kw: None,
+    }
+}
+
+/// A circuit of the catalogue, integrated with error control; kWh and hours stand for joules and seconds.
+#[derive(Debug)]
+pub(super) struct Slow(electric::Capacitor);
+
+impl Slow {
+    pub(super) fn new(lumped: &Lumped) -> Self {
+        Self(electric::Capacitor::of(lumped))
+    }
+
+    /// From y, under a power of the element (kW, discharge positive), over hours: y after it, and the energy given, kWh.
+    pub(super) fn advance(&self, y: f64, inner_kw: f64, hours: f64) -> (f64, f64) {
+        let machine = Machine { element: &self.0, converter: Converter::default() };
+        let half = self.0.energy_j(1.0);
+        let (after, carried) = machine.advance(State { energy_j: half * y, pair_v: 0.0 }, inner_kw, hours);
+        (after.energy_j / half, carried.given_j)
     }
 }
 

@@ -14,15 +14,8 @@ const A: [[f64; 6]; 6] = [
 ];
 
 /// Weights of order 5 less those of order 4.
-const E: [f64; 7] = [
-    71.0 / 57600.0,
-    0.0,
-    -71.0 / 16695.0,
-    71.0 / 1920.0,
-    -17253.0 / 339_200.0,
-    22.0 / 525.0,
-    -1.0 / 40.0,
-];
+const E: [f64; 7] =
+    [71.0 / 57600.0, 0.0, -71.0 / 16695.0, 71.0 / 1920.0, -17253.0 / 339_200.0, 22.0 / 525.0, -1.0 / 40.0];
 
 /// One step of length `h` of the autonomous system `rate`: the values after it, and the estimate of their error.
 pub(super) fn step<const N: usize>(

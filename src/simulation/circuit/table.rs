@@ -76,8 +76,7 @@ impl Table {
 
     /// Energy at a position.
     pub(super) fn energy_j(&self, position: f64) -> f64 {
-        let segment =
-            self.segments.partition_point(|segment| segment.position <= position).saturating_sub(1);
+        let segment = self.segments.partition_point(|segment| segment.position <= position).saturating_sub(1);
         let Segment { position: from, height, slope, from_j, to_j } = self.segments[segment];
         let u = position - from;
         (from_j + (height + 0.5 * slope * u) * u).clamp(0.0, to_j.max(self.full_j()))
