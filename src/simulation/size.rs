@@ -18,7 +18,7 @@ use crate::technology::{Catalogue, Design, Lumped, Per, Quantity, Standing, Tech
 /// Width of the bracket that ends a search, share of the size.
 const WIDTH: f64 = 1e-3;
 
-/// Runs after which a search gives up or scans.
+/// Runs after which a search ends, at the least size that it saw serve.
 const MOST_RUNS: usize = 40;
 
 /// Runs without a size that serves, after which sizes are scanned.
@@ -145,10 +145,16 @@ impl<'a> Search<'a> {
             self.first_kwh = self.first_kwh.max(usable / self.lumped.energy_kwh);
             return;
         }
-        // No size loses less than this: the fixed parts of its efficiencies alone, whatever its energy.
-        let own_kw = standing.fixed_kw + standing.per_kwh_kw * self.first_kwh;
-        let best = Ranges::of(duty, &losses(1.0, own_kw), Some(self.power_kw + own_kw));
-        self.best_missed_kwh = best.floor_kwh();
+        // A bound for every size: no conversion is better than the fixed parts of its efficiencies, and the energy that even such a store
+        // needs brings its standing load with it.
+        let best = |own_kw: f64| Ranges::of(duty, &losses(1.0, own_kw), Some(self.power_kw + own_kw));
+        let mut bound = best(standing.fixed_kw);
+        if standing.per_kwh_kw > 0.0
+            && let Some(usable) = bound.capacity_kwh(self.allowed_kwh / bound.deficit_kwh())
+        {
+            bound = best(standing.fixed_kw + standing.per_kwh_kw * usable / self.lumped.energy_kwh);
+        }
+        self.best_missed_kwh = bound.floor_kwh();
         if self.best_missed_kwh > self.allowed_kwh {
             return;
         }
@@ -170,7 +176,7 @@ impl<'a> Search<'a> {
         if self.best_missed_kwh > self.allowed_kwh {
             let most = 1.0 - self.best_missed_kwh / self.rig.asked_kwh();
             let note = format!(
-                "No size serves what is asked: conversion losses and standing load leave {} of it at most.",
+                "No size serves what is asked: its conversion losses and standing load leave {} of it at most.",
                 crate::units::people::percent(most.max(0.0))
             );
             return self.sizing(None, note, case);
@@ -205,7 +211,7 @@ impl<'a> Search<'a> {
             _ => self.first_kwh,
         };
         let mut tries = 0;
-        while self.runs < MOST_RUNS {
+        while tries < MOST_RUNS {
             if serves.is_none() && tries >= patience {
                 return None;
             }
@@ -296,7 +302,6 @@ impl<'a> Search<'a> {
                     "Found by a scan of sizes: its losses grow with its size, so that more need not serve more."
                         .clone_into(note);
                 }
-                self.runs = self.runs.min(MOST_RUNS / 2);
                 return self.bracket(before, Some(tried), usize::MAX);
             }
             worse = if best.is_some_and(|best| tried.outcome.missed_kwh >= best.outcome.missed_kwh) {
@@ -305,7 +310,7 @@ impl<'a> Search<'a> {
                 best = Some(tried);
                 0
             };
-            if worse >= 6 {
+            if worse >= 3 {
                 break;
             }
             before = Some(tried);

@@ -11,6 +11,9 @@ use crate::technology::Lumped;
 /// Greatest change of y in a fast step, share of y. The method's error is then below 1e-9 of it.
 const FAST: f64 = 0.03;
 
+/// Most parts into which a step is cut before the error-controlled integration takes over.
+const MOST_PARTS: f64 = 16.0;
+
 /// Least distance of the state from the matched load in a fast step.
 const CLEAR: f64 = 1.1;
 
@@ -99,6 +102,24 @@ impl Unit {
         let k1 = rate(y);
         let moved = (k1 * step_h).abs();
         let clear = 4.0 * lumped.resistance * inner * CLEAR < y - moved;
+        let parts = (moved / (FAST * y)).ceil();
+        if parts > 1.0 && parts <= MOST_PARTS && 4.0 * lumped.resistance * inner * CLEAR < y - 2.0 * moved {
+            let part_h = step_h / parts;
+            let rest = libm::exp(-lumped.decay_per_h * part_h);
+            let (mut carried, mut after) = (0.0, y);
+            for done in 1..=parts as usize {
+                let part = Self::element(lumped, part_h, rest, slow, after, wanted_kw);
+                carried += part.carried_kw;
+                after = part.after;
+                // At its end it rests until the whole step is over.
+                if part.carried_kw != wanted_kw {
+                    let left = (parts - done as f64) * part_h;
+                    after *= libm::exp(-lumped.decay_per_h * left);
+                    break;
+                }
+            }
+            return Moved { carried_kw: carried / parts, after };
+        }
         if moved > FAST * y || !clear {
             let (after, given) = slow.advance(y, inner, step_h);
             let carried = if charging { -given / lumped.charge } else { given * lumped.discharge };
@@ -174,5 +195,29 @@ mod tests {
             assert!((carried - exactly).abs() < 2e-8 * moved, "{}: {carried} {exactly}", technology.id);
         }
         assert!(ends > 300, "ends are reached: {ends}");
+    }
+
+    #[test]
+    fn the_closed_form_of_the_curve_is_the_integration_of_the_same_circuit() {
+        // Christen and Carlen 2000, J. Power Sources 91(2):210-216, with the leak; the integration ends where the circuit rests or can give
+        // no more than it is asked.
+        for technology in Catalogue::published().unwrap().technologies {
+            let circuit = Design::at(&technology, Per::Mass, 0.0).circuit;
+            let lumped = circuit.lumped(0.8);
+            if lumped.fixed {
+                continue;
+            }
+            let slow = Slow::new(&lumped);
+            for share in [0.01, 0.2, 0.5] {
+                let power = share * circuit.ref_power_kw();
+                let inner = power / lumped.discharge;
+                let hours = lumped.delivered_kwh(power) / power;
+                let (y, given) = slow.advance(1.0, inner, hours);
+                assert!((y - lumped.floor).abs() < 1e-8, "{}: {y} {}", technology.id, lumped.floor);
+                assert!((given / (inner * hours) - 1.0).abs() < 1e-8, "{}", technology.id);
+                let (_, longer) = slow.advance(1.0, inner, 1.5 * hours);
+                assert!((longer / given - 1.0).abs() < 1e-7, "{}: nothing after the end", technology.id);
+            }
+        }
     }
 }

@@ -219,3 +219,50 @@ fn random_powers_that_hit_limits_agree_with_an_independent_integration() {
         );
     }
 }
+
+#[test]
+fn a_store_that_cannot_be_is_refused_by_its_fields_name() {
+    for (fields, place) in [
+        (BATTERY.replace("72000", "0"), "stores[0].charge_coulomb"),
+        (BATTERY.replace("[0.3, 362]", "[0.05, 362]"), "stores[0].open_circuit"),
+        (BATTERY.replace("[1, 400]", "[0.95, 400]"), "stores[0].open_circuit"),
+        (BATTERY.replace("\"pair_ohm\": 0.06", "\"pair_ohm\": 0"), "stores[0].pair_ohm"),
+        (CAPACITOR.replace("\"least_v\": 200", "\"least_v\": 200, \"greatest_v\": 100"), "stores[0].least_v"),
+        (CAPACITOR.replace("\"start_v\": 380, ", ""), "stores[0].start_v"),
+        (RESERVOIR.replace("0.88", "1.2"), "stores[0].pump_efficiency"),
+        (FLYWHEEL.replace("viscous_nms\": 1e-4", "viscous_nms\": -1"), "stores[0].viscous_nms"),
+        (COIL.replace("henry", "henries"), "henries"),
+    ] {
+        let text = format!(r#"{{"millpond_case": 1, "stores": [{fields}]}}"#);
+        let fault = Case::from_json(&text).unwrap_err();
+        assert!(fault.place.contains(place) || fault.what.contains(place), "{place}: {fault}");
+    }
+}
+
+#[test]
+fn a_store_at_its_end_rests_and_leaks_on() {
+    // Full, asked to charge for an hour: it rests, and only leaks.
+    let full = store(
+        r#"{"kind": "flywheel", "inertia_kg_m2": 40, "viscous_nms": 1e-4, "greatest_rad_s": 1000, "least_rad_s": 500}"#,
+    );
+    let found = run(&full, 3600, &[-1000.0]);
+    close(found.curtailed_kwh, 1.0, 1e-12);
+    close(found.state_end.unwrap(), 1000.0 * (-1e-4_f64 / 40.0 * 3600.0).exp(), 1e-12);
+    close(found.energy_kwh.unwrap(), 0.5 * 40.0 * (1000.0_f64.powi(2) - 500.0_f64.powi(2)) / 3.6e6, 1e-12);
+    // Asked for more than there is: 15 MJ are given, the rest is unserved for want of energy.
+    let lossless =
+        store(r#"{"kind": "flywheel", "inertia_kg_m2": 40, "greatest_rad_s": 1000, "least_rad_s": 500}"#);
+    let found = run(&lossless, 3600, &[5000.0]);
+    close(found.served_kwh, 15.0 / 3.6, 1e-12);
+    close(found.unserved_by_cause.energy, 5.0 - 15.0 / 3.6, 1e-11);
+    assert_eq!(found.unserved_by_cause.power, 0.0);
+    close(found.tracking_error.unwrap(), 1.0 - 15.0 / 18.0, 1e-11);
+    // A coil at rest under a greatest voltage: the current rises by V t / L.
+    let coil = store(r#"{"kind": "coil", "henry": 2, "start_a": 0, "greatest_v": 10, "greatest_a": 2000}"#);
+    close(run(&coil, 60, &[-1e6]).state_end.unwrap(), 300.0, 1e-9);
+    // A capacitor without series resistance holds its greatest voltage with what leaks.
+    let held = store(r#"{"kind": "capacitor", "farad": 60, "leak_ohm": 500, "greatest_v": 400}"#);
+    let found = run(&held, 600, &[-1000.0]);
+    close(losses(&found).leak * 3.6e6, 400.0 * 400.0 / 500.0 * 600.0, 1e-8);
+    close(found.state_end.unwrap(), 400.0, 1e-9);
+}

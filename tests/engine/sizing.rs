@@ -39,7 +39,7 @@ fn every_kind_is_sized_or_says_why_not() {
                         sizing.technology
                     );
                     assert!(sizing.usable_kwh.unwrap() > 0.0 && sizing.delivered_kwh.unwrap() > 0.0);
-                    assert!(sizing.runs <= 40);
+                    assert!(sizing.runs <= 60);
                 }
                 None => assert!(!sizing.note.is_empty(), "{}", sizing.technology),
             }

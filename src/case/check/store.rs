@@ -31,7 +31,7 @@ impl Fields<'_> {
     }
 
     /// Zero or above.
-    fn from_zero(&self, field: &str, value: f64, unit: &str) -> Result<()> {
+    fn not_below_zero(&self, field: &str, value: f64, unit: &str) -> Result<()> {
         self.inside(field, value, 0.0, LARGE, unit)
     }
 
@@ -55,7 +55,7 @@ impl Fields<'_> {
         {
             return Err(self.wrong(
                 least.0,
-                format!("is {low}, not below {}, {high}", greatest.0),
+                &format!("is {low}, not below {}, {high}", greatest.0),
                 "Give a lower one.",
             ));
         }
@@ -63,7 +63,7 @@ impl Fields<'_> {
             Some(value) => self.inside(start.0, value, 0.0, greatest.1.unwrap_or(LARGE), unit),
             None if greatest.1.is_none() => Err(self.wrong(
                 start.0,
-                "is missing".to_owned(),
+                "is missing",
                 &format!("Give it, or {} from which the store then starts.", greatest.0),
             )),
             None => Ok(()),
@@ -75,7 +75,7 @@ impl Fields<'_> {
         if !(2..=MOST_POINTS).contains(&table.len()) {
             return Err(self.wrong(
                 field,
-                format!("has {} points", table.len()),
+                &format!("has {} points", table.len()),
                 &format!("Give 2 to {MOST_POINTS} points."),
             ));
         }
@@ -86,16 +86,12 @@ impl Fields<'_> {
         if table.windows(2).any(|pair| pair[0].0 >= pair[1].0) {
             return Err(self.wrong(
                 field,
-                "does not rise in its first column".to_owned(),
+                "does not rise in its first column",
                 "List the points in order, each once.",
             ));
         }
         if table.windows(2).any(|pair| pair[0].1 + pair[1].1 <= 0.0) {
-            return Err(self.wrong(
-                field,
-                "holds no energy over a stretch".to_owned(),
-                "Give values above zero.",
-            ));
+            return Err(self.wrong(field, "holds no energy over a stretch", "Give values above zero."));
         }
         Ok(())
     }
@@ -107,7 +103,7 @@ impl Fields<'_> {
         self.inside("converter.c_per_w", converter.c_per_w, 0.0, 1.0, "1/W")
     }
 
-    fn wrong(&self, field: &str, what: String, remedy: &str) -> Fault {
+    fn wrong(&self, field: &str, what: &str, remedy: &str) -> Fault {
         let field = self.at(field);
         Fault::new(format!("{field} {what}"), format!("case, at {field}"), remedy)
     }
@@ -130,16 +126,16 @@ pub(super) fn check(store: &Store, place: &str) -> Result<()> {
             if first != 0.0 || last != 1.0 {
                 return Err(is.wrong(
                     "open_circuit",
-                    format!("runs from {first} to {last}"),
+                    &format!("runs from {first} to {last}"),
                     "Let the state of charge run from 0 to 1.",
                 ));
             }
-            is.from_zero("series_ohm", store.series_ohm, "ohm")?;
+            is.not_below_zero("series_ohm", store.series_ohm, "ohm")?;
             if let Some(farad) = store.pair_farad {
                 is.above("pair_farad", farad, "F")?;
                 is.above("pair_ohm", store.pair_ohm, "ohm")?;
             } else {
-                is.from_zero("pair_ohm", store.pair_ohm, "ohm")?;
+                is.not_below_zero("pair_ohm", store.pair_ohm, "ohm")?;
             }
             is.none_or_above("leak_ohm", store.leak_ohm, "ohm")?;
             is.bounds(
@@ -152,7 +148,7 @@ pub(super) fn check(store: &Store, place: &str) -> Result<()> {
         }
         Store::Capacitor(store) => {
             is.above("farad", store.farad, "F")?;
-            is.from_zero("series_ohm", store.series_ohm, "ohm")?;
+            is.not_below_zero("series_ohm", store.series_ohm, "ohm")?;
             is.none_or_above("leak_ohm", store.leak_ohm, "ohm")?;
             is.bounds(
                 ("least_v", store.least_v),
@@ -164,10 +160,10 @@ pub(super) fn check(store: &Store, place: &str) -> Result<()> {
         Store::Reservoir(store) => {
             is.above("area_m2", store.area_m2, "m2")?;
             is.above("head_m", store.head_m, "m")?;
-            is.from_zero("pipe_pa_s2_m6", store.pipe_pa_s2_m6, "Pa s2/m6")?;
+            is.not_below_zero("pipe_pa_s2_m6", store.pipe_pa_s2_m6, "Pa s2/m6")?;
             is.inside("turbine_efficiency", store.turbine_efficiency, 1e-3, 1.0, "")?;
             is.inside("pump_efficiency", store.pump_efficiency, 1e-3, 1.0, "")?;
-            is.from_zero("leak_m3_s_pa", store.leak_m3_s_pa, "m3/(s Pa)")?;
+            is.not_below_zero("leak_m3_s_pa", store.leak_m3_s_pa, "m3/(s Pa)")?;
             is.bounds(
                 ("start_m3", None),
                 ("greatest_m3", store.greatest_m3),
@@ -177,8 +173,8 @@ pub(super) fn check(store: &Store, place: &str) -> Result<()> {
         }
         Store::Flywheel(store) => {
             is.above("inertia_kg_m2", store.inertia_kg_m2, "kg m2")?;
-            is.from_zero("viscous_nms", store.viscous_nms, "N m s")?;
-            is.from_zero("coulomb_nm", store.coulomb_nm, "N m")?;
+            is.not_below_zero("viscous_nms", store.viscous_nms, "N m s")?;
+            is.not_below_zero("coulomb_nm", store.coulomb_nm, "N m")?;
             is.bounds(
                 ("least_rad_s", store.least_rad_s),
                 ("greatest_rad_s", store.greatest_rad_s),
@@ -188,9 +184,9 @@ pub(super) fn check(store: &Store, place: &str) -> Result<()> {
         }
         Store::Coil(store) => {
             is.above("henry", store.henry, "H")?;
-            is.from_zero("series_ohm", store.series_ohm, "ohm")?;
+            is.not_below_zero("series_ohm", store.series_ohm, "ohm")?;
             is.none_or_above("greatest_v", store.greatest_v, "V")?;
-            is.from_zero("cryogenic_w", store.cryogenic_w, "W")?;
+            is.not_below_zero("cryogenic_w", store.cryogenic_w, "W")?;
             is.bounds(
                 ("least_a", store.least_a),
                 ("greatest_a", store.greatest_a),
@@ -200,8 +196,8 @@ pub(super) fn check(store: &Store, place: &str) -> Result<()> {
         }
         Store::Curve(store) => {
             is.table("travel_force", &store.travel_force)?;
-            is.from_zero("viscous_ns_m", store.viscous_ns_m, "N s/m")?;
-            is.from_zero("coulomb_n", store.coulomb_n, "N")?;
+            is.not_below_zero("viscous_ns_m", store.viscous_ns_m, "N s/m")?;
+            is.not_below_zero("coulomb_n", store.coulomb_n, "N")?;
             let (first, last) = (store.travel_force[0].0, store.travel_force[store.travel_force.len() - 1].0);
             optional(&is.at("start_m"), store.start_m, first, last, "m")
         }

@@ -2,7 +2,8 @@
 //!
 //! Between events (a limit begins or ends, the energy ends, a table's line ends) the rates are smooth. Such a stretch is solved in closed
 //! form where there is one, and otherwise by steps of Dormand and Prince under error control; the energy in the element is a state, so
-//! that every loss is integrated beside it. Events are found by bisection of the last step.
+//! that every loss is integrated beside it. Events are found by a bracketing secant
+//! in the last step.
 
 use super::element::{Drive, Element, LEAK, State};
 use super::ode;
@@ -166,7 +167,7 @@ impl Machine<'_> {
             let span = step.min(left);
             let trial = self.trial(state, segment, mode, pinned, &asked, span);
             // Not a number counts as too large an error.
-            if !(trial.error <= 1.0) && span > SHORTEST * seconds {
+            if (trial.error > 1.0 || trial.error.is_nan()) && span > SHORTEST * seconds {
                 step = span * shrink(trial.error);
                 continue;
             }
@@ -316,7 +317,7 @@ impl Machine<'_> {
     }
 
     /// Cuts a stretch at the first event in it.
-    #[allow(clippy::too_many_arguments, reason = "the stretch, all of which the bisection tries again")]
+    #[allow(clippy::too_many_arguments, reason = "the stretch, all of which is tried again")]
     fn up_to_event(
         &self,
         at: State,
@@ -346,19 +347,16 @@ impl Machine<'_> {
             guess = root;
             let middle = if aimed > before && aimed < after { aimed } else { f64::midpoint(before, after) };
             let tried = self.trial(at, segment, mode, pinned, asked, middle);
-            match self.event(tried.after, segment, mode, pinned, asked) {
-                Some(found) => {
-                    if found != event {
-                        event = found;
-                        from = f64::NAN;
-                    }
-                    after = middle;
-                    trial = tried;
+            if let Some(found) = self.event(tried.after, segment, mode, pinned, asked) {
+                if found != event {
+                    event = found;
+                    from = f64::NAN;
                 }
-                None => {
-                    before = middle;
-                    from = distance(event, tried.after);
-                }
+                after = middle;
+                trial = tried;
+            } else {
+                before = middle;
+                from = distance(event, tried.after);
             }
         }
         (after, trial, Some(event))

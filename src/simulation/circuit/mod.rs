@@ -86,7 +86,7 @@ pub fn run(duty: &Duty, store: &Store, mut see: impl FnMut(&Step)) -> Simulation
         });
     }
     let capacity = element.capacity_j().map(|joule| joule / J_PER_KWH);
-    let taken = account.taken_j.value() / J_PER_KWH;
+    let taken = account.taken.value() / J_PER_KWH;
     let unserved = tally.unserved_kwh(step_h);
     let curtailed = tally.curtailed_kwh(step_h);
     let (self_consumption, self_sufficiency) = shares(duty, unserved, curtailed);
@@ -104,9 +104,7 @@ pub fn run(duty: &Duty, store: &Store, mut see: impl FnMut(&Step)) -> Simulation
         self_consumption,
         self_sufficiency,
         tracking_error: tally.tracking_error(),
-        account_residual_kwh: -account.given_j.value() / J_PER_KWH
-            - lost.inside_kwh()
-            - (stored.1 - stored.0),
+        account_residual_kwh: -account.given.value() / J_PER_KWH - lost.inside_kwh() - (stored.1 - stored.0),
         losses_kwh: LossesByCause::Circuit(lost),
         equivalent_full_cycles: capacity.filter(|kwh| *kwh > 0.0).map(|kwh| taken / kwh),
         rainflow_cycles: capacity.and_then(|kwh| rainflow_cycles(&levels, kwh)),
@@ -139,35 +137,35 @@ impl Slow {
 /// Running sums of a run, J.
 #[derive(Debug, Default)]
 struct Account {
-    given_j: Sum,
-    converter_j: Sum,
-    lost_j: [Sum; 3],
+    given: Sum,
+    converter: Sum,
+    lost: [Sum; 3],
     /// Taken from the store for delivery: what the element gave and what its conversion lost.
-    taken_j: Sum,
+    taken: Sum,
 }
 
 impl Account {
     fn add(&mut self, carried: &Carried, idle: [bool; 3]) {
-        self.given_j.add(carried.given_j);
-        self.converter_j.add(carried.inner_j - carried.given_j);
-        for (sum, lost) in self.lost_j.iter_mut().zip(carried.lost_j) {
+        self.given.add(carried.given_j);
+        self.converter.add(carried.inner_j - carried.given_j);
+        for (sum, lost) in self.lost.iter_mut().zip(carried.lost_j) {
             sum.add(lost);
         }
         if carried.given_j > 0.0 {
-            self.taken_j.add(carried.inner_j);
+            self.taken.add(carried.inner_j);
             for (lost, idle) in carried.lost_j.iter().zip(idle) {
-                self.taken_j.add(if idle { 0.0 } else { *lost });
+                self.taken.add(if idle { 0.0 } else { *lost });
             }
         }
     }
 
     fn losses(&self, element: &dyn Element, cryogenic: f64) -> CircuitLosses {
         let mut lost = CircuitLosses {
-            converter: self.converter_j.value() / J_PER_KWH,
+            converter: self.converter.value() / J_PER_KWH,
             cryogenic,
             ..CircuitLosses::default()
         };
-        for (cause, sum) in element.causes().into_iter().zip(self.lost_j) {
+        for (cause, sum) in element.causes().into_iter().zip(self.lost) {
             let kwh = sum.value() / J_PER_KWH;
             match cause {
                 Cause::Series => lost.series = kwh,
