@@ -96,11 +96,12 @@ fn a_force_over_travel_follows_its_table() {
     let mut points = String::new();
     for k in 0..=4500_u32 {
         let x = 1e-1 * f64::from(k) / 4500.0;
-        write!(points, "{}[{x}, {}]", if k == 0 { "" } else { ", " }, 40_000.0 * (-x / 0.05).exp()).unwrap();
+        write!(points, "{}[{x}, {}]", if k == 0 { "" } else { ", " }, 40_000.0 * libm::exp(-x / 0.05))
+            .unwrap();
     }
     let fields = format!(
         r#"{{"kind": "curve", "travel_force": [{points}], "viscous_ns_m": 2e5, "coulomb_n": 100, "start_m": {}}}"#,
-        -0.05 * 0.4_f64.ln()
+        -0.05 * libm::log(0.4)
     );
     let of = |lost: &CircuitLosses| vec![lost.viscous, lost.coulomb];
     follow(&fields, include_str!("../reference/g_potential_curve.csv"), 30, of, 1e-6);
@@ -247,8 +248,8 @@ fn a_store_at_its_end_rests_and_leaks_on() {
     );
     let found = run(&full, 3600, &[-1000.0]);
     close(found.curtailed_kwh, 1.0, 1e-12);
-    close(found.state_end.unwrap(), 1000.0 * (-1e-4_f64 / 40.0 * 3600.0).exp(), 1e-12);
-    close(found.energy_kwh.unwrap(), 0.5 * 40.0 * (1000.0_f64.powi(2) - 500.0_f64.powi(2)) / 3.6e6, 1e-12);
+    close(found.state_end.unwrap(), 1000.0 * libm::exp(-1e-4 / 40.0 * 3600.0), 1e-12);
+    close(found.energy_kwh.unwrap(), 0.5 * 40.0 * (1e6 - 2.5e5) / 3.6e6, 1e-12);
     // Asked for more than there is: 15 MJ are given, the rest is unserved for want of energy.
     let lossless =
         store(r#"{"kind": "flywheel", "inertia_kg_m2": 40, "greatest_rad_s": 1000, "least_rad_s": 500}"#);
