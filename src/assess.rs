@@ -40,7 +40,7 @@ pub fn assess(record: &Rc<Record>, case: &Case, catalogue: &Catalogue) -> Result
     let (need, screening) = screen(&duty, &requirement, case, &catalogue);
     let simulations = case.stores.iter().enumerate().map(|(i, store)| simulate(&duty, store, i)).collect();
     let sizings = if case.sizings {
-        finish(simulation::Sizes::new(&duty, requirement.asked.as_ref(), case, catalogue))?
+        finish(simulation::Sizes::new(&duty, requirement.asked.as_ref(), case, &catalogue))?
     } else {
         Vec::new()
     };

@@ -6,6 +6,7 @@ use serde::{Deserialize, Serialize};
 ///
 /// Quadratic form: Schmidt and Sauer 1996, Sonnenenergie 4 (from memory).
 #[derive(Debug, Clone, Copy, Default, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields, default)]
 pub struct Converter {
     /// Constant part, W.
@@ -22,6 +23,7 @@ macro_rules! circuits {
         $(
             $(#[$about])*
             #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+            #[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
             #[serde(deny_unknown_fields)]
             pub struct $name {
                 /// Name for tables.

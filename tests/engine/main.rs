@@ -3,11 +3,8 @@
 
 #![allow(clippy::unwrap_used, clippy::expect_used, reason = "a test that cannot go on should say where")]
 
-<<<<<<< HEAD
 mod case;
-=======
 mod circuits;
->>>>>>> 16b103c (Stores as lumped circuits run on a duty; the window of a fixed store; unserved energy by cause and tracking)
 mod properties;
 mod reference;
 mod sheet;

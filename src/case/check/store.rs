@@ -1,6 +1,6 @@
 //! Ranges of the stores' numbers.
 
-use super::{MOST, count, number, optional};
+use super::{MOST, number, optional, word};
 use crate::case::{Converter, FixedStore, Store};
 use crate::fault::{Fault, Result};
 
@@ -80,8 +80,8 @@ impl Fields<'_> {
             ));
         }
         for (k, (x, y)) in table.iter().enumerate() {
-            self.inside(&format!("{field}[{k}][0]"), *x, -LARGE, LARGE, "")?;
-            self.inside(&format!("{field}[{k}][1]"), *y, 0.0, LARGE, "")?;
+            self.inside(&format!("{field}[{k}][0]"), *x, -LARGE, LARGE, "in the unit of the table")?;
+            self.inside(&format!("{field}[{k}][1]"), *y, 0.0, LARGE, "in the unit of the table")?;
         }
         if table.windows(2).any(|pair| pair[0].0 >= pair[1].0) {
             return Err(self.wrong(
@@ -116,7 +116,7 @@ pub(super) fn check(store: &Store, place: &str) -> Result<()> {
     optional(&is.at("charge_kw"), terminals.charge_kw, 0.0, MOST, "kW")?;
     optional(&is.at("discharge_kw"), terminals.discharge_kw, 0.0, MOST, "kW")?;
     is.converter(terminals.converter)?;
-    count(&is.at("name"), terminals.name.chars().count())?;
+    word(&is.at("name"), terminals.name)?;
     match store {
         Store::Fixed(store) => fixed(&is, store),
         Store::Battery(store) => {
