@@ -113,7 +113,7 @@ pub(crate) fn working(desk: Desk) -> impl IntoView {
                     })}
                 </div>
             })}
-            {move || (!remark.get().is_empty()).then(|| view! { <p class="busy">{remark.get()}</p> })}
+            {move || (!remark.get().is_empty()).then(|| view! { <p class="busy said">{remark.get()}</p> })}
         </div>
     }
 }

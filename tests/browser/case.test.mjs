@@ -19,6 +19,8 @@ const served = async (page) =>
   Number((await figures(page)).find(({ path }) => path === "requirement.asked.served_share")?.value);
 const keeping = (page, words) =>
   page.waitForFunction((words) => document.querySelector("[data-role=keeping]").textContent.includes(words), words);
+/** Waits for a remark at the foot of the window. */
+const says = (page, words) => page.locator(".working .said", { hasText: words }).waitFor();
 const kept = (page) => keeping(page, "Kept in this browser, with the record.");
 const openFold = async (page, name) => {
   const fold = page.locator("details.fold", { has: page.locator(`summary:has-text("${name}")`) }).first();
@@ -226,7 +228,9 @@ test("a page that is killed while it works comes back with its case", async () =
   await page.waitForTimeout(300);
   // The renderer goes as it would for want of memory: no handler of the page's runs.
   const session = await page.context().newCDPSession(page);
-  await session.send("Page.crash").catch(() => {});
+  const gone = page.waitForEvent("crash");
+  session.send("Page.crash").catch(() => {}); // It has nobody left to answer it.
+  await gone;
   const next = await page.context().newPage();
   await next.goto(site.origin);
   await next.waitForSelector("[data-figure]");
@@ -253,7 +257,7 @@ test("several cases are kept by name, opened again and removed", async () => {
   assert.equal(JSON.parse(await savedResult(page)).site, JSON.parse(terminalText(demoFile(demos[0]))).site);
   await fold.locator("li", { hasText: "Island" }).locator("[data-role=remove-kept]").click();
   await page.waitForFunction(() => document.querySelectorAll(".kept li").length === 1);
-  assert.match(await page.locator(".working").innerText(), /Removed from this browser/);
+  await says(page, "Removed from this browser");
   await page.reload();
   await page.waitForSelector("[data-figure]");
   await settled(page);
@@ -272,7 +276,7 @@ test("without the record the case is kept, and the meter file is asked for", asy
   await page.reload();
   await page.waitForSelector("section[data-station=record]");
   await settled(page);
-  assert.match(await page.locator(".working").innerText(), /hand over the meter file again/);
+  await says(page, "hand over the meter file again");
   assert.equal(await page.locator("[data-figure]").count(), 0);
   await chooseFiles(page, demoFile(demos[0]));
   await settled(page);
@@ -286,7 +290,7 @@ test("one click keeps nothing on this computer", async () => {
   await openFold(page, "Kept in this browser");
   await page.locator("[data-role=keep-nothing]").click();
   await keeping(page, "Nothing is kept on this computer.");
-  await page.waitForFunction(() => document.querySelector(".working").textContent.includes("removed from this browser"));
+  await says(page, "removed from this browser");
   await share(page).fill("80 %");
   await share(page).blur();
   await settled(page);
@@ -327,12 +331,12 @@ test("two tabs do not write over each other", async () => {
   await other.waitForSelector("section[data-station=record]");
   await settled(other);
   assert.equal(await other.locator("[data-figure]").count(), 0, "the case is open in the first tab");
-  assert.match(await other.locator(".working").innerText(), /open in another tab/);
+  await says(other, "open in another tab");
   const fold = await openFold(other, "Kept in this browser");
   await fold.locator("[data-role=open-kept]").first().click();
   await other.waitForSelector("[data-figure]");
   await settled(other);
-  assert.match(await other.locator(".working").innerText(), /is a copy/);
+  await says(other, "is a copy");
   await share(other).fill("50 %");
   await share(other).blur();
   await written(other);
@@ -397,7 +401,7 @@ test("what the browser has removed is missed in a sentence", async () => {
     const gone = indexedDB.deleteDatabase("millpond");
     gone.onsuccess = () => done();
   }));
-  assert.match(await page.locator(".working").innerText(), /What was kept here is gone/);
+  await says(page, "What was kept here is gone");
   assert.equal(await page.locator("[data-figure]").count(), 0);
   await page.closeAll();
 });
