@@ -79,10 +79,10 @@ pub(super) fn list(duty: &Duty, case: &Case, working: &Working, asked: Option<&A
                 lossy,
             );
         }
-        if duty.result.surplus_kwh > 0.0 && !matches!(duty.kind, Kind::Limits(_)) {
+        if duty.result.surplus() > 0.0 && !matches!(duty.kind, Kind::Limits(_)) {
             computed(
                 "round_trip_efficiency",
-                point.served_share * duty.result.deficit_kwh / duty.result.surplus_kwh,
+                point.served_share * duty.result.deficit() / duty.result.surplus(),
                 "",
                 "served energy over surplus".to_owned(),
                 Confidence::Measured,

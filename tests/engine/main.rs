@@ -4,6 +4,7 @@
 #![allow(clippy::unwrap_used, clippy::expect_used, reason = "a test that cannot go on should say where")]
 
 mod case;
+mod duties;
 mod properties;
 mod reference;
 mod sheet;

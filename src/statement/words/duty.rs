@@ -14,20 +14,20 @@ pub(super) fn station(done: &Assessment, case: &Case) -> Station {
     let (short, over) = (deficit_word(duty.connection), surplus_word(duty.connection));
     let mut first = Vec::new();
     let episodes = |number: usize| count(number, "episode", "episodes");
-    if result.surplus_kwh > 0.0 || duty.totals.supply_kwh.is_some() {
+    if result.surplus() > 0.0 || duty.totals.supply_kwh.is_some() {
         first.push(figure(
             "duty.surplus_kwh",
-            result.surplus_kwh,
+            result.surplus(),
             &capital(over),
-            people::energy(result.surplus_kwh),
+            people::energy(result.surplus()),
             episodes(result.surplus_episodes),
         ));
     }
     first.push(figure(
         "duty.deficit_kwh",
-        result.deficit_kwh,
+        result.deficit(),
         &capital(short),
-        people::energy(result.deficit_kwh),
+        people::energy(result.deficit()),
         episodes(result.deficit_episodes),
     ));
     Station {
@@ -36,7 +36,7 @@ pub(super) fn station(done: &Assessment, case: &Case) -> Station {
             Kind::Limits(limits) => limits
                 .import_kw
                 .map_or("export limit".to_owned(), |limit| format!("import at most {}", people::power(limit))),
-            _ => format!("{} {short}", people::energy(result.deficit_kwh)),
+            _ => format!("{} {short}", people::energy(result.deficit())),
         },
         warning: if done.requirement.infeasible.is_some() && duty.connection == Connection::Islanded {
             "no store can serve it all".to_owned()
@@ -62,7 +62,7 @@ fn sentence(done: &Assessment) -> String {
     let result = &duty.result;
     let (short, over) = (deficit_word(duty.connection), surplus_word(duty.connection));
     if let Kind::Limits(limits) = duty.kind {
-        let peak = people::power(result.peak_discharge_kw);
+        let peak = people::power(result.peak_deficit());
         return match (limits.import_kw, limits.export_kw) {
             (Some(import), export) => {
                 let beyond = beyond(done, |net| (-net - import).max(0.0));
@@ -79,7 +79,7 @@ fn sentence(done: &Assessment) -> String {
                 let beyond = beyond(done, |net| (net - export).max(0.0));
                 format!(
                     "Exports reach {}. Holding them to {} asks the store to take {} in all.",
-                    people::power(result.peak_charge_kw),
+                    people::power(result.peak_surplus()),
                     people::power(export),
                     people::energy(beyond.0)
                 )
@@ -87,8 +87,8 @@ fn sentence(done: &Assessment) -> String {
             (None, None) => format!("Imports reach {peak}; no limit is asked."),
         };
     }
-    if result.deficit_kwh == 0.0 {
-        return format!("Supply never falls short; {} is left over.", people::energy(result.surplus_kwh));
+    if result.deficit() == 0.0 {
+        return format!("Supply never falls short; {} is left over.", people::energy(result.surplus()));
     }
     let hours = side(done, -1.0).map(|episode| episode.steps).sum::<usize>() as f64 * duty.record.step_h();
     let longest = side(done, -1.0).max_by_key(|episode| episode.steps);
@@ -104,18 +104,18 @@ fn sentence(done: &Assessment) -> String {
         Connection::Islanded => format!(
             "Supply falls short for {} hours of the record and leaves {} to storage.{longest}",
             people::significant(hours, 4),
-            people::energy(result.deficit_kwh)
+            people::energy(result.deficit())
         ),
-        Connection::Connected if result.surplus_kwh > 0.0 => format!(
+        Connection::Connected if result.surplus() > 0.0 => format!(
             "The site draws {} from the grid, in {} hours, and feeds {} back: a store could carry some of the {over} into the {short}.{longest}",
-            people::energy(result.deficit_kwh),
+            people::energy(result.deficit()),
             people::significant(hours, 4),
-            people::energy(result.surplus_kwh)
+            people::energy(result.surplus())
         ),
         Connection::Connected => {
             format!(
                 "The site draws {} from the grid and feeds nothing back.",
-                people::energy(result.deficit_kwh)
+                people::energy(result.deficit())
             )
         }
     }
@@ -194,9 +194,9 @@ fn beside_the_picture(done: &Assessment) -> Vec<Figure> {
     }
     figures.push(figure(
         "duty.peak_discharge_kw",
-        result.peak_discharge_kw,
+        result.peak_deficit(),
         &format!("Greatest {}", deficit_word(duty.connection)),
-        people::power(result.peak_discharge_kw),
+        people::power(result.peak_deficit()),
         "mean of an interval, a lower bound",
     ));
     figures
@@ -211,17 +211,17 @@ fn notes(done: &Assessment, case: &Case) -> Vec<String> {
         notes.push(match duty.connection {
             Connection::Islanded => format!(
                 "Guessed islanded: the surplus after losses covers the deficit {} times.",
-                people::significant(round_trip * result.surplus_kwh / result.deficit_kwh, 2)
+                people::significant(round_trip * result.surplus() / result.deficit(), 2)
             ),
-            Connection::Connected if result.surplus_kwh == 0.0 => {
+            Connection::Connected if result.surplus() == 0.0 => {
                 "Guessed connected: there is no surplus, so a grid must serve the site.".to_owned()
             }
-            Connection::Connected if result.deficit_kwh == 0.0 => {
+            Connection::Connected if result.deficit() == 0.0 => {
                 "Guessed connected: nothing is ever short.".to_owned()
             }
             Connection::Connected => format!(
                 "Guessed connected: the surplus after losses covers {} of the deficit, so a grid must serve the rest.",
-                people::percent(round_trip * result.surplus_kwh / result.deficit_kwh)
+                people::percent(round_trip * result.surplus() / result.deficit())
             ),
         });
     }

@@ -99,12 +99,12 @@ fn beside_the_year(done: &Assessment) -> Vec<Figure> {
         plain(
             &format!("{} for", capital(super::surplus_word(duty.connection))),
             hours(1.0),
-            format!("up to {}", people::power(duty.result.peak_charge_kw)),
+            format!("up to {}", people::power(duty.result.peak_surplus())),
         ),
         plain(
             &format!("{} for", capital(super::deficit_word(duty.connection))),
             hours(-1.0),
-            format!("up to {}", people::power(duty.result.peak_discharge_kw)),
+            format!("up to {}", people::power(duty.result.peak_deficit())),
         ),
     ];
     if let Some(ramp) = duty.result.steepest_ramp_kw_per_s {

@@ -15,7 +15,7 @@ pub(super) fn station(done: &Assessment, case: &Case, pictures: &Pictures) -> St
         rail: asked.map_or("nothing asked".to_owned(), |asked| {
             format!("{}, {}", people::energy(asked.point.delivered_kwh), people::power(asked.point.power_kw))
         }),
-        warning: if asked.is_none() && done.duty.result.deficit_kwh > 0.0 {
+        warning: if asked.is_none() && done.duty.result.deficit() > 0.0 {
             "out of reach".to_owned()
         } else {
             String::new()
@@ -30,7 +30,7 @@ fn sentence(done: &Assessment, pictures: &Pictures) -> String {
     let duty = &done.duty;
     let short = deficit_word(duty.connection);
     let Some(asked) = &done.requirement.asked else {
-        if duty.result.deficit_kwh == 0.0 && !matches!(duty.kind, Kind::Limits(_)) {
+        if duty.result.deficit() == 0.0 && !matches!(duty.kind, Kind::Limits(_)) {
             return "Nothing is ever short, so nothing is asked of a store.".to_owned();
         }
         return match (&done.requirement.infeasible, duty.kind) {
@@ -143,7 +143,7 @@ fn headline(done: &Assessment) -> Vec<Figure> {
                 "Remaining import",
                 run.unserved_kwh,
                 people::energy(run.unserved_kwh),
-                format!("of {}", people::energy(duty.result.deficit_kwh)),
+                format!("of {}", people::energy(duty.result.deficit())),
             ));
         }
         _ => figures.push(figure(

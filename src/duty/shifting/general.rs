@@ -1,0 +1,292 @@
+//! The plan where some step is not concave: values of any piecewise linear shape.
+//!
+//! The value at a step's start is the greater of two: the best that charging makes of the value at its end, and the best that
+//! discharging makes of it. Each is a line plus the running maximum, over a window as wide as the step can move the level, of
+//! the end's value less that line; a running maximum of a piecewise linear function is piecewise linear again.
+//!
+//! Values are kept at every so-manieth step only, and reckoned again between them on the way forward.
+
+use std::collections::VecDeque;
+
+use super::{Slopes, Span, Terms};
+
+/// A piecewise linear function: points by rising place, at least one.
+type Curve = Vec<(f64, f64)>;
+
+/// Points on a straight line within this share of the greatest value are left out: rounding.
+const ROUNDING: f64 = 4e-16;
+
+/// Levels after each step, or none if the aim cannot be reached from the start.
+pub(super) fn plan(span: &Span<'_>, store: &Terms, start: f64, aim: Option<f64>) -> Option<Vec<f64>> {
+    let steps = span.len();
+    let last = match aim {
+        Some(aim) => vec![(aim, 0.0)],
+        None => vec![(0.0, 0.0), (store.energy, 0.0)],
+    };
+    let stride = libm::sqrt(steps as f64).max(1.0) as usize;
+    // Values at the starts of steps 0, stride, 2 stride, ..., kept on the way back.
+    let mut kept: Vec<Curve> = Vec::new();
+    let mut value = last.clone();
+    for k in (0..steps).rev() {
+        value = before(&value, span.price(k), store)?;
+        if k % stride == 0 {
+            kept.push(value.clone());
+        }
+    }
+    let slack = 1e-9 * store.energy.max(1e-9);
+    if !within(&value, start, slack) {
+        return None;
+    }
+    let mut level = start;
+    let mut levels = Vec::with_capacity(steps);
+    kept.pop();
+    let mut first = 0;
+    while first < steps {
+        let end = (first + stride).min(steps);
+        let mut value = kept.pop().unwrap_or_else(|| last.clone());
+        // Values at the ends of this stretch's steps, last first.
+        let mut ends: Vec<Curve> = Vec::with_capacity(end - first);
+        for k in (first..end).rev() {
+            let earlier = if k > first { before(&value, span.price(k), store)? } else { Vec::new() };
+            ends.push(std::mem::replace(&mut value, earlier));
+        }
+        for k in first..end {
+            level = best(&ends.pop()?, span.price(k), store, level);
+            levels.push(level);
+        }
+        first = end;
+    }
+    Some(levels)
+}
+
+fn within(curve: &[(f64, f64)], at: f64, slack: f64) -> bool {
+    curve.first().is_some_and(|first| first.0 <= at + slack) && curve.last().is_some_and(|last| last.0 >= at - slack)
+}
+
+/// The value at a step's start from that at its end; none if nothing is left of it.
+fn before(after: &Curve, price: Option<f64>, store: &Terms) -> Option<Curve> {
+    let curve = match price {
+        None => after.clone(),
+        Some(price) => {
+            let Slopes { buy, sell } = store.slopes(price);
+            let charged = tilted(&ahead(&tilted(after, 0.0 - buy), store.most_in), buy);
+            let discharged =
+                mirrored(&ahead(&mirrored(&tilted(after, 0.0 - sell)), store.most_out));
+            greater(&charged, &tilted(&discharged, sell))
+        }
+    };
+    // From the level after self-discharge to the level before it, within empty and full.
+    let keep = store.leak.keep;
+    cut(&curve, 0.0, keep * store.energy)
+        .map(|curve| curve.into_iter().map(|(at, value)| (at / keep, value)).collect())
+}
+
+/// The level after a step that makes the most of the value at its end.
+fn best(after: &Curve, price: Option<f64>, store: &Terms, level: f64) -> f64 {
+    let kept = store.leak.keep * level;
+    let (lowest, highest) = (after[0].0, after[after.len() - 1].0);
+    let Some(price) = price else { return kept.clamp(lowest, highest) };
+    let Slopes { buy, sell } = store.slopes(price);
+    let gain = |to: f64| {
+        let moved = to - kept;
+        value_at(after, to) - if moved > 0.0 { buy * moved } else { sell * moved }
+    };
+    let reach = (
+        (kept - store.most_out).max(lowest).min(highest),
+        (kept + store.most_in).min(highest).max(lowest),
+    );
+    let mut most = (kept.clamp(lowest, highest), f64::NEG_INFINITY);
+    most.1 = gain(most.0);
+    let corners = after.iter().map(|point| point.0).filter(|at| (reach.0..=reach.1).contains(at));
+    for to in [reach.0, reach.1].into_iter().chain(corners) {
+        let gain = gain(to);
+        if gain > most.1 {
+            most = (to, gain);
+        }
+    }
+    most.0.clamp(0.0, store.energy)
+}
+
+/// The function plus `slope` times the place.
+fn tilted(curve: &[(f64, f64)], slope: f64) -> Curve {
+    curve.iter().map(|(at, value)| (*at, value + slope * at)).collect()
+}
+
+/// The function with its places turned round.
+fn mirrored(curve: &[(f64, f64)]) -> Curve {
+    curve.iter().rev().map(|(at, value)| (0.0 - at, *value)).collect()
+}
+
+fn value_at(curve: &[(f64, f64)], at: f64) -> f64 {
+    let right = curve.partition_point(|point| point.0 < at);
+    match (right.checked_sub(1).and_then(|left| curve.get(left)), curve.get(right)) {
+        (Some(left), Some(right)) => left.1 + (right.1 - left.1) * ((at - left.0) / (right.0 - left.0)),
+        (None, Some(one)) | (Some(one), None) => one.1,
+        (None, None) => f64::NEG_INFINITY,
+    }
+}
+
+/// The greatest value within `width` ahead of each place, from `width` before the function's first place to its last.
+fn ahead(curve: &[(f64, f64)], width: f64) -> Curve {
+    if width == 0.0 {
+        return curve.to_vec();
+    }
+    let (first, last) = (curve[0].0, curve[curve.len() - 1].0);
+    // Where a corner enters the window, and where it leaves it.
+    let (mut enter, mut leave) = (0, 0);
+    let mut borders = Vec::with_capacity(2 * curve.len());
+    while enter < curve.len() || leave < curve.len() {
+        let next = match (curve.get(enter), curve.get(leave)) {
+            (Some(a), Some(b)) if a.0 - width <= b.0 => {
+                enter += 1;
+                a.0 - width
+            }
+            (Some(a), None) => {
+                enter += 1;
+                a.0 - width
+            }
+            (_, Some(b)) => {
+                leave += 1;
+                b.0
+            }
+            (None, None) => break,
+        };
+        if borders.last().is_none_or(|border| next > *border) {
+            borders.push(next);
+        }
+    }
+    let mut result = Curve::with_capacity(2 * borders.len());
+    // Corners in the window whose value no later one in it reaches, so that the first is the greatest.
+    let mut corners: VecDeque<usize> = VecDeque::new();
+    let mut next = 0;
+    for pair in borders.windows(2) {
+        let (from, to) = (pair[0], pair[1]);
+        while next < curve.len() && curve[next].0 - width <= from {
+            while corners.back().is_some_and(|back| curve[*back].1 <= curve[next].1) {
+                corners.pop_back();
+            }
+            corners.push_back(next);
+            next += 1;
+        }
+        while corners.front().is_some_and(|front| curve[*front].0 < to) {
+            corners.pop_front();
+        }
+        let mut lines: [Option<(f64, f64)>; 3] = [None; 3];
+        lines[0] = corners.front().map(|front| (curve[*front].1, curve[*front].1));
+        if from >= first {
+            lines[1] = Some((value_at(curve, from), value_at(curve, to)));
+        }
+        if to <= last - width {
+            lines[2] = Some((value_at(curve, from + width), value_at(curve, to + width)));
+        }
+        envelope(&lines, from, to, &mut result);
+    }
+    if borders.len() == 1 {
+        result.push((first, curve[0].1));
+    }
+    straightened(result)
+}
+
+/// The upper envelope of up to three lines, given by their values at both ends.
+fn envelope(lines: &[Option<(f64, f64)>; 3], from: f64, to: f64, into: &mut Curve) {
+    let mut at = [0.0, 1.0, 0.0, 0.0, 0.0];
+    let mut count = 2;
+    for (i, one) in lines.iter().enumerate() {
+        for other in &lines[i + 1..] {
+            if let (Some(one), Some(other)) = (one, other) {
+                let (start, end) = (one.0 - other.0, one.1 - other.1);
+                if start * end < 0.0 {
+                    at[count] = start / (start - end);
+                    count += 1;
+                }
+            }
+        }
+    }
+    let at = &mut at[..count];
+    at.sort_unstable_by(f64::total_cmp);
+    for share in at {
+        let value = lines
+            .iter()
+            .flatten()
+            .map(|line| if *share == 1.0 { line.1 } else { line.0 + (line.1 - line.0) * *share })
+            .fold(f64::NEG_INFINITY, f64::max);
+        push(into, (if *share == 1.0 { to } else { from + (to - from) * *share }, value));
+    }
+}
+
+/// The greater of two functions where both are there, the one where only one is; their places overlap.
+fn greater(one: &[(f64, f64)], other: &[(f64, f64)]) -> Curve {
+    let mut borders = Vec::with_capacity(one.len() + other.len());
+    let (mut i, mut j) = (0, 0);
+    while i < one.len() || j < other.len() {
+        let next = match (one.get(i), other.get(j)) {
+            (Some(a), Some(b)) if a.0 <= b.0 => {
+                i += 1;
+                a.0
+            }
+            (Some(a), None) => {
+                i += 1;
+                a.0
+            }
+            (_, Some(b)) => {
+                j += 1;
+                b.0
+            }
+            (None, None) => break,
+        };
+        if borders.last().is_none_or(|border| next > *border) {
+            borders.push(next);
+        }
+    }
+    let there = |curve: &[(f64, f64)], from: f64, to: f64| {
+        (curve[0].0 <= from && curve[curve.len() - 1].0 >= to).then(|| (value_at(curve, from), value_at(curve, to)))
+    };
+    let mut result = Curve::with_capacity(2 * borders.len());
+    for pair in borders.windows(2) {
+        let (from, to) = (pair[0], pair[1]);
+        envelope(&[there(one, from, to), there(other, from, to), None], from, to, &mut result);
+    }
+    if borders.len() == 1 {
+        result.push((borders[0], one[0].1.max(other[0].1)));
+    }
+    straightened(result)
+}
+
+/// The part between two places; none if nothing is there.
+fn cut(curve: &[(f64, f64)], from: f64, to: f64) -> Option<Curve> {
+    let (from, to) = (from.max(curve[0].0), to.min(curve[curve.len() - 1].0));
+    if from > to {
+        return None;
+    }
+    let mut part = vec![(from, value_at(curve, from))];
+    for point in curve.iter().filter(|point| point.0 > from && point.0 < to) {
+        part.push(*point);
+    }
+    push(&mut part, (to, value_at(curve, to)));
+    Some(part)
+}
+
+/// Adds a point if it lies beyond the last.
+fn push(curve: &mut Curve, point: (f64, f64)) {
+    match curve.last_mut() {
+        Some(last) if point.0 <= last.0 => last.1 = last.1.max(point.1),
+        _ => curve.push(point),
+    }
+}
+
+/// Without the points that lie on the line between their neighbours.
+fn straightened(curve: Curve) -> Curve {
+    let scale = curve.iter().fold(0.0, |most: f64, point| most.max(point.1.abs()));
+    let mut result: Curve = Vec::with_capacity(curve.len());
+    for point in curve {
+        while let [.., a, b] = result[..] {
+            let on_line = a.1 + (point.1 - a.1) * ((b.0 - a.0) / (point.0 - a.0));
+            if (on_line - b.1).abs() > ROUNDING * scale {
+                break;
+            }
+            result.pop();
+        }
+        result.push(point);
+    }
+    result
+}
