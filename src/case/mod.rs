@@ -19,7 +19,8 @@ use serde::{Deserialize, Serialize};
 pub use carried::CarriedFile;
 pub use check::number_at;
 pub use duty::{
-    Billing, DutyCase, Firming, Foresight, Frequency, Positive, RideThrough, SeriesOf, Shifting, Smoothing, SmoothingMethod,
+    Billing, DutyCase, Firming, Foresight, Frequency, Positive, RideThrough, SeriesOf, Shifting, Smoothing,
+    SmoothingMethod,
 };
 pub use edits::{PriceCase, RangeEdit, StorePrice};
 pub use record::{DateOrder, GapRemedy, RecordCase, Remedies, RepeatRemedy, Stamp, Values};

@@ -60,7 +60,9 @@ fn title(measure: Measure) -> &'static str {
 
 fn value_text(measure: Measure, value: f64) -> String {
     match measure {
-        Measure::ServedShare | Measure::SelfSufficiency | Measure::CarriedShare => people::percent(value).to_string(),
+        Measure::ServedShare | Measure::SelfSufficiency | Measure::CarriedShare => {
+            people::percent(value).to_string()
+        }
         Measure::HeldImportKw => people::power(value).to_string(),
     }
 }

@@ -54,9 +54,5 @@ pub(super) fn answer(frequency: &Known, terms: &Frequency, losses: &Losses, step
         above = leak.keep * above + leak.gain * losses.inflow_kwh(0.0 - power, step_h);
         power_kw.push(power);
     }
-    Answer {
-        power_kw,
-        delivered_kwh: delivered.value() * step_h,
-        absorbed_kwh: absorbed.value() * step_h,
-    }
+    Answer { power_kw, delivered_kwh: delivered.value() * step_h, absorbed_kwh: absorbed.value() * step_h }
 }

@@ -38,9 +38,16 @@ impl Hours {
         };
         let limit_kw = match Asked::Power.read(power) {
             Ok(Some(limit)) if limit >= 0.0 => limit,
-            Ok(Some(_)) => return Err(fault(sentence, i, "limits to a power below zero", "Give zero or more.")),
+            Ok(Some(_)) => {
+                return Err(fault(sentence, i, "limits to a power below zero", "Give zero or more."));
+            }
             Ok(None) => {
-                return Err(fault(sentence, i, "ends without a power", "Put the limit after the colon, such as 40 kW."));
+                return Err(fault(
+                    sentence,
+                    i,
+                    "ends without a power",
+                    "Put the limit after the colon, such as 40 kW.",
+                ));
             }
             Err(remedy) => return Err(fault(sentence, i, "ends in no power", &remedy)),
         };
@@ -161,9 +168,17 @@ mod tests {
 
     #[test]
     fn what_does_not_read_is_refused_with_its_place() {
-        for sentence in
-            ["Mon 40 kW", "Mon: ", "Mon: 4 kWh", "Mo: 4", "7:00-25:00: 4", "7:00-7:00: 4", "7:61-8: 4", "Mon: -3 kW", ""]
-        {
+        for sentence in [
+            "Mon 40 kW",
+            "Mon: ",
+            "Mon: 4 kWh",
+            "Mo: 4",
+            "7:00-25:00: 4",
+            "7:00-7:00: 4",
+            "7:61-8: 4",
+            "Mon: -3 kW",
+            "",
+        ] {
             let fault = Hours::parse(sentence, 3).unwrap_err();
             assert!(fault.place.contains("hours[3]") && !fault.remedy.is_empty(), "{sentence}: {fault}");
         }

@@ -64,6 +64,8 @@ pub struct Duty {
     losses: Losses,
     /// First interval of the worst outage.
     worst_start: Option<usize>,
+    /// The output of least energy, kept for other losses.
+    output: Option<Rc<Vec<f64>>>,
     /// What the terms come to, interval by interval.
     plan: Rc<Plan>,
 }
@@ -241,7 +243,7 @@ impl Duty {
         if self.losses == *losses {
             return Ok(self.clone());
         }
-        let (plan, added) = plan::make(&self.record, &self.terms, losses, self.cyclic)?;
+        let (plan, added) = plan::make(&self.record, &self.terms, losses, self.cyclic, self.output.as_ref())?;
         Ok(Self {
             plan: Rc::new(plan),
             losses: *losses,
@@ -269,7 +271,10 @@ pub fn ask(record: &Rc<Record>, case: &Case) -> Result<Duty> {
     let needs_net = match &case.duty {
         DutyCase::Guess {} | DutyCase::Balance {} | DutyCase::Limits { .. } => true,
         DutyCase::Smoothing(_) | DutyCase::Firming(_) => true,
-        DutyCase::Given { .. } | DutyCase::RideThrough(_) | DutyCase::Frequency(_) | DutyCase::Shifting(_) => false,
+        DutyCase::Given { .. }
+        | DutyCase::RideThrough(_)
+        | DutyCase::Frequency(_)
+        | DutyCase::Shifting(_) => false,
     };
     if needs_net && !record.has_net() {
         return Err(Fault::new(
@@ -280,7 +285,7 @@ pub fn ask(record: &Rc<Record>, case: &Case) -> Result<Duty> {
     }
     let losses = Losses::of(&case.requirement);
     let cyclic = case.requirement.balance == Balance::Cyclic;
-    let (plan, added) = plan::make(record, &case.duty, &losses, cyclic)?;
+    let (plan, added) = plan::make(record, &case.duty, &losses, cyclic, None)?;
     let mut duty = Duty {
         record: Rc::clone(record),
         kind: Kind::Balance,
@@ -295,6 +300,7 @@ pub fn ask(record: &Rc<Record>, case: &Case) -> Result<Duty> {
         cyclic,
         losses,
         worst_start: added.worst_start,
+        output: added.output,
         plan: Rc::new(plan),
     };
     duty.totals = totals(&duty);

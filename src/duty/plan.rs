@@ -1,15 +1,19 @@
 //! What a duty's terms come to, interval by interval.
 
+use std::rc::Rc;
+
 use super::firming;
 use super::frequency;
 use super::ride::Outage;
 use super::series::Known;
 use super::shifting;
 use super::smoothing::{self, Smooth};
-use crate::case::{DutyCase, Firming, Foresight, RideThrough, SeriesOf, Shifting, Smoothing, SmoothingMethod};
+use crate::case::{
+    DutyCase, Firming, Foresight, RideThrough, SeriesOf, Shifting, Smoothing, SmoothingMethod,
+};
 use crate::fault::{Fault, Result, quote};
 use crate::losses::Losses;
-use crate::record::{Clock, Extra, Record, Role, Series};
+use crate::record::{Clock, Extra, Record, Role};
 use crate::result::Infeasible;
 use crate::units::civil::{Date, Reading};
 use crate::units::people;
@@ -45,21 +49,26 @@ pub(super) struct Added {
     pub(super) absorbed_kwh: Option<f64>,
     pub(super) value: Option<f64>,
     pub(super) infeasible: Option<Infeasible>,
+    /// The output of least energy, kW, before it is lowered for losses: it is the dearest to find.
+    pub(super) output: Option<Rc<Vec<f64>>>,
 }
 
-/// Makes the plan of a duty's terms with a store's losses; `cyclic` where the record is repeated.
+/// Makes the plan of a duty's terms with a store's losses; `cyclic` where the record is repeated. `found` is the output of least
+/// energy, where it is known already.
 pub(super) fn make(
     record: &Record,
     terms: &DutyCase,
     losses: &Losses,
     cyclic: bool,
+    found: Option<&Rc<Vec<f64>>>,
 ) -> Result<(Plan, Added)> {
     match terms {
-        DutyCase::Guess {} | DutyCase::Balance {} | DutyCase::Given { .. } => Ok((Plan::Net, Added::default())),
-        DutyCase::Limits { .. } => super::limits::series(record, terms).map(|limits| {
-            (limits.map_or(Plan::Net, Plan::Limits), Added::default())
-        }),
-        DutyCase::Smoothing(terms) => smooth(record, terms, losses, cyclic),
+        DutyCase::Guess {} | DutyCase::Balance {} | DutyCase::Given { .. } => {
+            Ok((Plan::Net, Added::default()))
+        }
+        DutyCase::Limits { .. } => super::limits::series(record, terms)
+            .map(|limits| (limits.map_or(Plan::Net, Plan::Limits), Added::default())),
+        DutyCase::Smoothing(terms) => smooth(record, terms, losses, cyclic, found),
         DutyCase::Firming(terms) => firm(record, terms, losses, cyclic),
         DutyCase::RideThrough(terms) => ride(record, terms, losses),
         DutyCase::Frequency(terms) => {
@@ -104,7 +113,13 @@ fn difference(power: &Known, output: &[f64]) -> Vec<f64> {
     (0..power.len()).map(|i| power.get(i).unwrap_or(f64::NAN) - output[i]).collect()
 }
 
-fn smooth(record: &Record, terms: &Smoothing, losses: &Losses, cyclic: bool) -> Result<(Plan, Added)> {
+fn smooth(
+    record: &Record,
+    terms: &Smoothing,
+    losses: &Losses,
+    cyclic: bool,
+    found: Option<&Rc<Vec<f64>>>,
+) -> Result<(Plan, Added)> {
     /// Longest stretch whose least energy is looked for.
     const LONGEST: usize = 50_000;
     let step_h = record.step_h();
@@ -115,7 +130,10 @@ fn smooth(record: &Record, terms: &Smoothing, losses: &Losses, cyclic: bool) -> 
     }
     if least_energy && power.there().count() > LONGEST {
         return Err(Fault::new(
-            format!("the least energy is looked for over at most {} intervals", people::whole(LONGEST as f64)),
+            format!(
+                "the least energy is looked for over at most {} intervals",
+                people::whole(LONGEST as f64)
+            ),
             "case, at duty.day",
             "Name the day to look at, such as its windiest, or take the method least_power.",
         ));
@@ -127,16 +145,24 @@ fn smooth(record: &Record, terms: &Smoothing, losses: &Losses, cyclic: bool) -> 
         never_below_zero: terms.series == SeriesOf::Supply,
         closes: cyclic,
     };
-    let mut output = smoothing::output(&power, &smooth, losses, step_h);
+    let output = match found {
+        Some(found) => Rc::clone(found),
+        None => Rc::new(smoothing::output(&power, &smooth, losses, step_h)),
+    };
+    let kept = least_energy.then(|| Rc::clone(&output));
+    let mut output = Vec::clone(&output);
     if least_energy && cyclic {
         let by = firming::lowering(&power, &output, losses, step_h);
         if by > 0.0 {
             let least = if smooth.never_below_zero { 0.0 } else { f64::NEG_INFINITY };
-            output.iter_mut().for_each(|output| *output = if output.is_nan() { *output } else { (*output - by).max(least) });
+            output.iter_mut().for_each(|output| {
+                *output = if output.is_nan() { *output } else { (*output - by).max(least) }
+            });
         }
     }
     let taken = difference(&power, &output);
-    let added = Added { net_discharge_kwh: Some(0.0 - total(&taken) * step_h), ..Added::default() };
+    let net_discharge_kwh = Some(0.0 - total(&taken) * step_h);
+    let added = Added { net_discharge_kwh, output: kept, ..Added::default() };
     Ok((handed(&taken, losses), added))
 }
 
@@ -159,7 +185,9 @@ fn on_day(clock: &Clock, power: &Known, day: &str) -> Result<Known> {
             ));
         }
     };
-    let chosen = Known::of(power.len(), |i| power.get(i).filter(|_| reading(clock, i).is_some_and(|at| at.date == date)));
+    let chosen = Known::of(power.len(), |i| {
+        power.get(i).filter(|_| reading(clock, i).is_some_and(|at| at.date == date))
+    });
     if chosen.there().next().is_none() {
         return Err(Fault::new(
             format!("the record holds nothing on {}", quote(day)),
@@ -184,7 +212,9 @@ fn firm(record: &Record, terms: &Firming, losses: &Losses, cyclic: bool) -> Resu
             let column = column(record, header, "schedule")?;
             (0..steps).map(|i| column.values.get(i).unwrap_or(f64::NAN)).collect()
         }
-        (None, Some(block_s)) => firming::blocks(&power, whole_steps(block_s, record.clock.step_s())?, losses),
+        (None, Some(block_s)) => {
+            firming::blocks(&power, whole_steps(block_s, record.clock.step_s())?, losses)
+        }
         (None, None) => firming::blocks(&power, steps, losses),
     };
     if terms.schedule.is_none() && cyclic && losses.self_discharge_per_h > 0.0 {
@@ -273,13 +303,18 @@ fn shift(record: &Record, terms: &Shifting, losses: &Losses) -> Result<(Plan, Ad
     let days = match terms.foresight {
         Foresight::Full => vec![0],
         Foresight::DayAhead => (0..steps)
-            .filter(|i| *i == 0 || reading(&record.clock, *i).map(|at| at.date) != reading(&record.clock, i - 1).map(|at| at.date))
+            .filter(|i| {
+                *i == 0
+                    || reading(&record.clock, *i).map(|at| at.date)
+                        != reading(&record.clock, i - 1).map(|at| at.date)
+            })
             .collect(),
     };
     match shifting::schedule(&price, &days, terms, losses, record.step_h()) {
-        Ok(schedule) => {
-            Ok((handed(&schedule.power_kw, losses), Added { value: Some(schedule.value), ..Added::default() }))
-        }
+        Ok(schedule) => Ok((
+            handed(&schedule.power_kw, losses),
+            Added { value: Some(schedule.value), ..Added::default() },
+        )),
         Err(from) => {
             let why = format!(
                 "From {} at the start, {} at the end cannot be reached with these powers and losses. Ask for another level at the end, or \
@@ -295,9 +330,18 @@ fn shift(record: &Record, terms: &Shifting, losses: &Losses) -> Result<(Plan, Ad
 
 /// Whether a price column is of a MWh, by its unit or its header.
 fn per_megawatt_hour(record: &Record, column: &Extra) -> bool {
-    let says = |text: &str| text.as_bytes().windows(4).any(|letters| letters.eq_ignore_ascii_case(b"/mwh"));
-    let units = record.reading.files.iter().flat_map(|file| &file.columns);
-    says(&column.header) || units.filter(|other| other.header == column.header).any(|other| says(&other.unit))
+    let says = |text: &str| text.as_bytes().windows(3).any(|letters| letters.eq_ignore_ascii_case(b"mwh"));
+    says(&column.header) || says(unit_of(record, column))
+}
+
+/// The unit of a column that is no power or energy, as the file writes it; empty where it states none.
+pub(super) fn unit_of<'r>(record: &'r Record, column: &Extra) -> &'r str {
+    let columns = record.reading.files.iter().flat_map(|file| &file.columns);
+    columns
+        .filter(|other| other.header == column.header)
+        .map(|other| other.unit.as_str())
+        .next()
+        .unwrap_or("")
 }
 
 /// The column of a header that a term names.
@@ -317,6 +361,6 @@ pub(super) fn column<'r>(record: &'r Record, header: &str, term: &str) -> Result
 }
 
 /// The one column of a role, where no term names one.
-pub(super) fn column_of_role(record: &Record, role: Role) -> Option<&Series> {
-    record.extras.iter().find(|extra| extra.role == role).map(|extra| &extra.values)
+pub(super) fn column_of_role(record: &Record, role: Role) -> Option<&Extra> {
+    record.extras.iter().find(|extra| extra.role == role)
 }

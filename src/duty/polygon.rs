@@ -14,8 +14,10 @@ type Polygon = Vec<Point>;
 
 /// Halvings of a bracket of capacities.
 const HALVINGS: usize = 52;
+/// Share of the capacity that may be given away to close at both ends.
+const CLOSE: f64 = 1e-9;
 /// Narrowings of the bracket of starting levels.
-const NARROWINGS: usize = 45;
+const NARROWINGS: usize = 36;
 /// What is left of a bracket by one narrowing: the golden section.
 const GOLDEN: f64 = 0.618_033_988_749_894_8;
 
@@ -64,25 +66,54 @@ impl Task {
 
     /// Free ends: from any level, to any.
     fn free(&self) -> Vec<f64> {
-        let (mut fails, mut carries) = (0.0, self.constant().0);
-        let carried = |capacity: f64| self.reached(capacity, None, |_| {});
-        if carried(0.0) {
-            return self.follow(0.0, None);
-        }
-        for _ in 0..HALVINGS {
-            let middle = f64::midpoint(fails, carries);
-            if carried(middle) {
-                carries = middle;
-            } else {
-                fails = middle;
-            }
-        }
-        self.follow(carries, None)
+        self.follow(self.least_capacity(), None)
     }
 
-    /// Ending at the level of the start. The least capacity is a convex function of that level: two levels are compared by halving one
-    /// bracket of capacities until only one of them is carried.
+    fn least_capacity(&self) -> f64 {
+        let carried = |capacity: f64| self.reached(capacity, None, |_| {});
+        if carried(0.0) { 0.0 } else { halved(0.0, self.constant().0, carried) }
+    }
+
+    /// Ending at the level of the start.
     fn closing(&self) -> Vec<f64> {
+        let free = self.least_capacity();
+        // Mostly closing costs nothing: the ends are free of what decides in the middle. Levels from which the capacity carries the
+        // record, and levels at which it may end, are spans; one in both is tried.
+        let capacity = free * (1.0 + CLOSE);
+        let (from, to) = (self.starts(capacity), self.ends(capacity));
+        let (low, high) = (from.0.max(to.0), from.1.min(to.1));
+        if low <= high {
+            for share in [0.5, 0.1, 0.9, 0.0, 1.0] {
+                let level = low + share * (high - low);
+                if self.reached(capacity, Some(level), |_| {}) {
+                    return self.follow(capacity, Some(level));
+                }
+            }
+        }
+        self.searched(free)
+    }
+
+    /// Least and greatest level at the end, from any start.
+    fn ends(&self, capacity: f64) -> (f64, f64) {
+        let mut last = Vec::new();
+        if self.reached(capacity, None, |set| last.clone_from(set)) { span(&last) } else { (1.0, 0.0) }
+    }
+
+    /// Least and greatest level at the start, to any end: the ends of the record read backwards, with the room left in place of the
+    /// energy stored.
+    fn starts(&self, capacity: f64) -> (f64, f64) {
+        let backwards = Self {
+            energy: self.energy.iter().rev().copied().collect(),
+            reach: std::iter::once(0.0).chain(self.reach.iter().skip(1).rev().copied()).collect(),
+            least: self.least,
+        };
+        let (low, high) = backwards.ends(capacity);
+        (capacity - high, capacity - low)
+    }
+
+    /// The least capacity is a convex function of the level at both ends: two levels are compared by halving one bracket of capacities
+    /// until only one of them is carried.
+    fn searched(&self, free: f64) -> Vec<f64> {
         let (greatest, start) = self.constant();
         let carried = |capacity: f64, level: f64| self.reached(capacity, Some(level), |_| {});
         let (mut low, mut high) = (0.0, greatest);
@@ -97,7 +128,7 @@ impl Task {
                 // Neither carries what the constant output's level does: that lies beyond one of them.
                 (false, false) => start < one,
                 (true, true) => {
-                    let (mut fails, mut carries) = (0.0, greatest);
+                    let (mut fails, mut carries) = (free, greatest);
                     let mut less = true;
                     for _ in 0..HALVINGS {
                         let middle = f64::midpoint(fails, carries);
@@ -120,17 +151,8 @@ impl Task {
             }
         }
         let level = f64::midpoint(low, high);
-        let (mut fails, mut carries) = (0.0, greatest);
         let level = if carried(greatest, level) { level } else { start };
-        for _ in 0..HALVINGS {
-            let middle = f64::midpoint(fails, carries);
-            if carried(middle, level) {
-                carries = middle;
-            } else {
-                fails = middle;
-            }
-        }
-        self.follow(carries, Some(level))
+        self.follow(halved(free, greatest, |capacity| carried(capacity, level)), Some(level))
     }
 
     /// Whether a capacity carries the task, from and to a level or freely; `see` is shown the polygon before each interval and
@@ -198,9 +220,26 @@ impl Task {
     }
 }
 
+/// The end of a bracket that carries, halved until only rounding is left; the other end fails.
+fn halved(mut fails: f64, mut carries: f64, carried: impl Fn(f64) -> bool) -> f64 {
+    for _ in 0..HALVINGS {
+        let middle = f64::midpoint(fails, carries);
+        if carries - fails <= 1e-12 * carries {
+            break;
+        }
+        if carried(middle) {
+            carries = middle;
+        } else {
+            fails = middle;
+        }
+    }
+    carries
+}
+
 /// Least and greatest stored energy of a set.
 fn span(set: &Polygon) -> (f64, f64) {
-    set.iter().fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), point| (low.min(point.0), high.max(point.0)))
+    set.iter()
+        .fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), point| (low.min(point.0), high.max(point.0)))
 }
 
 /// The set with every output as much as `reach` higher or lower.

@@ -34,12 +34,7 @@ pub(crate) struct Reserve {
 impl Outage {
     /// The reserves with which outages of every start are carried; none if the record is shorter than an outage. Charging during an
     /// outage, from supply that works, is limited by `charge_kw` (none = no limit).
-    pub(super) fn reserve(
-        &self,
-        losses: &Losses,
-        charge_kw: Option<f64>,
-        step_h: f64,
-    ) -> Option<Reserve> {
+    pub(super) fn reserve(&self, losses: &Losses, charge_kw: Option<f64>, step_h: f64) -> Option<Reserve> {
         let steps = self.need_kw.len();
         if self.steps == 0 || self.steps > steps {
             return None;

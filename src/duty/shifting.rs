@@ -110,8 +110,11 @@ pub(super) fn schedule(
         let aim = if k + 1 == days.len() { terms.end_kwh } else { None };
         let concave = (*start..end).filter_map(|i| price.get(i)).all(|price| store.is_concave(price));
         let span = Span { price, start: *start, end };
-        let levels =
-            if concave { concave::plan(&span, &store, level, aim) } else { general::plan(&span, &store, level, aim) };
+        let levels = if concave {
+            concave::plan(&span, &store, level, aim)
+        } else {
+            general::plan(&span, &store, level, aim)
+        };
         let Some(levels) = levels else { return Err(*start) };
         for (i, after) in (*start..end).zip(levels) {
             let change = after - store.leak.keep * level;

@@ -85,7 +85,5 @@ fn least_power(power: &Known, ramp_kw: f64) -> Vec<f64> {
         }
         (above[i], below[i]) = (above[i].max(high), below[i].min(low));
     }
-    (0..steps)
-        .map(|i| power.get(i).map_or(f64::NAN, |_| f64::midpoint(above[i], below[i])))
-        .collect()
+    (0..steps).map(|i| power.get(i).map_or(f64::NAN, |_| f64::midpoint(above[i], below[i]))).collect()
 }

@@ -12,8 +12,8 @@ mod criteria;
 mod infeasible;
 mod ranges;
 
-pub(crate) use asked::knee;
 pub use crate::losses::Losses;
+pub(crate) use asked::knee;
 pub use asked::{Asked, Working};
 pub use ranges::Ranges;
 

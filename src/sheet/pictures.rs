@@ -222,11 +222,13 @@ fn deepest(duty: &Duty) -> usize {
 pub(super) fn week(asked: &Asked) -> Week {
     let duty = &asked.duty;
     let clock = &duty.record.clock;
-    let (from, to) = if duty.kind == Kind::RideThrough { (0, duty.run_intervals().1) } else { deciding(asked) };
+    let (from, to) =
+        if duty.kind == Kind::RideThrough { (0, duty.run_intervals().1) } else { deciding(asked) };
     let (length, first_run) = (to - from, duty.run_intervals().0);
     let stride = length.div_ceil(SAMPLES).max(1);
     let capacity = asked.store.energy_kwh;
-    let connected = duty.connection == Connection::Connected && !duty.kind.hands_over() && duty.kind != Kind::RideThrough;
+    let connected =
+        duty.connection == Connection::Connected && !duty.kind.hands_over() && duty.kind != Kind::RideThrough;
     let mut week = Week {
         store: format!("{} delivered, {}", energy(asked.point.delivered_kwh), power(asked.point.power_kw)),
         unserved_word: if connected { "remaining import" } else { "unserved" }.to_owned(),

@@ -8,7 +8,7 @@ use millpond::record::{Record, Role};
 use millpond::requirement::{self, Requirement};
 use serde_json::Value;
 
-use crate::site::{case, close, duty, hourly, supply_demand, table, with_column, only_column};
+use crate::site::{case, close, duty, hourly, only_column, supply_demand, table, with_column};
 
 fn json(text: &str) -> Value {
     serde_json::from_str(text).unwrap()
@@ -53,7 +53,8 @@ fn minute() -> Rc<Record> {
 
 fn smoothing(ramp: f64, method: SmoothingMethod, balance: Balance) -> Case {
     let mut case = Case::default();
-    case.duty = DutyCase::Smoothing(Smoothing { ramp_kw_per_min: Some(ramp), method, ..Smoothing::default() });
+    case.duty =
+        DutyCase::Smoothing(Smoothing { ramp_kw_per_min: Some(ramp), method, ..Smoothing::default() });
     case.requirement.balance = balance;
     case
 }
@@ -61,12 +62,22 @@ fn smoothing(ramp: f64, method: SmoothingMethod, balance: Balance) -> Case {
 #[test]
 fn ramps_held_by_three_methods() {
     for row in rows(&reference("ramp_limiting_minute_lossless")) {
-        let (causal, found) = required(&minute(), &smoothing(row[0], SmoothingMethod::Causal, Balance::Cyclic));
+        let (causal, found) =
+            required(&minute(), &smoothing(row[0], SmoothingMethod::Causal, Balance::Cyclic));
         close(found.result.least_capacity_kwh.unwrap(), row[2], 1e-9);
-        close(found.result.least_discharge_kw.unwrap().max(found.result.least_charge_kw.unwrap()), row[1], 1e-9);
+        close(
+            found.result.least_discharge_kw.unwrap().max(found.result.least_charge_kw.unwrap()),
+            row[1],
+            1e-9,
+        );
         close(causal.result.net_discharge_kwh.unwrap(), row[3], 1e-9);
-        let (middle, found) = required(&minute(), &smoothing(row[0], SmoothingMethod::LeastPower, Balance::Cyclic));
-        close(found.result.least_discharge_kw.unwrap().max(found.result.least_charge_kw.unwrap()), row[6], 1e-7);
+        let (middle, found) =
+            required(&minute(), &smoothing(row[0], SmoothingMethod::LeastPower, Balance::Cyclic));
+        close(
+            found.result.least_discharge_kw.unwrap().max(found.result.least_charge_kw.unwrap()),
+            row[6],
+            1e-7,
+        );
         close(found.result.least_capacity_kwh.unwrap(), row[8], 1e-9);
         close(middle.result.net_discharge_kwh.unwrap(), row[9], 1e-9);
         for (balance, expected) in [(Balance::Free, row[4]), (Balance::Cyclic, row[5])] {
@@ -145,7 +156,8 @@ fn schedules_of_greatest_value() {
     let hand = reference("shift_hand");
     let prices = known(&numbers(&hand["price"]));
     let mut case = case(0.9, 0.9, 0.0);
-    case.duty = terms(r#"{"kind": "shifting", "price": "p", "charge_kw": 2, "discharge_kw": 2, "energy_kwh": 3}"#);
+    case.duty =
+        terms(r#"{"kind": "shifting", "price": "p", "charge_kw": 2, "discharge_kw": 2, "energy_kwh": 3}"#);
     let (duty, found) = required(&only_column(3600, "p", Role::Price, &prices), &case);
     close(duty.result.value.unwrap(), number(&hand["value"]), 1e-12);
     assert_eq!((found.result.least_capacity_kwh, found.result.least_charge_kw), (Some(3.0), Some(2.0)));
@@ -170,7 +182,8 @@ fn schedules_of_greatest_value() {
     let negative = reference("shift_negative_price");
     let prices = known(&numbers(&negative["price"]));
     let mut case = crate::site::case(0.8, 0.8, 0.0);
-    case.duty = terms(r#"{"kind": "shifting", "price": "p", "charge_kw": 2, "discharge_kw": 2, "energy_kwh": 2}"#);
+    case.duty =
+        terms(r#"{"kind": "shifting", "price": "p", "charge_kw": 2, "discharge_kw": 2, "energy_kwh": 2}"#);
     let (duty, _) = required(&only_column(3600, "p", Role::Price, &prices), &case);
     close(duty.result.value.unwrap(), number(&negative["exact_no_simultaneous"]), 1e-12);
 }

@@ -81,7 +81,12 @@ pub(crate) fn limits(import: Option<f64>, export: Option<f64>) -> DutyCase {
 }
 
 /// A record with this column beside what it has.
-pub(crate) fn with_column(record: &Rc<Record>, header: &str, role: Role, values: &[Option<f64>]) -> Rc<Record> {
+pub(crate) fn with_column(
+    record: &Rc<Record>,
+    header: &str,
+    role: Role,
+    values: &[Option<f64>],
+) -> Rc<Record> {
     let mut record = Record::clone(record);
     record.extras.push(Extra {
         header: header.to_owned(),

@@ -19,13 +19,7 @@ pub(super) fn terms(duty: &DutyCase) -> Result<()> {
             billing.as_ref().map_or(Ok(()), |billing| {
                 number("duty.billing.rate_per_kw", billing.rate_per_kw, 0.0, MOST, "a kW")?;
                 optional("duty.billing.ratchet_share", billing.ratchet_share, 0.0, 1.0, "")?;
-                number(
-                    "duty.billing.ratchet_months",
-                    f64::from(billing.ratchet_months),
-                    1.0,
-                    120.0,
-                    "months",
-                )
+                number("duty.billing.ratchet_months", f64::from(billing.ratchet_months), 1.0, 120.0, "months")
             })
         }
         DutyCase::Smoothing(terms) => smoothing(terms),

@@ -60,7 +60,8 @@ pub(super) fn plan(span: &Span<'_>, store: &Terms, start: f64, aim: Option<f64>)
 }
 
 fn within(curve: &[(f64, f64)], at: f64, slack: f64) -> bool {
-    curve.first().is_some_and(|first| first.0 <= at + slack) && curve.last().is_some_and(|last| last.0 >= at - slack)
+    curve.first().is_some_and(|first| first.0 <= at + slack)
+        && curve.last().is_some_and(|last| last.0 >= at - slack)
 }
 
 /// The value at a step's start from that at its end; none if nothing is left of it.
@@ -70,8 +71,7 @@ fn before(after: &Curve, price: Option<f64>, store: &Terms) -> Option<Curve> {
         Some(price) => {
             let Slopes { buy, sell } = store.slopes(price);
             let charged = tilted(&ahead(&tilted(after, 0.0 - buy), store.most_in), buy);
-            let discharged =
-                mirrored(&ahead(&mirrored(&tilted(after, 0.0 - sell)), store.most_out));
+            let discharged = mirrored(&ahead(&mirrored(&tilted(after, 0.0 - sell)), store.most_out));
             greater(&charged, &tilted(&discharged, sell))
         }
     };
@@ -91,10 +91,8 @@ fn best(after: &Curve, price: Option<f64>, store: &Terms, level: f64) -> f64 {
         let moved = to - kept;
         value_at(after, to) - if moved > 0.0 { buy * moved } else { sell * moved }
     };
-    let reach = (
-        (kept - store.most_out).max(lowest).min(highest),
-        (kept + store.most_in).min(highest).max(lowest),
-    );
+    let reach =
+        ((kept - store.most_out).max(lowest).min(highest), (kept + store.most_in).min(highest).max(lowest));
     let mut most = (kept.clamp(lowest, highest), f64::NEG_INFINITY);
     most.1 = gain(most.0);
     let corners = after.iter().map(|point| point.0).filter(|at| (reach.0..=reach.1).contains(at));
@@ -131,123 +129,110 @@ fn ahead(curve: &[(f64, f64)], width: f64) -> Curve {
     if width == 0.0 {
         return curve.to_vec();
     }
-    let (first, last) = (curve[0].0, curve[curve.len() - 1].0);
-    // Where a corner enters the window, and where it leaves it.
-    let (mut enter, mut leave) = (0, 0);
-    let mut borders = Vec::with_capacity(2 * curve.len());
-    while enter < curve.len() || leave < curve.len() {
-        let next = match (curve.get(enter), curve.get(leave)) {
-            (Some(a), Some(b)) if a.0 - width <= b.0 => {
-                enter += 1;
-                a.0 - width
-            }
-            (Some(a), None) => {
-                enter += 1;
-                a.0 - width
-            }
-            (_, Some(b)) => {
-                leave += 1;
-                b.0
-            }
-            (None, None) => break,
-        };
-        if borders.last().is_none_or(|border| next > *border) {
-            borders.push(next);
-        }
-    }
-    let mut result = Curve::with_capacity(2 * borders.len());
+    // Corners that have entered the window, and corners that have left it behind.
+    let (mut entered, mut left) = (0, 0);
+    let mut result = Curve::with_capacity(3 * curve.len());
     // Corners in the window whose value no later one in it reaches, so that the first is the greatest.
     let mut corners: VecDeque<usize> = VecDeque::new();
-    let mut next = 0;
-    for pair in borders.windows(2) {
-        let (from, to) = (pair[0], pair[1]);
-        while next < curve.len() && curve[next].0 - width <= from {
-            while corners.back().is_some_and(|back| curve[*back].1 <= curve[next].1) {
+    let mut from: Option<f64> = None;
+    while left < curve.len() {
+        let to = match curve.get(entered) {
+            Some(next) if next.0 - width <= curve[left].0 => next.0 - width,
+            _ => curve[left].0,
+        };
+        if let Some(from) = from {
+            while corners.front().is_some_and(|front| *front < left) {
+                corners.pop_front();
+            }
+            let mut lines: [Option<(f64, f64)>; 3] = [None; 3];
+            lines[0] = corners.front().map(|front| (curve[*front].1, curve[*front].1));
+            if left > 0 {
+                lines[1] = Some(along(curve[left - 1], curve[left], from, to));
+            }
+            if let Some(next) = curve.get(entered)
+                && entered > 0
+            {
+                lines[2] = Some(along(curve[entered - 1], *next, from + width, to + width));
+            }
+            envelope(&lines, from, to, &mut result);
+        }
+        while entered < curve.len() && curve[entered].0 - width <= to {
+            while corners.back().is_some_and(|back| curve[*back].1 <= curve[entered].1) {
                 corners.pop_back();
             }
-            corners.push_back(next);
-            next += 1;
+            corners.push_back(entered);
+            entered += 1;
         }
-        while corners.front().is_some_and(|front| curve[*front].0 < to) {
-            corners.pop_front();
+        while left < curve.len() && curve[left].0 <= to {
+            left += 1;
         }
-        let mut lines: [Option<(f64, f64)>; 3] = [None; 3];
-        lines[0] = corners.front().map(|front| (curve[*front].1, curve[*front].1));
-        if from >= first {
-            lines[1] = Some((value_at(curve, from), value_at(curve, to)));
-        }
-        if to <= last - width {
-            lines[2] = Some((value_at(curve, from + width), value_at(curve, to + width)));
-        }
-        envelope(&lines, from, to, &mut result);
-    }
-    if borders.len() == 1 {
-        result.push((first, curve[0].1));
+        from = Some(to);
     }
     straightened(result)
 }
 
+/// The values of a line through two points at two places.
+fn along(one: (f64, f64), other: (f64, f64), from: f64, to: f64) -> (f64, f64) {
+    let slope = (other.1 - one.1) / (other.0 - one.0);
+    (one.1 + slope * (from - one.0), one.1 + slope * (to - one.0))
+}
+
 /// The upper envelope of up to three lines, given by their values at both ends.
 fn envelope(lines: &[Option<(f64, f64)>; 3], from: f64, to: f64, into: &mut Curve) {
-    let mut at = [0.0, 1.0, 0.0, 0.0, 0.0];
-    let mut count = 2;
-    for (i, one) in lines.iter().enumerate() {
-        for other in &lines[i + 1..] {
-            if let (Some(one), Some(other)) = (one, other) {
-                let (start, end) = (one.0 - other.0, one.1 - other.1);
-                if start * end < 0.0 {
-                    at[count] = start / (start - end);
-                    count += 1;
-                }
-            }
+    let mut first = (f64::NEG_INFINITY, f64::NEG_INFINITY);
+    for line in lines.iter().flatten() {
+        if line.0 > first.0 || (line.0 == first.0 && line.1 > first.1) {
+            first = *line;
         }
     }
-    let at = &mut at[..count];
-    at.sort_unstable_by(f64::total_cmp);
-    for share in at {
-        let value = lines
-            .iter()
-            .flatten()
-            .map(|line| if *share == 1.0 { line.1 } else { line.0 + (line.1 - line.0) * *share })
-            .fold(f64::NEG_INFINITY, f64::max);
-        push(into, (if *share == 1.0 { to } else { from + (to - from) * *share }, value));
+    push(into, (from, first.0));
+    // From the line that is greatest at the start to the one that crosses it first, and so on.
+    let mut at = 0.0;
+    loop {
+        let mut next: Option<(f64, (f64, f64))> = None;
+        for line in lines.iter().flatten().filter(|line| line.1 > first.1) {
+            let (lag, lead) = (first.0 - line.0, line.1 - first.1);
+            let share = (lag / (lag + lead)).clamp(at, 1.0);
+            if next.is_none_or(|next| share < next.0 || (share == next.0 && line.1 > next.1.1)) {
+                next = Some((share, *line));
+            }
+        }
+        let Some((share, line)) = next else { break };
+        push(into, (from + (to - from) * share, first.0 + (first.1 - first.0) * share));
+        (at, first) = (share, line);
     }
+    push(into, (to, first.1));
 }
 
 /// The greater of two functions where both are there, the one where only one is; their places overlap.
 fn greater(one: &[(f64, f64)], other: &[(f64, f64)]) -> Curve {
-    let mut borders = Vec::with_capacity(one.len() + other.len());
+    let mut result = Curve::with_capacity(2 * (one.len() + other.len()));
+    // Corners of each that have been passed.
     let (mut i, mut j) = (0, 0);
-    while i < one.len() || j < other.len() {
-        let next = match (one.get(i), other.get(j)) {
-            (Some(a), Some(b)) if a.0 <= b.0 => {
-                i += 1;
-                a.0
-            }
-            (Some(a), None) => {
-                i += 1;
-                a.0
-            }
-            (_, Some(b)) => {
-                j += 1;
-                b.0
-            }
+    let mut from: Option<f64> = None;
+    loop {
+        let to = match (one.get(i), other.get(j)) {
+            (Some(a), Some(b)) => a.0.min(b.0),
+            (Some(a), None) => a.0,
+            (None, Some(b)) => b.0,
             (None, None) => break,
         };
-        if borders.last().is_none_or(|border| next > *border) {
-            borders.push(next);
+        let line = |curve: &[(f64, f64)], next: usize, from: f64| {
+            (next > 0 && next < curve.len()).then(|| along(curve[next - 1], curve[next], from, to))
+        };
+        if let Some(from) = from {
+            envelope(&[line(one, i, from), line(other, j, from), None], from, to, &mut result);
         }
+        while one.get(i).is_some_and(|point| point.0 <= to) {
+            i += 1;
+        }
+        while other.get(j).is_some_and(|point| point.0 <= to) {
+            j += 1;
+        }
+        from = Some(to);
     }
-    let there = |curve: &[(f64, f64)], from: f64, to: f64| {
-        (curve[0].0 <= from && curve[curve.len() - 1].0 >= to).then(|| (value_at(curve, from), value_at(curve, to)))
-    };
-    let mut result = Curve::with_capacity(2 * borders.len());
-    for pair in borders.windows(2) {
-        let (from, to) = (pair[0], pair[1]);
-        envelope(&[there(one, from, to), there(other, from, to), None], from, to, &mut result);
-    }
-    if borders.len() == 1 {
-        result.push((borders[0], one[0].1.max(other[0].1)));
+    if result.is_empty() {
+        result.push((one[0].0, one[0].1.max(other[0].1)));
     }
     straightened(result)
 }

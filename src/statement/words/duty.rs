@@ -1,6 +1,6 @@
 //! The Duty station in words.
 
-use super::{count, deficit_word, figure, surplus_word};
+use super::{count, deficit_word, figure, kinds, surplus_word};
 use crate::assess::Assessment;
 use crate::case::{Case, Connection};
 use crate::chart::ticks;
@@ -14,7 +14,7 @@ pub(super) fn station(done: &Assessment, case: &Case) -> Station {
     let (short, over) = (deficit_word(duty.connection), surplus_word(duty.connection));
     let mut first = Vec::new();
     let episodes = |number: usize| count(number, "episode", "episodes");
-    if result.surplus() > 0.0 || duty.totals.supply_kwh.is_some() {
+    if result.surplus() > 0.0 || (result.surplus_kwh.is_some() && duty.totals.supply_kwh.is_some()) {
         first.push(figure(
             "duty.surplus_kwh",
             result.surplus(),
@@ -23,28 +23,34 @@ pub(super) fn station(done: &Assessment, case: &Case) -> Station {
             episodes(result.surplus_episodes),
         ));
     }
-    first.push(figure(
-        "duty.deficit_kwh",
-        result.deficit(),
-        &capital(short),
-        people::energy(result.deficit()),
-        episodes(result.deficit_episodes),
-    ));
+    if let Some(deficit) = result.deficit_kwh {
+        first.push(figure(
+            "duty.deficit_kwh",
+            deficit,
+            &capital(short),
+            people::energy(deficit),
+            episodes(result.deficit_episodes),
+        ));
+    }
+    first.extend(kinds::figures(duty));
     Station {
         sentence: sentence(done),
         rail: match duty.kind {
+            Kind::Limits(_) if duty.timed_limits() => "limits by the hour".to_owned(),
             Kind::Limits(limits) => limits
                 .import_kw
                 .map_or("export limit".to_owned(), |limit| format!("import at most {}", people::power(limit))),
-            _ => format!("{} {short}", people::energy(result.deficit())),
+            _ => kinds::rail(duty).unwrap_or_else(|| format!("{} {short}", people::energy(result.deficit()))),
         },
-        warning: if done.requirement.infeasible.is_some() && duty.connection == Connection::Islanded {
+        warning: if !duty.kind.balances() && done.requirement.infeasible.is_some() {
+            "no store can do it".to_owned()
+        } else if done.requirement.infeasible.is_some() && duty.connection == Connection::Islanded {
             "no store can serve it all".to_owned()
         } else {
             String::new()
         },
         figures: vec![first, beside_the_picture(done)],
-        method: vec![Method {
+        method: std::iter::once(Method {
             summary: "supply minus demand, interval by interval".to_owned(),
             text: "Net power is supply minus demand, or the net column with its sign. Surplus is the sum of its positive part times the \
                    interval, deficit of its negative part. An episode is an unbroken run of one sign; an interval of zero or a gap ends it."
@@ -52,7 +58,9 @@ pub(super) fn station(done: &Assessment, case: &Case) -> Station {
             formula: "S = Σ max(n, 0) Δt    D = Σ max(−n, 0) Δt    S − D = Σ n Δt".to_owned(),
             source: "elementary".to_owned(),
             limits: "Surplus and deficit inside one interval cancel, so both are lower bounds.".to_owned(),
-        }],
+        })
+        .chain(kinds::method(duty))
+        .collect(),
         notes: notes(done, case),
     }
 }
@@ -61,11 +69,24 @@ fn sentence(done: &Assessment) -> String {
     let duty = &done.duty;
     let result = &duty.result;
     let (short, over) = (deficit_word(duty.connection), surplus_word(duty.connection));
+    if let Some(asked) = kinds::asked(duty) {
+        return asked;
+    }
     if let Kind::Limits(limits) = duty.kind {
         let peak = people::power(result.peak_deficit());
+        if duty.timed_limits() {
+            let beyond = beyond(done, |i, net| {
+                duty.limits_at(i, &limits).import_kw.map_or(0.0, |limit| (-net - limit.max(0.0)).max(0.0))
+            });
+            return format!(
+                "Imports reach {peak}. Holding them to the limits of each hour asks the store for {} in all, in {}.",
+                people::energy(beyond.0),
+                count(beyond.1, "stretch", "stretches")
+            );
+        }
         return match (limits.import_kw, limits.export_kw) {
             (Some(import), export) => {
-                let beyond = beyond(done, |net| (-net - import).max(0.0));
+                let beyond = beyond(done, |_, net| (-net - import).max(0.0));
                 let also =
                     export.map_or(String::new(), |limit| format!(", exports to {}", people::power(limit)));
                 format!(
@@ -76,7 +97,7 @@ fn sentence(done: &Assessment) -> String {
                 )
             }
             (None, Some(export)) => {
-                let beyond = beyond(done, |net| (net - export).max(0.0));
+                let beyond = beyond(done, |_, net| (net - export).max(0.0));
                 format!(
                     "Exports reach {}. Holding them to {} asks the store to take {} in all.",
                     people::power(result.peak_surplus()),
@@ -122,11 +143,11 @@ fn sentence(done: &Assessment) -> String {
 }
 
 /// Energy beyond a limit, kWh, and the number of stretches in which it lies.
-fn beyond(done: &Assessment, excess: impl Fn(f64) -> f64) -> (f64, usize) {
+fn beyond(done: &Assessment, excess: impl Fn(usize, f64) -> f64) -> (f64, usize) {
     let duty = &done.duty;
     let (mut sum, mut stretches, mut inside) = (crate::numeric::Sum::default(), 0, false);
     for i in 0..duty.intervals() {
-        let power = duty.net_kw(i).map_or(0.0, &excess);
+        let power = duty.net_kw(i).map_or(0.0, |net| excess(i, net));
         if power > 0.0 && !inside {
             stretches += 1;
         }
@@ -192,20 +213,22 @@ fn beside_the_picture(done: &Assessment) -> Vec<Figure> {
             ));
         }
     }
-    figures.push(figure(
-        "duty.peak_discharge_kw",
-        result.peak_deficit(),
-        &format!("Greatest {}", deficit_word(duty.connection)),
-        people::power(result.peak_deficit()),
-        "mean of an interval, a lower bound",
-    ));
+    if let Some(peak) = result.peak_discharge_kw {
+        figures.push(figure(
+            "duty.peak_discharge_kw",
+            peak,
+            &format!("Greatest {}", deficit_word(duty.connection)),
+            people::power(peak),
+            "mean of an interval, a lower bound",
+        ));
+    }
     figures
 }
 
 fn notes(done: &Assessment, case: &Case) -> Vec<String> {
     let duty = &done.duty;
     let mut notes = Vec::new();
-    if duty.connection_guessed {
+    if duty.connection_guessed && duty.has_net() {
         let result = &duty.result;
         let round_trip = case.requirement.charge_efficiency * case.requirement.discharge_efficiency;
         notes.push(match duty.connection {
@@ -226,7 +249,7 @@ fn notes(done: &Assessment, case: &Case) -> Vec<String> {
         });
     }
     if let Some(infeasible) = &done.requirement.infeasible
-        && duty.connection == Connection::Islanded
+        && (duty.connection == Connection::Islanded || !duty.kind.balances())
     {
         notes.push(infeasible.why.clone());
     }
