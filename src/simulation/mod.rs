@@ -55,7 +55,12 @@ struct Asked {
 /// Duties that fix the store's power hand it over: charge asked may be left, discharge must be served. For outages the run is the worst
 /// one, from full.
 pub fn run(duty: &Duty, store: &FixedStore, see: impl FnMut(&Step)) -> SimulationResult {
-    run_from(duty, store, start_kwh(duty, store), see)
+    let run = run_from(duty, store, start_kwh(duty, store), see);
+    let least_import_limit_kw = match duty.kind {
+        Kind::Limits(limits) => least_import_limit(duty, &limits, store),
+        _ => None,
+    };
+    SimulationResult { least_import_limit_kw, ..run }
 }
 
 /// The level at which a store begins a duty, kWh.
@@ -72,7 +77,7 @@ pub fn start_kwh(duty: &Duty, store: &FixedStore) -> f64 {
     }
 }
 
-/// The same from a level of one's own (kWh), held within empty and full.
+/// The same from a level of one's own (kWh), held within empty and full, and without looking for the least import limit.
 pub fn run_from(
     duty: &Duty,
     store: &FixedStore,
@@ -153,10 +158,7 @@ pub fn run_from(
         stored_start_kwh: start,
         stored_end_kwh: level,
         billing: months.map(billing::Months::billed),
-        least_import_limit_kw: match duty.kind {
-            Kind::Limits(limits) => least_import_limit(duty, &limits, store),
-            _ => None,
-        },
+        least_import_limit_kw: None,
     }
 }
 

@@ -70,15 +70,54 @@ fn before(after: &Curve, price: Option<f64>, store: &Terms) -> Option<Curve> {
         None => after.clone(),
         Some(price) => {
             let Slopes { buy, sell } = store.slopes(price);
+            if buy >= sell && is_concave(after) {
+                return within_ends(&inserted(after, buy, sell, store), store);
+            }
             let charged = tilted(&ahead(&tilted(after, 0.0 - buy), store.most_in), buy);
             let discharged = mirrored(&ahead(&mirrored(&tilted(after, 0.0 - sell)), store.most_out));
             greater(&charged, &tilted(&discharged, sell))
         }
     };
-    // From the level after self-discharge to the level before it, within empty and full.
+    within_ends(&curve, store)
+}
+
+/// From the level after self-discharge to the level before it, within empty and full.
+fn within_ends(curve: &[(f64, f64)], store: &Terms) -> Option<Curve> {
     let keep = store.leak.keep;
-    cut(&curve, 0.0, keep * store.energy)
+    cut(curve, 0.0, keep * store.energy)
         .map(|curve| curve.into_iter().map(|(at, value)| (at / keep, value)).collect())
+}
+
+/// Whether slopes only fall.
+fn is_concave(curve: &[(f64, f64)]) -> bool {
+    let mut before = f64::INFINITY;
+    curve.windows(2).all(|pair| {
+        let slope = (pair[1].1 - pair[0].1) / (pair[1].0 - pair[0].0);
+        let falls = slope <= before;
+        before = slope;
+        falls
+    })
+}
+
+/// A concave step on a concave function: a piece for charging and one for discharging, each where its slope belongs.
+fn inserted(after: &Curve, buy: f64, sell: f64, store: &Terms) -> Curve {
+    let mut pieces = [(buy, store.most_in), (sell, store.most_out)].into_iter().peekable();
+    let mut at = (after[0].0 - store.most_in, after[0].1 - buy * store.most_in);
+    let mut curve = Curve::with_capacity(after.len() + 2);
+    curve.push(at);
+    let mut add = |slope: f64, length: f64| {
+        at = (at.0 + length, at.1 + slope * length);
+        push(&mut curve, at);
+    };
+    for pair in after.windows(2) {
+        let slope = (pair[1].1 - pair[0].1) / (pair[1].0 - pair[0].0);
+        while let Some((steeper, length)) = pieces.next_if(|piece| piece.0 > slope) {
+            add(steeper, length);
+        }
+        add(slope, pair[1].0 - pair[0].0);
+    }
+    pieces.for_each(|(slope, length)| add(slope, length));
+    straightened(curve)
 }
 
 /// The level after a step that makes the most of the value at its end.
