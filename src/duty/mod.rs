@@ -268,14 +268,15 @@ pub fn ask(record: &Rc<Record>, case: &Case) -> Result<Duty> {
         }
         _ => None,
     };
-    let needs_net = match &case.duty {
-        DutyCase::Guess {} | DutyCase::Balance {} | DutyCase::Limits { .. } => true,
-        DutyCase::Smoothing(_) | DutyCase::Firming(_) => true,
-        DutyCase::Given { .. }
-        | DutyCase::RideThrough(_)
-        | DutyCase::Frequency(_)
-        | DutyCase::Shifting(_) => false,
-    };
+    // The other kinds live on a column of their own.
+    let needs_net = matches!(
+        case.duty,
+        DutyCase::Guess {}
+            | DutyCase::Balance {}
+            | DutyCase::Limits { .. }
+            | DutyCase::Smoothing(_)
+            | DutyCase::Firming(_)
+    );
     if needs_net && !record.has_net() {
         return Err(Fault::new(
             "the record has neither supply, demand nor net power",

@@ -155,9 +155,9 @@ fn smooth(
         let by = firming::lowering(&power, &output, losses, step_h);
         if by > 0.0 {
             let least = if smooth.never_below_zero { 0.0 } else { f64::NEG_INFINITY };
-            output.iter_mut().for_each(|output| {
-                *output = if output.is_nan() { *output } else { (*output - by).max(least) }
-            });
+            for output in output.iter_mut().filter(|output| !output.is_nan()) {
+                *output = (*output - by).max(least);
+            }
         }
     }
     let taken = difference(&power, &output);
@@ -168,7 +168,9 @@ fn smooth(
 
 fn total(values: &[f64]) -> f64 {
     let mut sum = crate::numeric::Sum::default();
-    values.iter().filter(|value| !value.is_nan()).for_each(|value| sum.add(*value));
+    for value in values.iter().filter(|value| !value.is_nan()) {
+        sum.add(*value);
+    }
     sum.value()
 }
 
@@ -219,7 +221,9 @@ fn firm(record: &Record, terms: &Firming, losses: &Losses, cyclic: bool) -> Resu
     };
     if terms.schedule.is_none() && cyclic && losses.self_discharge_per_h > 0.0 {
         let by = firming::lowering(&power, &output, losses, step_h);
-        output.iter_mut().for_each(|output| *output -= by);
+        for output in &mut output {
+            *output -= by;
+        }
     }
     let taken = difference(&power, &output);
     let first = output.iter().copied().find(|output| !output.is_nan());

@@ -65,7 +65,9 @@ impl Months {
             })
             .collect();
         let mut saved = Sum::default();
-        months.iter().for_each(|month| saved.add(month.billed_before_kw - month.billed_after_kw));
+        for month in &months {
+            saved.add(month.billed_before_kw - month.billed_after_kw);
+        }
         let value = self.terms.rate_per_kw * saved.value();
         result::Billing { months, value }
     }

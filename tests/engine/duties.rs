@@ -52,7 +52,7 @@ fn minute() -> Rc<Record> {
 }
 
 fn smoothing(ramp: f64, method: SmoothingMethod, balance: Balance) -> Case {
-    let mut case = Case::default();
+    let mut case = case(1.0, 1.0, 0.0);
     case.duty =
         DutyCase::Smoothing(Smoothing { ramp_kw_per_min: Some(ramp), method, ..Smoothing::default() });
     case.requirement.balance = balance;
@@ -298,7 +298,7 @@ fn hours_limit_when_they_say_and_months_are_billed() {
     // 1970-01-01 is a Thursday: three days of hours with 10 kW, and 30 kW at noon.
     let load: Vec<Option<f64>> = (0..72).map(|i| Some(if i % 24 == 12 { -30.0 } else { -10.0 })).collect();
     let record = net(3600, &load);
-    let mut case = Case::default();
+    let mut case = case(1.0, 1.0, 0.0);
     case.duty = terms(
         r#"{"kind": "limits", "hours": ["Thu 11:00-13:00: 20 kW", "Fri,Sat 00:00-24:00: 25 kW"],
             "billing": {"rate_per_kw": 2, "ratchet_share": 0.5}}"#,
@@ -325,7 +325,7 @@ fn a_ratchet_bills_part_of_an_earlier_peak() {
             })
         })
         .collect();
-    let mut case = Case::default();
+    let mut case = case(1.0, 1.0, 0.0);
     case.duty = terms(
         r#"{"kind": "limits", "import_limit_kw": 8, "billing": {"rate_per_kw": 1, "ratchet_share": 0.6, "ratchet_months": 3}}"#,
     );

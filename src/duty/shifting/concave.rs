@@ -113,7 +113,7 @@ impl Order {
         for k in 0..steps {
             let slopes = span.price(k).map_or(Slopes { buy: 0.0, sell: 0.0 }, |price| store.slopes(price));
             // The growth forwards of a slope met k steps later, as a logarithm: it may exceed what a double holds.
-            let growth = (store.decay > 0.0).then(|| store.decay * k as f64);
+            let growth = (store.decay > 0.0).then_some(store.decay * k as f64);
             pieces.push((key(slopes.buy, growth), 2 * k as u32));
             pieces.push((key(slopes.sell, growth), 2 * k as u32 + 1));
         }

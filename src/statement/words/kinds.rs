@@ -138,33 +138,29 @@ pub(super) fn rail(duty: &Duty) -> Option<String> {
 /// The figures that the kind adds to the duty.
 pub(super) fn figures(duty: &Duty) -> Vec<Figure> {
     let result = &duty.result;
-    let listed: [(&str, Option<f64>, &str, fn(f64) -> Scaled, &str); 6] = [
-        (
+    let energy = |name: &str, value: Option<f64>, label: &str, context: &str| {
+        value.map(|value| figure(&format!("duty.{name}"), value, label, people::energy(value), context))
+    };
+    [
+        energy(
             "net_discharge_kwh",
             result.net_discharge_kwh,
             "Net discharge",
-            people::energy,
             "given less taken over the record",
         ),
-        ("output_kw", result.output_kw, "Output", people::power, "of the first block"),
-        (
-            "reserve_p95_kwh",
-            result.reserve_p95_kwh,
-            "Reserve, 95 of 100 starts",
-            people::energy,
-            "inside the store",
-        ),
-        ("delivered_kwh", result.delivered_kwh, "Delivered", people::energy, "outside the dead band"),
-        ("absorbed_kwh", result.absorbed_kwh, "Absorbed", people::energy, "outside the dead band"),
-        ("value", result.value, "Value", money, "in the price\u{2019}s currency"),
-    ];
-    listed
-        .into_iter()
-        .filter_map(|(name, value, label, shown, context)| {
-            let value = value?;
-            Some(figure(&format!("duty.{name}"), value, label, shown(value), context))
-        })
-        .collect()
+        result
+            .output_kw
+            .map(|kw| figure("duty.output_kw", kw, "Output", people::power(kw), "of the first block")),
+        energy("reserve_p95_kwh", result.reserve_p95_kwh, "Reserve, 95 of 100 starts", "inside the store"),
+        energy("delivered_kwh", result.delivered_kwh, "Delivered", "outside the dead band"),
+        energy("absorbed_kwh", result.absorbed_kwh, "Absorbed", "outside the dead band"),
+        result.value.map(|value| {
+            figure("duty.value", value, "Value", money(value), "in the price\u{2019}s currency")
+        }),
+    ]
+    .into_iter()
+    .flatten()
+    .collect()
 }
 
 /// What it takes; none for the other kinds.
