@@ -122,6 +122,7 @@ pub enum Positive {
 
 /// How the greatest import of a month is billed.
 #[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields)]
 pub struct Billing {
     /// Price of a kW of the month's billed peak, in the person's currency.
@@ -140,6 +141,7 @@ fn eleven() -> u32 {
 
 /// The power that is smoothed or made firm.
 #[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(rename_all = "snake_case")]
 pub enum SeriesOf {
     /// The supply.
@@ -151,6 +153,7 @@ pub enum SeriesOf {
 
 /// How the smoothed output is found.
 #[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(rename_all = "snake_case")]
 pub enum SmoothingMethod {
     /// From what has been measured so far: the output follows the power as fast as it may.
@@ -164,6 +167,7 @@ pub enum SmoothingMethod {
 
 /// Terms of smoothing.
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields, default)]
 pub struct Smoothing {
     /// Which power.
@@ -192,6 +196,7 @@ impl Smoothing {
 
 /// Terms of firming: one of `block_s`, `schedule`, `constant`.
 #[derive(Debug, Clone, Default, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields, default)]
 pub struct Firming {
     /// Which power.
@@ -206,6 +211,7 @@ pub struct Firming {
 
 /// Terms of riding through outages.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields)]
 pub struct RideThrough {
     /// Length of an outage, s; rounded up to whole intervals.
@@ -226,6 +232,7 @@ pub struct RideThrough {
 
 /// Terms of answering frequency. The defaults are common practice for a 50 Hz grid, no source.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields)]
 pub struct Frequency {
     /// Column of the grid's frequency, Hz.
@@ -248,6 +255,7 @@ pub struct Frequency {
 
 /// Terms of shifting by price. Efficiencies and self-discharge are the requirement's.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields)]
 pub struct Shifting {
     /// Column of the price, of a kWh or (by its unit) of a MWh.
@@ -274,6 +282,7 @@ pub struct Shifting {
 
 /// How far ahead prices are known.
 #[derive(Debug, Clone, Copy, Default, PartialEq, Eq, Serialize, Deserialize)]
+#[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(rename_all = "snake_case")]
 pub enum Foresight {
     /// Over the whole record.
