@@ -8,7 +8,11 @@ import { dirname, join } from "node:path";
 import { fileURLToPath } from "node:url";
 import { coldStore } from "./sites/cold-store.mjs";
 import { hillFarm } from "./sites/hill-farm.mjs";
+import { islandFrequency } from "./sites/island-frequency.mjs";
+import { lakesideHospital } from "./sites/lakeside-hospital.mjs";
+import { priceMill } from "./sites/price-mill.mjs";
 import { solarWorkshop } from "./sites/solar-workshop.mjs";
+import { sunField } from "./sites/sun-field.mjs";
 import { windIsland } from "./sites/wind-island.mjs";
 
 const here = dirname(fileURLToPath(import.meta.url));
@@ -20,5 +24,9 @@ const files = {
   "wind-island.csv": windIsland,
   "solar-workshop.txt": solarWorkshop,
   "cold-store.csv": coldStore,
+  "sun-field.csv": sunField,
+  "lakeside-hospital.csv": lakesideHospital,
+  "island-frequency.csv": islandFrequency,
+  "price-mill.csv": priceMill,
 };
 for (const [name, site] of Object.entries(files)) writeFileSync(join(folder, name), site());

@@ -59,7 +59,9 @@ pub fn screen(
             requirement.result.criteria.iter().find(|line| line.quantity == quantity).map(|line| line.value)
         };
         let site = &case.site;
-        let topped_up = matches!(duty.kind, Kind::Limits(limits) if limits.recharge);
+        // A reserve for outages is kept full by the grid.
+        let topped_up =
+            matches!(duty.kind, Kind::Limits(limits) if limits.recharge) || duty.kind == Kind::RideThrough;
         Need {
             discharge_kw: asked.point.power_kw,
             charge_kw: asked.point.power_kw,

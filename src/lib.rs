@@ -16,6 +16,7 @@ pub mod chart;
 pub mod duty;
 pub mod fault;
 pub mod job;
+pub mod losses;
 pub mod numeric;
 pub mod record;
 pub mod requirement;

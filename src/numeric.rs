@@ -73,6 +73,12 @@ pub fn sort_falling(values: &mut [f64]) {
     values.sort_unstable_by(|a, b| b.total_cmp(a));
 }
 
+/// Sorts a long list of numbers, rising in the total order.
+pub fn sort_rising_long(values: &mut [f64]) {
+    sort_falling(values);
+    values.reverse();
+}
+
 /// The indices of keys such that the keys rise in the total order; equal ones keep their order.
 ///
 /// The lists that the page sorts by a number all go through this: each sort of another type would be compiled anew, several kB

@@ -72,14 +72,14 @@ pub struct RecordResult {
 /// What storage is asked: the integrals of net power, whatever the duty's kind.
 #[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
 pub struct DutyResult {
-    /// Kind of duty: `balance`, `limits`, `given`.
+    /// Kind of duty, by the case's word.
     pub kind: String,
     /// Islanded or connected.
     pub connection: Connection,
-    /// Integral of net power where positive, kWh.
-    pub surplus_kwh: f64,
-    /// Integral of minus net power where negative, kWh.
-    pub deficit_kwh: f64,
+    /// Integral of net power where positive, kWh; null where the record has no net power.
+    pub surplus_kwh: Option<f64>,
+    /// Integral of minus net power where negative, kWh; null likewise.
+    pub deficit_kwh: Option<f64>,
     /// Demand met by supply in the same interval, kWh; null unless both are known.
     pub direct_use_kwh: Option<f64>,
     /// Direct use over supply.
@@ -96,10 +96,10 @@ pub struct DutyResult {
     pub largest_deficit_kwh: Option<f64>,
     /// Duration of the longest deficit episode, s; null without one.
     pub longest_deficit_s: Option<f64>,
-    /// Greatest surplus power, kW.
-    pub peak_charge_kw: f64,
-    /// Greatest deficit power, kW.
-    pub peak_discharge_kw: f64,
+    /// Greatest surplus power, kW; null where the record has no net power.
+    pub peak_charge_kw: Option<f64>,
+    /// Greatest deficit power, kW; null likewise.
+    pub peak_discharge_kw: Option<f64>,
     /// Greatest difference of net power between neighbouring intervals over the step, kW/s; null without two neighbours.
     pub steepest_ramp_kw_per_s: Option<f64>,
     /// Why no store can carry the duty, and where; null if one can.
@@ -110,6 +110,49 @@ pub struct DutyResult {
     /// Export limit that the duty holds, kW (kind `limits`).
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub export_limit_kw: Option<f64>,
+    /// Discharged less charged over the record, kWh at the terminals (kind `smoothing`).
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub net_discharge_kwh: Option<f64>,
+    /// Output of the first block, or the constant, kW (kind `firming`).
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub output_kw: Option<f64>,
+    /// Start of the outage that needs most, RFC 3339 (kind `ride_through`).
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub worst_start: Option<String>,
+    /// 95 % of all starts need no more than this reserve, kWh inside (kind `ride_through`).
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub reserve_p95_kwh: Option<f64>,
+    /// Delivered outside the dead band, kWh (kind `frequency`).
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub delivered_kwh: Option<f64>,
+    /// Absorbed outside the dead band, kWh (kind `frequency`).
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub absorbed_kwh: Option<f64>,
+    /// Value of the best schedule in the price's currency (kind `shifting`).
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub value: Option<f64>,
+}
+
+impl DutyResult {
+    /// The surplus, kWh; 0 where there is no net power.
+    pub fn surplus(&self) -> f64 {
+        self.surplus_kwh.unwrap_or_default()
+    }
+
+    /// The deficit, kWh; 0 where there is no net power.
+    pub fn deficit(&self) -> f64 {
+        self.deficit_kwh.unwrap_or_default()
+    }
+
+    /// Greatest surplus power, kW; 0 where there is no net power.
+    pub fn peak_surplus(&self) -> f64 {
+        self.peak_charge_kw.unwrap_or_default()
+    }
+
+    /// Greatest deficit power, kW; 0 where there is no net power.
+    pub fn peak_deficit(&self) -> f64 {
+        self.peak_discharge_kw.unwrap_or_default()
+    }
 }
 
 /// Why no store can carry a duty.
@@ -293,6 +336,9 @@ pub struct SimulationResult {
     /// State of a circuit at the end: state of charge, V, m3, rad/s, A or m.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub state_end: Option<f64>,
+    /// Months' peaks before and after, and what the difference is worth (kind `limits` with billing).
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub billing: Option<Billing>,
     /// Least import limit that this store can hold, kW (kind `limits`).
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub least_import_limit_kw: Option<f64>,
@@ -392,4 +438,28 @@ pub struct Losses {
     pub self_discharge: f64,
     /// Standing load, power x time, outside the account.
     pub standing: f64,
+}
+
+/// Months' import peaks without and with a store, as they are billed.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Billing {
+    /// Every month of the record, in order.
+    pub months: Vec<BilledMonth>,
+    /// Rate x reduction of the billed peaks, in the rate's currency; apart from any energy value.
+    pub value: f64,
+}
+
+/// A month's greatest import.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct BilledMonth {
+    /// Year and month, as 2026-03.
+    pub month: String,
+    /// Greatest import without a store, kW.
+    pub peak_before_kw: f64,
+    /// Greatest import with it, kW.
+    pub peak_after_kw: f64,
+    /// Billed without a store, kW: the peak, or the ratchet where that is more.
+    pub billed_before_kw: f64,
+    /// Billed with it, kW.
+    pub billed_after_kw: f64,
 }

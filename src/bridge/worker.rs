@@ -8,7 +8,7 @@ use js_sys::{Array, Function, Reflect, Uint8Array, global};
 use wasm_bindgen::{JsCast, JsValue};
 use web_sys::{DedicatedWorkerGlobalScope, File, MessageChannel, MessageEvent, MessagePort};
 
-use millpond::case::{CarriedFile, Case, DutyCase, RecordCase};
+use millpond::case::{CarriedFile, Case, RecordCase};
 use millpond::fault::{Fault, Result};
 use millpond::job::Job;
 use millpond::record::{self, Record, Source, WorkbookSheet};
@@ -97,11 +97,7 @@ struct Terms {
 
 impl Terms {
     fn of(case: &Case) -> Self {
-        let named = match &case.duty {
-            DutyCase::Given { column, .. } => vec![column.clone()],
-            _ => Vec::new(),
-        };
-        Self { case: case.record.clone(), named }
+        Self { case: case.record.clone(), named: case.duty.columns() }
     }
 }
 

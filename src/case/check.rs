@@ -1,14 +1,15 @@
 //! Ranges of the case's numbers, each stated once.
 
+mod duty;
 mod store;
 
 use super::carried::LARGEST;
-use super::{Case, DutyCase, PriceCase, RangeEdit, VERSION};
+use super::{Case, PriceCase, RangeEdit, VERSION};
 use crate::fault::{Fault, Result, quote};
 use crate::units::people::percent;
 
 /// Powers and energies beyond this (kW, kWh, kg, l) are slips of the pen: a thousand times the largest plants.
-const MOST: f64 = 1e12;
+pub(super) const MOST: f64 = 1e12;
 
 /// Longest lists.
 const MOST_ENTRIES: usize = 200;
@@ -51,7 +52,7 @@ pub fn number_at(path: &str, value: f64) -> Result<()> {
     }
 }
 
-fn optional_at(path: &str, value: Option<f64>) -> Result<()> {
+pub(super) fn optional_at(path: &str, value: Option<f64>) -> Result<()> {
     value.map_or(Ok(()), |value| number_at(path, value))
 }
 
@@ -87,10 +88,7 @@ pub(super) fn ranges(case: &Case) -> Result<()> {
             ));
         }
     }
-    if let DutyCase::Limits { import_limit_kw, export_limit_kw, .. } = &case.duty {
-        optional_at("duty.import_limit_kw", *import_limit_kw)?;
-        optional_at("duty.export_limit_kw", *export_limit_kw)?;
-    }
+    duty::terms(&case.duty)?;
     let requirement = &case.requirement;
     number_at("requirement.charge_efficiency", requirement.charge_efficiency)?;
     number_at("requirement.discharge_efficiency", requirement.discharge_efficiency)?;
@@ -211,7 +209,7 @@ fn written(field: &str, value: &str, most: usize, forbidden: fn(char) -> bool) -
     Err(Fault::new(what, format!("case, at {field}"), remedy))
 }
 
-fn number(field: &str, value: f64, least: f64, greatest: f64, unit: &str) -> Result<()> {
+pub(super) fn number(field: &str, value: f64, least: f64, greatest: f64, unit: &str) -> Result<()> {
     if value.is_finite() && (least..=greatest).contains(&value) {
         return Ok(());
     }
@@ -228,7 +226,7 @@ fn number(field: &str, value: f64, least: f64, greatest: f64, unit: &str) -> Res
     ))
 }
 
-fn optional(field: &str, value: Option<f64>, least: f64, greatest: f64, unit: &str) -> Result<()> {
+pub(super) fn optional(field: &str, value: Option<f64>, least: f64, greatest: f64, unit: &str) -> Result<()> {
     value.map_or(Ok(()), |value| number(field, value, least, greatest, unit))
 }
 
@@ -240,7 +238,7 @@ fn list(field: &str, values: &[f64], least: f64, greatest: f64, unit: &str) -> R
         .try_for_each(|(i, value)| number(&format!("{field}[{i}]"), *value, least, greatest, unit))
 }
 
-fn count(field: &str, entries: usize) -> Result<()> {
+pub(super) fn count(field: &str, entries: usize) -> Result<()> {
     if entries <= MOST_ENTRIES {
         return Ok(());
     }

@@ -20,7 +20,10 @@ use serde::{Deserialize, Serialize};
 pub use carried::CarriedFile;
 pub use check::number_at;
 pub use circuit::{Battery, Capacitor, Coil, Converter, CurveStore, Flywheel, Reservoir};
-pub use duty::{DutyCase, Positive};
+pub use duty::{
+    Billing, DutyCase, Firming, Foresight, Frequency, Positive, RideThrough, SeriesOf, Shifting, Smoothing,
+    SmoothingMethod,
+};
 pub use edits::{PriceCase, RangeEdit, StorePrice};
 pub use record::{DateOrder, GapRemedy, RecordCase, Remedies, RepeatRemedy, Stamp, Values};
 pub use requirement::{Balance, RequirementCase};

@@ -54,12 +54,15 @@ fn title(measure: Measure) -> &'static str {
         Measure::ServedShare => "Deficit served",
         Measure::SelfSufficiency => "Demand met on the site",
         Measure::HeldImportKw => "Import limit that can be held",
+        Measure::CarriedShare => "Discharge carried of what is asked",
     }
 }
 
 fn value_text(measure: Measure, value: f64) -> String {
     match measure {
-        Measure::ServedShare | Measure::SelfSufficiency => people::percent(value).to_string(),
+        Measure::ServedShare | Measure::SelfSufficiency | Measure::CarriedShare => {
+            people::percent(value).to_string()
+        }
         Measure::HeldImportKw => people::power(value).to_string(),
     }
 }
@@ -114,7 +117,7 @@ fn axes(pen: &mut Pen<'_>, plot: (f64, f64, f64, f64), data: &Coverage) -> Frame
     let found = extent(&data.curves.iter().map(|c| c.value.as_slice()).collect::<Vec<_>>());
     // Shares are their own unit.
     let (kw, power) = if share { (1.0, "") } else { power_unit(found.map_or(1.0, |e| e.1)) };
-    let ((low, high), upright) = if data.measure == Measure::ServedShare {
+    let ((low, high), upright) = if matches!(data.measure, Measure::ServedShare | Measure::CarriedShare) {
         ((0.0, 1.0), ticks::linear(0.0, 1.0, 5))
     } else {
         let (low, high) = found.unwrap_or((0.0, 1.0));

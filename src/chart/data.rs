@@ -95,6 +95,8 @@ pub enum Measure {
     SelfSufficiency,
     /// Import limit that can be held, kW.
     HeldImportKw,
+    /// Share of the discharge that a duty asks which is carried.
+    CarriedShare,
 }
 
 /// One curve of a coverage picture.

@@ -115,7 +115,9 @@ fn draw_all(values: &[f64], size: (u32, u32)) {
     };
     sound(size, |s| net_power(s, size, &LIGHT, &net));
     let _ = net::sentence(&net);
-    for measure in [Measure::ServedShare, Measure::SelfSufficiency, Measure::HeldImportKw] {
+    for measure in
+        [Measure::ServedShare, Measure::SelfSufficiency, Measure::HeldImportKw, Measure::CarriedShare]
+    {
         let mut data = coverage_of(v.clone(), v.clone(), measure);
         data.marks = values
             .windows(2)

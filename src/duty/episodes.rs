@@ -23,8 +23,8 @@ pub(super) fn nothing() -> DutyResult {
     DutyResult {
         kind: String::new(),
         connection: Connection::Connected,
-        surplus_kwh: 0.0,
-        deficit_kwh: 0.0,
+        surplus_kwh: None,
+        deficit_kwh: None,
         direct_use_kwh: None,
         self_consumption: None,
         self_sufficiency: None,
@@ -33,12 +33,19 @@ pub(super) fn nothing() -> DutyResult {
         largest_surplus_kwh: None,
         largest_deficit_kwh: None,
         longest_deficit_s: None,
-        peak_charge_kw: 0.0,
-        peak_discharge_kw: 0.0,
+        peak_charge_kw: None,
+        peak_discharge_kw: None,
         steepest_ramp_kw_per_s: None,
         infeasible: None,
         import_limit_kw: None,
         export_limit_kw: None,
+        net_discharge_kwh: None,
+        output_kw: None,
+        worst_start: None,
+        reserve_p95_kwh: None,
+        delivered_kwh: None,
+        absorbed_kwh: None,
+        value: None,
     }
 }
 
@@ -73,6 +80,7 @@ pub(super) fn integrate(duty: &Duty) -> (Vec<Episode>, DutyResult) {
     let (mut surplus, mut deficit, mut direct) = (Sum::default(), Sum::default(), Sum::default());
     let mut before: Option<f64> = None;
     let mut steepest: Option<f64> = None;
+    let mut peaks = (0.0, 0.0);
     let mut result = nothing();
     for i in 0..duty.intervals() {
         let net = duty.net_kw(i);
@@ -101,8 +109,7 @@ pub(super) fn integrate(duty: &Duty) -> (Vec<Episode>, DutyResult) {
             } else {
                 deficit.add(-net);
             }
-            result.peak_charge_kw = result.peak_charge_kw.max(net);
-            result.peak_discharge_kw = result.peak_discharge_kw.max(-net);
+            peaks = (f64::max(peaks.0, net), f64::max(peaks.1, -net));
         }
         if record.net_kw(i).is_some()
             && let (Some(supply), Some(demand)) = (&record.supply_kw, &record.demand_kw)
@@ -124,8 +131,12 @@ pub(super) fn integrate(duty: &Duty) -> (Vec<Episode>, DutyResult) {
             .map(|episode| episode.energy_kwh * sign)
             .fold(None, |most: Option<f64>, energy| Some(most.map_or(energy, |most| most.max(energy))))
     };
-    result.surplus_kwh = surplus.value() * step_h;
-    result.deficit_kwh = deficit.value() * step_h;
+    if duty.has_net() {
+        result.surplus_kwh = Some(surplus.value() * step_h);
+        result.deficit_kwh = Some(deficit.value() * step_h);
+        result.peak_charge_kw = Some(peaks.0);
+        result.peak_discharge_kw = Some(peaks.1);
+    }
     result.direct_use_kwh = direct;
     result.self_consumption = share(direct, duty.totals.supply_kwh);
     result.self_sufficiency = share(direct, duty.totals.demand_kwh);

@@ -4,17 +4,33 @@
 //! (`requirement::capacity`) answers least capacity and feasibility for all of them.
 
 mod episodes;
+mod firming;
+mod frequency;
+mod hours;
+mod limits;
+mod plan;
+mod polygon;
+mod ride;
+mod series;
+mod shifting;
+mod smoothing;
 mod tube;
 
 use std::rc::Rc;
 
 pub use episodes::Episode;
+pub(crate) use hours::Hours;
+pub(crate) use ride::Reserve;
 pub use tube::Tube;
 
-use crate::case::{Case, Connection, DutyCase, Positive};
-use crate::fault::{Fault, Result, quote};
+use plan::Plan;
+
+use crate::case::{Balance, Case, Connection, DutyCase, Positive, SmoothingMethod};
+use crate::fault::{Fault, Result};
+use crate::losses::Losses;
 use crate::record::Record;
-use crate::result::{DutyResult, RecordResult};
+use crate::result::{DutyResult, Infeasible, RecordResult};
+use crate::units::civil::Reading;
 
 /// The share of the greatest import that a limits duty holds where no limit was entered. A starting point, no more.
 const OPENING_LIMIT_SHARE: f64 = 0.8;
@@ -36,8 +52,22 @@ pub struct Duty {
     pub episodes: Vec<Episode>,
     /// The record's totals.
     pub totals: RecordResult,
-    /// The integrals of net power.
+    /// The integrals of net power, and what the kind adds.
     pub result: DutyResult,
+    /// Why no store can carry it, where its terms alone say so.
+    pub infeasible: Option<Infeasible>,
+    /// The terms as the case gives them.
+    terms: DutyCase,
+    /// Whether the record is repeated.
+    cyclic: bool,
+    /// The losses with which the plan was made.
+    losses: Losses,
+    /// First interval of the worst outage.
+    worst_start: Option<usize>,
+    /// The output of least energy, kept for other losses.
+    output: Option<Rc<Vec<f64>>>,
+    /// What the terms come to, interval by interval.
+    plan: Rc<Plan>,
 }
 
 /// The kinds of duty, with their terms in force.
@@ -49,6 +79,42 @@ pub enum Kind {
     Limits(Limits),
     /// Carry a column: charge asked may be left, discharge must be served.
     Given,
+    /// Hold ramps down.
+    Smoothing,
+    /// Make a fixed output.
+    Firming,
+    /// Carry the critical demand through outages.
+    RideThrough,
+    /// Answer the grid's frequency.
+    Frequency,
+    /// Shift energy by price.
+    Shifting,
+}
+
+impl Kind {
+    /// The word of the case and the result.
+    pub fn word(self) -> &'static str {
+        match self {
+            Self::Balance => "balance",
+            Self::Limits(_) => "limits",
+            Self::Given => "given",
+            Self::Smoothing => "smoothing",
+            Self::Firming => "firming",
+            Self::RideThrough => "ride_through",
+            Self::Frequency => "frequency",
+            Self::Shifting => "shifting",
+        }
+    }
+
+    /// Whether it is about net power: deficits served from surplus.
+    pub fn balances(self) -> bool {
+        matches!(self, Self::Balance | Self::Given)
+    }
+
+    /// Whether it fixes the store's power in every interval.
+    pub fn hands_over(self) -> bool {
+        matches!(self, Self::Smoothing | Self::Firming | Self::Frequency | Self::Shifting)
+    }
 }
 
 /// Limits at the connection point.
@@ -78,13 +144,112 @@ impl Duty {
         self.record.clock.intervals
     }
 
+    /// Power that the store is handed in interval `i` (kW, positive = charge), before any standing load: net power, or what the
+    /// kind fixes; none in a gap. For outages, minus the critical net demand.
+    pub fn handed_kw(&self, i: usize) -> Option<f64> {
+        match self.plan.as_ref() {
+            Plan::Net | Plan::Limits(_) => self.net_kw(i),
+            Plan::Fixed(power) => power.get(i),
+            Plan::Ride(outage) => Some(0.0 - outage.need_kw.get(i)?),
+        }
+    }
+
+    /// Whether the record has a net power; otherwise it holds only the column that the duty needs.
+    pub fn has_net(&self) -> bool {
+        self.given.is_some() || self.record.has_net()
+    }
+
+    /// Net power for pictures; where there is none, the power that the store is handed.
+    pub fn shown_kw(&self, i: usize) -> Option<f64> {
+        if self.has_net() { self.net_kw(i) } else { self.handed_kw(i) }
+    }
+
+    /// The limits in force in interval `i`, where those without hours are `limits`: of all that apply, the lowest.
+    pub fn limits_at(&self, i: usize, limits: &Limits) -> Limits {
+        let Plan::Limits(series) = self.plan.as_ref() else { return *limits };
+        let lower = |plain: Option<f64>, timed: f64| {
+            let lowest = plain.unwrap_or(f64::NAN).min(timed);
+            (!lowest.is_nan()).then_some(lowest)
+        };
+        Limits {
+            import_kw: lower(limits.import_kw, series.import_kw[i]),
+            export_kw: lower(limits.export_kw, series.export_kw[i]),
+            ..*limits
+        }
+    }
+
+    /// Whether the limits change with time.
+    pub fn timed_limits(&self) -> bool {
+        matches!(self.plan.as_ref(), Plan::Limits(_))
+    }
+
     /// The range of storage power allowed in interval `i` after a standing load (kW) is taken from net power; none in a
-    /// gap.
+    /// gap. For outages, the range while one lasts.
     pub fn tube(&self, i: usize, standing_kw: f64) -> Option<Tube> {
-        let net = self.net_kw(i)? - standing_kw;
+        let power = self.handed_kw(i)? - standing_kw;
         Some(match self.kind {
-            Kind::Balance | Kind::Given => Tube::balance(net),
-            Kind::Limits(limits) => Tube::limits(net, &limits),
+            Kind::Balance | Kind::Given | Kind::RideThrough => Tube::balance(power),
+            Kind::Limits(limits) => Tube::limits(power, &self.limits_at(i, &limits)),
+            Kind::Smoothing | Kind::Firming | Kind::Frequency | Kind::Shifting => Tube::fixed(power),
+        })
+    }
+
+    /// Whether the store must end as full as it began: as the case says, but for duties whose power follows from terms that know
+    /// nothing of the store's level.
+    pub fn is_cyclic(&self) -> bool {
+        self.cyclic
+            && match &self.terms {
+                DutyCase::Smoothing(terms) => terms.method == SmoothingMethod::LeastEnergy,
+                DutyCase::Firming(terms) => terms.schedule.is_none(),
+                DutyCase::Frequency(_) | DutyCase::Shifting(_) | DutyCase::RideThrough(_) => false,
+                _ => true,
+            }
+    }
+
+    /// The reserves that outages need with these losses; none for other kinds, or where no start can be looked at. Charging during an
+    /// outage is limited by `charge_kw` (none = no limit).
+    pub(crate) fn reserve(&self, losses: &Losses, charge_kw: Option<f64>) -> Option<Reserve> {
+        match self.plan.as_ref() {
+            Plan::Ride(outage) => outage.reserve(losses, charge_kw, self.record.step_h()),
+            _ => None,
+        }
+    }
+
+    /// The intervals that a store is run over, as the first and their number: the whole record, or the worst outage, which may run over
+    /// the record's end.
+    pub fn run_intervals(&self) -> (usize, usize) {
+        match (self.plan.as_ref(), self.worst_start) {
+            (Plan::Ride(outage), Some(start)) => (start, outage.steps),
+            (Plan::Ride(_), None) => (0, 0),
+            _ => (0, self.intervals()),
+        }
+    }
+
+    /// What the clock on the wall shows at the start of interval `i`.
+    pub fn reading(&self, i: usize) -> Option<Reading> {
+        plan::reading(&self.record.clock, i)
+    }
+
+    /// The terms as the case gives them.
+    pub fn terms(&self) -> &DutyCase {
+        &self.terms
+    }
+
+    /// The same duty for a store of other losses: some powers depend on them (blocks that close, the return of frequency, schedules).
+    ///
+    /// # Errors
+    /// None that [`ask`] has not met before.
+    pub fn under(&self, losses: &Losses) -> Result<Self> {
+        if self.losses == *losses {
+            return Ok(self.clone());
+        }
+        let (plan, added) = plan::make(&self.record, &self.terms, losses, self.cyclic, self.output.as_ref())?;
+        Ok(Self {
+            plan: Rc::new(plan),
+            losses: *losses,
+            infeasible: added.infeasible,
+            worst_start: added.worst_start,
+            ..self.clone()
         })
     }
 }
@@ -97,18 +262,31 @@ pub fn ask(record: &Rc<Record>, case: &Case) -> Result<Duty> {
     let load_only = record.net_kw.is_none() && record.supply_kw.is_none();
     let given = match &case.duty {
         DutyCase::Given { column, positive } => {
-            Some((column_of(record, column)?, if *positive == Positive::Charge { 1.0 } else { -1.0 }))
+            let extra = plan::column(record, column, "column")?;
+            let place = record.extras.iter().position(|other| std::ptr::eq(other, extra)).unwrap_or_default();
+            Some((place, if *positive == Positive::Charge { 1.0 } else { -1.0 }))
         }
         _ => None,
     };
-    if given.is_none() && record.net_kw.is_none() && record.supply_kw.is_none() && record.demand_kw.is_none()
-    {
+    // The other kinds live on a column of their own.
+    let needs_net = matches!(
+        case.duty,
+        DutyCase::Guess {}
+            | DutyCase::Balance {}
+            | DutyCase::Limits { .. }
+            | DutyCase::Smoothing(_)
+            | DutyCase::Firming(_)
+    );
+    if needs_net && !record.has_net() {
         return Err(Fault::new(
             "the record has neither supply, demand nor net power",
             record.site.clone(),
             "Give a column one of these roles under \u{201c}As read\u{201d}, or in the case's record.roles.",
         ));
     }
+    let losses = Losses::of(&case.requirement);
+    let cyclic = case.requirement.balance == Balance::Cyclic;
+    let (plan, added) = plan::make(record, &case.duty, &losses, cyclic, None)?;
     let mut duty = Duty {
         record: Rc::clone(record),
         kind: Kind::Balance,
@@ -118,40 +296,25 @@ pub fn ask(record: &Rc<Record>, case: &Case) -> Result<Duty> {
         episodes: Vec::new(),
         totals: episodes::no_totals(),
         result: episodes::nothing(),
+        infeasible: added.infeasible,
+        terms: case.duty.clone(),
+        cyclic,
+        losses,
+        worst_start: added.worst_start,
+        output: added.output,
+        plan: Rc::new(plan),
     };
     duty.totals = totals(&duty);
-    if duty.totals.missing_intervals == duty.totals.intervals {
+    if duty.infeasible.is_none() && (0..duty.intervals()).all(|i| duty.handed_kw(i).is_none()) {
         return Err(Fault::new(
-            format!(
-                "none of the {} intervals has all the values that net power needs",
-                duty.totals.intervals
-            ),
+            format!("none of the {} intervals has all the values that the duty needs", duty.totals.intervals),
             record.site.clone(),
-            "See the findings for the cells that do not read, or give other columns the roles of supply and demand.",
+            "See the findings for the cells that do not read, or give other columns the roles that the duty needs.",
         ));
     }
     let (found, integrals) = episodes::integrate(&duty);
     duty.episodes = found;
-    duty.kind = match &case.duty {
-        DutyCase::Given { .. } => Kind::Given,
-        DutyCase::Balance {} => Kind::Balance,
-        DutyCase::Guess {} if !load_only => Kind::Balance,
-        DutyCase::Guess {} => Kind::Limits(Limits {
-            import_kw: Some(OPENING_LIMIT_SHARE * integrals.peak_discharge_kw),
-            export_kw: None,
-            recharge: true,
-            discharge: false,
-        }),
-        DutyCase::Limits { import_limit_kw, export_limit_kw, recharge_from_grid, discharge_to_grid } => {
-            let opening = Some(OPENING_LIMIT_SHARE * integrals.peak_discharge_kw);
-            Kind::Limits(Limits {
-                import_kw: import_limit_kw.or(if export_limit_kw.is_none() { opening } else { None }),
-                export_kw: *export_limit_kw,
-                recharge: *recharge_from_grid,
-                discharge: *discharge_to_grid,
-            })
-        }
-    };
+    duty.kind = kind(&case.duty, load_only, integrals.peak_discharge_kw.unwrap_or_default());
     duty.connection_guessed = case.site.connection.is_none();
     duty.connection = case.site.connection.unwrap_or_else(|| guess_connection(duty.kind, &integrals, case));
     let (import_limit_kw, export_limit_kw) = match duty.kind {
@@ -159,43 +322,70 @@ pub fn ask(record: &Rc<Record>, case: &Case) -> Result<Duty> {
         _ => (None, None),
     };
     duty.result = DutyResult {
-        kind: match duty.kind {
-            Kind::Balance => "balance",
-            Kind::Limits(_) => "limits",
-            Kind::Given => "given",
-        }
-        .to_owned(),
+        kind: duty.kind.word().to_owned(),
         connection: duty.connection,
         import_limit_kw,
         export_limit_kw,
+        net_discharge_kwh: added.net_discharge_kwh,
+        output_kw: added.output_kw,
+        worst_start: added.worst_start.map(|i| record.clock.stamp(i)),
+        reserve_p95_kwh: added.reserve_p95_kwh,
+        delivered_kwh: added.delivered_kwh,
+        absorbed_kwh: added.absorbed_kwh,
+        value: added.value,
         ..integrals
     };
     Ok(duty)
 }
 
+/// The kind in force.
+fn kind(terms: &DutyCase, load_only: bool, peak_kw: f64) -> Kind {
+    let opening = Some(OPENING_LIMIT_SHARE * peak_kw);
+    match terms {
+        DutyCase::Given { .. } => Kind::Given,
+        DutyCase::Balance {} => Kind::Balance,
+        DutyCase::Guess {} if !load_only => Kind::Balance,
+        DutyCase::Guess {} => {
+            Kind::Limits(Limits { import_kw: opening, export_kw: None, recharge: true, discharge: false })
+        }
+        DutyCase::Limits {
+            import_limit_kw,
+            export_limit_kw,
+            recharge_from_grid,
+            discharge_to_grid,
+            hours,
+            import_limit_column,
+            export_limit_column,
+            import_limit_kva,
+            ..
+        } => {
+            let none = import_limit_kw.is_none()
+                && export_limit_kw.is_none()
+                && hours.is_empty()
+                && import_limit_column.is_none()
+                && export_limit_column.is_none()
+                && import_limit_kva.is_none();
+            Kind::Limits(Limits {
+                import_kw: if none { opening } else { *import_limit_kw },
+                export_kw: *export_limit_kw,
+                recharge: *recharge_from_grid,
+                discharge: *discharge_to_grid,
+            })
+        }
+        DutyCase::Smoothing(_) => Kind::Smoothing,
+        DutyCase::Firming(_) => Kind::Firming,
+        DutyCase::RideThrough(_) => Kind::RideThrough,
+        DutyCase::Frequency(_) => Kind::Frequency,
+        DutyCase::Shifting(_) => Kind::Shifting,
+    }
+}
+
 /// Islanded only if the surplus after losses covers the deficit: otherwise something else must have served it.
 fn guess_connection(kind: Kind, integrals: &DutyResult, case: &Case) -> Connection {
     let round_trip = case.requirement.charge_efficiency * case.requirement.discharge_efficiency;
-    let covered = integrals.deficit_kwh > 0.0 && round_trip * integrals.surplus_kwh >= integrals.deficit_kwh;
-    if covered && !matches!(kind, Kind::Limits(_)) { Connection::Islanded } else { Connection::Connected }
-}
-
-fn column_of(record: &Record, header: &str) -> Result<usize> {
-    let found = record
-        .extra(header)
-        .and_then(|extra| record.extras.iter().position(|other| std::ptr::eq(other, extra)));
-    found.ok_or_else(|| {
-        let headers: Vec<&str> = record.extras.iter().map(|extra| extra.header.as_str()).collect();
-        Fault::new(
-            format!("the duty names a column {} that the record does not hold", quote(header)),
-            "case, at duty.column",
-            if headers.is_empty() {
-                "Give the header of a column of numbers, as it stands in the file.".to_owned()
-            } else {
-                format!("Give one of: {}.", headers.join(", "))
-            },
-        )
-    })
+    let (surplus, deficit) = (integrals.surplus(), integrals.deficit());
+    let covered = deficit > 0.0 && round_trip * surplus >= deficit;
+    if covered && kind.balances() { Connection::Islanded } else { Connection::Connected }
 }
 
 /// The record's totals, over intervals whose net power is there.
@@ -205,7 +395,7 @@ fn totals(duty: &Duty) -> RecordResult {
     let step_h = record.step_h();
     let (mut supply, mut demand, mut missing) = (Sum::default(), Sum::default(), 0);
     for i in 0..record.clock.intervals {
-        if duty.net_kw(i).is_none() {
+        if duty.shown_kw(i).is_none() {
             missing += 1;
         }
         if record.net_kw(i).is_some() {

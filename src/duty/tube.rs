@@ -18,6 +18,11 @@ impl Tube {
         if net_kw > 0.0 { Self { lo: -net_kw, hi: 0.0 } } else { Self { lo: -net_kw, hi: -net_kw } }
     }
 
+    /// A power (kW, positive = charge) that is fixed.
+    pub fn fixed(power_kw: f64) -> Self {
+        Self { lo: 0.0 - power_kw, hi: 0.0 - power_kw }
+    }
+
     /// Limits at a connection point.
     pub fn limits(net_kw: f64, limits: &Limits) -> Self {
         let load = -net_kw;

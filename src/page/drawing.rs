@@ -55,6 +55,7 @@ impl Which {
         match (self, sheet.pictures.coverage.measure, sheet.pictures.plane.basis) {
             (Self::Coverage, Measure::ServedShare, _) => "Deficit served against delivered energy",
             (Self::Coverage, Measure::SelfSufficiency, _) => "Self-sufficiency against delivered energy",
+            (Self::Coverage, Measure::CarriedShare, _) => "Discharge carried against delivered energy",
             (Self::Coverage, Measure::HeldImportKw, _) => "Import limit held against delivered energy",
             (Self::Plane, _, Basis::Mass) => "Ragone plane, by installed mass",
             (Self::Plane, _, Basis::Volume) => "Ragone plane, by installed volume",

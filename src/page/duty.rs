@@ -25,6 +25,8 @@ enum Kind {
     Balance,
     Limits,
     Given,
+    /// Another duty, from a case file or a demo site.
+    Own,
 }
 
 const IMPORT: Field = Field {
@@ -102,7 +104,8 @@ fn terms(desk: Desk) -> impl IntoView {
             "limits" => Kind::Limits,
             "given" => Kind::Given,
             "guess" | "" if in_force == "limits" => Kind::Limits,
-            _ => Kind::Balance,
+            "guess" | "" | "balance" => Kind::Balance,
+            _ => Kind::Own,
         })
     });
     let columns = Memo::new(move |_| {
@@ -116,6 +119,9 @@ fn terms(desk: Desk) -> impl IntoView {
     });
     let put = move |kind: Kind| {
         let column = columns.with_untracked(|columns| columns.first().cloned());
+        if kind == Kind::Own {
+            return;
+        }
         desk.edit(|case| {
             case.put(&["duty"], Tree::None);
             match (kind, column) {
@@ -136,6 +142,9 @@ fn terms(desk: Desk) -> impl IntoView {
         if columns.with(|columns| !columns.is_empty()) {
             kinds.push((Kind::Given, "carry the power of a column".to_owned()));
         }
+        if kind.get() == Kind::Own {
+            kinds.push((Kind::Own, "do what the case file says".to_owned()));
+        }
         kinds
     };
     view! {
@@ -143,6 +152,8 @@ fn terms(desk: Desk) -> impl IntoView {
             <li>"Storage is asked to "{move || choice("What storage is asked", kinds(), move || kind.get(), put)}"."</li>
             {move || match kind.get() {
                 Kind::Balance => ().into_any(),
+                // The engine's sentence states the terms in force.
+                Kind::Own => view! { <li>{move || desk.of(|sheet| sheet.duty.sentence.clone())}</li> }.into_any(),
                 Kind::Limits => limit_terms(desk).into_any(),
                 Kind::Given => given_terms(desk, columns).into_any(),
             }}

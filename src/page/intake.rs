@@ -110,6 +110,18 @@ fn demos() -> Vec<Demo> {
     of_json(SITES).unwrap_or_default()
 }
 
+/// The case of a demo site by its file: what its entry says, over the untouched one.
+fn case_of(file: &str) -> Tree {
+    let mut case = Tree::untouched();
+    let sites = Tree::of_text(SITES);
+    for (_, site) in sites.inside() {
+        if site.word(&["file"]) == file {
+            case.lay_over(site.get(&["case"]));
+        }
+    }
+    case
+}
+
 fn files(list: Option<FileList>) -> Vec<File> {
     list.map(|list| (0..list.length()).filter_map(|i| list.get(i)).collect()).unwrap_or_default()
 }
@@ -140,7 +152,7 @@ fn open_demo(desk: Desk, name: String) {
         match fetch(&name).await {
             Ok(file) => {
                 // A demo site is a fresh start: no case of another site is carried over to it.
-                desk.open_with(vec![file], Tree::untouched());
+                desk.open_with(vec![file], case_of(&name));
             }
             Err(error) => desk.fail(Fault::new(
                 "the demo site could not be fetched",

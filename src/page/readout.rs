@@ -121,6 +121,7 @@ pub(crate) fn read(which: Which, sheet: &Sheet, hits: &Hits, index: usize) -> Op
                 Measure::ServedShare => format!("{} served", people::percent(value)),
                 Measure::SelfSufficiency => format!("{} self-sufficient", people::percent(value)),
                 Measure::HeldImportKw => format!("import held at {}", people::power(value)),
+                Measure::CarriedShare => format!("{} carried", people::percent(value)),
             };
             let mut words = format!("{} delivered:", people::energy(energy));
             for (i, curve) in coverage.curves.iter().enumerate() {

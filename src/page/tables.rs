@@ -43,6 +43,7 @@ pub(crate) fn table(which: Which, sheet: &Sheet) -> Table {
                 Measure::ServedShare => "Share served",
                 Measure::SelfSufficiency => "Self-sufficiency",
                 Measure::HeldImportKw => "Import held, kW",
+                Measure::CarriedShare => "Share carried",
             };
             let rows = pictures.coverage.curves.iter().flat_map(|curve| {
                 let power =

@@ -56,6 +56,27 @@ impl Tree {
         (version <= f64::from(case::VERSION)).then_some(tree)
     }
 
+    /// The tree of a text; none if it is no JSON.
+    pub(crate) fn of_text(text: &str) -> Self {
+        JSON::parse(text).map(|value| Self::of(&value)).unwrap_or_default()
+    }
+
+    /// Lays another tree over this one: its fields take the place of those of their names, the rest stays.
+    pub(crate) fn lay_over(&mut self, other: &Self) {
+        match (self, other) {
+            (_, Self::None) => {}
+            (Self::Fields(fields), Self::Fields(others)) => {
+                for (name, value) in others {
+                    match fields.iter_mut().find(|(field, _)| field == name) {
+                        Some((_, field)) => field.lay_over(value),
+                        None => fields.push((name.clone(), value.clone())),
+                    }
+                }
+            }
+            (this, other) => *this = other.clone(),
+        }
+    }
+
     /// The text of the case file.
     pub(crate) fn text(&self) -> String {
         let text = JSON::stringify_with_replacer_and_space(&self.value(), &JsValue::NULL, &JsValue::from(2));

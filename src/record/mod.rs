@@ -91,6 +91,11 @@ impl Record {
         }
     }
 
+    /// Whether there is a net power at all: the files may hold only a column that a duty names.
+    pub fn has_net(&self) -> bool {
+        self.net_kw.is_some() || self.supply_kw.is_some() || self.demand_kw.is_some()
+    }
+
     /// Length of an interval in hours.
     pub fn step_h(&self) -> f64 {
         self.clock.step_s() / 3600.0

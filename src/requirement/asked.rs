@@ -1,9 +1,9 @@
 //! The asked point: the power and energy that the sheet is about.
 
-use super::capacity::{Inflow, least_of};
+use super::capacity::{self, start_level};
 use super::coverage::Curve;
 use super::{Losses, Ranges, forced_powers};
-use crate::case::{Balance, Case, Connection, FixedStore, RequirementCase, Start};
+use crate::case::{Balance, Case, Connection, DutyCase, FixedStore, RequirementCase, Start};
 use crate::duty::{Duty, Kind};
 use crate::numeric::sort_falling;
 use crate::result::{AskedPoint, SimulationResult};
@@ -51,16 +51,22 @@ pub struct Asked {
     pub why: String,
     /// A store of exactly that size.
     pub store: FixedStore,
+    /// The level at which it starts, kWh.
+    pub start_kwh: f64,
     /// Its run on the duty.
     pub run: SimulationResult,
+    /// The duty as it is with the working losses.
+    pub duty: Duty,
 }
 
 /// The asked point of a duty; none where no store reaches it, or nothing is asked.
 pub(super) fn point(duty: &Duty, case: &Case, working: &Working) -> Option<Asked> {
     let losses = &working.losses;
+    let duty = &duty.under(losses).ok()?;
     let (power_kw, share, usable_kwh, why) = match duty.kind {
         Kind::Limits(_) => limits(duty, case, losses)?,
         Kind::Balance | Kind::Given => balance(duty, case, losses)?,
+        _ => own(duty, case, losses)?,
     };
     if power_kw <= 0.0 || usable_kwh <= 0.0 {
         return None;
@@ -78,7 +84,12 @@ pub(super) fn point(duty: &Duty, case: &Case, working: &Working) -> Option<Asked
         start: if terms.balance == Balance::Cyclic { Start::Cyclic } else { Start::Full },
         ..FixedStore::default()
     };
-    let run = simulation::run(duty, &store, |_| {});
+    let start_kwh = match duty.terms() {
+        DutyCase::Shifting(terms) => terms.start_kwh,
+        _ if duty.kind.hands_over() => start_level(duty, losses),
+        _ => simulation::start_kwh(duty, &store),
+    };
+    let run = simulation::run_from(duty, &store, start_kwh, |_| {});
     let point = AskedPoint {
         served_share: share,
         power_kw,
@@ -86,7 +97,7 @@ pub(super) fn point(duty: &Duty, case: &Case, working: &Working) -> Option<Asked
         usable_kwh,
         nameplate_kwh: usable_kwh / (terms.depth * terms.end_of_life) * (1.0 + terms.margin),
     };
-    Some(Asked { point, why, store, run })
+    Some(Asked { point, why, store, start_kwh, run, duty: duty.clone() })
 }
 
 /// The limits are held; the power is what they force, and the energy what it takes with that power both ways.
@@ -94,18 +105,27 @@ fn limits(duty: &Duty, case: &Case, losses: &Losses) -> Option<(f64, f64, f64, S
     let (charge, discharge) = forced_powers(duty, losses.standing_kw);
     let forced = charge.max(discharge);
     let power = case.requirement.served_power_kw.unwrap_or(forced).max(forced);
-    let step_h = duty.record.step_h();
-    let usable =
-        least_of(duty.intervals(), losses.leak(step_h), case.requirement.balance == Balance::Cyclic, |i| {
-            let tube = duty.tube(i, losses.standing_kw).map(|tube| tube.rated(Some(power), Some(power)));
-            Inflow::of(tube, losses, step_h)
-        })?;
+    let usable = capacity::least(duty, losses, Some(power))?;
     Some((power, 1.0, usable, "holds the limits".to_owned()))
+}
+
+/// Duties that say themselves what a store must do: their own least power and capacity.
+fn own(duty: &Duty, case: &Case, losses: &Losses) -> Option<(f64, f64, f64, String)> {
+    if let DutyCase::Shifting(terms) = duty.terms() {
+        duty.infeasible.is_none().then_some(())?;
+        let power = terms.charge_kw.max(terms.discharge_kw);
+        return Some((power, 1.0, terms.energy_kwh, "the power and energy entered".to_owned()));
+    }
+    let (charge, discharge) = forced_powers(duty, losses.standing_kw);
+    let forced = charge.max(discharge);
+    let power = case.requirement.served_power_kw.unwrap_or(forced).max(forced);
+    let usable = capacity::least(duty, losses, Some(power))?;
+    Some((power, 1.0, usable, "the least that carries all that is asked".to_owned()))
 }
 
 fn balance(duty: &Duty, case: &Case, losses: &Losses) -> Option<(f64, f64, f64, String)> {
     let terms = &case.requirement;
-    let deficit = duty.result.deficit_kwh;
+    let deficit = duty.result.deficit();
     if deficit <= 0.0 {
         return None;
     }

@@ -1,68 +1,21 @@
 //! Least capacities: sequent peak in its backward form, for any duty's tube.
 //!
 //! Level needed, backwards: `r_t = max(0, (r_{t+1} - gain w_max) / keep)`; level forced, forwards:
-//! `s_{t+1} = max(0, keep s_t + gain w_min)`. The least capacity is the greatest of both. Without self-discharge these are the
-//! two maximal window sums; with it the backward form needs no iteration. The record repeated (cyclic) takes each pass twice;
-//! if the second pass still rises, no capacity does.
+//! `s_{t+1} = max(0, keep s_t + gain w_min)`. The least capacity is the greatest of both: the path that stays at the greater of the
+//! two levels is carried, and no path can stay below either. Without self-discharge these are the two maximal window sums; with it the
+//! backward form needs no iteration. For the record repeated (cyclic) each pass starts from its fixed point: of the map
+//! x -> max(least, factor x + shift) of a pass. Backwards the factor is 1 or more, and there is one only if the second pass does not
+//! rise; forwards it is 1 or less, and with self-discharge there always is one.
 //!
 //! Sequent peak: Thomas and Burden 1963 (from memory); mass curve: Rippl 1883 (from memory); the two-pass rule as in
 //! Water 11(7):1413, 2019, sec. 2.2.1. The backward form with losses is derived here and checked against linear programmes.
 
-use crate::case::{FixedStore, RequirementCase};
-use crate::duty::{Duty, Tube};
+use crate::duty::{Duty, Kind, Tube};
+use crate::losses::Losses;
 use crate::numeric::Leak;
 
 /// Sums that should balance exactly may miss by this share of the energy moved.
 const BALANCE_TOLERANCE: f64 = 1e-9;
-
-/// Losses of a store of fixed efficiencies.
-#[derive(Debug, Clone, Copy, PartialEq)]
-pub struct Losses {
-    /// Charge efficiency, connection point to store.
-    pub charge: f64,
-    /// Discharge efficiency, store to connection point.
-    pub discharge: f64,
-    /// Self-discharge of the stored energy, per hour.
-    pub self_discharge_per_h: f64,
-    /// Standing load, kW.
-    pub standing_kw: f64,
-}
-
-impl Losses {
-    /// The losses that a case states.
-    pub fn of(case: &RequirementCase) -> Self {
-        Self {
-            charge: case.charge_efficiency,
-            discharge: case.discharge_efficiency,
-            self_discharge_per_h: case.self_discharge_per_h,
-            standing_kw: case.standing_kw,
-        }
-    }
-
-    /// The losses of a store.
-    pub fn of_store(store: &FixedStore) -> Self {
-        Self {
-            charge: store.charge_efficiency,
-            discharge: store.discharge_efficiency,
-            self_discharge_per_h: store.self_discharge_per_h,
-            standing_kw: store.standing_kw,
-        }
-    }
-
-    /// Energy that goes into the store (kWh) when it discharges `discharge_kw` (negative: charges) for `step_h` hours.
-    pub fn inflow_kwh(&self, discharge_kw: f64, step_h: f64) -> f64 {
-        if discharge_kw >= 0.0 {
-            0.0 - discharge_kw * step_h / self.discharge
-        } else {
-            -discharge_kw * self.charge * step_h
-        }
-    }
-
-    /// The step of self-discharge.
-    pub fn leak(&self, step_h: f64) -> Leak {
-        Leak::new(self.self_discharge_per_h, step_h)
-    }
-}
 
 /// The least and greatest inflow (kWh) that a tube allows in a step; a gap allows none.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -74,6 +27,11 @@ pub struct Inflow {
 }
 
 impl Inflow {
+    /// Whether nothing is allowed: no power, or none that is finite.
+    pub fn is_empty(self) -> bool {
+        self.most < self.least || self.most == f64::NEG_INFINITY || self.least == f64::INFINITY
+    }
+
     /// Of a tube, with the losses.
     pub fn of(tube: Option<Tube>, losses: &Losses, step_h: f64) -> Self {
         tube.map_or(Self { most: 0.0, least: 0.0 }, |tube| Self {
@@ -83,12 +41,26 @@ impl Inflow {
     }
 }
 
-/// Least capacity (kWh inside) for the duty's own tube; none if no capacity carries it.
-pub fn least(duty: &Duty, losses: &Losses, cyclic: bool) -> Option<f64> {
+/// Least capacity (kWh inside) for the duty's own tube, within a power both ways (kW; none = no limit); none if no capacity
+/// carries it.
+pub fn least(duty: &Duty, losses: &Losses, power_kw: Option<f64>) -> Option<f64> {
+    if duty.infeasible.is_some() {
+        return None;
+    }
     let step_h = duty.record.step_h();
-    least_of(duty.intervals(), losses.leak(step_h), cyclic, |i| {
-        Inflow::of(duty.tube(i, losses.standing_kw), losses, step_h)
+    if duty.kind == Kind::RideThrough {
+        return duty.reserve(losses, power_kw).map(|reserve| reserve.greatest_kwh);
+    }
+    least_of(duty.intervals(), losses.leak(step_h), duty.is_cyclic(), |i| {
+        let tube = duty.tube(i, losses.standing_kw).map(|tube| tube.rated(power_kw, power_kw));
+        Inflow::of(tube, losses, step_h)
     })
+}
+
+/// The first interval in which the tube is empty; none if it nowhere is.
+pub fn empty_at(duty: &Duty, losses: &Losses) -> Option<usize> {
+    let step_h = duty.record.step_h();
+    (0..duty.intervals()).find(|i| Inflow::of(duty.tube(*i, losses.standing_kw), losses, step_h).is_empty())
 }
 
 /// Least capacity (kWh inside) with which every deficit of net power is met, whatever the duty's kind: cyclic, or from full.
@@ -126,14 +98,20 @@ pub fn net_inflow(duty: &Duty, losses: &Losses, step_h: f64, i: usize) -> f64 {
     duty.net_kw(i).map_or(0.0, |net| losses.inflow_kwh(losses.standing_kw - net, step_h))
 }
 
+/// The same of the power that the store is handed, where the duty's kind fixes it.
+pub fn handed_inflow(duty: &Duty, losses: &Losses, step_h: f64, i: usize) -> f64 {
+    duty.handed_kw(i).map_or(0.0, |power| losses.inflow_kwh(losses.standing_kw - power, step_h))
+}
+
 /// Least capacity for inflows given step by step (kWh), see the module's head.
 pub fn least_of(steps: usize, leak: Leak, cyclic: bool, inflow: impl Fn(usize) -> Inflow) -> Option<f64> {
     let mut moved = crate::numeric::Sum::default();
     for i in 0..steps {
-        let Inflow { most, least } = inflow(i);
-        if most < least {
+        let flow = inflow(i);
+        if flow.is_empty() {
             return None;
         }
+        let Inflow { most, least } = flow;
         moved.add(if most.is_finite() { most.abs() } else { 0.0 });
         moved.add(if least.is_finite() { least.abs() } else { 0.0 });
     }
@@ -142,8 +120,9 @@ pub fn least_of(steps: usize, leak: Leak, cyclic: bool, inflow: impl Fn(usize) -
     let (left, mut most_forced) = forced(steps, leak, 0.0, |i| inflow(i).least);
     if cyclic {
         let again = self::needed(steps, leak, needed, |i| inflow(i).most);
-        let forced_again = forced(steps, leak, left, |i| inflow(i).least);
-        if again.0 > needed + slack || forced_again.0 > left + slack {
+        let settled = settled(steps, leak, left, |i| inflow(i).least);
+        let forced_again = forced(steps, leak, settled, |i| inflow(i).least);
+        if again.0 > needed + slack || forced_again.0 > settled + slack {
             return None;
         }
         most_needed = again.1;
@@ -170,6 +149,31 @@ fn forced(steps: usize, leak: Leak, start: f64, least: impl Fn(usize) -> f64) ->
         greatest = greatest.max(level);
     }
     (level, greatest)
+}
+
+/// The level (kWh inside) at which a store of the least capacity may begin the duty.
+pub fn start_level(duty: &Duty, losses: &Losses) -> f64 {
+    let step_h = duty.record.step_h();
+    let leak = losses.leak(step_h);
+    let steps = duty.intervals();
+    let inflow = |i: usize| Inflow::of(duty.tube(i, losses.standing_kw), losses, step_h);
+    let (once, _) = needed(steps, leak, 0.0, |i| inflow(i).most);
+    if !duty.is_cyclic() {
+        return once;
+    }
+    let (left, _) = forced(steps, leak, 0.0, |i| inflow(i).least);
+    once.max(settled(steps, leak, left, |i| inflow(i).least))
+}
+
+/// The level at which the forced passes settle when the record is repeated, if they do: `once` is what one pass from empty leaves,
+/// and without limits a pass maps x to factor x + shift.
+fn settled(steps: usize, leak: Leak, once: f64, least: impl Fn(usize) -> f64) -> f64 {
+    let (mut factor, mut shift) = (1.0_f64, 0.0_f64);
+    for i in 0..steps {
+        factor *= leak.keep;
+        shift = leak.keep * shift + leak.gain * least(i);
+    }
+    if factor < 1.0 { once.max(shift / (1.0 - factor)) } else { once }
 }
 
 /// The critical period: the fall of the cumulative energy curve that sets the capacity.

@@ -34,6 +34,7 @@ pub(super) fn list(duty: &Duty, case: &Case, working: &Working, asked: Option<&A
         };
         let what = match duty.kind {
             Kind::Limits(_) => "holds the limits".to_owned(),
+            _ if !duty.kind.balances() => "carries all that is asked".to_owned(),
             _ => format!(
                 "serves {} of the {}",
                 people::percent(point.served_share),
@@ -42,6 +43,8 @@ pub(super) fn list(duty: &Duty, case: &Case, working: &Working, asked: Option<&A
         };
         let power_from = match duty.kind {
             Kind::Limits(_) => "greatest power beyond the limits".to_owned(),
+            Kind::Shifting => "power entered".to_owned(),
+            _ if !duty.kind.balances() => "greatest power asked".to_owned(),
             _ if case.requirement.served_power_kw.is_some() => "power entered".to_owned(),
             _ if duty.connection == Connection::Connected => {
                 "a hundredth of the import energy lies above this power".to_owned()
@@ -59,8 +62,11 @@ pub(super) fn list(duty: &Duty, case: &Case, working: &Working, asked: Option<&A
             lossy,
         );
         let years = duty.record.clock.span_s() / YEAR_S;
+        // An outage is run once, whatever the record's length: that says nothing about a year.
+        let lasting = duty.kind != Kind::RideThrough;
         if let Some(cycles) = asked.run.equivalent_full_cycles
             && years > 0.0
+            && lasting
         {
             computed(
                 "cycles",
@@ -70,7 +76,7 @@ pub(super) fn list(duty: &Duty, case: &Case, working: &Working, asked: Option<&A
                 lossy,
             );
         }
-        if let Some(hold) = asked.run.mean_hold_s {
+        if let Some(hold) = asked.run.mean_hold_s.filter(|_| lasting) {
             computed(
                 "hold",
                 hold,
@@ -79,10 +85,10 @@ pub(super) fn list(duty: &Duty, case: &Case, working: &Working, asked: Option<&A
                 lossy,
             );
         }
-        if duty.result.surplus_kwh > 0.0 && !matches!(duty.kind, Kind::Limits(_)) {
+        if duty.result.surplus() > 0.0 && duty.kind.balances() {
             computed(
                 "round_trip_efficiency",
-                point.served_share * duty.result.deficit_kwh / duty.result.surplus_kwh,
+                point.served_share * duty.result.deficit() / duty.result.surplus(),
                 "",
                 "served energy over surplus".to_owned(),
                 Confidence::Measured,

@@ -9,15 +9,16 @@ mod asked;
 mod bands;
 pub(crate) mod coverage;
 mod criteria;
+mod infeasible;
 mod ranges;
 
+pub use crate::losses::Losses;
 pub(crate) use asked::knee;
 pub use asked::{Asked, Working};
-pub use capacity::Losses;
 pub use ranges::Ranges;
 
-use crate::case::{Balance, Case};
-use crate::duty::{Duty, Kind};
+use crate::case::{Balance, Case, DutyCase};
+use crate::duty::Duty;
 use crate::result::{CoverageRow, Infeasible, RequirementResult};
 
 /// What a store must meet.
@@ -40,33 +41,38 @@ pub fn derive(duty: &Duty, case: &Case) -> Requirement {
     let cyclic = terms.balance == Balance::Cyclic;
     let full = capacity::balance(duty, &losses, false);
     let repeated = capacity::balance(duty, &losses, true);
-    let (least, charge, discharge) = match duty.kind {
-        Kind::Balance | Kind::Given => {
+    let (least, charge, discharge) = match duty.terms() {
+        _ if duty.kind.balances() => {
             let (charge, discharge) = peaks(duty, losses.standing_kw);
             (if cyclic { repeated } else { full }, charge, discharge)
         }
-        Kind::Limits(_) => {
+        // What is shifted is the person's choice: the terms are the answer.
+        DutyCase::Shifting(terms) => {
+            (duty.infeasible.is_none().then_some(terms.energy_kwh), terms.charge_kw, terms.discharge_kw)
+        }
+        _ => {
             let (charge, discharge) = forced_powers(duty, losses.standing_kw);
-            (capacity::least(duty, &losses, cyclic), charge, discharge)
+            (capacity::least(duty, &losses, None), charge, discharge)
         }
     };
-    let infeasible = least.is_none().then(|| why_infeasible(duty, &losses));
+    let infeasible = least.is_none().then(|| infeasible::why(duty, &losses));
+    let net = |value: Option<f64>| value.filter(|_| duty.has_net());
     let working = Working::of(terms);
     let asked = asked::point(duty, case, &working);
     let result = RequirementResult {
-        capacity_no_deficit_full_kwh: full,
-        capacity_no_deficit_cyclic_kwh: repeated,
-        capacity_no_curtailment_empty_kwh: Some(capacity::no_curtailment(duty, &losses)),
-        capacity_range_kwh: Some(capacity::range(duty, &losses)),
-        least_round_trip_efficiency: (duty.result.surplus_kwh > 0.0)
-            .then(|| duty.result.deficit_kwh / duty.result.surplus_kwh),
+        capacity_no_deficit_full_kwh: net(full),
+        capacity_no_deficit_cyclic_kwh: net(repeated),
+        capacity_no_curtailment_empty_kwh: net(Some(capacity::no_curtailment(duty, &losses))),
+        capacity_range_kwh: net(Some(capacity::range(duty, &losses))),
+        least_round_trip_efficiency: (duty.result.surplus() > 0.0)
+            .then(|| duty.result.deficit() / duty.result.surplus()),
         least_capacity_kwh: least,
         least_charge_kw: least.map(|_| charge),
         least_discharge_kw: least.map(|_| discharge),
         asked: asked.as_ref().map(|asked| asked.point),
         criteria: criteria::list(duty, case, &working, asked.as_ref()),
-        coverage: coverage(duty, case, &losses),
-        bands: bands::split(duty, &terms.band_edges_s),
+        coverage: if duty.has_net() { coverage(duty, case, &losses) } else { Vec::new() },
+        bands: if duty.has_net() { bands::split(duty, &terms.band_edges_s) } else { Vec::new() },
     };
     Requirement { result, infeasible, working, asked }
 }
@@ -88,35 +94,6 @@ fn forced_powers(duty: &Duty, standing_kw: f64) -> (f64, f64) {
         .fold((0.0, 0.0), |(charge, discharge): (f64, f64), tube| {
             (charge.max(-tube.hi), discharge.max(tube.lo))
         })
-}
-
-fn why_infeasible(duty: &Duty, losses: &Losses) -> Infeasible {
-    use crate::units::people::{energy, percent};
-    let why = match duty.kind {
-        Kind::Limits(_) => {
-            "The store must give more than it may take back over the record: allow recharging from the grid, or raise the \
-             import limit."
-                .to_owned()
-        }
-        Kind::Balance | Kind::Given => {
-            let (surplus, deficit) = (duty.result.surplus_kwh, duty.result.deficit_kwh);
-            let yielded = surplus * losses.charge * losses.discharge;
-            if surplus == 0.0 {
-                "There is no surplus from which a store could be charged.".to_owned()
-            } else if yielded < deficit {
-                format!(
-                    "The surplus of {} yields {} after losses, {} of the deficit of {}: no store can serve the rest.",
-                    energy(surplus),
-                    energy(yielded),
-                    percent(yielded / deficit),
-                    energy(deficit)
-                )
-            } else {
-                "Self-discharge and standing load leave too little of the surplus to serve the deficit.".to_owned()
-            }
-        }
-    };
-    Infeasible { why, at: "the whole record, repeated".to_owned() }
 }
 
 /// The coverage table: for each power (no limit first) and unserved share, the least capacity.

@@ -101,11 +101,11 @@ impl Lay {
                 Stage::Coverage
             }
             Stage::Coverage => {
-                self.pictures.coverage = pictures::coverage(duty, requirement, &self.case);
+                self.pictures.coverage = pictures::coverage(duty, requirement);
                 Stage::Week
             }
             Stage::Week => {
-                self.pictures.week = requirement.asked.as_ref().map(|asked| pictures::week(duty, asked));
+                self.pictures.week = requirement.asked.as_ref().map(pictures::week);
                 Stage::Cumulative
             }
             Stage::Cumulative => {

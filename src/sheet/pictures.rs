@@ -32,7 +32,7 @@ pub(super) fn reading_us(clock: &Clock, i: usize) -> f64 {
 /// The critical period of an islanded balance, or of any duty that must serve all deficits; none where limits are held or no
 /// capacity serves everything.
 pub(super) fn critical(duty: &Duty, requirement: &Requirement, case: &Case) -> Option<CriticalPeriod> {
-    if matches!(duty.kind, Kind::Limits(_)) || duty.connection == Connection::Connected {
+    if !duty.kind.balances() || duty.connection == Connection::Connected {
         return None;
     }
     let losses = &requirement.working.losses;
@@ -62,7 +62,7 @@ pub(super) fn year(duty: &Duty, critical: Option<&CriticalPeriod>) -> YearSheet 
     let (mut sums, mut counts) = (vec![0.0; cells], vec![0_u32; cells]);
     let wide = clock.step_s() > cell_s;
     for i in 0..clock.intervals {
-        let Some(net) = duty.net_kw(i) else { continue };
+        let Some(net) = duty.shown_kw(i) else { continue };
         let from = (reading_us(clock, i) - start_us) / (cell_s * 1e6);
         let from_cell = from.max(0.0) as usize;
         // An interval longer than a cell fills all that it covers.
@@ -90,7 +90,7 @@ pub(super) fn year(duty: &Duty, critical: Option<&CriticalPeriod>) -> YearSheet 
 
 /// The duration curve of net power.
 pub(super) fn duration(duty: &Duty) -> DurationCurve {
-    let mut values: Vec<f64> = (0..duty.intervals()).filter_map(|i| duty.net_kw(i)).collect();
+    let mut values: Vec<f64> = (0..duty.intervals()).filter_map(|i| duty.shown_kw(i)).collect();
     sort_falling(&mut values);
     let step_h = duty.record.step_h();
     let most = 600.min(values.len());
@@ -106,8 +106,8 @@ pub(super) fn duration(duty: &Duty) -> DurationCurve {
     DurationCurve {
         hours,
         net_kw,
-        surplus_kwh: duty.result.surplus_kwh,
-        deficit_kwh: duty.result.deficit_kwh,
+        surplus_kwh: duty.result.surplus(),
+        deficit_kwh: duty.result.deficit(),
         import_limit_kw: duty.result.import_limit_kw,
         deficit_word: if connected { "import" } else { "deficit" }.to_owned(),
     }
@@ -131,7 +131,7 @@ pub(super) fn net(duty: &Duty, view: &View) -> NetPower {
     };
     for start in (from..to).step_by(stride) {
         let (mut least, mut greatest) = (f64::INFINITY, f64::NEG_INFINITY);
-        for net in (start..(start + stride).min(to)).filter_map(|i| duty.net_kw(i)) {
+        for net in (start..(start + stride).min(to)).filter_map(|i| duty.shown_kw(i)) {
             least = least.min(net);
             greatest = greatest.max(net);
         }
@@ -156,7 +156,7 @@ pub(super) fn net(duty: &Duty, view: &View) -> NetPower {
     let cell = strip_cell(clock);
     for start in (0..clock.intervals).step_by(cell) {
         let (mut sum, mut count) = (Sum::default(), 0_usize);
-        for net in (start..(start + cell).min(clock.intervals)).filter_map(|i| duty.net_kw(i)) {
+        for net in (start..(start + cell).min(clock.intervals)).filter_map(|i| duty.shown_kw(i)) {
             sum.add(net);
             count += 1;
         }
@@ -202,7 +202,7 @@ fn usual_window(duty: &Duty) -> (usize, usize) {
         .iter()
         .min_by(|a, b| a.energy_kwh.total_cmp(&b.energy_kwh))
         .map_or((0, 0), |episode| (episode.start, episode.steps));
-    let load_only = duty.result.surplus_kwh == 0.0;
+    let load_only = duty.result.surplus() == 0.0 || duty.episodes.is_empty();
     let (start, steps) = if load_only { (deepest(duty), 1) } else { largest };
     let length = (14.0 * day).max(1.6 * steps as f64).min(clock.intervals as f64) as usize;
     let middle = start + steps / 2;
@@ -213,13 +213,54 @@ fn usual_window(duty: &Duty) -> (usize, usize) {
 /// The interval of the greatest deficit.
 fn deepest(duty: &Duty) -> usize {
     (0..duty.intervals())
-        .filter_map(|i| duty.net_kw(i).map(|net| (i, net)))
+        .filter_map(|i| duty.shown_kw(i).map(|net| (i, net)))
         .min_by(|a, b| a.1.total_cmp(&b.1))
         .map_or(0, |(i, _)| i)
 }
 
 /// The week in which the asked store leaves most unserved, or stands lowest where it leaves nothing.
-pub(super) fn week(duty: &Duty, asked: &Asked) -> Week {
+pub(super) fn week(asked: &Asked) -> Week {
+    let duty = &asked.duty;
+    let clock = &duty.record.clock;
+    let (from, to) =
+        if duty.kind == Kind::RideThrough { (0, duty.run_intervals().1) } else { deciding(asked) };
+    let (length, first_run) = (to - from, duty.run_intervals().0);
+    let stride = length.div_ceil(SAMPLES).max(1);
+    let capacity = asked.store.energy_kwh;
+    let connected =
+        duty.connection == Connection::Connected && !duty.kind.hands_over() && duty.kind != Kind::RideThrough;
+    let mut week = Week {
+        store: format!("{} delivered, {}", energy(asked.point.delivered_kwh), power(asked.point.power_kw)),
+        unserved_word: if connected { "remaining import" } else { "unserved" }.to_owned(),
+        ..Week::default()
+    };
+    let (mut sums, mut count, mut i) = ((0.0, 0.0, f64::NAN), 0_usize, 0_usize);
+    simulation::run_from(duty, &asked.store, asked.start_kwh, |step| {
+        if (from..to).contains(&i) {
+            if count == 0 {
+                // An outage over the record's end goes on beyond it.
+                let beyond_us = if step.interval < first_run { clock.span_s() * 1e6 } else { 0.0 };
+                week.t_us.push(reading_us(clock, step.interval) + beyond_us);
+                sums = (0.0, 0.0, step.level_kwh);
+            }
+            count += 1;
+            sums.0 += if step.gap { f64::NAN } else { step.asked_kw };
+            sums.1 += step.carried_kw;
+            if count == stride || i + 1 == to {
+                week.asked_kw.push(sums.0 / count as f64);
+                week.carried_kw.push(sums.1 / count as f64);
+                week.level.push(if capacity > 0.0 { sums.2 / capacity } else { 0.0 });
+                count = 0;
+            }
+        }
+        i += 1;
+    });
+    week
+}
+
+/// First interval of that week, and the one after its last.
+fn deciding(asked: &Asked) -> (usize, usize) {
+    let duty = &asked.duty;
     let clock = &duty.record.clock;
     let day = libm::round(86_400.0 / clock.step_s()).max(1.0) as usize;
     let length = (7 * day).min(clock.intervals);
@@ -229,7 +270,7 @@ pub(super) fn week(duty: &Duty, asked: &Asked) -> Week {
     let days = (clock.intervals.saturating_sub(first)).div_ceil(day).max(1);
     let (mut unserved, mut lowest) = (vec![0.0; days], vec![f64::INFINITY; days]);
     let mut i = 0_usize;
-    simulation::run(duty, &asked.store, |step| {
+    simulation::run_from(duty, &asked.store, asked.start_kwh, |step| {
         if let Some(cell) = i.checked_sub(first).map(|since: usize| since / day) {
             unserved[cell] += (step.carried_kw.min(0.0) - step.asked_kw.min(0.0)).max(0.0);
             lowest[cell] = f64::min(lowest[cell], step.after_kwh);
@@ -248,43 +289,17 @@ pub(super) fn week(duty: &Duty, asked: &Asked) -> Week {
         deepest.saturating_sub(3).min(weeks - 1)
     };
     let from = (first + start * day).min(clock.intervals - length);
-    let to = from + length;
-    let stride = length.div_ceil(SAMPLES).max(1);
-    let capacity = asked.store.energy_kwh;
-    let connected = duty.connection == Connection::Connected;
-    let mut week = Week {
-        store: format!("{} delivered, {}", energy(asked.point.delivered_kwh), power(asked.point.power_kw)),
-        unserved_word: if connected { "remaining import" } else { "unserved" }.to_owned(),
-        ..Week::default()
-    };
-    let (mut sums, mut count, mut i) = ((0.0, 0.0, f64::NAN), 0_usize, 0_usize);
-    simulation::run(duty, &asked.store, |step| {
-        if (from..to).contains(&i) {
-            if count == 0 {
-                week.t_us.push(reading_us(clock, i));
-                sums = (0.0, 0.0, step.level_kwh);
-            }
-            count += 1;
-            sums.0 += if step.gap { f64::NAN } else { step.asked_kw };
-            sums.1 += step.carried_kw;
-            if count == stride || i + 1 == to {
-                week.asked_kw.push(sums.0 / count as f64);
-                week.carried_kw.push(sums.1 / count as f64);
-                week.level.push(if capacity > 0.0 { sums.2 / capacity } else { 0.0 });
-                count = 0;
-            }
-        }
-        i += 1;
-    });
-    week
+    (from, from + length)
 }
 
 /// The cumulative energy curve after losses, with the critical period; empty where limits are held.
 pub(super) fn cumulative(duty: &Duty, requirement: &Requirement, case: &Case) -> Cumulative {
     let clock = &duty.record.clock;
-    if matches!(duty.kind, Kind::Limits(_)) || clock.intervals == 0 {
+    if matches!(duty.kind, Kind::Limits(_) | Kind::RideThrough) || clock.intervals == 0 {
         return Cumulative::default();
     }
+    // Where the power that is handed over depends on the losses, it is that of the working ones.
+    let duty = requirement.asked.as_ref().map_or(duty, |asked| &asked.duty);
     let losses = &requirement.working.losses;
     let step_h = duty.record.step_h();
     let period = critical(duty, requirement, case);
@@ -314,7 +329,7 @@ pub(super) fn cumulative(duty: &Duty, requirement: &Requirement, case: &Case) ->
             picture.energy_kwh.push(sum.value());
         }
         if i < clock.intervals {
-            sum.add(capacity::net_inflow(duty, losses, step_h, i));
+            sum.add(capacity::handed_inflow(duty, losses, step_h, i));
         }
     }
     total = sum.value();
@@ -326,7 +341,7 @@ pub(super) fn cumulative(duty: &Duty, requirement: &Requirement, case: &Case) ->
         let mut sum = Sum::default();
         sum.add(total);
         for i in 0..(period.to - clock.intervals).min(clock.intervals) {
-            sum.add(capacity::net_inflow(duty, losses, step_h, i));
+            sum.add(capacity::handed_inflow(duty, losses, step_h, i));
             if (i + 1).is_multiple_of(stride) || i + 1 + clock.intervals == period.to {
                 picture.t_us.push(reading_us(clock, i + 1) + span_us);
                 picture.energy_kwh.push(sum.value());

@@ -47,7 +47,8 @@ fn holds(duty: &Duty, limits: &Limits, store: &FixedStore, losses: &Losses) -> b
     let leak = losses.leak(step_h);
     let inflow = |i: usize| {
         let tube = duty.net_kw(i).map(|net| {
-            Tube::limits(net - losses.standing_kw, limits).rated(store.charge_kw, store.discharge_kw)
+            let limits = duty.limits_at(i, limits);
+            Tube::limits(net - losses.standing_kw, &limits).rated(store.charge_kw, store.discharge_kw)
         });
         Inflow::of(tube, losses, step_h)
     };
@@ -72,10 +73,11 @@ fn holds(duty: &Duty, limits: &Limits, store: &FixedStore, losses: &Losses) -> b
     // The levels that can be reached are an interval; it is empty where the store fails.
     let (mut low, mut high) = (start, start);
     for i in 0..duty.intervals() {
-        let Inflow { most, least } = inflow(i);
-        if most < least {
+        let flow = inflow(i);
+        if flow.is_empty() {
             return false;
         }
+        let Inflow { most, least } = flow;
         // Self-discharge may carry a level below the window, delivery may not.
         let floor = |level: f64| window.least.min(leak.keep * level);
         let forced = leak.keep * high + leak.gain * most;

@@ -2,6 +2,7 @@
 //!
 //! [`run`] is the stage's door.
 
+mod billing;
 mod circuit;
 mod limit;
 mod run_of;
@@ -24,6 +25,8 @@ use tally::{Tally, rainflow_cycles, shares};
 /// One interval of a run.
 #[derive(Debug, Clone, Copy, PartialEq)]
 pub struct Step {
+    /// The interval of the record.
+    pub interval: usize,
     /// Power asked at the terminals, kW, positive = charge: what the duty needs carried, without optional refilling.
     pub asked_kw: f64,
     /// Power carried at the terminals, kW, positive = charge, refilling included.
@@ -55,23 +58,53 @@ struct Asked {
 /// served, exports above the limit are taken, and the store refills as early as it may (or, with an export limit alone, empties
 /// into the load as early as it may). Powers are limited at the terminals, and further so that the level at the interval's end stays
 /// within its bounds; the step is the exact solution with constant power (see [`Leak`]).
-pub fn run(duty: &Duty, store: &FixedStore, mut see: impl FnMut(&Step)) -> SimulationResult {
+///
+/// Duties that fix the store's power hand it over: charge asked may be left, discharge must be served. For outages the run is the worst
+/// one, from full.
+pub fn run(duty: &Duty, store: &FixedStore, see: impl FnMut(&Step)) -> SimulationResult {
+    let run = run_from(duty, store, start_kwh(duty, store), see);
+    let least_import_limit_kw = match duty.kind {
+        Kind::Limits(limits) => least_import_limit(duty, &limits, store),
+        _ => None,
+    };
+    SimulationResult { least_import_limit_kw, ..run }
+}
+
+/// The level at which a store begins a duty, kWh.
+pub fn start_kwh(duty: &Duty, store: &FixedStore) -> f64 {
+    let window = Window::of(store);
+    match store.start {
+        _ if duty.kind == Kind::RideThrough => window.greatest,
+        Start::Full => window.greatest,
+        Start::Empty => window.least,
+        Start::Half => window.bounded(store.energy_kwh / 2.0),
+        Start::Cyclic => {
+            let losses = Losses::of_store(store);
+            settled(duty, store, &losses, losses.leak(duty.record.step_h()))
+        }
+    }
+}
+
+/// The same from a level of one's own (kWh), held within empty and full, and without looking for the least import limit.
+pub fn run_from(
+    duty: &Duty,
+    store: &FixedStore,
+    start_kwh: f64,
+    mut see: impl FnMut(&Step),
+) -> SimulationResult {
     let losses = Losses::of_store(store);
     let step_h = duty.record.step_h();
     let leak = losses.leak(step_h);
     let window = Window::of(store);
-    let start = match store.start {
-        Start::Full => window.greatest,
-        Start::Empty => window.least,
-        Start::Half => window.bounded(store.energy_kwh / 2.0),
-        Start::Cyclic => settled(duty, store, &losses, leak),
-    };
+    let start = window.bounded(start_kwh);
     let mut level = start;
-    let mut levels = Vec::with_capacity(duty.intervals() + 1);
+    let (first, count) = duty.run_intervals();
+    let mut levels = Vec::with_capacity(count + 1);
     levels.push(level);
+    let mut months = billing::Months::of(duty);
     let mut tally = Tally::default();
     let mut account = Account::default();
-    for i in 0..duty.intervals() {
+    for i in (first..first + count).map(|i| i % duty.intervals()) {
         let before = level;
         let asked = asked(duty, &losses, i);
         let asked_now = asked.unwrap_or_default();
@@ -87,7 +120,11 @@ pub fn run(duty: &Duty, store: &FixedStore, mut see: impl FnMut(&Step)) -> Simul
         // Power that the rating allows and the energy does not.
         let short_of_energy = wanted.1.min(asked_now.discharge) - discharge;
         tally.add(&asked_now, charge, discharge, short_of_energy, (before, level));
+        if let (Some(months), Some(net)) = (&mut months, duty.net_kw(i)) {
+            months.add(i, net, net - losses.standing_kw + discharge - charge);
+        }
         see(&Step {
+            interval: i,
             asked_kw: asked_now.charge - asked_now.discharge,
             carried_kw: charge - discharge,
             level_kwh: before,
@@ -131,10 +168,8 @@ pub fn run(duty: &Duty, store: &FixedStore, mut see: impl FnMut(&Step)) -> Simul
         stored_start_kwh: start,
         stored_end_kwh: level,
         state_end: None,
-        least_import_limit_kw: match duty.kind {
-            Kind::Limits(limits) => least_import_limit(duty, &limits, store),
-            _ => None,
-        },
+        billing: months.map(billing::Months::billed),
+        least_import_limit_kw: None,
     }
 }
 
@@ -150,21 +185,21 @@ struct Account {
 
 /// What the duty asks in interval `i` after the store's standing load; none in a gap.
 fn asked(duty: &Duty, losses: &Losses, i: usize) -> Option<Asked> {
-    let net = duty.net_kw(i)? - losses.standing_kw;
+    let net = duty.handed_kw(i)? - losses.standing_kw;
     Some(match duty.kind {
-        Kind::Balance | Kind::Given => {
-            Asked { discharge: (-net).max(0.0), charge: net.max(0.0), ..Asked::default() }
-        }
-        Kind::Limits(limits) => asked_by_limits(net, &limits),
+        Kind::Limits(limits) => asked_by_limits(net, &duty.limits_at(i, &limits)),
+        _ => Asked { discharge: (-net).max(0.0), charge: net.max(0.0), ..Asked::default() },
     })
 }
 
 fn asked_by_limits(net_kw: f64, limits: &Limits) -> Asked {
     let load = -net_kw;
-    let discharge = limits.import_kw.map_or(0.0, |limit| (load - limit).max(0.0));
+    // A limit that no power holds (below nothing) asks for the whole load.
+    let import_kw = limits.import_kw.map(|limit| limit.max(0.0));
+    let discharge = import_kw.map_or(0.0, |limit| (load - limit).max(0.0));
     let charge = limits.export_kw.map_or(0.0, |limit| (-load - limit).max(0.0));
     let surplus_left = (-load).max(0.0) - charge;
-    let (refill, empty) = match limits.import_kw {
+    let (refill, empty) = match import_kw {
         // Nothing to serve later: the store keeps room for exports by serving the load (or the grid, up to the limit).
         None if limits.discharge => (0.0, limits.export_kw.map_or(0.0, |limit| (load + limit).max(0.0))),
         None => (0.0, load.max(0.0)),

@@ -32,7 +32,9 @@ impl Ask {
         let losses = Losses { charge: 1.0, discharge: 1.0, self_discharge_per_h: 0.0, standing_kw };
         let counts_charge = matches!(duty.kind, Kind::Limits(_));
         let mut sum = Sum::default();
-        let asked = (0..duty.intervals())
+        let (first, count) = duty.run_intervals();
+        let asked = (first..first + count)
+            .map(|i| i % duty.intervals())
             .map(|i| {
                 let asked = asked(duty, &losses, i).unwrap_or_default();
                 sum.add(asked.discharge + if counts_charge { asked.charge } else { 0.0 });

@@ -1,7 +1,7 @@
 //! What runs of every kind of store count alike.
 
 use super::Asked;
-use crate::duty::Duty;
+use crate::duty::{Duty, Kind};
 use crate::numeric::Sum;
 use crate::requirement::cycles::rainflow;
 use crate::result::Unserved;
@@ -82,8 +82,11 @@ pub(super) fn share_kept(lost: f64, whole: Option<f64>) -> Option<f64> {
     whole.filter(|whole| *whole > 0.0).map(|whole| 1.0 - lost / whole)
 }
 
-/// Self-consumption and self-sufficiency.
+/// Self-consumption and self-sufficiency: shares of supply and demand say something only where net power is what is asked.
 pub(super) fn shares(duty: &Duty, unserved_kwh: f64, curtailed_kwh: f64) -> (Option<f64>, Option<f64>) {
+    if !(duty.kind.balances() || matches!(duty.kind, Kind::Limits(_))) {
+        return (None, None);
+    }
     (share_kept(curtailed_kwh, duty.totals.supply_kwh), share_kept(unserved_kwh, duty.totals.demand_kwh))
 }
 

@@ -1,6 +1,7 @@
 //! Sentences, key figures and method notes of every station, written once for the page and the statement.
 
 mod duty;
+mod kinds;
 mod plane;
 mod record;
 mod requirement;

@@ -13,7 +13,7 @@ use clap::Parser;
 use rayon::prelude::*;
 
 use crate::assess::{assess, failed};
-use crate::case::{Case, DutyCase};
+use crate::case::Case;
 use crate::fault::{Fault, Result};
 use crate::job::finish;
 use crate::record::{Disk, Memory, Source, read, site_of};
@@ -229,10 +229,6 @@ fn through(
     case: &Case,
     catalogue: &Catalogue,
 ) -> Result<SiteResult> {
-    let named: Vec<String> = match &case.duty {
-        DutyCase::Given { column, .. } => vec![column.clone()],
-        _ => Vec::new(),
-    };
-    let record = Rc::new(finish(read(name, sources, &case.record, &named)?)?);
+    let record = Rc::new(finish(read(name, sources, &case.record, &case.duty.columns())?)?);
     Ok(assess(&record, case, catalogue)?.result())
 }

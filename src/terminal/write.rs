@@ -158,10 +158,10 @@ fn paragraph(result: &SiteResult) -> String {
         lines.push(format!(
             "  duty         {}, {connection}: surplus {}, deficit {} in {} episodes, up to {}",
             duty.kind,
-            energy(duty.surplus_kwh),
-            energy(duty.deficit_kwh),
+            energy(duty.surplus()),
+            energy(duty.deficit()),
             duty.deficit_episodes,
-            power(duty.peak_discharge_kw)
+            power(duty.peak_deficit())
         ));
         if let Some(infeasible) = &duty.infeasible {
             lines.push(format!("    - {}", infeasible.why));

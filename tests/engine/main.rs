@@ -5,6 +5,7 @@
 
 mod case;
 mod circuits;
+mod duties;
 mod properties;
 mod reference;
 mod sheet;

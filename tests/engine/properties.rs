@@ -25,7 +25,7 @@ proptest! {
     fn surplus_minus_deficit_is_net_energy(values in series()) {
         let duty = duty(&net(900, &values), &Case::default());
         let total: f64 = values.iter().flatten().sum::<f64>() * 0.25;
-        prop_assert!(near(duty.result.surplus_kwh - duty.result.deficit_kwh, total, 1e3));
+        prop_assert!(near(duty.result.surplus() - duty.result.deficit(), total, 1e3));
         let episodes: f64 = duty.episodes.iter().map(|episode| episode.energy_kwh).sum();
         prop_assert!(near(episodes, total, 1e3));
     }
@@ -86,7 +86,7 @@ proptest! {
         };
         let run = simulation::run(&duty, &store, |_| {});
         prop_assert!(near(ranges.unserved_kwh(energy), run.unserved_kwh, 1e3), "{} {}", ranges.unserved_kwh(energy), run.unserved_kwh);
-        prop_assert!(near(run.served_kwh + run.unserved_kwh, duty.result.deficit_kwh, 1e3));
+        prop_assert!(near(run.served_kwh + run.unserved_kwh, duty.result.deficit(), 1e3));
     }
 
     #[test]
@@ -95,9 +95,9 @@ proptest! {
         let duty = duty(&net(3600, &values), &terms);
         let ranges = Ranges::of(&duty, &Losses::of(&terms.requirement), None);
         if let Some(capacity) = ranges.capacity_kwh(share) {
-            prop_assert!(ranges.unserved_kwh(capacity) <= share * duty.result.deficit_kwh + 1e-6);
+            prop_assert!(ranges.unserved_kwh(capacity) <= share * duty.result.deficit() + 1e-6);
             if capacity > 1e-6 {
-                prop_assert!(ranges.unserved_kwh(capacity * 0.999) >= share * duty.result.deficit_kwh - 1e-6);
+                prop_assert!(ranges.unserved_kwh(capacity * 0.999) >= share * duty.result.deficit() - 1e-6);
             }
         }
     }
@@ -142,6 +142,6 @@ proptest! {
         let duty = duty(&net(900, &values), &terms);
         let bands = requirement::derive(&duty, &terms).result.bands;
         let discharge: f64 = bands.iter().map(|band| band.discharge_kw).sum();
-        prop_assert!(discharge + 1e-9 >= duty.result.peak_discharge_kw);
+        prop_assert!(discharge + 1e-9 >= duty.result.peak_deficit());
     }
 }

@@ -26,8 +26,8 @@ fn integrals_and_episodes_of_the_hand_series() {
     let hand = &all["hand_interval"];
     let values: Vec<Option<f64>> = numbers(&hand["n_kw"]).into_iter().map(Some).collect();
     let duty = duty(&net(1800, &values), &Case::default());
-    close(duty.result.surplus_kwh, number(&hand["surplus_kwh"]), 1e-12);
-    close(duty.result.deficit_kwh, number(&hand["deficit_kwh"]), 1e-12);
+    close(duty.result.surplus(), number(&hand["surplus_kwh"]), 1e-12);
+    close(duty.result.deficit(), number(&hand["deficit_kwh"]), 1e-12);
     let expected = hand["episodes"].as_array().unwrap();
     assert_eq!(duty.episodes.len(), expected.len());
     for (episode, expected) in duty.episodes.iter().zip(expected) {
@@ -44,13 +44,13 @@ fn integrals_of_the_site() {
     let site = &all["site_hourly"];
     let duty = duty(&hourly(), &Case::default());
     let result = &duty.result;
-    close(result.surplus_kwh, number(&site["surplus_kwh"]), 1e-9);
-    close(result.deficit_kwh, number(&site["deficit_kwh"]), 1e-9);
+    close(result.surplus(), number(&site["surplus_kwh"]), 1e-9);
+    close(result.deficit(), number(&site["deficit_kwh"]), 1e-9);
     close(duty.totals.supply_kwh.unwrap(), number(&site["supply_kwh"]), 1e-9);
     close(duty.totals.demand_kwh.unwrap(), number(&site["demand_kwh"]), 1e-9);
     close(result.direct_use_kwh.unwrap(), number(&site["direct_use_kwh"]), 1e-9);
-    close(result.peak_charge_kw, number(&site["peak_surplus_kw"]), 1e-12);
-    close(result.peak_discharge_kw, number(&site["peak_deficit_kw"]), 1e-12);
+    close(result.peak_surplus(), number(&site["peak_surplus_kw"]), 1e-12);
+    close(result.peak_deficit(), number(&site["peak_deficit_kw"]), 1e-12);
     assert_eq!(result.surplus_episodes as u64, site["n_surplus_episodes"].as_u64().unwrap());
     assert_eq!(result.deficit_episodes as u64, site["n_deficit_episodes"].as_u64().unwrap());
     close(result.largest_deficit_kwh.unwrap(), number(&site["largest_deficit_episode"]["energy_kwh"]), 1e-12);
@@ -321,5 +321,5 @@ fn coverage_with_self_discharge_is_what_a_run_leaves() {
         ..FixedStore::default()
     };
     let run = simulation::run(&duty, &store, |_| {});
-    close(run.unserved_kwh, 0.2 * duty.result.deficit_kwh, 1e-6);
+    close(run.unserved_kwh, 0.2 * duty.result.deficit(), 1e-6);
 }

@@ -4,7 +4,7 @@ use std::rc::Rc;
 
 use millpond::case::{Case, DutyCase};
 use millpond::duty::{self, Duty};
-use millpond::record::{Clock, Reading, Record, Series, Zone};
+use millpond::record::{Clock, Extra, Reading, Record, Role, Series, Zone};
 
 /// A record of net power (kW) with a step in seconds; `None` is a gap.
 pub(crate) fn net(step_s: i64, values: &[Option<f64>]) -> Rc<Record> {
@@ -73,12 +73,32 @@ pub(crate) fn duty(record: &Rc<Record>, case: &Case) -> Duty {
 
 /// Limits that let the store recharge from the grid and discharge into it.
 pub(crate) fn limits(import: Option<f64>, export: Option<f64>) -> DutyCase {
-    DutyCase::Limits {
-        import_limit_kw: import,
-        export_limit_kw: export,
-        recharge_from_grid: true,
-        discharge_to_grid: true,
+    let mut duty = DutyCase::limits(import, export);
+    if let DutyCase::Limits { discharge_to_grid, .. } = &mut duty {
+        *discharge_to_grid = true;
     }
+    duty
+}
+
+/// A record with this column beside what it has.
+pub(crate) fn with_column(
+    record: &Rc<Record>,
+    header: &str,
+    role: Role,
+    values: &[Option<f64>],
+) -> Rc<Record> {
+    let mut record = Record::clone(record);
+    record.extras.push(Extra {
+        header: header.to_owned(),
+        role,
+        values: Series::from_values(values).unwrap(),
+    });
+    Rc::new(record)
+}
+
+/// A record of nothing but a column.
+pub(crate) fn only_column(step_s: i64, header: &str, role: Role, values: &[Option<f64>]) -> Rc<Record> {
+    with_column(&Rc::new(empty(step_s, values.len())), header, role, values)
 }
 
 /// Asserts that two numbers agree to a relative tolerance.

@@ -79,7 +79,7 @@ fn a_kind_of_fixed_efficiencies_is_the_fixed_store_of_that_size() {
                     start: if balance == Balance::Cyclic { Start::Cyclic } else { Start::Full },
                     ..FixedStore::default()
                 };
-                1.0 - simulation::run(&duty, &store, |_| {}).unserved_kwh / duty.result.deficit_kwh
+                1.0 - simulation::run(&duty, &store, |_| {}).unserved_kwh / duty.result.deficit_kwh.unwrap()
             };
             close(served(1.0), sizing.served_share.unwrap(), 1e-6);
             assert!(served(1.0) >= 0.5 - 1e-7 && served(0.9989) < 0.5, "{}", sizing.technology);

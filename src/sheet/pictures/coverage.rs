@@ -1,12 +1,13 @@
 //! The coverage picture: what each delivered energy covers, for three powers.
 
 use super::measure;
-use crate::case::{Balance, Case};
+use crate::case::FixedStore;
 use crate::chart::{Coverage, CoverageCurve, CoverageMark, Measure};
 use crate::duty::{Duty, Kind, Limits, Tube};
 use crate::requirement::capacity::{Inflow, least_of};
 use crate::requirement::coverage::Curve;
 use crate::requirement::{Requirement, knee};
+use crate::simulation;
 
 /// Import limits tried for each power.
 const LIMITS: usize = 24;
@@ -15,23 +16,55 @@ const LIMITS: usize = 24;
 const CORNERS: usize = 160;
 const RUNS: usize = 40;
 
+/// Smaller stores run for a duty that fixes the power.
+const SMALLER: usize = 12;
+
 /// The picture for a requirement.
-pub(in crate::sheet) fn coverage(duty: &Duty, requirement: &Requirement, case: &Case) -> Coverage {
+pub(in crate::sheet) fn coverage(duty: &Duty, requirement: &Requirement) -> Coverage {
     match duty.kind {
-        Kind::Limits(limits) => held_limits(duty, &limits, requirement, case),
+        Kind::Limits(limits) => held_limits(duty, &limits, requirement),
         Kind::Balance | Kind::Given => served(duty, requirement),
+        _ => carried(requirement),
     }
+}
+
+/// For duties that say themselves what a store must do: the share of the discharge asked that a store of less energy carries.
+fn carried(requirement: &Requirement) -> Coverage {
+    let mut picture = Coverage { measure: Measure::CarriedShare, ..Coverage::default() };
+    let Some(asked) = &requirement.asked else { return picture };
+    let share = |energy_kwh: f64| {
+        let store = FixedStore { energy_kwh, ..asked.store.clone() };
+        // A smaller store begins as full, in proportion.
+        let start = asked.start_kwh * (energy_kwh / asked.store.energy_kwh);
+        let run = simulation::run_from(&asked.duty, &store, start, |_| {});
+        let whole = run.served_kwh + run.unserved_kwh;
+        if whole > 0.0 { run.served_kwh / whole } else { 1.0 }
+    };
+    let mut curve = CoverageCurve { power_kw: Some(asked.point.power_kw), ..CoverageCurve::default() };
+    for k in 0..=SMALLER {
+        let part = k as f64 / SMALLER as f64;
+        // Denser near nothing, where the curve bends.
+        curve.energy_kwh.push(asked.point.delivered_kwh * part * part);
+        curve.value.push(share(asked.store.energy_kwh * part * part));
+    }
+    picture.marks.push(CoverageMark {
+        name: "asked".to_owned(),
+        energy_kwh: asked.point.delivered_kwh,
+        value: curve.value.last().copied().unwrap_or_default(),
+    });
+    picture.curves.push(curve);
+    picture
 }
 
 fn served(duty: &Duty, requirement: &Requirement) -> Coverage {
     let losses = &requirement.working.losses;
     let measure = measure(duty);
-    let peak = duty.result.peak_discharge_kw + losses.standing_kw;
+    let peak = duty.result.peak_deficit() + losses.standing_kw;
     let chosen = requirement.asked.as_ref().map_or(peak, |asked| asked.point.power_kw);
     if chosen <= 0.0 {
         return Coverage { measure, ..Coverage::default() };
     }
-    let deficit = duty.result.deficit_kwh;
+    let deficit = duty.result.deficit();
     let demand = duty.totals.demand_kwh.unwrap_or(deficit);
     let value = |unserved: f64| match measure {
         Measure::SelfSufficiency => 1.0 - unserved / demand,
@@ -104,11 +137,11 @@ impl Requirement {
 }
 
 /// The import limit that can be held against delivered energy.
-fn held_limits(duty: &Duty, limits: &Limits, requirement: &Requirement, case: &Case) -> Coverage {
+fn held_limits(duty: &Duty, limits: &Limits, requirement: &Requirement) -> Coverage {
     let losses = &requirement.working.losses;
     let step_h = duty.record.step_h();
     let leak = losses.leak(step_h);
-    let cyclic = case.requirement.balance == Balance::Cyclic;
+    let cyclic = duty.is_cyclic();
     let mut picture = Coverage { measure: Measure::HeldImportKw, ..Coverage::default() };
     let loads: Vec<Option<f64>> =
         (0..duty.intervals()).map(|i| duty.net_kw(i).map(|net| losses.standing_kw - net)).collect();
@@ -125,7 +158,8 @@ fn held_limits(duty: &Duty, limits: &Limits, requirement: &Requirement, case: &C
             let limit = peak - (peak - least) * share;
             let tubes = Limits { import_kw: Some(limit), ..*limits };
             let capacity = least_of(loads.len(), leak, cyclic, |i| {
-                let tube = loads[i].map(|load| Tube::limits(-load, &tubes).rated(Some(power), Some(power)));
+                let limits = duty.limits_at(i, &tubes);
+                let tube = loads[i].map(|load| Tube::limits(-load, &limits).rated(Some(power), Some(power)));
                 Inflow::of(tube, losses, step_h)
             });
             let Some(capacity) = capacity else { break };

@@ -58,12 +58,13 @@ pub fn run(duty: &Duty, store: &Store, mut see: impl FnMut(&Step)) -> Simulation
     let kwh = |at: State| (at.energy_j + element.pair_j(at)) / J_PER_KWH;
     let start = element.start();
     let mut state = start;
-    let mut levels = Vec::with_capacity(duty.intervals() + 1);
+    let (first, count) = duty.run_intervals();
+    let mut levels = Vec::with_capacity(count + 1);
     levels.push(kwh(state));
     let mut tally = Tally::default();
     let mut account = Account::default();
     let mut measured = 0_usize;
-    for i in 0..duty.intervals() {
+    for i in (first..first + count).map(|i| i % duty.intervals()) {
         let before = kwh(state);
         let asked = asked(duty, &losses, i);
         measured += usize::from(asked.is_some());
@@ -78,6 +79,7 @@ pub fn run(duty: &Duty, store: &Store, mut see: impl FnMut(&Step)) -> Simulation
         let short_of_energy = asked_now.discharge.min(discharge) * carried.rested_s / seconds;
         tally.add(&asked_now, (-given_kw).max(0.0), given_kw.max(0.0), short_of_energy, level);
         see(&Step {
+            interval: i,
             asked_kw: asked_now.charge - asked_now.discharge,
             carried_kw: -given_kw,
             level_kwh: level.0,
@@ -112,6 +114,7 @@ pub fn run(duty: &Duty, store: &Store, mut see: impl FnMut(&Step)) -> Simulation
         stored_start_kwh: stored.0,
         stored_end_kwh: stored.1,
         state_end: Some(element.value(state)),
+        billing: None,
         least_import_limit_kw: None,
     }
 }

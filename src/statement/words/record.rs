@@ -95,18 +95,19 @@ fn beside_the_year(done: &Assessment) -> Vec<Figure> {
         unit: "h".to_owned(),
         context,
     };
-    let mut figures = vec![
-        plain(
+    let mut figures = Vec::new();
+    if duty.has_net() {
+        figures.push(plain(
             &format!("{} for", capital(super::surplus_word(duty.connection))),
             hours(1.0),
-            format!("up to {}", people::power(duty.result.peak_charge_kw)),
-        ),
-        plain(
+            format!("up to {}", people::power(duty.result.peak_surplus())),
+        ));
+        figures.push(plain(
             &format!("{} for", capital(super::deficit_word(duty.connection))),
             hours(-1.0),
-            format!("up to {}", people::power(duty.result.peak_discharge_kw)),
-        ),
-    ];
+            format!("up to {}", people::power(duty.result.peak_deficit())),
+        ));
+    }
     if let Some(ramp) = duty.result.steepest_ramp_kw_per_s {
         figures.push(figure(
             "duty.steepest_ramp_kw_per_s",

@@ -1,6 +1,6 @@
 //! The Requirement station in words.
 
-use super::{deficit_word, figure};
+use super::{deficit_word, figure, kinds};
 use crate::assess::Assessment;
 use crate::case::{Case, Connection};
 use crate::chart::ticks;
@@ -15,7 +15,7 @@ pub(super) fn station(done: &Assessment, case: &Case, pictures: &Pictures) -> St
         rail: asked.map_or("nothing asked".to_owned(), |asked| {
             format!("{}, {}", people::energy(asked.point.delivered_kwh), people::power(asked.point.power_kw))
         }),
-        warning: if asked.is_none() && done.duty.result.deficit_kwh > 0.0 {
+        warning: if asked.is_none() && done.duty.result.deficit() > 0.0 {
             "out of reach".to_owned()
         } else {
             String::new()
@@ -29,8 +29,11 @@ pub(super) fn station(done: &Assessment, case: &Case, pictures: &Pictures) -> St
 fn sentence(done: &Assessment, pictures: &Pictures) -> String {
     let duty = &done.duty;
     let short = deficit_word(duty.connection);
+    if let Some(takes) = kinds::takes(done) {
+        return takes;
+    }
     let Some(asked) = &done.requirement.asked else {
-        if duty.result.deficit_kwh == 0.0 && !matches!(duty.kind, Kind::Limits(_)) {
+        if duty.result.deficit() == 0.0 && !matches!(duty.kind, Kind::Limits(_)) {
             return "Nothing is ever short, so nothing is asked of a store.".to_owned();
         }
         return match (&done.requirement.infeasible, duty.kind) {
@@ -51,6 +54,7 @@ fn sentence(done: &Assessment, pictures: &Pictures) -> String {
             || format!("exports to {}", people::power(limits.export_kw.unwrap_or_default())),
             |limit| format!("imports to {}", people::power(limit)),
         );
+        let limit = if duty.timed_limits() { "the limits of each hour".to_owned() } else { limit };
         return format!("To hold {limit} takes {power} and {energy} delivered, {duration} at full power.");
     }
     let share = people::percent(point.served_share);
@@ -117,6 +121,7 @@ fn headline(done: &Assessment) -> Vec<Figure> {
                 ));
             }
         }
+        _ if !duty.kind.balances() => figures.extend(kinds::powers(done)),
         _ if duty.connection == Connection::Connected => {
             let run = &asked.run;
             if let Some(share) = run.self_sufficiency {
@@ -143,7 +148,7 @@ fn headline(done: &Assessment) -> Vec<Figure> {
                 "Remaining import",
                 run.unserved_kwh,
                 people::energy(run.unserved_kwh),
-                format!("of {}", people::energy(duty.result.deficit_kwh)),
+                format!("of {}", people::energy(duty.result.deficit())),
             ));
         }
         _ => figures.push(figure(
@@ -264,7 +269,9 @@ fn critical(done: &Assessment, pictures: &Pictures) -> Vec<Figure> {
 }
 
 fn methods(done: &Assessment) -> Vec<Method> {
-    let coverage = if matches!(done.duty.kind, Kind::Limits(_)) {
+    let coverage = if !done.duty.kind.balances() && !matches!(done.duty.kind, Kind::Limits(_)) {
+        kinds::coverage_method()
+    } else if matches!(done.duty.kind, Kind::Limits(_)) {
         Method {
             summary: "window sums of what the limits force".to_owned(),
             text: "For each limit the store must give at least what exceeds it and may take back at most what is left below it. The least \
