@@ -11,8 +11,8 @@ use crate::record::Role;
 #[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields, default)]
 pub struct RecordCase {
-    /// Whether a stamp marks the start (the default) or the end of its interval.
-    pub stamp: Stamp,
+    /// Whether a stamp marks the start or the end of its interval; none = the start, unless the files say otherwise.
+    pub stamp: Option<Stamp>,
     /// Whether values are averages of intervals (the default) or instantaneous samples.
     pub reading: Values,
     /// IANA name of the zone of the stamps.

@@ -5,6 +5,7 @@ use csv::ByteRecord;
 use super::decode::{HEAD, text};
 use super::number::{self, Cell, Evidence, Marks};
 use super::rows::Rows;
+use super::shape;
 use super::stamp;
 use super::unit::{self, Stated};
 use crate::case::{DateOrder, RecordCase};
@@ -31,6 +32,10 @@ pub(super) struct Dialect {
     pub(super) units: Vec<Stated>,
     /// Rows of values in the head with their row numbers.
     pub(super) rows: Vec<(u64, ByteRecord)>,
+    /// Columns that name the channel of a row.
+    pub(super) names: Vec<usize>,
+    /// What stands above the headers.
+    pub(super) preamble: String,
 }
 
 /// What a cell looks like before the decimal mark is known.
@@ -175,6 +180,12 @@ pub(super) fn decide(name: &str, head: &[u8], terms: &RecordCase) -> Result<Dial
         }
     }
     let (marks, _) = evidence.decide(terms.decimal);
+    let preamble = rows[..header.unwrap_or(first)]
+        .iter()
+        .take(20)
+        .flat_map(|(_, record)| record.iter().map(text))
+        .collect::<Vec<_>>()
+        .join(" ");
     let numbers = rows.iter().map(|(row, _)| *row).collect::<Vec<_>>();
     let rows =
         rows.into_iter().skip(first).filter(|(_, record)| !blank(record) && !comment(record)).collect();
@@ -188,6 +199,8 @@ pub(super) fn decide(name: &str, head: &[u8], terms: &RecordCase) -> Result<Dial
         headers,
         units,
         rows,
+        names: Vec::new(),
+        preamble,
     })
 }
 
@@ -278,6 +291,10 @@ fn fits(row: &[Look], pattern: &[Look]) -> bool {
 /// Rows of the header and of the units above the first row of values.
 fn header(rows: &[(u64, ByteRecord)], first: usize, width: usize) -> (Option<usize>, Option<usize>) {
     let filled = |row: usize| rows[row].1.iter().filter(|cell| !number::trim(cell).is_empty()).count();
+    let day = |row: usize| {
+        let cells: Vec<String> = rows[row].1.iter().map(text).collect();
+        shape::heads(cells.iter().map(String::as_str))
+    };
     let heads = |row: usize| {
         let count = filled(row);
         let numbers =
@@ -285,7 +302,7 @@ fn header(rows: &[(u64, ByteRecord)], first: usize, width: usize) -> (Option<usi
         rows[row].1.len() + 1 >= width
             && count >= 1
             && (count * 2 >= width || width <= 2)
-            && numbers * 2 <= count
+            && (numbers * 2 <= count || day(row))
     };
     let above: Vec<usize> =
         (0..first).rev().filter(|row| !blank(&rows[*row].1) && !comment(&rows[*row].1)).collect();

@@ -116,6 +116,8 @@ pub(super) struct Fill {
     sums: Vec<Option<f64>>,
     before: Option<i64>,
     at: Option<usize>,
+    /// Rows of values so far.
+    nth: i64,
     /// Rows with a stamp.
     rows: u64,
     stampless: Tally,
@@ -142,6 +144,7 @@ impl Fill {
             record: ByteRecord::new(),
             before: None,
             at: None,
+            nth: 0,
             rows: 0,
             stampless: none(),
             foot: none(),
@@ -168,7 +171,9 @@ impl Fill {
         if row < self.plan.first_row {
             return Ok(());
         }
-        let Some(moment) = self.plan.timing.read(&self.record, self.plan.order, self.plan.marks) else {
+        let nth = self.nth;
+        self.nth += 1;
+        let Some(moment) = self.plan.timing.read(&self.record, self.plan.order, self.plan.marks, nth) else {
             self.without_stamp(row);
             return Ok(());
         };
@@ -181,8 +186,8 @@ impl Fill {
             self.stampless.count += foot.count;
         }
         let record = &self.record;
-        let shown = || text(record.get(self.plan.timing.column()).unwrap_or(b""));
-        let Some(instant) = self.plan.resolver.instant(moment.us, moment.offset_s) else {
+        let shown = || text(self.plan.timing.cell(record));
+        let Some(instant) = self.plan.resolver.moment(&moment) else {
             self.skipped.add(row, shown);
             return Ok(());
         };
@@ -226,7 +231,7 @@ impl Fill {
             return;
         }
         let Self { record, plan, .. } = self;
-        let shown = || text(record.get(plan.timing.column()).unwrap_or(b""));
+        let shown = || text(plan.timing.cell(record));
         if dialect::is_comment(record) {
             self.comments.add(row, shown);
             return;
@@ -327,7 +332,7 @@ impl Fill {
         {
             *table.doubled.entry(clock.at_us(i).div_euclid(DAY)).or_insert(0) += 1;
         }
-        let shown = || text(self.record.get(plan.timing.column()).unwrap_or(b""));
+        let shown = || text(plan.timing.cell(&self.record));
         if differs {
             self.conflict.add(row, shown);
         } else {

@@ -58,7 +58,7 @@ pub(super) fn find(
     let last = steps_from(most + tolerance_us).max(first);
     let start_us = phase + first * step_us;
     let intervals = last - first + 1;
-    let shift_us = if terms.stamp == Stamp::End { step_us } else { 0 };
+    let shift_us = if terms.stamp == Some(Stamp::End) { step_us } else { 0 };
     let clock = Clock {
         start_us: start_us - shift_us,
         step_us,

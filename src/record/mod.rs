@@ -15,6 +15,7 @@ mod rows;
 mod scan;
 mod series;
 mod settle;
+mod shape;
 mod source;
 mod stamp;
 #[cfg(test)]

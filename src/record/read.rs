@@ -3,21 +3,25 @@
 use jiff::tz::TimeZone;
 
 use super::decode::{self, Container, Decoded};
-use super::dialect::{self, Dialect};
+use super::dialect::Dialect;
 use super::fill::{FilePlan, Fill, Table};
 use super::grid::{self, Grid};
-use super::roles::{self, Column};
+use super::roles::Column;
 use super::rows::Rows;
 use super::scan::{Scan, Scanned};
-use super::settle::{Settle, Settled, Shape};
-use super::timing::{self, Timing};
+use super::settle::{Settle, Settled, Sums};
+use super::shape::{Shape, Shaped};
+use super::timing::Timing;
 use super::zone::Resolver;
 use super::{FileReading, Finding, Reading, Record, Source, Zone};
 use crate::case::{RecordCase, Stamp, Values};
 use crate::fault::{Fault, Result, quote};
 use crate::job::{Job, Progress};
 
+mod look;
 mod plan;
+
+use look::Surveyed;
 
 /// Reads the files of one site into a record.
 ///
@@ -78,7 +82,7 @@ pub fn read(
         plans: Vec::new(),
         grid: None,
         table: Table::default(),
-        shape: Shape::default(),
+        sums: Sums::default(),
         findings: Vec::new(),
         stage: Stage::Look,
         at: 0,
@@ -97,7 +101,7 @@ pub struct Reader {
     plans: Vec<Option<FilePlan>>,
     grid: Option<Grid>,
     table: Table,
-    shape: Shape,
+    sums: Sums,
     findings: Vec<Finding>,
     stage: Stage,
     /// The file that the stage is at.
@@ -119,8 +123,11 @@ impl std::fmt::Debug for Reader {
 /// What is known of a file.
 struct File {
     name: String,
+    /// The source that it is in.
+    source: usize,
     container: Container,
     dialect: Dialect,
+    shape: Shape,
     timing: Timing,
     columns: Vec<Column>,
     scanned: Option<Scanned>,
@@ -129,9 +136,10 @@ struct File {
 #[allow(clippy::large_enum_variant, reason = "there is one stage at a time")]
 enum Stage {
     Look,
-    Scan(Rows<Decoded>, Scan),
+    Survey(Box<Surveyed>),
+    Scan(Shaped<Decoded>, Scan),
     Plan,
-    Fill(Option<(Rows<Decoded>, Fill)>),
+    Fill(Option<(Shaped<Decoded>, Fill)>),
     Settle(Settle),
     Done,
 }
@@ -141,42 +149,47 @@ impl Reader {
     pub fn into_sources(mut self) -> Vec<Box<dyn Source>> {
         let at = self.at;
         match std::mem::replace(&mut self.stage, Stage::Done) {
+            Stage::Survey(surveyed) => self.sources[at] = Some(surveyed.rows.into_text().into_source()),
             Stage::Scan(rows, _) | Stage::Fill(Some((rows, _))) => self.give_back(at, rows),
             _ => {}
         }
         self.sources.into_iter().flatten().collect()
     }
 
-    fn give_back(&mut self, at: usize, rows: Rows<Decoded>) {
-        if let Some(slot) = self.sources.get_mut(at) {
+    /// Gives back the source of file `at`.
+    fn give_back(&mut self, at: usize, rows: Shaped<Decoded>) {
+        if let Some(slot) = self.files.get(at).and_then(|file| self.sources.get_mut(file.source)) {
             *slot = Some(rows.into_text().into_source());
         }
     }
 
-    fn open(&mut self, at: usize) -> Result<Rows<Decoded>> {
-        let source = self.sources.get_mut(at).and_then(Option::take);
-        match (source, self.files.get(at)) {
+    fn open(&mut self, at: usize) -> Result<Shaped<Decoded>> {
+        let file = self.files.get(at);
+        let source = file.and_then(|file| self.sources.get_mut(file.source)).and_then(Option::take);
+        match (source, file) {
             (Some(source), Some(file)) => {
-                Ok(Rows::new(Decoded::open(source, &file.container), file.dialect.separator))
+                let rows = Rows::new(Decoded::open(source, &file.container), file.dialect.separator);
+                Ok(Shaped::new(rows, file.shape.clone(), file.dialect.first_row))
             }
             _ => Err(Fault::new("a file is no longer there", self.site.clone(), "Choose the files again.")),
         }
     }
 
-    /// Looks at the head of the file at hand: container, dialect, stamps, columns.
-    fn look(&mut self) -> Result<()> {
-        let Some(source) = self.sources.get_mut(self.at).and_then(Option::take) else { return Ok(()) };
-        let name = source.name().to_owned();
-        let (source, looked) = decode::look(source);
-        self.sources[self.at] = Some(source);
-        let (container, head) = looked?;
-        let dialect = dialect::decide(&name, &head, &self.terms)?;
-        let stated =
-            |column: usize| roles::stated(&self.terms.roles, &name, &dialect.headers[column]).copied();
-        let timing = timing::choose(&name, &dialect, &stated)?;
-        let columns = roles::columns(&name, &dialect, timing, &self.terms, &self.named)?;
-        self.files.push(File { name, container, dialect, timing, columns, scanned: None });
+    /// Goes on to the next source, or to the first pass.
+    fn looked(&mut self) -> Result<()> {
+        self.at += 1;
+        if self.at == self.sources.len() {
+            self.total = (0..self.files.len()).map(|at| self.len(at)).sum::<u64>().max(1);
+            self.at = 0;
+            self.start_scan()?;
+        }
         Ok(())
+    }
+
+    /// Length in bytes of the source of file `at`.
+    fn len(&self, at: usize) -> u64 {
+        let source = self.files.get(at).and_then(|file| self.sources.get(file.source)?.as_ref());
+        source.map_or(0, |source| source.len())
     }
 
     fn start_scan(&mut self) -> Result<()> {
@@ -202,10 +215,10 @@ impl Reader {
 
     fn start_settle(&mut self) {
         let Some(grid) = &self.grid else { return };
-        let counted = self.files.iter().any(|file| matches!(file.timing, Timing::Counter { .. }));
+        let counted = self.files.iter().any(|file| file.timing.counted());
         self.stage = Stage::Settle(Settle::new(
             std::mem::take(&mut self.table),
-            std::mem::take(&mut self.shape),
+            std::mem::take(&mut self.sums),
             grid.clock.clone(),
             self.terms.remedies.gap,
             counted,
@@ -245,7 +258,7 @@ impl Reader {
     }
 
     fn clock_note(&self, grid: &Grid) -> String {
-        let mark = match self.terms.stamp {
+        let mark = match self.terms.stamp.unwrap_or_default() {
             Stamp::Start => "The stamp marks the interval's start",
             Stamp::End => "The stamp marks the interval's end",
         };
@@ -267,12 +280,12 @@ impl Reader {
 impl File {
     /// What turns the file's stamps into instants.
     fn resolver(&self, zone: Option<&TimeZone>) -> Resolver {
-        if matches!(self.timing, Timing::Counter { .. }) {
+        if self.timing.counted() {
             return Resolver::new(None, false);
         }
         let moment = |row: Option<&(u64, csv::ByteRecord)>| {
             self.timing
-                .read(&row?.1, crate::case::DateOrder::DayFirst, self.dialect.marks)
+                .read(&row?.1, crate::case::DateOrder::DayFirst, self.dialect.marks, 0)
                 .map(|moment| moment.us)
         };
         let falling = moment(self.dialect.rows.first()) > moment(self.dialect.rows.last());
@@ -313,12 +326,31 @@ impl Job for Reader {
             let at = self.at;
             match &mut self.stage {
                 Stage::Look => {
-                    self.look()?;
                     left = left.saturating_sub(10_000);
-                    self.at += 1;
-                    if self.at == self.sources.len() {
-                        self.at = 0;
-                        self.start_scan()?;
+                    match self.look()? {
+                        Some(surveyed) => self.stage = Stage::Survey(surveyed),
+                        None => self.looked()?,
+                    }
+                }
+                Stage::Survey(surveyed) => {
+                    let mut ended = false;
+                    while left > 0 {
+                        let row = surveyed
+                            .rows
+                            .next(&mut surveyed.survey.record)
+                            .map_err(|error| decode::row_fault(&error, &self.site))?;
+                        let Some(row) = row else {
+                            ended = true;
+                            break;
+                        };
+                        surveyed.rows.text_mut().row_done();
+                        surveyed.survey.row(row)?;
+                        left -= 1;
+                    }
+                    if ended && let Stage::Survey(surveyed) = std::mem::replace(&mut self.stage, Stage::Look)
+                    {
+                        self.surveyed(*surveyed)?;
+                        self.looked()?;
                     }
                 }
                 Stage::Scan(rows, scan) => {
@@ -326,13 +358,12 @@ impl Job for Reader {
                     let mut ended = false;
                     while left > 0 {
                         let row = rows
-                            .next(scan.buffer())
+                            .next(scan.buffer(), Decoded::row_done)
                             .map_err(|error| decode::row_fault(&error, &self.files[at].name))?;
                         let Some(row) = row else {
                             ended = true;
                             break;
                         };
-                        rows.text_mut().row_done();
                         if row >= first {
                             scan.row(row);
                         }
@@ -342,9 +373,9 @@ impl Job for Reader {
                     {
                         self.give_back(at, rows);
                         self.files[at].scanned = Some(scan.finish(self.terms.date_order.is_some()));
-                        self.passed += self.sources[at].as_ref().map_or(0, |source| source.len());
+                        self.passed += self.len(at);
                         self.at += 1;
-                        if self.at < self.sources.len() {
+                        if self.at < self.files.len() {
                             self.start_scan()?;
                         }
                     }
@@ -365,13 +396,12 @@ impl Job for Reader {
                     let mut ended = false;
                     while left > 0 {
                         let row = rows
-                            .next(fill.buffer())
+                            .next(fill.buffer(), Decoded::row_done)
                             .map_err(|error| decode::row_fault(&error, &self.files[at].name))?;
                         let Some(row) = row else {
                             ended = true;
                             break;
                         };
-                        rows.text_mut().row_done();
                         fill.row(row, grid, &mut self.table)?;
                         left -= 1;
                     }
@@ -381,9 +411,9 @@ impl Job for Reader {
                     {
                         fill.finish(&grid.clock, &mut self.findings);
                         self.give_back(at, rows);
-                        self.passed += self.sources[at].as_ref().map_or(0, |source| source.len());
+                        self.passed += self.len(at);
                         self.at += 1;
-                        if self.at < self.sources.len() { self.start_fill()? } else { self.start_settle() }
+                        if self.at < self.files.len() { self.start_fill()? } else { self.start_settle() }
                     }
                 }
                 Stage::Settle(settle) => {
@@ -411,7 +441,7 @@ impl Job for Reader {
         let two = 2.0 * self.total as f64;
         let share = |offset: u64| ((self.passed + offset) as f64 / two).min(1.0) * 0.9;
         match &self.stage {
-            Stage::Look => Progress { what: "looking at the files", done: 0.0 },
+            Stage::Look | Stage::Survey(_) => Progress { what: "looking at the files", done: 0.0 },
             Stage::Scan(rows, _) => Progress { what: "reading stamps", done: share(rows.text().offset()) },
             Stage::Plan => Progress { what: "finding the clock", done: share(0) },
             Stage::Fill(Some((rows, _))) => {

@@ -66,6 +66,8 @@ pub(super) struct Scan {
     halves: bool,
     mark: u8,
     record: ByteRecord,
+    /// Rows of values so far.
+    nth: i64,
 }
 
 /// What the first pass found.
@@ -99,6 +101,7 @@ impl Scan {
             halves: false,
             mark: 0,
             record: ByteRecord::new(),
+            nth: 0,
         }
     }
 
@@ -109,9 +112,11 @@ impl Scan {
 
     /// Takes the row in the buffer.
     pub(super) fn row(&mut self, row: u64) {
+        let nth = self.nth;
+        self.nth += 1;
         let Self { timing, marks, candidates, open, record, .. } = self;
         if candidates.len() == 1 {
-            let first = timing.read(record, candidates[0].order, *marks);
+            let first = timing.read(record, candidates[0].order, *marks, nth);
             if let Some(moment) = first
                 && (moment.clear || open.is_empty())
             {
@@ -119,7 +124,8 @@ impl Scan {
                 self.candidates[0].push(row, moment);
                 return;
             }
-            if first.is_none() && open.iter().all(|order| timing.read(record, *order, *marks).is_none()) {
+            if first.is_none() && open.iter().all(|order| timing.read(record, *order, *marks, nth).is_none())
+            {
                 return;
             }
             // The first stamp that could be read in several orders: from here each is followed.
@@ -130,7 +136,7 @@ impl Scan {
         let mut moments = [None; 3];
         for (candidate, moment) in candidates.iter().zip(&mut moments) {
             if !candidate.hopeless() {
-                *moment = timing.read(record, candidate.order, *marks);
+                *moment = timing.read(record, candidate.order, *marks, nth);
             }
         }
         let Some(any) = moments.iter().flatten().next().copied() else { return };
@@ -180,6 +186,7 @@ impl Scan {
         let (why, doubt) = match (&next, self.timing) {
             (_, Timing::Unix { .. }) => ("the numbers count from 1970 in UTC".to_owned(), false),
             (_, Timing::Serial(_)) => ("the numbers are days as spreadsheets count them".to_owned(), false),
+            (_, Timing::Rows(_)) => ("rows follow each other at the step stated".to_owned(), false),
             (_, Timing::Counter { .. }) => ("the column counts from the record's start".to_owned(), false),
             _ if stated => ("as stated".to_owned(), false),
             (None, _) => {
@@ -203,6 +210,7 @@ impl Scan {
         let words = match self.timing {
             Timing::Unix { .. } => "count since 1970",
             Timing::Serial(_) => "spreadsheet days",
+            Timing::Rows(_) => "none, rows counted",
             Timing::Counter { .. } => "count from the start",
             _ if single && !stated => "year first",
             _ => words(order),
@@ -228,7 +236,7 @@ impl Candidate {
     }
 
     fn push(&mut self, row: u64, moment: Moment) {
-        if let Some(instant) = self.resolver.instant(moment.us, moment.offset_s) {
+        if let Some(instant) = self.resolver.moment(&moment) {
             self.stats.push(row, instant);
         }
     }

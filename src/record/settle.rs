@@ -7,9 +7,9 @@ use super::{Clock, Extra, Finding, FindingKind, Series, Zone};
 use crate::case::GapRemedy;
 use crate::fault::Result;
 
-/// Which of the table's series make up the record.
+/// Which of the table's series make up the record, as sums.
 #[derive(Debug, Default)]
-pub(super) struct Shape {
+pub(super) struct Sums {
     /// Series of supply, demand and net power, to be added up.
     pub(super) targets: [Vec<usize>; 3],
     /// Further columns: header, role and series.
@@ -20,7 +20,7 @@ pub(super) struct Shape {
 #[derive(Debug)]
 pub(super) struct Settle {
     table: Table,
-    shape: Shape,
+    sums: Sums,
     clock: Clock,
     remedy: GapRemedy,
     counted: bool,
@@ -46,11 +46,11 @@ pub(super) struct Settled {
 }
 
 impl Settle {
-    pub(super) fn new(table: Table, shape: Shape, clock: Clock, remedy: GapRemedy, counted: bool) -> Self {
+    pub(super) fn new(table: Table, sums: Sums, clock: Clock, remedy: GapRemedy, counted: bool) -> Self {
         let missing = Bits::new(clock.intervals);
         Self {
             table,
-            shape,
+            sums,
             clock,
             remedy,
             counted,
@@ -95,7 +95,7 @@ impl Settle {
     /// Adds the series of each sum into its first, and tells whether net power is there.
     fn add_up(&mut self, i: usize) -> Result<bool> {
         let mut there = [None; 3];
-        for (target, there) in self.shape.targets.iter().zip(&mut there) {
+        for (target, there) in self.sums.targets.iter().zip(&mut there) {
             let Some((first, rest)) = target.split_first() else { continue };
             let mut sum = self.table.series[*first].get(i);
             for other in rest {
@@ -111,7 +111,7 @@ impl Settle {
         }
         if there == [None; 3] {
             return Ok(self
-                .shape
+                .sums
                 .extras
                 .iter()
                 .all(|(_, _, series)| self.table.series[*series].get(i).is_some()));
@@ -141,11 +141,11 @@ impl Settle {
         self.gaps(files, findings);
         self.clock_change(findings);
         let mut targets: [Option<Series>; 3] = [None, None, None];
-        for (target, list) in targets.iter_mut().zip(&self.shape.targets) {
+        for (target, list) in targets.iter_mut().zip(&self.sums.targets) {
             *target = list.first().map(|series| std::mem::take(&mut self.table.series[*series]));
         }
         let mut extras: Vec<Extra> = self
-            .shape
+            .sums
             .extras
             .iter()
             .map(|(header, role, series)| Extra {

@@ -144,7 +144,7 @@ fn energy_becomes_average_power() {
 #[test]
 fn what_the_case_states_goes_before_guesses() {
     let text = "when;A;B;C\n31.01.2026 00:15;1;2;7\n31.01.2026 00:30;3;4;8\n";
-    let mut terms = RecordCase { stamp: Stamp::End, ..RecordCase::default() };
+    let mut terms = RecordCase { stamp: Some(Stamp::End), ..RecordCase::default() };
     terms.roles.insert("b".to_owned(), Role::Demand);
     terms.roles.insert("x.csv/a".to_owned(), Role::Supply);
     terms.units.insert("A".to_owned(), "W".to_owned());
@@ -327,7 +327,7 @@ fn faults_say_what_where_and_what_to_do() {
         assert!(fault.place.contains("meter.csv"), "{fault}");
         assert!(!fault.remedy.is_empty(), "{fault}");
     }
-    insta::assert_snapshot!(refusal("name,load kW\nfoo,1\nbar,5\n"), @"no column holds stamps; the first row of values begins “foo 1” (meter.csv, row 2). State which column holds the stamps (role time), or export the table with date and time in its first column.");
+    insta::assert_snapshot!(refusal("name,load kW\nfoo,1\nbar,5\n"), @"no column holds stamps; the first row of values begins “foo 1” (meter.csv, row 2). State which column holds the stamps (role time) or, if rows follow each other at a regular step, that step in seconds (record.step_s).");
 }
 
 #[test]

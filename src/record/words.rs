@@ -41,6 +41,42 @@ const CLOCK: Words = (
     &["time", "zeit", "heure", "hora", "tijd", "hour", "stunde", "uur", "clock"],
 );
 
+const CHANNEL: Words = (
+    &[
+        "channel",
+        "kanal",
+        "register",
+        "meter",
+        "obis",
+        "zähler",
+        "zaehler",
+        "messstelle",
+        "zählpunkt",
+        "zaehlpunkt",
+        "lokation",
+        "variable",
+        "direction",
+        "richtung",
+        "parameter",
+        "device",
+        "compteur",
+        "contador",
+        "medidor",
+        "sensor",
+        "circuit",
+        "measurement",
+    ],
+    &[
+        "type", "typ", "name", "code", "point", "tag", "signal", "kennzahl", "quantity", "stream", "suffix",
+        "series", "reihe", "ean", "site", "id", "flow", "sens",
+    ],
+);
+
+/// Whether a header names the channel, register or meter of a row.
+pub(super) fn says_channel(header: &str) -> bool {
+    matches(header, CHANNEL).is_some()
+}
+
 /// Whether a header speaks of a stamp.
 pub(super) fn says_time(header: &str) -> bool {
     matches(header, TIME).is_some() || says_date(header) || says_clock(header)

@@ -5,6 +5,7 @@ use jiff::tz::{AmbiguousOffset, TimeZone};
 use jiff::{SignedDuration, Timestamp};
 
 use super::stamp::{DAY, SECOND};
+use super::timing::Moment;
 
 /// A span of local readings in which the offset holds for certain: start, end, offset (all microseconds).
 type Steady = (i64, i64, i64);
@@ -23,6 +24,19 @@ impl Resolver {
     /// A resolver for stamps in `zone`, or for stamps that are taken as they stand.
     pub(super) fn new(zone: Option<TimeZone>, falling: bool) -> Self {
         Self { zone, falling, before: None, steady: (0, 0, 0) }
+    }
+
+    /// The instant of a moment, or none if clocks in the zone never show it.
+    ///
+    /// Time counted since a day's beginning runs on past changes of the clock; where no zone is known it ends with the day.
+    pub(super) fn moment(&mut self, moment: &Moment) -> Option<i64> {
+        if moment.after_us == 0 {
+            return self.instant(moment.us, moment.offset_s);
+        }
+        if self.zone.is_none() && moment.after_us >= DAY {
+            return None;
+        }
+        self.instant(moment.us, moment.offset_s).map(|instant| instant + moment.after_us)
     }
 
     /// The instant of a reading, or none if clocks in the zone never show it.

@@ -43,12 +43,12 @@ impl Reader {
     }
 
     fn series_count(&self) -> usize {
-        self.shape.targets.iter().map(Vec::len).sum::<usize>() + self.shape.extras.len()
+        self.sums.targets.iter().map(Vec::len).sum::<usize>() + self.sums.extras.len()
     }
 
     /// The zone of the record's clock.
     fn clock_zone(&self) -> Result<Zone> {
-        let counted = |file: &File| matches!(file.timing, Timing::Counter { .. });
+        let counted = |file: &File| file.timing.counted();
         if self.files.iter().any(counted) {
             if let Some(other) = self.files.iter().find(|file| !counted(file)) {
                 return Err(Fault::new(
@@ -79,7 +79,8 @@ impl Reader {
     fn stamp_findings(&mut self) {
         for file in &self.files {
             let Some(scanned) = &file.scanned else { continue };
-            let header = quote(&file.dialect.headers[file.timing.column()]);
+            let column = file.timing.column().and_then(|column| file.dialect.headers.get(column));
+            let header = quote(column.map_or("", String::as_str));
             let (text, remedy, changes) = match file.timing {
                 Timing::Counter { unit_us, unit_known, .. } => {
                     let unit = match unit_us / 1_000_000 {
@@ -97,6 +98,14 @@ impl Reader {
                         !unit_known,
                     )
                 }
+                Timing::Rows(step_us) => (
+                    format!(
+                        "The table has no stamps: its rows are taken {} apart, as stated, from 1970-01-01 00:00 on.",
+                        grid::people_duration(step_us as f64 / 1e6)
+                    ),
+                    "clock started at 1970-01-01",
+                    false,
+                ),
                 Timing::Serial(_) => (
                     format!(
                         "Column {header} holds days as spreadsheets count them from 1899-12-30; they are read as local stamps."
@@ -148,7 +157,7 @@ impl Reader {
                     let series = targets
                         .iter()
                         .map(|target| {
-                            self.shape.targets[*target as usize].push(count);
+                            self.sums.targets[*target as usize].push(count);
                             count += 1;
                             count - 1
                         })
@@ -170,14 +179,14 @@ impl Reader {
                 if column.extra {
                     let wanted = roles::key(&column.header);
                     let known = self
-                        .shape
+                        .sums
                         .extras
                         .iter()
                         .find(|(header, _, _)| roles::key(header) == wanted)
                         .map(|known| known.2);
                     let series = known.unwrap_or_else(|| {
                         let role = if column.role == Role::Ignore { Role::Asked } else { column.role };
-                        self.shape.extras.push((column.header.clone(), role, count));
+                        self.sums.extras.push((column.header.clone(), role, count));
                         count += 1;
                         count - 1
                     });
