@@ -25,6 +25,8 @@ pub struct RecordCase {
     /// Unit of each column by its header (or `file/header`): W, kW, MW, Wh, kWh, MWh.
     #[serde(deserialize_with = "super::read::each_once")]
     pub units: BTreeMap<String, String>,
+    /// Factor for the values of a column by its header (or `file/header`), such as the rating for a series per rated kW.
+    pub scale: BTreeMap<String, f64>,
     /// Separator of cells, where the guess is wrong.
     pub separator: Option<char>,
     /// Decimal mark, where the guess is wrong.

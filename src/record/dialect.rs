@@ -130,6 +130,9 @@ pub(super) fn decide(name: &str, head: &[u8], terms: &RecordCase) -> Result<Dial
             .collect(),
         None => Vec::new(),
     };
+    if let Some(row) = header {
+        joined_from_above(&rows, row, &mut headers);
+    }
     let mut width =
         rows[first..].iter().map(|(_, record)| record.len()).max().unwrap_or(0).max(headers.len());
     // A separator at the end of every row makes no column.
@@ -202,6 +205,29 @@ pub(super) fn decide(name: &str, head: &[u8], terms: &RecordCase) -> Result<Dial
         names: Vec::new(),
         preamble,
     })
+}
+
+/// Headers in two rows, the upper one over several columns ("Load" over "kW" and "status"): where the lower row alone names
+/// columns alike, the name above goes before, carried over the empty cells to its right.
+fn joined_from_above(rows: &[(u64, ByteRecord)], row: usize, headers: &mut [String]) {
+    let Some(above) = row.checked_sub(1).map(|above| &rows[above].1) else { return };
+    let names = above.iter().filter(|cell| look(cell) == Look::Other).count();
+    let filled = above.iter().filter(|cell| look(cell) != Look::Empty).count();
+    let alike =
+        |header: &String| !header.is_empty() && headers.iter().filter(|other| *other == header).count() > 1;
+    if names < 2 || names < filled || above.len() + 1 < headers.len() || !headers.iter().any(alike) {
+        return;
+    }
+    let mut name = String::new();
+    for (i, header) in headers.iter_mut().enumerate() {
+        let cell = above.get(i).map(text).unwrap_or_default();
+        if !cell.trim().is_empty() {
+            cell.trim().clone_into(&mut name);
+        }
+        if !name.is_empty() {
+            *header = format!("{name} {header}").trim().to_owned();
+        }
+    }
 }
 
 fn rows(name: &str, head: &[u8], separator: u8) -> Result<Vec<(u64, ByteRecord)>> {

@@ -14,7 +14,7 @@ use super::shape::{Shape, Shaped};
 use super::timing::Timing;
 use super::zone::Resolver;
 use super::{FileReading, Finding, Reading, Record, Source, Zone};
-use crate::case::{RecordCase, Stamp, Values};
+use crate::case::{RecordCase, Values};
 use crate::fault::{Fault, Result, quote};
 use crate::job::{Job, Progress};
 
@@ -53,13 +53,6 @@ pub fn read(
 ) -> Result<Reader> {
     if sources.is_empty() {
         return Err(Fault::new("there is no file to read", site, "Choose the site's meter file."));
-    }
-    if terms.reading == Values::Samples {
-        return Err(Fault::new(
-            "the case says that values are samples; this version reads averages of intervals",
-            "case, at record.reading",
-            "Set record.reading to intervals, or average the samples over intervals first.",
-        ));
     }
     let zone = match &terms.zone {
         None => None,
@@ -131,6 +124,12 @@ struct File {
     timing: Timing,
     columns: Vec<Column>,
     scanned: Option<Scanned>,
+    /// Whether stamps mark the end of their interval, and why that is taken.
+    late: bool,
+    late_why: String,
+    /// Whether it is a typical year, and the years that it is laid on.
+    typical: bool,
+    years: Vec<i64>,
 }
 
 #[allow(clippy::large_enum_variant, reason = "there is one stage at a time")]
@@ -220,14 +219,15 @@ impl Reader {
             std::mem::take(&mut self.table),
             std::mem::take(&mut self.sums),
             grid.clock.clone(),
-            self.terms.remedies.gap,
+            &self.terms,
+            grid.fits.iter().map(|fit| fit.step_us).max().unwrap_or(grid.clock.step_us),
             counted,
         ));
     }
 
     fn record(&mut self, settle: Settle) -> Result<Record> {
         let names: Vec<String> = self.files.iter().map(|file| file.name.clone()).collect();
-        let Settled { targets: [supply_kw, demand_kw, net_kw], extras, filled } =
+        let Settled { clock, targets: [supply_kw, demand_kw, net_kw], extras, filled, hidden_kw } =
             settle.finish(&names, &mut self.findings)?;
         let Some(grid) = self.grid.take() else {
             return Err(Fault::new("the record has no clock", self.site.clone(), "Report this as a defect."));
@@ -237,7 +237,7 @@ impl Reader {
             clock_note: self.clock_note(&grid),
         };
         let mut findings = std::mem::take(&mut self.findings);
-        let one = names.len() == 1;
+        let one = self.sources.len() == 1;
         for finding in &mut findings {
             if one {
                 finding.file.clear();
@@ -246,10 +246,11 @@ impl Reader {
         findings.sort_by_key(|finding| finding.first_row.unwrap_or(0));
         Ok(Record {
             site: self.site.clone(),
-            clock: grid.clock,
+            clock,
             supply_kw,
             demand_kw,
             net_kw,
+            hidden_kw,
             extras,
             findings,
             reading,
@@ -258,10 +259,21 @@ impl Reader {
     }
 
     fn clock_note(&self, grid: &Grid) -> String {
-        let mark = match self.terms.stamp.unwrap_or_default() {
-            Stamp::Start => "The stamp marks the interval's start",
-            Stamp::End => "The stamp marks the interval's end",
-        };
+        let mut marks: Vec<String> = Vec::new();
+        let samples = self.terms.reading == Values::Samples;
+        for file in &self.files {
+            let end = if file.late { "end" } else { "start" };
+            let why = if file.late_why.is_empty() { String::new() } else { format!(" ({})", file.late_why) };
+            let mark = if samples {
+                "Values are samples at the moment of their stamp, joined by straight lines; the change between surplus and deficit is found on the line".to_owned()
+            } else {
+                format!("The stamp marks the interval's {end}{why}")
+            };
+            if !marks.contains(&mark) {
+                marks.push(mark);
+            }
+        }
+        let mark = marks.join("; ");
         let step = grid::people_duration(grid.clock.step_s());
         let zone = match (&grid.clock.zone, &self.terms.zone) {
             (Zone::Named(_), Some(name)) => format!("stamps are read in the zone {name}"),
@@ -271,9 +283,7 @@ impl Reader {
                 "no zone is stated, so that stamps are taken as they stand, without summer time".to_owned()
             }
         };
-        let hours = self.files.iter().any(|file| matches!(file.timing, Timing::DateHour { first: 1, .. }));
-        let hours = if hours { "; hours are counted from 1, so that hour 1 begins at 00:00" } else { "" };
-        format!("{mark}; the step is {step}; {zone}{hours}.")
+        format!("{mark}; the step is {step}; {zone}.")
     }
 }
 
@@ -283,13 +293,17 @@ impl File {
         if self.timing.counted() {
             return Resolver::new(None, false);
         }
+        Resolver::new(zone.cloned(), self.falling())
+    }
+
+    /// Whether rows run from the newest to the oldest.
+    fn falling(&self) -> bool {
         let moment = |row: Option<&(u64, csv::ByteRecord)>| {
             self.timing
                 .read(&row?.1, crate::case::DateOrder::DayFirst, self.dialect.marks, 0)
                 .map(|moment| moment.us)
         };
-        let falling = moment(self.dialect.rows.first()) > moment(self.dialect.rows.last());
-        Resolver::new(zone.cloned(), falling)
+        moment(self.dialect.rows.first()) > moment(self.dialect.rows.last())
     }
 
     /// How the file was read, for the page.
@@ -406,10 +420,11 @@ impl Job for Reader {
                         left -= 1;
                     }
                     if ended
-                        && let Stage::Fill(Some((rows, fill))) =
+                        && let Stage::Fill(Some((rows, mut fill))) =
                             std::mem::replace(&mut self.stage, Stage::Fill(None))
                     {
-                        fill.finish(&grid.clock, &mut self.findings);
+                        fill.last(grid, &mut self.table)?;
+                        fill.finish(&mut self.findings);
                         self.give_back(at, rows);
                         self.passed += self.len(at);
                         self.at += 1;

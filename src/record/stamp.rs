@@ -25,9 +25,25 @@ pub(super) struct Written {
     pub(super) timed: bool,
     /// Whether the time of day came with AM or PM.
     pub(super) halves: bool,
+    /// Whether the time of day was written as 24:00.
+    pub(super) day_end: bool,
+    /// Whether no year was written: [`NO_YEAR`] stands in its place.
+    pub(super) yearless: bool,
+    /// Which of the two hours that clocks show twice in autumn, where the stamp says so ("02:15A", "02:15B").
+    pub(super) fold: Option<Fold>,
     /// The mark between the parts of the date.
     pub(super) mark: u8,
 }
+
+/// One of the two hours that clocks show twice.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Fold {
+    First,
+    Second,
+}
+
+/// The year that stands for none: a common one, so that a typical year of 365 days has no hole.
+pub(super) const NO_YEAR: i64 = 2001;
 
 /// Days before each month in a year without leap day.
 const BEFORE: [i64; 12] = [0, 31, 59, 90, 120, 151, 181, 212, 243, 273, 304, 334];
@@ -53,6 +69,23 @@ pub(super) fn days(year: i64, month: i64, day: i64) -> Option<i64> {
     Some(past * 365 + past / 4 - past / 100 + past / 400 + before + day - 1 - 719_162)
 }
 
+/// Year, month and day of a count of days from 1970-01-01: the reverse of [`days`].
+pub(super) fn date_of(count: i64) -> (i64, i64, i64) {
+    // Years of 365.2425 days, put right by looking.
+    let mut year = 1970 + (count * 400).div_euclid(146_097);
+    while days(year, 1, 1).is_some_and(|first| first > count) {
+        year -= 1;
+    }
+    while days(year + 1, 1, 1).is_some_and(|first| first <= count) {
+        year += 1;
+    }
+    let mut month = 12;
+    while month > 1 && days(year, month, 1).is_some_and(|first| first > count) {
+        month -= 1;
+    }
+    (year, month, count - days(year, month, 1).unwrap_or(count) + 1)
+}
+
 /// Reads a stamp, a date with or without time of day.
 pub(super) fn stamp(cell: &[u8], order: DateOrder) -> Option<Written> {
     let cell = trim(cell);
@@ -61,7 +94,7 @@ pub(super) fn stamp(cell: &[u8], order: DateOrder) -> Option<Written> {
 
 /// Reads a stamp by scanning it part by part.
 fn scanned(cell: &[u8], order: DateOrder) -> Option<Written> {
-    let mut scan = Scan { rest: cell };
+    let mut scan = Scan { rest: cell, yearless: false };
     let (days, clear, mark, glued) = scan.date(order)?;
     let mut written = Written {
         civil_us: days.checked_mul(DAY)?,
@@ -69,8 +102,14 @@ fn scanned(cell: &[u8], order: DateOrder) -> Option<Written> {
         clear,
         timed: false,
         halves: false,
+        day_end: false,
+        yearless: scan.yearless,
+        fold: None,
         mark,
     };
+    if scan.yearless && scan.rest.is_empty() {
+        return None;
+    }
     if scan.rest.is_empty() && glued.is_none() {
         return Some(written);
     }
@@ -85,21 +124,25 @@ fn scanned(cell: &[u8], order: DateOrder) -> Option<Written> {
         None => scan.time()?,
     };
     written.civil_us += time;
+    written.day_end = time == DAY;
     written.timed = true;
     written.halves = halves;
+    written.fold = scan.fold();
     written.offset_s = scan.offset()?;
     Some(written)
 }
 
 /// Reads a time of day in microseconds; 24:00 is the day's end.
 pub(super) fn time_of_day(cell: &[u8]) -> Option<(i64, bool)> {
-    let mut scan = Scan { rest: trim(cell) };
+    let mut scan = Scan { rest: trim(cell), yearless: false };
     let time = scan.time()?;
+    scan.fold();
     scan.tail().then_some(time)
 }
 
 struct Scan<'a> {
     rest: &'a [u8],
+    yearless: bool,
 }
 
 impl Scan<'_> {
@@ -179,7 +222,21 @@ impl Scan<'_> {
             return None;
         }
         let (second, second_width) = self.number()?;
-        if second_width > 2 || self.skip(&[mark]) != 1 {
+        if second_width > 2 {
+            return None;
+        }
+        // "01-31 00:00" and "31.01. 00:00" state no year; a time of day must follow, since "1-2" is no date.
+        let dotted = mark == b'.' && self.rest.starts_with(b". ");
+        if width <= 2 && (dotted || self.rest.first() == Some(&b' ') || self.rest.first() == Some(&b'T')) {
+            self.skip(b".");
+            let (month, day) = match (order, mark) {
+                (_, b'-') | (DateOrder::MonthFirst | DateOrder::YearFirst, _) => (first, second),
+                (DateOrder::DayFirst, _) => (second, first),
+            };
+            self.yearless = true;
+            return Some((days(NO_YEAR, month, day)?, mark == b'-', mark, None));
+        }
+        if self.skip(&[mark]) != 1 {
             return None;
         }
         let (third, third_width) = self.number()?;
@@ -284,6 +341,17 @@ impl Scan<'_> {
         right.then_some(((hour * 3600 + minute * 60 + second) * SECOND + micro, halves.is_some()))
     }
 
+    /// The mark of one of the hours that come twice.
+    fn fold(&mut self) -> Option<Fold> {
+        let fold = match self.rest {
+            [b'A'] => Fold::First,
+            [b'B'] => Fold::Second,
+            _ => return None,
+        };
+        self.rest = &[];
+        Some(fold)
+    }
+
     /// The offset from UTC, if one is written; none if something else follows.
     #[allow(clippy::option_option, reason = "no offset and no stamp are two things")]
     fn offset(&mut self) -> Option<Option<i32>> {
@@ -337,8 +405,12 @@ impl Scan<'_> {
     }
 }
 
-fn century(year: i64) -> i64 {
-    if year < 70 { 2000 + year } else { 1900 + year }
+pub(super) fn century(year: i64) -> i64 {
+    match year {
+        0..70 => 2000 + year,
+        70..100 => 1900 + year,
+        _ => year,
+    }
 }
 
 fn compact(value: i64, width: usize) -> Option<(i64, bool, u8, Option<i64>)> {
@@ -463,7 +535,11 @@ mod tests {
             let expected = civil::Date::new(year, month, day).ok().map(|date| {
                 i64::from((date - civil::date(1970, 1, 1)).get_days())
             });
-            prop_assert_eq!(days(i64::from(year), i64::from(month), i64::from(day)), expected);
+            let found = days(i64::from(year), i64::from(month), i64::from(day));
+            prop_assert_eq!(found, expected);
+            if let Some(count) = found {
+                prop_assert_eq!(date_of(count), (i64::from(year), i64::from(month), i64::from(day)));
+            }
         }
 
         #[test]

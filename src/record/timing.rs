@@ -5,7 +5,7 @@ use csv::ByteRecord;
 use super::Role;
 use super::dialect::{Dialect, Look, look};
 use super::number::{self, Cell, Marks};
-use super::stamp::{self, DAY, SECOND};
+use super::stamp::{self, DAY, Fold, SECOND};
 use super::words;
 use crate::case::DateOrder;
 use crate::fault::{Fault, Result, quote};
@@ -21,6 +21,8 @@ pub(super) enum Timing {
     DateElapsed(usize, usize),
     /// Date in one column and the number of the hour in another; `first` is the number of the day's first hour.
     DateHour { date: usize, hour: usize, first: i64 },
+    /// Year, month, day, hour and minute in columns of their own.
+    Parts(Parts),
     /// Time since 1970-01-01T00:00Z in units of so many microseconds.
     Unix { column: usize, unit_us: i64 },
     /// Days since 1899-12-30, as spreadsheets count them.
@@ -29,6 +31,24 @@ pub(super) enum Timing {
     Counter { column: usize, unit_us: i64, unit_known: bool },
     /// No column at all: rows follow each other at a step that the person stated, in microseconds.
     Rows(i64),
+}
+
+/// Columns of the parts of a stamp.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) struct Parts {
+    year: Option<usize>,
+    month: usize,
+    day: usize,
+    hour: Option<usize>,
+    minute: Option<usize>,
+    /// Number of the day's first hour.
+    first: i64,
+}
+
+impl Parts {
+    fn columns(self) -> impl Iterator<Item = usize> {
+        [self.year, Some(self.month), Some(self.day), self.hour, self.minute].into_iter().flatten()
+    }
 }
 
 /// A row's moment as it is written.
@@ -44,6 +64,12 @@ pub(super) struct Moment {
     pub(super) clear: bool,
     /// Whether AM or PM was written.
     pub(super) halves: bool,
+    /// Whether the time of day was written as 24:00.
+    pub(super) day_end: bool,
+    /// Whether no year was written.
+    pub(super) yearless: bool,
+    /// Which of the two hours that clocks show twice, if it is said.
+    pub(super) fold: Option<Fold>,
     /// The mark between the parts of the date.
     pub(super) mark: u8,
 }
@@ -65,6 +91,14 @@ impl Timing {
                     (column == clock).then_some(Role::Clock)
                 }
             }
+            Self::Parts(parts) => {
+                let clock = parts.hour == Some(column) || parts.minute == Some(column);
+                parts.columns().any(|part| part == column).then_some(if clock {
+                    Role::Clock
+                } else {
+                    Role::Date
+                })
+            }
             Self::Rows(_) => None,
         }
     }
@@ -75,6 +109,7 @@ impl Timing {
             Self::DateClock(date, clock)
             | Self::DateElapsed(date, clock)
             | Self::DateHour { date, hour: clock, .. } => vec![date, clock],
+            Self::Parts(parts) => parts.columns().collect(),
             other => other.column().into_iter().collect(),
         }
     }
@@ -87,6 +122,7 @@ impl Timing {
             | Self::Serial(c)
             | Self::Counter { column: c, .. } => Some(c),
             Self::DateClock(date, _) | Self::DateElapsed(date, _) | Self::DateHour { date, .. } => Some(date),
+            Self::Parts(parts) => Some(parts.day),
             Self::Rows(_) => None,
         }
     }
@@ -114,8 +150,17 @@ impl Timing {
         marks: Marks,
         nth: i64,
     ) -> Option<Moment> {
-        let exact =
-            |us: i64, offset_s| Moment { us, after_us: 0, offset_s, clear: true, halves: false, mark: b'0' };
+        let exact = |us: i64, offset_s| Moment {
+            us,
+            after_us: 0,
+            offset_s,
+            clear: true,
+            halves: false,
+            day_end: false,
+            yearless: false,
+            fold: None,
+            mark: b'0',
+        };
         let count = |column: usize| match number::parse(record.get(column)?, marks) {
             Cell::Number(value) if value.abs() < 1e17 => Some(value),
             _ => None,
@@ -129,6 +174,9 @@ impl Timing {
                     offset_s: read.offset_s,
                     clear: read.clear,
                     halves: read.halves,
+                    day_end: read.day_end,
+                    yearless: read.yearless,
+                    fold: read.fold,
                     mark: read.mark,
                 })
             }
@@ -136,12 +184,20 @@ impl Timing {
                 let read = stamp::stamp(record.get(date)?, order)?;
                 let (time, halves) = stamp::time_of_day(record.get(clock)?)?;
                 let us = read.civil_us.div_euclid(DAY) * DAY + time;
+                let fold = match record.get(clock)?.trim_ascii_end().last() {
+                    Some(b'A') => Some(Fold::First),
+                    Some(b'B') => Some(Fold::Second),
+                    _ => None,
+                };
                 Some(Moment {
                     us,
                     after_us: 0,
                     offset_s: read.offset_s,
                     clear: read.clear,
                     halves,
+                    day_end: time == DAY,
+                    yearless: read.yearless,
+                    fold,
                     mark: read.mark,
                 })
             }
@@ -158,6 +214,9 @@ impl Timing {
                     offset_s: read.offset_s,
                     clear: read.clear,
                     halves: false,
+                    day_end: false,
+                    yearless: read.yearless,
+                    fold: read.fold,
                     mark: read.mark,
                 })
             }
@@ -174,6 +233,9 @@ impl Timing {
                     offset_s: read.offset_s,
                     clear: read.clear,
                     halves: false,
+                    day_end: false,
+                    yearless: read.yearless,
+                    fold: read.fold,
                     mark: read.mark,
                 })
             }
@@ -183,6 +245,20 @@ impl Timing {
             // Serial days carry rounding of the spreadsheet: whole seconds are what was meant.
             Self::Serial(column) => within((count(column)? - 25_569.0) * 86_400.0 * 1e6)
                 .map(|us| exact((us / 1e6).round() as i64 * SECOND, None)),
+            Self::Parts(parts) => {
+                let part =
+                    |column: usize| count(column).filter(|value| value.fract() == 0.0).map(|v| v as i64);
+                let year = parts.year.map_or(Some(stamp::NO_YEAR), part)?;
+                let days = stamp::days(stamp::century(year), part(parts.month)?, part(parts.day)?)?;
+                let hour = parts.hour.map_or(Some(0.0), |hour| count(hour))? - parts.first as f64;
+                let minute = parts.minute.map_or(Some(0.0), |minute| count(minute))?;
+                if !(0.0..=24.0).contains(&hour) || !(0.0..=60.0).contains(&minute) {
+                    return None;
+                }
+                let us = days * DAY + ((hour * 3600.0 + minute * 60.0) * 1e6).round() as i64;
+                let yearless = parts.year.is_none();
+                Some(Moment { day_end: hour == 24.0, yearless, ..exact(us, None) })
+            }
             Self::Rows(step_us) => {
                 let number = |cell| matches!(number::parse(cell, marks), Cell::Number(_));
                 record.get(0).filter(|_| record.iter().any(number))?;
@@ -301,6 +377,11 @@ pub(super) fn choose(
             return Ok(clock.map_or(Timing::Stamp(date), |clock| date_and(date, clock, &profiles)));
         }
     }
+    if stated_time.is_none()
+        && let Some(parts) = parts(dialect, &profiles, &free)
+    {
+        return Ok(Timing::Parts(parts));
+    }
     let counted = |column: usize| numeric(dialect, column, &profiles[column], stated_time == Some(column));
     let numbers = || (0..width).filter(|column| stated_time.map_or(free(column), |stated| stated == *column));
     let found = numbers()
@@ -327,6 +408,31 @@ pub(super) fn choose(
         format!("{name}, row {row}"),
         "State which column holds the stamps (role time) or, if rows follow each other at a regular step, that step in seconds (record.step_s).",
     ))
+}
+
+/// Columns headed year, month, day and hour, whose numbers can be that.
+fn parts(dialect: &Dialect, profiles: &[Profile], free: &dyn Fn(&usize) -> bool) -> Option<Parts> {
+    let find = |names: &[&str], least: f64, most: f64| {
+        (0..profiles.len()).find(|column| {
+            let header = dialect.headers[*column].to_lowercase();
+            let mut words = header.split(|c: char| !c.is_alphanumeric()).filter(|word| !word.is_empty());
+            let profile = &profiles[*column];
+            free(column)
+                && words.any(|word| names.contains(&word))
+                && profile.mostly(profile.values.len())
+                && profile.values.iter().all(|value| (least..=most).contains(value))
+        })
+    };
+    let month = find(&["month", "mo", "monat", "mois", "mes", "maand", "mm"], 1.0, 12.0)?;
+    let day = find(&["day", "dy", "tag", "jour", "dia", "día", "dag", "dd"], 1.0, 31.0)?;
+    let year = find(&["year", "yr", "jahr", "année", "annee", "año", "jaar", "yyyy"], 0.0, 9999.0);
+    let hour = find(&["hour", "hr", "stunde", "heure", "hora", "uur", "hh", "h"], 0.0, 24.0);
+    let minute = find(&["minute", "min", "minuto", "mi"], 0.0, 60.0);
+    let first = hour.map_or(0, |hour| {
+        let values = &profiles[hour].values;
+        i64::from(values.contains(&24.0) && !values.contains(&0.0))
+    });
+    Some(Parts { year, month, day, hour, minute, first })
 }
 
 fn date_and(date: usize, clock: usize, profiles: &[Profile]) -> Timing {

@@ -29,6 +29,21 @@ impl Unit {
         })
     }
 
+    /// Whether it measures energy.
+    pub(super) fn is_energy(self) -> bool {
+        matches!(self, Self::Wh | Self::Kwh | Self::Mwh | Self::Gwh)
+    }
+
+    /// The unit of energy that belongs to a unit of power; itself if it is one.
+    pub(super) fn energy(self) -> Self {
+        match self {
+            Self::W | Self::Wh => Self::Wh,
+            Self::Kw | Self::Kwh => Self::Kwh,
+            Self::Mw | Self::Mwh => Self::Mwh,
+            Self::Gw | Self::Gwh => Self::Gwh,
+        }
+    }
+
     /// As written for people.
     pub(super) fn label(self) -> &'static str {
         match self {
@@ -111,7 +126,8 @@ pub(super) fn in_unit_row(cell: &str) -> bool {
         )
 }
 
-fn money(low: &str) -> bool {
+/// Whether a unit in small letters is money per energy.
+pub(super) fn money(low: &str) -> bool {
     let has = |part: &str| low.contains(part);
     has("/") && ["eur", "€", "usd", "$", "ct", "gbp", "£", "chf", "cent"].iter().any(|coin| has(coin))
 }

@@ -99,6 +99,10 @@ impl Reader {
             timing,
             columns,
             scanned: None,
+            late: false,
+            late_why: String::new(),
+            typical: false,
+            years: Vec::new(),
         });
         Ok(())
     }

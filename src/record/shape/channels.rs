@@ -90,12 +90,12 @@ pub(in crate::record) fn keys(
         if filled == 0 {
             continue;
         }
-        if units == filled {
-            unit = Some(column);
+        let quality = matches!(words::guess(header), Guess::Role(Role::Quality, _)) && !named;
+        if units == filled && !quality {
+            unit = unit.or(Some(column));
             continue;
         }
         let is_name = other * 10 >= filled * 9 || (named && whole == filled);
-        let quality = matches!(words::guess(header), Guess::Role(Role::Quality, _)) && !named;
         if is_name && !quality && seen.len() <= MOST_CHANNELS && filled * 10 >= rows.len() * 9 {
             candidates.push(Candidate { column, distinct: seen.len(), named });
         } else if numbers * 2 > filled {
