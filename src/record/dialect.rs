@@ -48,8 +48,8 @@ pub(super) enum Look {
     Other,
 }
 
-pub(super) const POINT: Marks = Marks { decimal: b'.', thousands: Some(b',') };
-const COMMA: Marks = Marks { decimal: b',', thousands: Some(b'.') };
+pub(super) const POINT: Marks = Marks { decimal: b'.', thousands: Some(b','), mixed: false };
+const COMMA: Marks = Marks { decimal: b',', thousands: Some(b'.'), mixed: false };
 
 /// Reads a stamp by whichever order makes a date of it.
 pub(super) fn any_stamp(cell: &[u8]) -> Option<stamp::Written> {
@@ -174,13 +174,18 @@ pub(super) fn decide(name: &str, head: &[u8], terms: &RecordCase) -> Result<Dial
             if below == Stated::Nothing { unit::unit_of(&headers[i]) } else { below }
         })
         .collect();
+    // Column by column, since whole numbers in one say nothing of the marks in another.
     let mut evidence = Evidence::default();
+    let mut of_column: Vec<Evidence> = vec![Evidence::default(); width];
     for i in first..rows.len() {
-        for (cell, look) in rows[i].1.iter().zip(&looks[i]) {
+        for ((cell, look), of_column) in rows[i].1.iter().zip(&looks[i]).zip(&mut of_column) {
             if *look == Look::Number {
-                evidence.add(cell);
+                of_column.add(cell);
             }
         }
+    }
+    for of_column in &of_column {
+        evidence.join(of_column);
     }
     let (marks, _) = evidence.decide(terms.decimal);
     let preamble = rows[..header.unwrap_or(first)]

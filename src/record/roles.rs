@@ -245,7 +245,6 @@ fn repeated(dialect: &Dialect, columns: &mut [Column]) {
     let kind = |at: usize| {
         let column = &columns[at];
         let counts = column.numeric && !column.stated && (column.open || is_power(column.role));
-        let unit = column.unit.map_or(0, |unit| 1 + unit as u8);
         // Roles by their kind, since a total may be headed by another word than its parts.
         let class = match column.role {
             Role::Import | Role::Demand | Role::Ignore => 0,
@@ -253,9 +252,11 @@ fn repeated(dialect: &Dialect, columns: &mut [Column]) {
             Role::Supply | Role::Generation => 2,
             _ => 3,
         };
-        counts.then_some(class * 16 + unit)
+        counts.then_some(class)
     };
-    for again in values::again(dialect, &kind, &|at| columns[at].phase) {
+    for again in values::again(dialect, &kind, &|at| columns[at].phase, &|at| {
+        columns[at].unit.is_some_and(Unit::is_energy)
+    }) {
         let whole = quote(&columns[again.whole].header);
         for part in again.parts {
             let column = &mut columns[part];

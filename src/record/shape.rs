@@ -6,11 +6,12 @@ use std::rc::Rc;
 
 use csv::ByteRecord;
 
-use super::decode::text;
+use super::Role;
 use super::dialect::{Dialect, blank};
 use super::number;
 use super::rows::Rows;
 use super::unit::{self, Stated};
+use super::words::{self, Guess};
 
 mod channels;
 mod days;
@@ -132,10 +133,7 @@ pub(super) fn alone(
 ) -> Dialect {
     let rows = channel.map_or(&dialect.rows, |channel| &channel.rows);
     let label = channel.zip(keys).map(|(channel, keys)| keys.label(&channel.wanted));
-    let unit = keys
-        .and_then(|keys| keys.unit)
-        .and_then(|column| rows.first()?.1.get(column))
-        .map_or(Stated::Nothing, |cell| unit::unit_cell(&text(cell)));
+    let unit = channels::unit_of_rows(rows, &dialect.headers);
     let mut headers = dialect.headers.clone();
     let mut units = dialect.units.clone();
     let mut named = keys.map(|keys| keys.columns.clone()).unwrap_or_default();
@@ -145,7 +143,7 @@ pub(super) fn alone(
         let of_header = unit::unit_of(&header);
         let of_slot = days.unit(dialect);
         headers = vec![dialect.headers[days.date].clone(), CLOCK_HEADER.to_owned(), header];
-        let found = [unit, of_header, of_slot].into_iter().find(|unit| *unit != Stated::Nothing);
+        let found = [unit.clone(), of_header, of_slot].into_iter().find(|unit| *unit != Stated::Nothing);
         units = vec![Stated::Nothing, Stated::Nothing, found.unwrap_or(Stated::Nothing)];
         named.clear();
         shaped = Vec::new();
@@ -163,9 +161,17 @@ pub(super) fn alone(
                 units[value] = stated;
             }
         }
-        if unit != Stated::Nothing {
-            for value in &keys.values {
-                units[*value] = unit.clone();
+    }
+    if days.is_none() && unit != Stated::Nothing {
+        let other = |header: &str| {
+            matches!(
+                words::guess(header),
+                Guess::Role(Role::Price | Role::Frequency | Role::Reactive | Role::Quality | Role::Ignore, _)
+            )
+        };
+        for (stated, header) in units.iter_mut().zip(&headers) {
+            if *stated == Stated::Nothing && !other(header) {
+                *stated = unit.clone();
             }
         }
     }

@@ -9,6 +9,7 @@ use crate::case::{DateOrder, GapRemedy, RecordCase, RepeatRemedy, Stamp};
 use crate::fault::{Fault, Result};
 use crate::job::{Job, finish};
 
+mod clocks;
 mod dialects;
 mod shapes;
 

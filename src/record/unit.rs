@@ -161,6 +161,10 @@ pub(super) fn unit_of(header: &str) -> Stated {
     {
         return stated;
     }
+    // power_w: a single letter counts where names are joined by underscores.
+    if header.trim_end().to_lowercase().ends_with("_w") {
+        return Stated::Power(Unit::W);
+    }
     // supplyKW, LoadkWh
     for ending in ["kWh", "KWh", "KWH", "MWh", "MWH", "kW", "KW", "MW"] {
         if let Some(before) = header.trim_end().strip_suffix(ending)
@@ -205,6 +209,7 @@ mod tests {
             ("kWh", Unit::Kwh),
             ("Wind+PV kW", Unit::Kw),
             ("total_wh", Unit::Wh),
+            ("power_w", Unit::W),
         ] {
             assert_eq!(unit_of(header), Stated::Power(unit), "{header}");
         }

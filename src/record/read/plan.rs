@@ -12,6 +12,9 @@ mod labels;
 mod lanes;
 mod typical;
 
+/// What is done about both decimal marks in one file.
+const MIXED: &str = "both read as decimal";
+
 impl Reader {
     /// Decides the clock and what each column is added to; asks for the memory.
     pub(super) fn plan(&mut self) -> Result<()> {
@@ -90,6 +93,17 @@ impl Reader {
     fn stamp_findings(&mut self) {
         for file in &self.files {
             let Some(scanned) = &file.scanned else { continue };
+            if file.dialect.marks.mixed && !self.findings.iter().any(|found| found.remedy == MIXED) {
+                self.findings.push(Finding {
+                    kind: FindingKind::Text,
+                    count: 1,
+                    first_row: Some(file.dialect.first_row),
+                    file: file.name.clone(),
+                    remedy: MIXED.to_owned(),
+                    text: "Some cells have a decimal point and others a decimal comma: a lone mark is taken as decimal in either.".to_owned(),
+                    changes_figures: true,
+                });
+            }
             let column = file.timing.column().and_then(|column| file.dialect.headers.get(column));
             let header = quote(column.map_or("", String::as_str));
             let (text, remedy, changes) = match file.timing {

@@ -251,19 +251,29 @@ fn settle_open(files: &mut [(String, Vec<Column>)], findings: &mut Vec<Finding>)
         let look = &files[f].1[c].look;
         look.zeros as f64 / look.numbers.max(1) as f64
     };
-    let idle = open.iter().copied().find(|at| !supply && zeros(*at) > 0.2);
-    let busy = open.iter().copied().find(|at| Some(*at) != idle && zeros(*at) < 0.1);
-    let (idle, busy) = if busy.is_some() { (idle, busy) } else { (None, Some(open[0])) };
-    for (at, role, why) in [
+    let mut idle: Vec<_> = open.iter().copied().filter(|at| !supply && zeros(*at) > 0.2).collect();
+    let mut busy: Vec<_> = open.iter().copied().filter(|at| !idle.contains(at) && zeros(*at) < 0.1).collect();
+    if busy.is_empty() {
+        (idle, busy) = (Vec::new(), vec![open[0]]);
+    }
+    // Without units nothing says that further columns are of the same kind.
+    if !open.iter().all(|(f, c)| files[*f].1[*c].unit.is_some()) {
+        idle.truncate(1);
+        busy.truncate(1);
+    }
+    for (list, role, why) in [
         (idle, Role::Supply, "it is zero for much of the time"),
         (busy, Role::Demand, "no header says what is what"),
     ] {
-        let Some((f, c)) = at else { continue };
-        let (file, columns) = &mut files[f];
-        columns[c].take(role, why.to_owned());
-        let name = if role == Role::Supply { "supply" } else { "demand" };
-        let text = format!("Column {} is taken as {name} by a guess: {why}.", quote(&columns[c].header));
-        findings.push(note(FindingKind::SignDoubt, 1, file, "role guessed", text, true));
+        let added = if list.len() > 1 { ", added to the others of its kind" } else { "" };
+        for (f, c) in list {
+            let (file, columns) = &mut files[f];
+            columns[c].take(role, why.to_owned());
+            let name = if role == Role::Supply { "supply" } else { "demand" };
+            let text =
+                format!("Column {} is taken as {name} by a guess: {why}{added}.", quote(&columns[c].header));
+            findings.push(note(FindingKind::SignDoubt, 1, file, "role guessed", text, true));
+        }
     }
 }
 

@@ -30,7 +30,7 @@ pub(super) struct Values {
 pub(super) fn values(dialect: &Dialect, timing: Timing, column: usize) -> Values {
     let mut found = Values::default();
     let mut before: Option<f64> = None;
-    let (mut falls, mut rises, mut first, mut most_rise) = (0, 0, 0.0, 0.0_f64);
+    let (mut falls, mut rises, mut sets, mut first, mut most_rise) = (0, 0, 0, 0.0, 0.0_f64);
     let mut counts = true;
     for (nth, (_, record)) in dialect.rows.iter().enumerate() {
         let cell = record.get(column).unwrap_or(b"");
@@ -46,6 +46,8 @@ pub(super) fn values(dialect: &Dialect, timing: Timing, column: usize) -> Values
                     // A column that runs from the newest row to the oldest falls all the way.
                     falls += usize::from(value < before);
                     rises += usize::from(value > before);
+                    // Set back to zero at the end of its day, or turned over.
+                    sets += usize::from(value < before && value <= 0.1 * before);
                     counts &= (value - before).abs() == 1.0;
                     most_rise = most_rise.max((value - before).abs());
                 } else {
@@ -61,9 +63,11 @@ pub(super) fn values(dialect: &Dialect, timing: Timing, column: usize) -> Values
     }
     let last = before.unwrap_or(0.0);
     let (few, many) = if falls < rises { (falls, rises) } else { (rises, falls) };
+    let said = words::says_register(&dialect.headers[column]);
+    // A reading that is said to be one may begin again every day.
+    let few = if said && few == falls { falls - sets } else { few };
     // A reading turns over or is reset now and then; other quantities go down as often as up.
     let runs = found.negative == 0 && many > 0 && few * 100 <= many + 99 && !(counts && found.numbers > 2);
-    let said = words::says_register(&dialect.headers[column]);
     let rise = if few == 0 { most_rise } else { 0.0 };
     // A meter that nothing ran through stands still.
     let still = said && found.numbers >= 3 && rises + falls == 0 && first > 0.0;
@@ -109,11 +113,12 @@ pub(super) fn again(
     dialect: &Dialect,
     kind: &dyn Fn(usize) -> Option<u8>,
     phase: &dyn Fn(usize) -> bool,
+    energy: &dyn Fn(usize) -> bool,
 ) -> Vec<Again> {
     let columns: Vec<usize> =
         (0..dialect.headers.len()).filter(|column| kind(*column).is_some()).take(MOST_COLUMNS).collect();
     let mut found = Vec::new();
-    for group in 0..u8::MAX {
+    for group in 0..4 {
         let mut members: Vec<usize> =
             columns.iter().copied().filter(|column| kind(*column) == Some(group)).collect();
         if members.len() < 2 {
@@ -141,6 +146,7 @@ pub(super) fn again(
         while later < members.len() {
             let same = (0..later).find(|first| {
                 key(&dialect.headers[members[*first]]) == key(&dialect.headers[members[later]])
+                    && energy(members[*first]) == energy(members[later])
                     && rows.iter().all(|row| row[*first] == row[later])
             });
             if let Some(first) = same {
@@ -149,21 +155,47 @@ pub(super) fn again(
             }
             later += 1;
         }
+        // Power and energy of the same thing, one beside the other.
+        for first in 0..members.len() {
+            for second in first + 1..members.len() {
+                if members[first] == usize::MAX || members[second] == usize::MAX {
+                    continue;
+                }
+                let (one, two) = (energy(members[first]), energy(members[second]));
+                if one == two {
+                    continue;
+                }
+                let sum = |at: usize| rows.iter().map(|row| row[at]).sum::<f64>();
+                let ratio = sum(first) / sum(second);
+                let even = ratio.is_finite()
+                    && rows.iter().all(|row| {
+                        (row[first] - ratio * row[second]).abs()
+                            <= 0.01 * row[first].abs() + 1e-3 * ratio.abs()
+                    });
+                if even {
+                    let (kept, left) = if one { (second, first) } else { (first, second) };
+                    found.push(Again { parts: vec![members[left]], whole: members[kept] });
+                    members[left] = usize::MAX;
+                }
+            }
+        }
         let live: Vec<usize> = (0..members.len()).filter(|at| members[*at] != usize::MAX).collect();
         if live.len() < 3 {
             continue;
         }
-        let whole = live.iter().copied().filter(|whole| !phase(members[*whole])).find(|whole| {
-            let adds = rows
-                .iter()
-                .filter(|row| {
-                    let parts: f64 = live.iter().filter(|at| *at != whole).map(|at| row[*at]).sum();
-                    (row[*whole] - parts).abs() <= 0.005 * row[*whole].abs().max(parts.abs())
-                })
-                .count();
-            adds * 20 >= rows.len() * 19
-                && live.iter().filter(|at| *at != whole).all(|at| rows.iter().any(|row| row[*at] != 0.0))
-        });
+        let alike = live.iter().all(|at| energy(members[*at]) == energy(members[live[0]]));
+        let whole =
+            live.iter().copied().filter(|_| alike).filter(|whole| !phase(members[*whole])).find(|whole| {
+                let adds = rows
+                    .iter()
+                    .filter(|row| {
+                        let parts: f64 = live.iter().filter(|at| *at != whole).map(|at| row[*at]).sum();
+                        (row[*whole] - parts).abs() <= 0.005 * row[*whole].abs().max(parts.abs())
+                    })
+                    .count();
+                adds * 20 >= rows.len() * 19
+                    && live.iter().filter(|at| *at != whole).all(|at| rows.iter().any(|row| row[*at] != 0.0))
+            });
         if let Some(whole) = whole {
             found.push(Again {
                 parts: live.iter().filter(|at| **at != whole).map(|at| members[*at]).collect(),

@@ -23,10 +23,6 @@ const MOST_ROWS: usize = 1000;
 #[derive(Debug, Clone)]
 pub(in crate::record) struct Keys {
     pub(in crate::record) columns: Vec<usize>,
-    /// Column that holds the unit of each row.
-    pub(super) unit: Option<usize>,
-    /// Columns of numbers.
-    pub(super) values: Vec<usize>,
     /// The one column of numbers, which takes its channel's name.
     pub(super) renamed: Option<usize>,
     /// Column of the stamp or date.
@@ -49,6 +45,27 @@ struct Candidate {
     column: usize,
     distinct: usize,
     named: bool,
+}
+
+/// The unit that a column of units gives to all rows; nothing if there is none, or several.
+pub(super) fn unit_of_rows(rows: &[(u64, ByteRecord)], headers: &[String]) -> Stated {
+    for column in 0..headers.len() {
+        if matches!(words::guess(&headers[column]), Guess::Role(Role::Quality, _)) {
+            continue;
+        }
+        let mut found = Stated::Nothing;
+        let alike = rows.iter().all(|(_, record)| {
+            let unit = unit::unit_cell(&text(record.get(column).unwrap_or(b"")));
+            if found == Stated::Nothing {
+                found = unit.clone();
+            }
+            unit == found && unit != Stated::Nothing
+        });
+        if alike && found != Stated::Nothing {
+            return found;
+        }
+    }
+    Stated::Nothing
 }
 
 /// Finds the columns that name the channel. `times` are the columns of the stamp; none if every stamp comes once.
@@ -119,7 +136,7 @@ pub(in crate::record) fn keys(
             })
             .count()
     };
-    let build = |columns: Vec<usize>, certain| Some(Keys { columns, unit, values, renamed, time, certain });
+    let build = |columns: Vec<usize>, certain| Some(Keys { columns, renamed, time, certain });
     let single = unique(&[]);
     if (rows.len() - single) * 5 < rows.len() {
         // Stamps come once in the head: the channels may follow each other.
