@@ -26,6 +26,7 @@ pub struct RecordCase {
     #[serde(deserialize_with = "super::read::each_once")]
     pub units: BTreeMap<String, String>,
     /// Factor for the values of a column by its header (or `file/header`), such as the rating for a series per rated kW.
+    #[serde(deserialize_with = "super::read::each_once")]
     pub scale: BTreeMap<String, f64>,
     /// Separator of cells, where the guess is wrong.
     pub separator: Option<char>,
