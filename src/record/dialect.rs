@@ -230,7 +230,7 @@ fn joined_from_above(rows: &[(u64, ByteRecord)], row: usize, headers: &mut [Stri
             cell.trim().clone_into(&mut name);
         }
         if !name.is_empty() {
-            *header = format!("{name} {header}").trim().to_owned();
+            format!("{name} {header}").trim().clone_into(header);
         }
     }
 }

@@ -87,20 +87,14 @@ pub(super) fn find(
     let (step_us, phase, fits) = steps::align(files, &paces, terms, (least, most), findings);
     let mut bounds: Option<(i64, i64)> = None;
     for (file, fit) in files.iter().zip(&fits).filter(|(file, _)| file.anchors || whole.is_some()) {
-        let (first, last) = match whole {
-            Some((first, last)) => (first, last - fit.step_us),
-            None => {
-                let own = |inside: &mut dyn Iterator<Item = i64>| {
-                    inside.filter(|at| (least..=most).contains(at)).collect::<Vec<_>>()
-                };
-                let lows = own(&mut file.stats.blocks.values().map(|block| block.least));
-                let highs = own(&mut file.stats.blocks.values().map(|block| block.most));
-                let (Some(first), Some(last)) = (lows.into_iter().min(), highs.into_iter().max()) else {
-                    continue;
-                };
-                (first, last)
-            }
+        let own = if let Some((first, last)) = whole {
+            Some((first, last - fit.step_us))
+        } else {
+            let inside = |at: &i64| (least..=most).contains(at);
+            let first = file.stats.blocks.values().map(|block| block.least).filter(inside).min();
+            first.zip(file.stats.blocks.values().map(|block| block.most).filter(inside).max())
         };
+        let Some((first, last)) = own else { continue };
         // The smallest place not before the first stamp; stamps off the step are left out later.
         let tolerance = if fit.spread { 0 } else { fit.step_us / 20 };
         let place = |instant: i64| (instant - fit.origin_us).div_euclid(fit.step_us);

@@ -42,7 +42,7 @@ pub(super) fn parse(cell: &[u8], marks: Marks) -> Cell {
 
 /// The marks of a cell in a file that holds both decimal marks.
 fn lone(cell: &[u8], marks: Marks) -> Marks {
-    let count = |mark: u8| cell.iter().filter(|byte| **byte == mark).count();
+    let count = |mark: u8| cell.split(|byte| *byte == mark).count() - 1;
     match (count(b'.'), count(b',')) {
         (1, 0) => Marks { decimal: b'.', thousands: None, ..marks },
         (0, 1) => Marks { decimal: b',', thousands: None, ..marks },

@@ -98,7 +98,7 @@ impl Series {
     pub fn truncate(&mut self, len: usize) {
         if len < self.len {
             self.chunks.truncate(len.div_ceil(CHUNK));
-            if let Some(last) = self.chunks.last_mut().filter(|_| len % CHUNK != 0) {
+            if let Some(last) = self.chunks.last_mut().filter(|_| !len.is_multiple_of(CHUNK)) {
                 last.truncate(len % CHUNK);
             }
             self.len = len;

@@ -205,12 +205,12 @@ impl Settle {
             }
             *found = sum;
         }
-        for target in 0..=Target::Net as usize {
+        for (target, found) in found.iter().enumerate().take(Target::Net as usize + 1) {
             let Some(out) = self.sums.out[target] else { continue };
             if self.sums.targets[target].len() == 1 && !self.sums.own[target] {
                 continue;
             }
-            match found[target] {
+            match *found {
                 Some(sum) => self.table.series[out].set(i, sum)?,
                 None => self.table.series[out].clear(i),
             }

@@ -132,7 +132,7 @@ pub(super) fn alone(
     channel: Option<&Channel>,
 ) -> Dialect {
     let rows = channel.map_or(&dialect.rows, |channel| &channel.rows);
-    let label = channel.zip(keys).map(|(channel, keys)| keys.label(&channel.wanted));
+    let label = channel.map(|channel| channels::label(&channel.wanted));
     let unit = channels::unit_of_rows(rows, &dialect.headers);
     let mut headers = dialect.headers.clone();
     let mut units = dialect.units.clone();
@@ -153,13 +153,11 @@ pub(super) fn alone(
                 shaped.push((*row, reading.clone()));
             }
         }
-    } else if let (Some(keys), Some(label)) = (keys, label) {
-        if let Some(value) = keys.renamed {
-            let stated = unit::unit_of(&label);
-            headers[value].clone_from(&label);
-            if stated != Stated::Nothing {
-                units[value] = stated;
-            }
+    } else if let (Some(value), Some(label)) = (keys.and_then(|keys| keys.renamed), label) {
+        let stated = unit::unit_of(&label);
+        headers[value] = label;
+        if stated != Stated::Nothing {
+            units[value] = stated;
         }
     }
     if days.is_none() && unit != Stated::Nothing {

@@ -13,6 +13,7 @@ pub(super) const SECOND: i64 = 1_000_000;
 pub(super) const DAY: i64 = 86_400 * SECOND;
 
 /// A stamp as it is written.
+#[allow(clippy::struct_excessive_bools, reason = "independent facts about a stamp")]
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub(super) struct Written {
     /// Microseconds from 1970-01-01T00:00 on the clock that was read.

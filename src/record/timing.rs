@@ -52,6 +52,7 @@ impl Parts {
 }
 
 /// A row's moment as it is written.
+#[allow(clippy::struct_excessive_bools, reason = "independent facts about a stamp")]
 #[derive(Debug, Clone, Copy)]
 pub(super) struct Moment {
     /// Microseconds on the clock that was read, or since 1970 in UTC where the offset is 0.
@@ -250,8 +251,8 @@ impl Timing {
                     |column: usize| count(column).filter(|value| value.fract() == 0.0).map(|v| v as i64);
                 let year = parts.year.map_or(Some(stamp::NO_YEAR), part)?;
                 let days = stamp::days(stamp::century(year), part(parts.month)?, part(parts.day)?)?;
-                let hour = parts.hour.map_or(Some(0.0), |hour| count(hour))? - parts.first as f64;
-                let minute = parts.minute.map_or(Some(0.0), |minute| count(minute))?;
+                let hour = parts.hour.map_or(Some(0.0), count)? - parts.first as f64;
+                let minute = parts.minute.map_or(Some(0.0), count)?;
                 if !(0.0..=24.0).contains(&hour) || !(0.0..=60.0).contains(&minute) {
                     return None;
                 }

@@ -32,7 +32,7 @@ impl Reader {
         let zone = self.clock_zone()?;
         self.stamp_findings();
         self.label_stamps();
-        let whole = self.typical_years()?;
+        let whole = self.typical_years();
         let stamped: Vec<Stamped> = self
             .files
             .iter()

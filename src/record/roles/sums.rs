@@ -332,7 +332,7 @@ fn units(files: &mut [(String, Vec<Column>)], findings: &mut Vec<Finding>) {
         let registers = columns.iter().all(|column| column.into.is_empty() || column.register);
         let unit = if registers { "kWh" } else { "kW" };
         for column in columns.iter_mut().filter(|column| guessed.contains(&quote(&column.header))) {
-            column.why.push_str(&format!("; no unit is stated, {unit} is a guess"));
+            column.why = format!("{}; no unit is stated, {unit} is a guess", column.why);
         }
         let text = format!(
             "No unit is stated for {}: {} is taken.{}",

@@ -32,7 +32,7 @@ pub(super) fn values(dialect: &Dialect, timing: Timing, column: usize) -> Values
     let mut before: Option<f64> = None;
     let (mut falls, mut rises, mut sets, mut first, mut most_rise) = (0, 0, 0, 0.0, 0.0_f64);
     let mut counts = true;
-    for (nth, (_, record)) in dialect.rows.iter().enumerate() {
+    for (_, record) in &dialect.rows {
         let cell = record.get(column).unwrap_or(b"");
         match number::parse(cell, dialect.marks) {
             Cell::Empty => continue,
@@ -54,7 +54,7 @@ pub(super) fn values(dialect: &Dialect, timing: Timing, column: usize) -> Values
                     first = value;
                 }
                 before = Some(value);
-                if night(record, timing, dialect, nth) {
+                if night(record, timing, dialect) {
                     found.night_sum += value;
                 }
             }
@@ -80,7 +80,7 @@ pub(super) fn values(dialect: &Dialect, timing: Timing, column: usize) -> Values
 }
 
 /// Whether a row's stamp lies in the four hours after midnight.
-fn night(record: &csv::ByteRecord, timing: Timing, dialect: &Dialect, nth: usize) -> bool {
+fn night(record: &csv::ByteRecord, timing: Timing, dialect: &Dialect) -> bool {
     let time = match timing {
         Timing::Stamp(column) => record
             .get(column)
@@ -90,7 +90,7 @@ fn night(record: &csv::ByteRecord, timing: Timing, dialect: &Dialect, nth: usize
             .map(|read| read.civil_us.rem_euclid(DAY)),
         Timing::DateClock(_, clock) => record.get(clock).and_then(stamp::time_of_day).map(|time| time.0),
         Timing::Parts(_) => timing
-            .read(record, DateOrder::YearFirst, dialect.marks, nth as i64)
+            .read(record, DateOrder::YearFirst, dialect.marks, 0)
             .map(|moment| moment.us.rem_euclid(DAY)),
         _ => None,
     };
@@ -142,10 +142,10 @@ pub(super) fn again(
         if rows.len() < 10 {
             continue;
         }
-        let mut later = 1;
-        while later < members.len() {
+        for later in 1..members.len() {
             let same = (0..later).find(|first| {
-                key(&dialect.headers[members[*first]]) == key(&dialect.headers[members[later]])
+                members[*first] != usize::MAX
+                    && key(&dialect.headers[members[*first]]) == key(&dialect.headers[members[later]])
                     && energy(members[*first]) == energy(members[later])
                     && rows.iter().all(|row| row[*first] == row[later])
             });
@@ -153,7 +153,6 @@ pub(super) fn again(
                 found.push(Again { parts: vec![members[later]], whole: members[first] });
                 members[later] = usize::MAX;
             }
-            later += 1;
         }
         // Power and energy of the same thing, one beside the other.
         for first in 0..members.len() {

@@ -31,13 +31,10 @@ pub(in crate::record) struct Keys {
     certain: bool,
 }
 
-impl Keys {
-    /// A channel's name.
-    pub(super) fn label(&self, wanted: &[Vec<u8>]) -> String {
-        let parts: Vec<String> =
-            wanted.iter().map(|cell| text(cell)).filter(|cell| !cell.is_empty()).collect();
-        parts.join(" / ")
-    }
+/// A channel's name.
+pub(super) fn label(wanted: &[Vec<u8>]) -> String {
+    let parts: Vec<String> = wanted.iter().map(|cell| text(cell)).filter(|cell| !cell.is_empty()).collect();
+    parts.join(" / ")
 }
 
 /// What is known of a column that might name the channel.
@@ -49,8 +46,8 @@ struct Candidate {
 
 /// The unit that a column of units gives to all rows; nothing if there is none, or several.
 pub(super) fn unit_of_rows(rows: &[(u64, ByteRecord)], headers: &[String]) -> Stated {
-    for column in 0..headers.len() {
-        if matches!(words::guess(&headers[column]), Guess::Role(Role::Quality, _)) {
+    for (column, header) in headers.iter().enumerate() {
+        if matches!(words::guess(header), Guess::Role(Role::Quality, _)) {
             continue;
         }
         let mut found = Stated::Nothing;

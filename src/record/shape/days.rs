@@ -64,6 +64,11 @@ impl Days {
     }
 }
 
+/// A count of columns as a factor of times.
+fn whole(count: usize) -> i64 {
+    i64::try_from(count).unwrap_or(i64::MAX)
+}
+
 /// A header that may name a time of day: what stands before and after its digits, a time read from it and a count.
 struct Label<'a> {
     around: (&'a str, &'a str),
@@ -154,7 +159,7 @@ fn sequence(headers: &[&str]) -> Option<Sequence> {
             let step = second - start;
             let mut count = 1;
             while let Some((next, other)) = at(first + count) {
-                let due = start + step * count as i64;
+                let due = start + step * whole(count);
                 // The day's last time may be written as midnight.
                 if other != around || (next != due && !(next == 0 && due == day)) {
                     break;
@@ -171,7 +176,7 @@ fn sequence(headers: &[&str]) -> Option<Sequence> {
     if let Some((first, count, start_us, step_us)) = runs(&|label| label.time_us, DAY)
         && DAY % step_us == 0
         && (start_us == 0 || start_us == step_us)
-        && (count as i64 * step_us - DAY).abs() <= step_us
+        && (whole(count) * step_us - DAY).abs() <= step_us
     {
         return Some(Sequence { first, count, start_us, step_us, counted: false });
     }
@@ -180,7 +185,7 @@ fn sequence(headers: &[&str]) -> Option<Sequence> {
         // A day on which clocks go back has an hour more.
         for per_day in COUNTS {
             if count == per_day || count == per_day + per_day / 24 {
-                let step_us = DAY / per_day as i64;
+                let step_us = DAY / whole(per_day);
                 return Some(Sequence { first, count, start_us: 0, step_us, counted: true });
             }
         }
@@ -209,7 +214,7 @@ pub(in crate::record) fn days(dialect: &Dialect, starts: bool, ends: bool) -> Op
     let late = if found.counted || found.start_us > 0 { ends || (starts && !found.counted) } else { false };
     let slots = (0..found.count)
         .map(|i| {
-            let seconds = (i as i64 + i64::from(late)) * found.step_us / SECOND;
+            let seconds = (whole(i) + i64::from(late)) * found.step_us / SECOND;
             let clock =
                 format!("{:02}:{:02}:{:02}", seconds / 3600, seconds / 60 % 60, seconds % 60).into_bytes();
             (found.first + i, clock)
@@ -235,7 +240,7 @@ fn bare(dialect: &Dialect) -> Option<Sequence> {
         first: date + 1,
         count,
         start_us: 0,
-        step_us: DAY / count as i64,
+        step_us: DAY / whole(count),
         counted: true,
     })
 }
@@ -255,7 +260,7 @@ mod tests {
             (build(&|i| clock(minute(i, 15)), 96), 900, false),
             (build(&|i| clock(minute(i + 1, 15)), 96), 900, false),
             (build(&|i| clock(minute(i + 1, 30) % 1440), 48), 1800, false),
-            (build(&|i| format!("{}:00", i), 24), 3600, false),
+            (build(&|i| format!("{i}:00"), 24), 3600, false),
             (build(&|i| format!("{:02}{:02}", i / 4, i % 4 * 15), 96), 900, false),
             (build(&|i| format!("{} - {}", clock(i * 15), clock(i * 15 + 15)), 96), 900, false),
             (build(&|i| format!("kWh {}", clock(i * 30)), 48), 1800, false),

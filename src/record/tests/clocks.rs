@@ -47,8 +47,8 @@ fn a_typical_year_is_laid_on_the_meters() {
     // The meter's year has a 29 February, the typical one has none and no year.
     let days = |year: i64, count: usize| {
         (0..count * 24).map(move |i| {
-            let first = crate::record::stamp::days(year, 1, 1).unwrap();
-            let (y, m, d) = crate::record::stamp::date_of(first + (i / 24) as i64);
+            let first = stamp::days(year, 1, 1).unwrap();
+            let (y, m, d) = stamp::date_of(first + i64::try_from(i / 24).unwrap());
             (format!("{y}-{m:02}-{d:02} {:02}:00", i % 24), i)
         })
     };

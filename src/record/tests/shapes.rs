@@ -14,8 +14,9 @@ fn quarter(i: usize) -> String {
 
 #[test]
 fn a_row_per_day_is_dealt_out_as_its_times_of_day() {
+    type Label = fn(usize) -> String;
     let values = drawn(3);
-    let labels: [(&str, fn(usize) -> String); 6] = [
+    let labels: [(&str, Label); 6] = [
         ("starts", quarter),
         ("ends", |i| quarter(i + 1)),
         ("ends at midnight", |i| quarter((i + 1) % 96)),

@@ -10,11 +10,13 @@ use super::super::super::{Role, settle::Sums};
 use super::super::{File, Reader};
 use crate::case::DateOrder;
 
+/// A running reading: header, unit and what it is added to.
+type Reading = (String, Option<Unit>, Vec<(Target, f64)>);
+
 /// Files with the same sums that follow each other in time, and so share series.
 struct Lane {
     targets: Vec<Target>,
-    /// Running readings: header, unit and what they are added to.
-    readings: Vec<(String, Option<Unit>, Vec<(Target, f64)>)>,
+    readings: Vec<Reading>,
     spread: bool,
     series: Vec<usize>,
     covers: Vec<usize>,

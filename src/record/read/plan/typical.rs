@@ -1,9 +1,8 @@
 //! Series of a typical year: without a year, put together from months of several years, or of another year than the rest.
 
-use super::super::super::stamp::{DAY, date_of, days};
+use super::super::super::stamp::{DAY, NO_YEAR, date_of, days};
 use super::super::super::{Finding, FindingKind, Role};
 use super::super::{File, Reader};
-use crate::fault::Result;
 
 /// Most years that a typical year is laid on.
 const MOST_YEARS: i64 = 200;
@@ -54,7 +53,7 @@ impl File {
 impl Reader {
     /// Finds the files of a typical year and the years that they are laid on. Returns the record's span where only such
     /// files are there.
-    pub(super) fn typical_years(&mut self) -> Result<Option<(i64, i64)>> {
+    pub(super) fn typical_years(&mut self) -> Option<(i64, i64)> {
         let mut found: Vec<Option<Why>> = self
             .files
             .iter()
@@ -88,7 +87,7 @@ impl Reader {
             }
         }
         if found.iter().all(Option::is_none) {
-            return Ok(None);
+            return None;
         }
         let anchors = self
             .files
@@ -99,25 +98,19 @@ impl Reader {
         let anchored = anchors.reduce(|a, b| (a.0.min(b.0), a.1.max(b.1)));
         let year_of = |instant: i64| date_of(instant.div_euclid(DAY)).0;
         let mut whole = None;
-        let years: Vec<i64> = match anchored {
+        let years: Vec<i64> = if let Some((least, most)) = anchored {
             // A day to either side, for the zones.
-            Some((least, most)) => {
-                let first = year_of(least - DAY);
-                (first..=year_of(most + DAY).min(first + MOST_YEARS)).collect()
-            }
-            None => {
-                let first =
-                    self.files.iter().filter_map(|file| file.scanned.as_ref()?.stats.ends).map(|ends| ends.0);
-                let year = first.map(year_of).next().unwrap_or(2001);
-                let bound = |year: i64| days(year, 1, 1).map(|day| day * DAY);
-                if found.iter().all(|why| matches!(why, Some(Why::Yearless))) {
-                    // One common year that no file names: the stamps stand as they are.
-                    Vec::new()
-                } else {
-                    whole = bound(year).zip(bound(year + 1));
-                    vec![year]
-                }
-            }
+            let first = year_of(least - DAY);
+            (first..=year_of(most + DAY).min(first + MOST_YEARS)).collect()
+        } else if found.iter().all(|why| matches!(why, Some(Why::Yearless))) {
+            // One common year that no file names: the stamps stand as they are.
+            Vec::new()
+        } else {
+            let mut starts = self.files.iter().filter_map(|file| Some(file.scanned.as_ref()?.stats.ends?.0));
+            let year = starts.next().map_or(NO_YEAR, year_of);
+            let bound = |year: i64| days(year, 1, 1).map(|day| day * DAY);
+            whole = bound(year).zip(bound(year + 1));
+            vec![year]
         };
         for (file, why) in self.files.iter_mut().zip(&found) {
             let Some(why) = why else { continue };
@@ -153,6 +146,6 @@ impl Reader {
                 changes_figures: anchored.is_some(),
             });
         }
-        Ok(whole)
+        whole
     }
 }
