@@ -12,6 +12,7 @@ use crate::job::{Job, finish};
 mod clocks;
 mod dialects;
 mod shapes;
+mod written;
 
 fn read_with(files: &[(&str, &[u8])], terms: &RecordCase, named: &[&str]) -> Result<Record> {
     let sources =

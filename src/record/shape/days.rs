@@ -220,11 +220,12 @@ pub(in crate::record) fn days(dialect: &Dialect, starts: bool, ends: bool) -> Op
             (found.first + i, clock)
         })
         .collect();
+    let named = |column: usize| crate::fault::quote(headers.get(column).copied().unwrap_or_default());
     let words = format!(
         "one row per day with {} columns from {} to {}{}",
         found.count,
-        crate::fault::quote(headers[found.first]),
-        crate::fault::quote(headers[found.first + found.count - 1]),
+        named(found.first),
+        named(found.first + found.count - 1),
         if late { "" } else { "; the first is the interval from 00:00" }
     );
     Some(Days { date, slots, step_us: found.step_us, words, elapsed })
