@@ -10,6 +10,11 @@ use super::words;
 use crate::case::DateOrder;
 use crate::fault::{Fault, Result, quote};
 
+mod parts;
+
+pub(super) use parts::Parts;
+use parts::parts;
+
 /// Where the moment of a row stands.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub(super) enum Timing {
@@ -31,24 +36,6 @@ pub(super) enum Timing {
     Counter { column: usize, unit_us: i64, unit_known: bool },
     /// No column at all: rows follow each other at a step that the person stated, in microseconds.
     Rows(i64),
-}
-
-/// Columns of the parts of a stamp.
-#[derive(Debug, Clone, Copy, PartialEq, Eq)]
-pub(super) struct Parts {
-    year: Option<usize>,
-    month: usize,
-    day: usize,
-    hour: Option<usize>,
-    minute: Option<usize>,
-    /// Number of the day's first hour.
-    first: i64,
-}
-
-impl Parts {
-    fn columns(self) -> impl Iterator<Item = usize> {
-        [self.year, Some(self.month), Some(self.day), self.hour, self.minute].into_iter().flatten()
-    }
 }
 
 /// A row's moment as it is written.
@@ -409,31 +396,6 @@ pub(super) fn choose(
         format!("{name}, row {row}"),
         "State which column holds the stamps (role time) or, if rows follow each other at a regular step, that step in seconds (record.step_s).",
     ))
-}
-
-/// Columns headed year, month, day and hour, whose numbers can be that.
-fn parts(dialect: &Dialect, profiles: &[Profile], free: &dyn Fn(&usize) -> bool) -> Option<Parts> {
-    let find = |names: &[&str], least: f64, most: f64| {
-        (0..profiles.len()).find(|column| {
-            let header = dialect.headers[*column].to_lowercase();
-            let mut words = header.split(|c: char| !c.is_alphanumeric()).filter(|word| !word.is_empty());
-            let profile = &profiles[*column];
-            free(column)
-                && words.any(|word| names.contains(&word))
-                && profile.mostly(profile.values.len())
-                && profile.values.iter().all(|value| (least..=most).contains(value))
-        })
-    };
-    let month = find(&["month", "mo", "monat", "mois", "mes", "maand", "mm"], 1.0, 12.0)?;
-    let day = find(&["day", "dy", "tag", "jour", "dia", "día", "dag", "dd"], 1.0, 31.0)?;
-    let year = find(&["year", "yr", "jahr", "année", "annee", "año", "jaar", "yyyy"], 0.0, 9999.0);
-    let hour = find(&["hour", "hr", "stunde", "heure", "hora", "uur", "hh", "h"], 0.0, 24.0);
-    let minute = find(&["minute", "min", "minuto", "mi"], 0.0, 60.0);
-    let first = hour.map_or(0, |hour| {
-        let values = &profiles[hour].values;
-        i64::from(values.contains(&24.0) && !values.contains(&0.0))
-    });
-    Some(Parts { year, month, day, hour, minute, first })
 }
 
 fn date_and(date: usize, clock: usize, profiles: &[Profile]) -> Timing {
