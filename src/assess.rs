@@ -5,9 +5,10 @@ use std::rc::Rc;
 use crate::case::{Case, Store};
 use crate::duty::{self, Duty, Kind};
 use crate::fault::{Fault, Result};
+use crate::job::finish;
 use crate::record::Record;
 use crate::requirement::{self, Requirement};
-use crate::result::{self, PlaneResult, SimulationResult, SiteResult};
+use crate::result::{self, PlaneResult, SimulationResult, SiteResult, Sizing};
 use crate::simulation;
 use crate::technology::{self, Catalogue, Need, Screening};
 
@@ -24,6 +25,8 @@ pub struct Assessment {
     pub screening: Screening,
     /// The case's stores, run on the duty.
     pub simulations: Vec<SimulationResult>,
+    /// The catalogue sized for the asked point, if the case asks for it.
+    pub sizings: Vec<Sizing>,
 }
 
 /// Takes a record through all stages.
@@ -36,7 +39,12 @@ pub fn assess(record: &Rc<Record>, case: &Case, catalogue: &Catalogue) -> Result
     let requirement = requirement::derive(&duty, case);
     let (need, screening) = screen(&duty, &requirement, case, &catalogue);
     let simulations = case.stores.iter().enumerate().map(|(i, store)| simulate(&duty, store, i)).collect();
-    Ok(Assessment { duty, requirement, need, screening, simulations })
+    let sizings = if case.sizings {
+        finish(simulation::Sizes::new(&duty, requirement.asked.as_ref(), case, &catalogue))?
+    } else {
+        Vec::new()
+    };
+    Ok(Assessment { duty, requirement, need, screening, simulations, sizings })
 }
 
 /// Judges a catalogue, edited as the case has it, on a requirement.
@@ -82,8 +90,7 @@ pub fn screen(
 
 /// Runs one of the case's stores; a store without a name is called by its place in the list.
 pub fn simulate(duty: &Duty, store: &Store, place: usize) -> SimulationResult {
-    let Store::Fixed(store) = store;
-    let mut result = simulation::run(duty, store, |_| {});
+    let mut result = simulation::run_circuit(duty, store, |_| {});
     if result.store.is_empty() {
         result.store = format!("store {}", place + 1);
     }
@@ -105,6 +112,7 @@ impl Assessment {
             }),
             screening: self.screening.technologies.clone(),
             simulations: self.simulations.clone(),
+            sizings: self.sizings.clone(),
             ..blank(&self.duty.record.site)
         }
     }
@@ -128,5 +136,6 @@ fn blank(site: &str) -> SiteResult {
         plane: None,
         screening: Vec::new(),
         simulations: Vec::new(),
+        sizings: Vec::new(),
     }
 }

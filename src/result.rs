@@ -42,6 +42,8 @@ pub struct SiteResult {
     pub screening: Vec<Screened>,
     /// Stores run on the duty.
     pub simulations: Vec<SimulationResult>,
+    /// The least size of every kind; empty unless the case asks for it.
+    pub sizings: Vec<Sizing>,
 }
 
 /// What the record holds.
@@ -258,20 +260,24 @@ pub struct SimulationResult {
     pub charge_kw: Option<f64>,
     /// Discharge power limit, kW; null = none.
     pub discharge_kw: Option<f64>,
-    /// Usable energy inside, kWh.
-    pub energy_kwh: f64,
+    /// Energy inside between empty and full, kWh; null for a circuit without a greatest state.
+    pub energy_kwh: Option<f64>,
     /// Energy delivered at the terminals, kWh.
     pub served_kwh: f64,
     /// Deficit (or discharge asked) not served, kWh.
     pub unserved_kwh: f64,
+    /// The same by what was missing, kWh.
+    pub unserved_by_cause: Unserved,
     /// Surplus (or charge asked) not taken, kWh.
     pub curtailed_kwh: f64,
     /// 1 - curtailed / supply; null without supply.
     pub self_consumption: Option<f64>,
     /// 1 - unserved / demand; null without demand.
     pub self_sufficiency: Option<f64>,
+    /// Root mean square of what was asked less what was carried of it, over that of what was asked; null if nothing was asked.
+    pub tracking_error: Option<f64>,
     /// Losses by cause, kWh.
-    pub losses_kwh: Losses,
+    pub losses_kwh: LossesByCause,
     /// What the energy account leaves over, kWh; rounding only.
     pub account_residual_kwh: f64,
     /// Energy taken from the store over capacity; null at zero capacity.
@@ -284,9 +290,95 @@ pub struct SimulationResult {
     pub stored_start_kwh: f64,
     /// Stored energy at the end, kWh.
     pub stored_end_kwh: f64,
+    /// State of a circuit at the end: state of charge, V, m3, rad/s, A or m.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub state_end: Option<f64>,
     /// Least import limit that this store can hold, kW (kind `limits`).
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub least_import_limit_kw: Option<f64>,
+}
+
+/// The least size of a kind with which a run meets the asked point; null where no size does.
+#[derive(Debug, Clone, PartialEq, Serialize, Deserialize)]
+pub struct Sizing {
+    /// Identifier in the catalogue.
+    pub technology: String,
+    /// Energy delivered at the connection point from full to empty, at the asked power or the kind's reference power if that is less, kWh.
+    pub delivered_kwh: Option<f64>,
+    /// Usable energy inside, kWh.
+    pub usable_kwh: Option<f64>,
+    /// Usable share of the rated energy.
+    pub depth: f64,
+    /// Rated energy at the start of life, kWh: with what fades until its end, and the margin.
+    pub nameplate_kwh: Option<f64>,
+    /// Power both ways at the terminals, kW.
+    pub power_kw: Option<f64>,
+    /// Installed mass, kg; null also where the published figure is not a plant's mass.
+    pub mass_kg: Option<f64>,
+    /// Installed volume, l; null likewise.
+    pub volume_l: Option<f64>,
+    /// Share served in the run of this size, of what is asked without the store's own standing load.
+    pub served_share: Option<f64>,
+    /// Runs that it took.
+    pub runs: usize,
+    /// Remark; empty = none.
+    pub note: String,
+}
+
+/// Unserved energy by what was missing, kWh.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Serialize, Deserialize)]
+pub struct Unserved {
+    /// Power: a rating, or what the circuit's terminals allowed.
+    pub power: f64,
+    /// Energy: the store was at its end.
+    pub energy: f64,
+}
+
+/// Losses by cause.
+#[derive(Debug, Clone, Copy, PartialEq, Serialize, Deserialize)]
+#[serde(untagged)]
+pub enum LossesByCause {
+    /// Of a store of fixed efficiencies.
+    Fixed(Losses),
+    /// Of a circuit.
+    Circuit(CircuitLosses),
+}
+
+/// Losses of a circuit by cause, kWh; 0 where it has no such part.
+#[derive(Debug, Clone, Copy, Default, PartialEq, Serialize, Deserialize)]
+pub struct CircuitLosses {
+    /// Converter.
+    pub converter: f64,
+    /// Series resistance.
+    pub series: f64,
+    /// Pair of resistance and capacitance.
+    pub pair: f64,
+    /// Leak.
+    pub leak: f64,
+    /// Pipe.
+    pub pipe: f64,
+    /// Turbine and pump.
+    pub machine: f64,
+    /// Viscous drag.
+    pub viscous: f64,
+    /// Coulomb drag.
+    pub coulomb: f64,
+    /// Standing load of the cooling, power x time, outside the account.
+    pub cryogenic: f64,
+}
+
+impl CircuitLosses {
+    /// Those inside the energy account, kWh.
+    pub fn inside_kwh(&self) -> f64 {
+        self.converter
+            + self.series
+            + self.pair
+            + self.leak
+            + self.pipe
+            + self.machine
+            + self.viscous
+            + self.coulomb
+    }
 }
 
 /// Losses of a fixed store by cause, kWh.

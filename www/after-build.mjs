@@ -1,6 +1,6 @@
 // Trunk's last step: finishes the staged site before it becomes dist/.
 //
-// - gives boot.js and the engine names by their content, like the other files, and writes the script element that names them;
+// - gives boot.js, the engine and the reader of workbooks names by their content, like the other files, and writes the script element that names them;
 // - compresses the demo sites and copies their list;
 // - puts the licences of all that is shipped beside it;
 // - tells the service worker which files to keep.
@@ -36,6 +36,8 @@ const wasm = only(/^page-.*_bg\.wasm$/);
 const glue = only(/^page-.*\.js$/);
 const engineWasm = hashed(only(/^engine_bg\.wasm$/));
 const engineGlue = hashed(only(/^engine\.js$/));
+const workbooksWasm = hashed(only(/^workbooks_bg\.wasm$/));
+const workbooksGlue = hashed(only(/^workbooks\.js$/));
 const boot = hashed("boot.js");
 
 // Trunk leaves its own element for the program in the document, and empty lines where the others were.
@@ -44,7 +46,8 @@ const page = readFileSync(join(staging, "index.html"), "utf8")
   .replace(/\n\s*\n+/g, "\n")
   .replace("</head>", `<link rel="preload" href="${wasm}" as="fetch" type="application/wasm" crossorigin>
 <script src="${boot}" data-glue="${glue}" data-wasm="${wasm}"
- data-engine-glue="${engineGlue}" data-engine-wasm="${engineWasm}" defer></script>
+ data-engine-glue="${engineGlue}" data-engine-wasm="${engineWasm}"
+ data-workbooks-glue="${workbooksGlue}" data-workbooks-wasm="${workbooksWasm}" defer></script>
 </head>`);
 if (/<script(?![^>]*\bsrc=)/.test(page)) throw new Error("index.html holds a script inside the document: the policy forbids it");
 writeFileSync(join(staging, "index.html"), page);
@@ -60,7 +63,7 @@ writeFileSync(join(demos, "sites.json"), JSON.stringify(sites.map((site) => ({ .
 const metadata = JSON.parse(
   execFileSync(
     "cargo",
-    ["metadata", "--format-version=1", "--locked", "--no-default-features", "--features=page,engine", "--filter-platform=wasm32-unknown-unknown"],
+    ["metadata", "--format-version=1", "--locked", "--no-default-features", "--features=page,engine,workbooks", "--filter-platform=wasm32-unknown-unknown"],
     { cwd: root, encoding: "utf8", maxBuffer: 1 << 28, stdio: ["ignore", "pipe", "inherit"] },
   ),
 );

@@ -1,14 +1,15 @@
 // Starts the page, and workers with the engine when the page asks for them. The engine's wasm is fetched and compiled once, at the
-// first sign that somebody is about to use it; every worker runs from that one compiled module.
+// first sign that somebody is about to use it; every worker runs from that one compiled module. When the engine meets a workbook it
+// asks for its sheets, and gets them from a third program, whose worker is made for that workbook and ended after it.
 //
 // What the page (src/main.rs, src/bridge) uses, as properties of globalThis.millpond:
 //   spawn()          a new Worker with the engine on its way
 //   notice(text)     shows that something is broken, by plain DOM, since the page's own code may be what broke
 //
-// The build writes the hashed names of the four files into this script's own element (www/after-build.mjs).
+// The build writes the hashed names of the six files into this script's own element (www/after-build.mjs).
 "use strict";
 (() => {
-  const { glue, wasm, engineGlue, engineWasm } = document.currentScript.dataset;
+  const { glue, wasm, engineGlue, engineWasm, workbooksGlue, workbooksWasm } = document.currentScript.dataset;
   globalThis.millpond = { spawn, notice };
 
   // The worker is a classic one made from a Blob, because that also starts in a file opened from disk. Its first message
@@ -65,15 +66,38 @@
     });
   }
 
-  let engine = null;
+  const programs = {};
 
-  /** The engine: the worker's script as an address, and the compiled module. */
-  function fetchEngine() {
-    engine ??= Promise.all([get(engineGlue).then((answer) => answer.text()), compile(engineWasm)])
+  /** A program for workers, fetched once: the worker's script as an address, and the compiled module. */
+  function program(glue, wasm) {
+    programs[wasm] ??= Promise.all([get(glue).then((answer) => answer.text()), compile(wasm)])
       .then(([text, module]) => ({ module, script: URL.createObjectURL(new Blob([text, START], { type: "text/javascript" })) }));
     // A failure is not kept, so that the next try may succeed.
-    engine.catch(() => { engine = null; });
-    return engine;
+    programs[wasm].catch(() => { delete programs[wasm]; });
+    return programs[wasm];
+  }
+
+  const fetchEngine = () => program(engineGlue, engineWasm);
+
+  /** The sheets of a workbook as text tables, or what is wrong and the remedy: an answer to the engine's question of this number. */
+  async function sheets({ id, workbook }) {
+    const remedy = "Choose the file again, or save the sheet with the readings as CSV and choose that file.";
+    let reader;
+    try {
+      reader = started(await program(workbooksGlue, workbooksWasm));
+    } catch (error) {
+      return { id, what: `the reader of workbooks could not be loaded: ${error?.message ?? error}`, remedy };
+    }
+    const answer = await new Promise((done) => {
+      reader.addEventListener("message", (event) => done(event.data));
+      reader.addEventListener("error", (event) => {
+        event.preventDefault();
+        done({ what: `the reader of workbooks stopped: ${event.message ?? "no reason given"}`, remedy });
+      });
+      reader.postMessage({ workbook }, [workbook.buffer]);
+    });
+    reader.terminate();
+    return { id, ...answer };
   }
 
   function started({ module, script }) {
@@ -111,7 +135,10 @@
       worker = spare ?? started(engine);
       spare = null;
       for (const name of ["message", "messageerror"]) {
-        worker.addEventListener(name, (event) => port.dispatchEvent(new MessageEvent(name, { data: event.data })));
+        worker.addEventListener(name, (event) => {
+          if (event.data?.workbook) return sheets(event.data).then((answer) => worker.postMessage(answer));
+          port.dispatchEvent(new MessageEvent(name, { data: event.data }));
+        });
       }
       worker.addEventListener("error", (event) => { event.preventDefault(); port.dispatchEvent(new Event("error")); });
       for (const data of worker.said()) port.dispatchEvent(new MessageEvent("message", { data }));

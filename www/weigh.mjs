@@ -8,6 +8,7 @@ const folder = process.argv[2] ?? "dist";
 const FIRST = /^(index\.html|icon\.svg|boot-.*\.js|page-.*\.js|page-.*_bg\.wasm|.*\.css)$/;
 
 const THEN = /^engine.*\.(js|wasm)$/;
+const AT_NEED = /^workbooks.*\.(js|wasm)$/;
 
 const weigh = (pattern) => readdirSync(folder)
   .filter((name) => pattern.test(name))
@@ -20,6 +21,7 @@ const total = sum(parts);
 const kb = (bytes) => (bytes / 1000).toFixed(1).padStart(7);
 for (const { name, bytes } of parts) console.log(`${kb(bytes)} kB  ${name}`);
 console.log(`${kb(sum(weigh(THEN)))} kB  the engine, fetched at the first sign of use`);
+console.log(`${kb(sum(weigh(AT_NEED)))} kB  the reader of workbooks, fetched when one comes`);
 console.log(`${kb(total)} kB  first download, gzipped (limit ${LIMIT_KB} kB)`);
 if (!parts.some(({ name }) => name.endsWith(".wasm"))) {
   console.error(`\nStopped: ${folder} holds no page.\nRemedy:  run www/build.`);

@@ -21,6 +21,8 @@ mod keeper;
 #[cfg(feature = "page")]
 pub(crate) mod keeping;
 #[cfg(feature = "engine")]
+mod workbook;
+#[cfg(feature = "engine")]
 pub(crate) mod worker;
 
 use js_sys::{Array, Float64Array, Function, Object, Reflect, Uint8Array, global};

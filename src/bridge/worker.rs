@@ -11,12 +11,12 @@ use web_sys::{DedicatedWorkerGlobalScope, File, MessageChannel, MessageEvent, Me
 use millpond::case::{CarriedFile, Case, DutyCase, RecordCase};
 use millpond::fault::{Fault, Result};
 use millpond::job::Job;
-use millpond::record::{self, Record, Source};
+use millpond::record::{self, Record, Source, WorkbookSheet};
 use millpond::sheet::{Lay, View};
 use millpond::technology::Catalogue;
 
 use super::blob::BlobSource;
-use super::{Act, Answer, Progress, Request};
+use super::{Act, Answer, Progress, Request, workbook};
 
 /// How long a slice should take, ms: short enough to hear the next request at once.
 const SLICE_MS: f64 = 16.0;
@@ -43,6 +43,7 @@ pub(crate) fn serve(scope: &DedicatedWorkerGlobalScope) {
         record: None,
         catalogue: None,
         work: None,
+        books: Books::default(),
         budget: BUDGETS.1,
         told_ms: 0.0,
     }));
@@ -82,6 +83,7 @@ struct Worker {
     record: Option<(Rc<Record>, Terms)>,
     catalogue: Option<Rc<Catalogue>>,
     work: Option<Work>,
+    books: Books,
     budget: usize,
     told_ms: f64,
 }
@@ -103,6 +105,18 @@ impl Terms {
     }
 }
 
+/// The workbooks among the files, in the order in which the reading comes to them.
+#[derive(Default)]
+struct Books {
+    /// The sheets of those that were read before: they are kept for the next reading of the same files.
+    read: Vec<Vec<WorkbookSheet>>,
+    /// How many the reading has come to.
+    at: usize,
+    /// The number of the last question, and whether the work waits for its answer.
+    asked: u32,
+    waits: bool,
+}
+
 enum Work {
     Reading(Box<record::Reader>),
     Laying(Box<Lay>),
@@ -110,12 +124,16 @@ enum Work {
 
 impl Worker {
     fn hear(&mut self, data: &JsValue) {
+        if let Some((id, sheets)) = workbook::answer(data) {
+            return self.take_sheets(id, sheets);
+        }
         // The start of the worker (the compiled module) also comes as a message; it has no envelope.
         let Ok(request) = super::open::<Request>(data) else { return };
         match request {
             Request::Open { revision, site, case, view } => {
                 self.files = files_beside(data);
                 self.record = None;
+                self.books.read.clear();
                 (self.site, self.view, self.revision) = (site, view, revision);
                 self.begin_with(&case);
             }
@@ -201,7 +219,10 @@ impl Worker {
         match work {
             Ok(work) => {
                 self.work = Some(work);
-                if was_idle {
+                // While the work waits for a workbook there is no turn on its way.
+                let waited = std::mem::take(&mut self.books.waits);
+                self.books.at = 0;
+                if was_idle || waited {
                     self.go_on();
                 }
             }
@@ -215,7 +236,8 @@ impl Worker {
             .iter()
             .map(|file| BlobSource::new(file.clone()).map(|source| Box::new(source) as Box<dyn Source>))
             .collect::<Result<Vec<_>>>()?;
-        Ok(Work::Reading(Box::new(record::read(&self.site, sources, &terms.case, &terms.named)?)))
+        let reader = record::read(&self.site, sources, &terms.case, &terms.named)?;
+        Ok(Work::Reading(Box::new(reader.without_workbooks())))
     }
 
     fn lay(&mut self, record: Rc<Record>) -> Result<Work> {
@@ -225,6 +247,37 @@ impl Worker {
             None => Rc::clone(self.catalogue.insert(Rc::new(Catalogue::published()?))),
         };
         Ok(Work::Laying(Box::new(Lay::new(record, self.case.clone(), self.view.clone(), catalogue))))
+    }
+
+    /// If the reading has come to a workbook: gives it the sheets, or asks for them; true if it has to wait.
+    fn waits_for_sheets(&mut self) -> bool {
+        let Some(Work::Reading(job)) = &mut self.work else { return false };
+        let Some(bytes) = job.workbook() else { return false };
+        let at = self.books.at;
+        self.books.at += 1;
+        if let Some(sheets) = self.books.read.get(at) {
+            job.give_sheets(Ok(sheets.clone()));
+            return false;
+        }
+        self.books.asked += 1;
+        self.books.waits = true;
+        if let Err(error) = workbook::ask(&self.scope, self.books.asked, &bytes) {
+            self.undelivered(&error);
+        }
+        true
+    }
+
+    fn take_sheets(&mut self, id: u32, sheets: Result<Vec<WorkbookSheet>>) {
+        // An answer to a reading that was left off meanwhile.
+        if id != self.books.asked || !std::mem::take(&mut self.books.waits) {
+            return;
+        }
+        let Some(Work::Reading(job)) = &mut self.work else { return };
+        if let Ok(sheets) = &sheets {
+            self.books.read.push(sheets.clone());
+        }
+        job.give_sheets(sheets);
+        self.go_on();
     }
 
     /// One slice.
@@ -245,6 +298,9 @@ impl Worker {
         self.adapt(ended - started);
         match step {
             Ok(None) => {
+                if self.waits_for_sheets() {
+                    return;
+                }
                 if ended - self.told_ms >= TELL_MS {
                     self.told_ms = ended;
                     let progress = Progress { reading, what: progress.what.to_owned(), done: progress.done };

@@ -1,7 +1,9 @@
 //! Ranges of the case's numbers, each stated once.
 
+mod store;
+
 use super::carried::LARGEST;
-use super::{Case, DutyCase, PriceCase, RangeEdit, Store, VERSION};
+use super::{Case, DutyCase, PriceCase, RangeEdit, VERSION};
 use crate::fault::{Fault, Result, quote};
 use crate::units::people::percent;
 
@@ -132,17 +134,7 @@ pub(super) fn ranges(case: &Case) -> Result<()> {
         ));
     }
     count("stores", case.stores.len())?;
-    for (i, Store::Fixed(store)) in case.stores.iter().enumerate() {
-        let at = |field: &str| format!("stores[{i}].{field}");
-        optional(&at("charge_kw"), store.charge_kw, 0.0, MOST, "kW")?;
-        optional(&at("discharge_kw"), store.discharge_kw, 0.0, MOST, "kW")?;
-        number(&at("energy_kwh"), store.energy_kwh, 0.0, MOST, "kWh")?;
-        number(&at("charge_efficiency"), store.charge_efficiency, 1e-3, 1.0, "")?;
-        number(&at("discharge_efficiency"), store.discharge_efficiency, 1e-3, 1.0, "")?;
-        number(&at("self_discharge_per_h"), store.self_discharge_per_h, 0.0, 1e3, "1/h")?;
-        number(&at("standing_kw"), store.standing_kw, 0.0, MOST, "kW")?;
-        word(&at("name"), &store.name)?;
-    }
+    case.stores.iter().enumerate().try_for_each(|(i, one)| store::check(one, &format!("stores[{i}]")))?;
     edits(&case.catalogue)?;
     prices(&case.prices)?;
     count("files", case.files.len())?;

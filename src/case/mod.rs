@@ -6,6 +6,7 @@
 mod carried;
 pub mod change;
 mod check;
+mod circuit;
 mod duty;
 mod edits;
 mod read;
@@ -18,12 +19,13 @@ use serde::{Deserialize, Serialize};
 
 pub use carried::CarriedFile;
 pub use check::number_at;
+pub use circuit::{Battery, Capacitor, Coil, Converter, CurveStore, Flywheel, Reservoir};
 pub use duty::{DutyCase, Positive};
 pub use edits::{PriceCase, RangeEdit, StorePrice};
 pub use record::{DateOrder, GapRemedy, RecordCase, Remedies, RepeatRemedy, Stamp, Values};
 pub use requirement::{Balance, RequirementCase};
 pub use site::{Connection, SiteCase};
-pub use store::{FixedStore, Start, Store};
+pub use store::{FixedStore, Start, Store, Terminals};
 
 use crate::fault::{Fault, Result};
 
@@ -73,6 +75,9 @@ pub struct Case {
     /// The record's files, where the case carries them.
     #[serde(default, skip_serializing_if = "Vec::is_empty")]
     pub files: Vec<CarriedFile>,
+    /// Whether every kind of the catalogue is sized for the asked point.
+    #[serde(default)]
+    pub sizings: bool,
 }
 
 fn first_seed() -> u32 {
@@ -94,6 +99,7 @@ impl Default for Case {
             prices: PriceCase::default(),
             seed: first_seed(),
             files: Vec::new(),
+            sizings: false,
         }
     }
 }

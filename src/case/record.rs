@@ -28,6 +28,9 @@ pub struct RecordCase {
     /// Factor for the values of a column by its header (or `file/header`), such as the rating for a series per rated kW.
     #[serde(deserialize_with = "super::read::each_once")]
     pub scale: BTreeMap<String, f64>,
+    /// The sheet to read of each workbook, by the workbook's file name, where the guess is wrong.
+    #[serde(deserialize_with = "super::read::each_once")]
+    pub sheets: BTreeMap<String, String>,
     /// Separator of cells, where the guess is wrong.
     pub separator: Option<char>,
     /// Decimal mark, where the guess is wrong.

@@ -7,8 +7,15 @@ use flate2::bufread::MultiGzDecoder;
 use super::Source;
 use crate::fault::{Fault, Result};
 
-/// Most bytes that a gzipped file may hold.
-const MOST_BYTES: u64 = 4 << 30;
+mod sniff;
+
+use sniff::{container, kind_of_text};
+
+/// Most bytes that a packed file may hold.
+pub(super) const MOST_BYTES: u64 = 4 << 30;
+
+/// Most bytes that packed bytes may become, each: readings of nothing but zeros stay below it.
+const MOST_GROWTH: u64 = 500;
 
 /// Longest row in bytes: past it a quote was opened and never closed.
 const LONGEST_ROW: u64 = 4 << 20;
@@ -16,9 +23,25 @@ const LONGEST_ROW: u64 = 4 << 20;
 /// Bytes looked at before the whole file is read.
 pub(super) const HEAD: usize = 256 << 10;
 
+/// What kind of file it is.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Kind {
+    /// Text that may be a table.
+    Text,
+    /// A zip archive, which a newer workbook is too.
+    Zip,
+    /// A container of an older workbook.
+    Compound,
+    /// Usage data in XML (ESPI).
+    Usage,
+    /// Interval data in records (NEM12).
+    Nem12,
+}
+
 /// What a file is, decided on its first bytes.
 #[derive(Debug, Clone, PartialEq, Eq)]
 pub(super) struct Container {
+    pub(super) kind: Kind,
     gzip: bool,
     encoding: Encoding,
     bom: usize,
@@ -59,6 +82,8 @@ pub(super) struct Decoded {
     last: u8,
     carry: Vec<u8>,
     ended: bool,
+    /// Characters left out because nobody sees them.
+    hidden: u64,
 }
 
 enum Feed {
@@ -149,7 +174,10 @@ pub(super) fn look(source: Box<dyn Source>) -> (Box<dyn Source>, Result<Looked>)
         Err(error) => Err(fault(&error, &name, gzip)),
     };
     match found {
-        Ok(container) => {
+        Ok(container) if matches!(container.kind, Kind::Zip | Kind::Compound) => {
+            (source, Ok((container, Vec::new())))
+        }
+        Ok(mut container) => {
             let mut decoded = Decoded::open(source, &container);
             let mut text = vec![0; room];
             let read = decoded.read_full(&mut text);
@@ -159,8 +187,11 @@ pub(super) fn look(source: Box<dyn Source>) -> (Box<dyn Source>, Result<Looked>)
                 text.truncate(count);
                 text
             });
-            let text = text.map_err(|error| fault(&error, &name, gzip));
-            (source, text.map(|text| (container, text)))
+            let looked = text.map_err(|error| fault(&error, &name, gzip)).and_then(|text| {
+                container.kind = kind_of_text(&name, &text)?;
+                Ok((container, text))
+            });
+            (source, looked)
         }
         Err(fault) => (source, Err(fault)),
     }
@@ -177,122 +208,27 @@ fn fill(feed: &mut Feed, buffer: &mut [u8]) -> io::Result<usize> {
     Ok(count)
 }
 
-fn container(name: &str, gzip: bool, head: &[u8]) -> Result<Container> {
-    if head.is_empty() {
-        return Err(Fault::new(
-            "the compressed file holds nothing",
-            name,
-            "Choose the file that holds the readings.",
-        ));
-    }
-    let refuse = |what: &str, remedy: &str| {
-        Err(Fault::new(format!("the file is {what}, not a text table"), name, remedy))
-    };
-    let sheet = "Export the sheet as CSV and choose that file.";
-    let table =
-        "Choose a text table (CSV): one row per reading, columns separated by comma, semicolon or tab.";
-    let starts = |magic: &[u8]| head.starts_with(magic);
-    if starts(b"PK\x03\x04") || starts(b"PK\x05\x06") {
-        let holds = |part: &[u8]| head.windows(part.len()).take(1 << 14).any(|window| window == part);
-        return if holds(b"xl/") || holds(b"[Content_Types].xml") {
-            refuse("an Excel workbook (.xlsx)", sheet)
-        } else if holds(b"opendocument.spreadsheet") {
-            refuse("an OpenDocument spreadsheet (.ods)", sheet)
-        } else {
-            refuse("a zip archive", "Unpack the archive and choose the text table (CSV) inside.")
-        };
-    }
-    for (magic, what, remedy) in [
-        (&b"\xd0\xcf\x11\xe0"[..], "an old Excel workbook (.xls)", sheet),
-        (
-            b"%PDF",
-            "a PDF document",
-            "Ask for the readings as a text table (CSV); a PDF is a picture of them.",
-        ),
-        (b"\x89PNG", "a PNG picture", table),
-        (b"\xff\xd8\xff", "a JPEG picture", table),
-        (b"GIF8", "a GIF picture", table),
-        (b"{\\rtf", "a rich text document", table),
-        (b"7z\xbc\xaf", "a 7z archive", "Unpack the archive and choose the text table (CSV) inside."),
-        (b"Rar!", "a RAR archive", "Unpack the archive and choose the text table (CSV) inside."),
-        (
-            b"\x28\xb5\x2f\xfd",
-            "compressed with zstd",
-            "Unpack the file and choose the text table (CSV) inside.",
-        ),
-        (b"BZh", "compressed with bzip2", "Unpack the file and choose the text table (CSV) inside."),
-        (b"\xfd7zXZ", "compressed with xz", "Unpack the file and choose the text table (CSV) inside."),
-        (b"PAR1", "a Parquet file", "Export the table as CSV and choose that file."),
-        (b"SQLite format 3", "a SQLite database", "Export the table as CSV and choose that file."),
-        (b"\x1f\x8b", "gzipped twice", "Unpack the file once and choose the result."),
-    ] {
-        if starts(magic) {
-            return refuse(what, remedy);
-        }
-    }
-    let (encoding, bom, mut words) = if starts(b"\xef\xbb\xbf") {
-        (Encoding::Bytes, 3, "UTF-8 with byte order mark")
-    } else if starts(b"\xff\xfe") {
-        (Encoding::Utf16 { big: false }, 2, "UTF-16 (little-endian)")
-    } else if starts(b"\xfe\xff") {
-        (Encoding::Utf16 { big: true }, 2, "UTF-16 (big-endian)")
-    } else if let Some(big) = bare_utf16(head) {
-        (Encoding::Utf16 { big }, 0, "UTF-16 without byte order mark")
-    } else {
-        (Encoding::Bytes, 0, "UTF-8")
-    };
-    if encoding == Encoding::Bytes {
-        if head.contains(&0) {
-            return refuse("binary (it holds bytes that no text has)", table);
-        }
-        let strange = head
-            .iter()
-            .filter(|byte| **byte < 32 && !matches!(**byte, b'\t' | b'\n' | b'\r' | 12 | 26))
-            .count();
-        if strange * 50 > head.len() {
-            return refuse("binary (it holds bytes that no text has)", table);
-        }
-        let trimmed = head.trim_ascii_start();
-        let begins = trimmed.get(..trimmed.len().min(9)).unwrap_or(&[]).to_ascii_lowercase();
-        if begins.starts_with(b"<!doctype") || begins.starts_with(b"<html") || begins.starts_with(b"<?xml") {
-            return refuse(
-                "a page or XML document",
-                "Export the readings as a text table (CSV) and choose that file.",
-            );
-        }
-        if trimmed.starts_with(b"{") || trimmed.starts_with(b"[{") || trimmed.starts_with(b"[[") {
-            return refuse("JSON", "Export the readings as a text table (CSV) and choose that file.");
-        }
-        // The head may end within a character: only an error before its last bytes counts.
-        if let Err(error) = std::str::from_utf8(head)
-            && (error.error_len().is_some() || error.valid_up_to() + 4 < head.len())
-        {
-            words = "Windows-1252 (the bytes are not UTF-8)";
-        }
-    }
-    let plain = |byte: u8| head.contains(&byte);
-    let carriage_returns = match (plain(b'\r'), plain(b'\n')) {
-        (false, _) => Returns::None,
-        (true, true) => Returns::BeforeLineFeed,
-        (true, false) => Returns::Alone,
-    };
-    let words = if gzip { format!("{words}, gzip") } else { words.to_owned() };
-    Ok(Container { gzip, encoding, bom, carriage_returns, words })
+/// Whether the text goes on with a character that is not seen: U+200B to U+200F, U+202A to U+202E, U+2060 to U+2069, U+FEFF.
+fn hidden(bytes: &[u8]) -> bool {
+    matches!(
+        bytes,
+        [0xe2, 0x80, 0x8b..=0x8f | 0xaa..=0xae, ..] | [0xe2, 0x81, 0xa0..=0xa9, ..] | [0xef, 0xbb, 0xbf, ..]
+    )
 }
 
-/// Whether nearly every second byte is zero, as in ASCII text written as UTF-16; true for big-endian.
-fn bare_utf16(head: &[u8]) -> Option<bool> {
-    let pairs = head.len() / 2;
-    let zero = |at: usize| head.iter().skip(at).step_by(2).filter(|byte| **byte == 0).count();
-    let (even, odd) = (zero(0), zero(1));
-    (pairs > 4).then_some(())?;
-    if odd * 10 > pairs * 8 && even * 20 < pairs {
-        Some(false)
-    } else if even * 10 > pairs * 8 && odd * 20 < pairs {
-        Some(true)
-    } else {
-        None
-    }
+/// Whether `unpacked` bytes out of `packed` ones are more than any meter file would be.
+pub(super) fn grows_without_end(unpacked: u64, packed: u64) -> bool {
+    unpacked > 1 << 20 && unpacked / MOST_GROWTH > packed + (1 << 16)
+}
+
+/// The fault of a packed file that [`grows_without_end`].
+#[cold]
+pub(super) fn endless(name: &str) -> Fault {
+    Fault::new(
+        format!("the compressed file unpacks to more than {MOST_GROWTH} times its size; no meter file does"),
+        name,
+        "Choose the file that holds the readings.",
+    )
 }
 
 impl Decoded {
@@ -312,12 +248,23 @@ impl Decoded {
             last: b'\n',
             carry: Vec::new(),
             ended: false,
+            hidden: 0,
         }
     }
 
     /// The source again.
     pub(super) fn into_source(self) -> Box<dyn Source> {
         self.feed.into_source()
+    }
+
+    /// The file's name.
+    pub(super) fn name(&self) -> &str {
+        &self.name
+    }
+
+    /// How many characters were left out so far because nobody sees them.
+    pub(super) fn hidden(&self) -> u64 {
+        self.hidden
     }
 
     /// Says that a row was completed: the next may be as long again.
@@ -355,16 +302,16 @@ impl Decoded {
                 "Cut the file into shorter spans.",
             )));
         }
-        if self.total > 1 << 20 && self.total / 500 > self.feed.offset() + (1 << 16) {
-            return Err(io::Error::other(Fault::new(
-                "the compressed file unpacks to more than five hundred times its size; no meter file does",
-                self.name.clone(),
-                "Choose the file that holds the readings.",
-            )));
+        if grows_without_end(self.total, self.feed.offset()) {
+            return Err(io::Error::other(endless(&self.name)));
         }
         if count == 0 {
             self.ended = true;
             self.raw.clear();
+            if self.container.encoding == Encoding::Bytes {
+                self.raw.append(&mut self.carry);
+            }
+            self.last = self.raw.last().copied().unwrap_or(self.last);
             if self.last != b'\n' {
                 self.raw.push(b'\n');
                 self.last = b'\n';
@@ -379,6 +326,7 @@ impl Decoded {
         if let Encoding::Utf16 { big } = self.container.encoding {
             self.convert_utf16(big);
         }
+        self.leave_out_hidden();
         match self.container.carriage_returns {
             Returns::None => {}
             // A return without a line feed after it is left to the row splitter, which takes it as a row's end too.
@@ -395,6 +343,45 @@ impl Decoded {
             self.last = *last;
         }
         Ok(())
+    }
+
+    /// Leaves out what stands between the characters and is not seen: zero-width spaces, marks of direction, byte order marks.
+    fn leave_out_hidden(&mut self) {
+        if self.container.encoding == Encoding::Bytes && !self.carry.is_empty() {
+            self.carry.append(&mut self.raw);
+            std::mem::swap(&mut self.carry, &mut self.raw);
+        }
+        if !self.raw.iter().any(|byte| matches!(byte, 0xc2 | 0xe2 | 0xef)) {
+            return;
+        }
+        let (mut from, mut to) = (0, 0);
+        while from < self.raw.len() {
+            let rest = &self.raw[from..];
+            if hidden(rest) {
+                self.hidden += 1;
+                from += 3;
+                continue;
+            }
+            // A space that does not break is a space, in a stamp as between them.
+            if rest.starts_with(&[0xc2, 0xa0]) {
+                self.raw[to] = b' ';
+                (from, to) = (from + 2, to + 1);
+                continue;
+            }
+            // A character that is cut off waits for the next bytes.
+            let whole = match rest[0] {
+                0xc2 => 2,
+                0xe2 | 0xef => 3,
+                _ => 1,
+            };
+            if rest.len() < whole && self.container.encoding == Encoding::Bytes {
+                self.carry.extend_from_slice(rest);
+                break;
+            }
+            self.raw[to] = self.raw[from];
+            (from, to) = (from + 1, to + 1);
+        }
+        self.raw.truncate(to);
     }
 
     fn convert_utf16(&mut self, big: bool) {

@@ -3,6 +3,7 @@
 use csv::ByteRecord;
 
 use super::decode::{HEAD, text};
+use super::made;
 use super::number::{self, Cell, Evidence, Marks};
 use super::rows::Rows;
 use super::shape;
@@ -231,6 +232,16 @@ fn joined_from_above(rows: &[(u64, ByteRecord)], row: usize, headers: &mut [Stri
         }
         if !name.is_empty() {
             format!("{name} {header}").trim().clone_into(header);
+        }
+    }
+}
+
+impl Dialect {
+    /// Numbers the rows as those of the file that the table was made from; all of them are rows of values.
+    pub(super) fn renumber(&mut self, runs: &[(u64, u64)]) {
+        (self.header_row, self.unit_row, self.first_row) = (None, None, 1);
+        for (row, _) in &mut self.rows {
+            *row = made::row_in_file(runs, *row);
         }
     }
 }

@@ -3,11 +3,14 @@
 //! [`read`] is the stage's door. Nothing is repaired in silence: whatever does not fit is left out and listed as a
 //! [`Finding`] with its rows and the remedy chosen.
 
+mod archive;
 mod clock;
 mod decode;
 mod dialect;
 mod fill;
 mod grid;
+mod made;
+mod nem12;
 mod number;
 mod quality;
 mod read;
@@ -17,21 +20,28 @@ mod scan;
 mod series;
 mod settle;
 mod shape;
+mod sheets;
 mod source;
 mod stamp;
 #[cfg(test)]
 mod tests;
 mod timing;
 mod unit;
+mod usage_xml;
 mod words;
+#[cfg(feature = "sheets")]
+mod workbook;
 mod zone;
 
 pub use clock::{Civil, Clock, Zone};
 pub use read::{Reader, read};
 pub use series::Series;
+pub use sheets::WorkbookSheet;
 #[cfg(not(target_arch = "wasm32"))]
 pub use source::Disk;
 pub use source::{Memory, Source, site_name, site_of};
+#[cfg(feature = "sheets")]
+pub use workbook::workbook_sheets;
 
 use serde::{Deserialize, Serialize};
 
@@ -160,6 +170,9 @@ pub struct FileReading {
     pub name: String,
     /// Encoding and container in words ("UTF-8 with byte order mark, gzip").
     pub container: String,
+    /// The sheets of a workbook by name, the one that was read first; empty for other files.
+    #[serde(default)]
+    pub sheets: Vec<String>,
     /// Cell separator: one of `,` `;` tab `|`.
     pub separator: char,
     /// Decimal mark: point or comma.

@@ -6,6 +6,7 @@ use super::decode::{self, Container, Decoded};
 use super::dialect::Dialect;
 use super::fill::{FilePlan, Fill, Table};
 use super::grid::{self, Grid};
+use super::made::Made;
 use super::roles::Column;
 use super::rows::Rows;
 use super::scan::{Scan, Scanned};
@@ -20,8 +21,10 @@ use crate::job::{Job, Progress};
 
 mod look;
 mod plan;
+mod table;
 
-use look::Surveyed;
+use look::Look;
+use table::Surveyed;
 
 /// Reads the files of one site into a record.
 ///
@@ -66,8 +69,9 @@ pub fn read(
     };
     Ok(Reader {
         site: site.to_owned(),
-        total: sources.iter().map(|source| source.len()).sum::<u64>().max(1),
-        sources: sources.into_iter().map(Some).collect(),
+        total: 1,
+        sources: Vec::new(),
+        look: Look::new(sources),
         terms: terms.clone(),
         named: named.to_vec(),
         zone,
@@ -86,6 +90,9 @@ pub fn read(
 /// A record being read; see [`read`].
 pub struct Reader {
     site: String,
+    /// What is still to be looked at.
+    look: Look,
+    /// The tables found.
     sources: Vec<Option<Box<dyn Source>>>,
     terms: RecordCase,
     named: Vec<String>,
@@ -119,6 +126,7 @@ struct File {
     /// The source that it is in.
     source: usize,
     container: Container,
+    made: Made,
     dialect: Dialect,
     shape: Shape,
     timing: Timing,
@@ -144,15 +152,19 @@ enum Stage {
 }
 
 impl Reader {
-    /// The sources again, for another reading. One that was lost to a fault of the system is left out.
+    /// The sources again, for another reading: of an archive, a workbook or a file of records the tables found in it. One that
+    /// was lost to a fault of the system is left out.
     pub fn into_sources(mut self) -> Vec<Box<dyn Source>> {
         let at = self.at;
         match std::mem::replace(&mut self.stage, Stage::Done) {
-            Stage::Survey(surveyed) => self.sources[at] = Some(surveyed.rows.into_text().into_source()),
+            Stage::Survey(surveyed) => {
+                let at = surveyed.source;
+                self.sources[at] = Some(surveyed.rows.into_text().into_source());
+            }
             Stage::Scan(rows, _) | Stage::Fill(Some((rows, _))) => self.give_back(at, rows),
             _ => {}
         }
-        self.sources.into_iter().flatten().collect()
+        self.sources.into_iter().flatten().chain(self.look.into_sources()).collect()
     }
 
     /// Gives back the source of file `at`.
@@ -167,22 +179,19 @@ impl Reader {
         let source = file.and_then(|file| self.sources.get_mut(file.source)).and_then(Option::take);
         match (source, file) {
             (Some(source), Some(file)) => {
-                let rows = Rows::new(Decoded::open(source, &file.container), file.dialect.separator);
+                let text = Decoded::open(source, &file.container);
+                let rows = Rows::new(text, file.dialect.separator).numbered(file.made.runs.clone());
                 Ok(Shaped::new(rows, file.shape.clone(), file.dialect.first_row))
             }
             _ => Err(Fault::new("a file is no longer there", self.site.clone(), "Choose the files again.")),
         }
     }
 
-    /// Goes on to the next source, or to the first pass.
-    fn looked(&mut self) -> Result<()> {
-        self.at += 1;
-        if self.at == self.sources.len() {
-            self.total = (0..self.files.len()).map(|at| self.len(at)).sum::<u64>().max(1);
-            self.at = 0;
-            self.start_scan()?;
-        }
-        Ok(())
+    /// Begins the first pass.
+    fn begin(&mut self) -> Result<()> {
+        self.total = (0..self.files.len()).map(|at| self.len(at)).sum::<u64>().max(1);
+        self.at = 0;
+        self.start_scan()
     }
 
     /// Length in bytes of the source of file `at`.
@@ -312,6 +321,7 @@ impl File {
         FileReading {
             name: self.name.clone(),
             container: self.container.words.clone(),
+            sheets: self.made.sheets.clone(),
             separator: char::from(dialect.separator),
             decimal: char::from(dialect.marks.decimal),
             thousands: dialect.thousands,
@@ -340,10 +350,14 @@ impl Job for Reader {
             let at = self.at;
             match &mut self.stage {
                 Stage::Look => {
+                    let done = self.look()?;
                     left = left.saturating_sub(10_000);
-                    match self.look()? {
-                        Some(surveyed) => self.stage = Stage::Survey(surveyed),
-                        None => self.looked()?,
+                    if let Some(surveyed) = self.look.surveys.pop_front() {
+                        self.open_survey(surveyed)?;
+                    } else if done {
+                        self.begin()?;
+                    } else if self.waits() {
+                        return Ok(None);
                     }
                 }
                 Stage::Survey(surveyed) => {
@@ -364,7 +378,6 @@ impl Job for Reader {
                     if ended && let Stage::Survey(surveyed) = std::mem::replace(&mut self.stage, Stage::Look)
                     {
                         self.surveyed(*surveyed)?;
-                        self.looked()?;
                     }
                 }
                 Stage::Scan(rows, scan) => {
@@ -385,6 +398,7 @@ impl Job for Reader {
                     }
                     if ended && let Stage::Scan(rows, scan) = std::mem::replace(&mut self.stage, Stage::Plan)
                     {
+                        self.hidden(at, rows.text().hidden());
                         self.give_back(at, rows);
                         self.files[at].scanned = Some(scan.finish(self.terms.date_order.is_some()));
                         self.passed += self.len(at);

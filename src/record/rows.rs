@@ -1,9 +1,11 @@
 //! Rows of a text table with the numbers that a person sees in a spreadsheet.
 
 use std::io::{self, Read};
+use std::rc::Rc;
 
 use csv::ByteRecord;
 
+use super::made::{self, Runs};
 use crate::fault::Fault;
 
 /// Most lines in a row: past them a quotation mark stands where it should not.
@@ -14,6 +16,8 @@ pub(super) struct Rows<R> {
     reader: csv::Reader<R>,
     /// Line feeds inside quoted cells so far: a spreadsheet shows such a cell in one row.
     inside: u64,
+    /// Where the rows stand for others: see [`super::made::Made::runs`].
+    runs: Runs,
 }
 
 impl<R: Read> Rows<R> {
@@ -25,7 +29,12 @@ impl<R: Read> Rows<R> {
             .delimiter(separator)
             .buffer_capacity(1 << 16)
             .from_reader(text);
-        Self { reader, inside: 0 }
+        Self { reader, inside: 0, runs: Rc::new([]) }
+    }
+
+    /// The same rows with the numbers of the rows that they were made from.
+    pub(super) fn numbered(self, runs: Runs) -> Self {
+        Self { runs, ..self }
     }
 
     /// Reads the next row that is not blank and returns its number from 1; none at the end.
@@ -47,7 +56,7 @@ impl<R: Read> Rows<R> {
             ))
             .into());
         }
-        Ok(Some(row))
+        Ok(Some(made::row_in_file(&self.runs, row)))
     }
 
     /// The text being read.

@@ -10,8 +10,12 @@ use crate::fault::{Fault, Result};
 use crate::job::{Job, finish};
 
 mod clocks;
+mod containers;
 mod dialects;
+mod encodings;
 mod shapes;
+mod usage;
+mod workbooks;
 mod written;
 
 fn read_with(files: &[(&str, &[u8])], terms: &RecordCase, named: &[&str]) -> Result<Record> {
@@ -307,7 +311,7 @@ fn faults_say_what_where_and_what_to_do() {
     for (bytes, expected) in [
         (&b""[..], "the file is empty"),
         (b"\n\n\n", "the file holds no text"),
-        (b"PK\x03\x04aaaa[Content_Types].xml", "Excel workbook"),
+        (b"PK\x03\x04aaaa[Content_Types].xml", "archive is cut off"),
         (b"\x89PNG\r\n\x1a\n", "PNG picture"),
         (b"%PDF-1.7", "PDF"),
         (b"abc\0def\0\0\0ghi", "binary"),

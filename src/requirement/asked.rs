@@ -76,6 +76,7 @@ pub(super) fn point(duty: &Duty, case: &Case, working: &Working) -> Option<Asked
         self_discharge_per_h: losses.self_discharge_per_h,
         standing_kw: losses.standing_kw,
         start: if terms.balance == Balance::Cyclic { Start::Cyclic } else { Start::Full },
+        ..FixedStore::default()
     };
     let run = simulation::run(duty, &store, |_| {});
     let point = AskedPoint {

@@ -69,6 +69,7 @@ impl Lay {
                 need: None,
                 screening: technology::Screening::default(),
                 simulations: Vec::new(),
+                sizings: Vec::new(),
             });
             self.next = Stage::Screening;
             return Ok(None);

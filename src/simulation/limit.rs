@@ -1,5 +1,6 @@
 //! The least import limit that a given store can hold, with foresight.
 
+use super::Window;
 use crate::case::{FixedStore, Start};
 use crate::duty::{Duty, Limits, Tube};
 use crate::requirement::Losses;
@@ -50,15 +51,22 @@ fn holds(duty: &Duty, limits: &Limits, store: &FixedStore, losses: &Losses) -> b
         });
         Inflow::of(tube, losses, step_h)
     };
+    let window = Window::of(store);
     // Levels are compared with a rounding of the capacity, so that an exact fit holds.
     let slack = 1e-12 * store.energy_kwh;
     let start = match store.start {
-        Start::Full => store.energy_kwh,
-        Start::Half => store.energy_kwh / 2.0,
-        Start::Empty => 0.0,
+        Start::Full => window.greatest,
+        Start::Half => window.bounded(store.energy_kwh / 2.0),
+        Start::Empty => window.least,
         Start::Cyclic => {
-            return least_of(duty.intervals(), leak, true, inflow)
-                .is_some_and(|capacity| capacity <= store.energy_kwh + slack);
+            // Levels above the window's least: self-discharge of what lies below it is a constant drain.
+            let drain = leak.lost * window.least / leak.gain;
+            let above = |i: usize| {
+                let Inflow { most, least } = inflow(i);
+                Inflow { most: most - drain, least: least - drain }
+            };
+            return least_of(duty.intervals(), leak, true, above)
+                .is_some_and(|capacity| capacity <= window.greatest - window.least + slack);
         }
     };
     // The levels that can be reached are an interval; it is empty where the store fails.
@@ -68,13 +76,18 @@ fn holds(duty: &Duty, limits: &Limits, store: &FixedStore, losses: &Losses) -> b
         if most < least {
             return false;
         }
-        low = (leak.keep * low + leak.gain * least).max(0.0);
-        high = (leak.keep * high + leak.gain * most).min(store.energy_kwh);
-        if low > store.energy_kwh + slack || high < -slack {
+        // Self-discharge may carry a level below the window, delivery may not.
+        let floor = |level: f64| window.least.min(leak.keep * level);
+        let forced = leak.keep * high + leak.gain * most;
+        if most < 0.0 && forced < window.least - slack {
             return false;
         }
-        high = high.max(0.0);
-        low = low.min(store.energy_kwh);
+        low = (leak.keep * low + leak.gain * least).max(floor(low));
+        high = forced.max(floor(high)).min(window.greatest);
+        if low > window.greatest + slack {
+            return false;
+        }
+        low = low.min(window.greatest);
     }
     true
 }

@@ -2,17 +2,24 @@
 //!
 //! [`run`] is the stage's door.
 
+mod circuit;
 mod limit;
+mod run_of;
+mod size;
+mod tally;
+mod unit;
 
+pub use circuit::run as run_circuit;
 pub use limit::least_import_limit;
+pub use size::Sizes;
 
 use crate::case::{FixedStore, Start};
 use crate::duty::{Duty, Kind, Limits};
 use crate::numeric::{Leak, Sum};
 use crate::requirement::Losses;
 use crate::requirement::coverage::Settling;
-use crate::requirement::cycles::rainflow;
-use crate::result::{self, SimulationResult};
+use crate::result::{self, LossesByCause, SimulationResult};
+use tally::{Tally, rainflow_cycles, shares};
 
 /// One interval of a run.
 #[derive(Debug, Clone, Copy, PartialEq)]
@@ -52,26 +59,34 @@ pub fn run(duty: &Duty, store: &FixedStore, mut see: impl FnMut(&Step)) -> Simul
     let losses = Losses::of_store(store);
     let step_h = duty.record.step_h();
     let leak = losses.leak(step_h);
+    let window = Window::of(store);
     let start = match store.start {
-        Start::Full => store.energy_kwh,
-        Start::Empty => 0.0,
-        Start::Half => store.energy_kwh / 2.0,
+        Start::Full => window.greatest,
+        Start::Empty => window.least,
+        Start::Half => window.bounded(store.energy_kwh / 2.0),
         Start::Cyclic => settled(duty, store, &losses, leak),
     };
     let mut level = start;
     let mut levels = Vec::with_capacity(duty.intervals() + 1);
     levels.push(level);
-    let mut sums = Account::default();
+    let mut tally = Tally::default();
+    let mut account = Account::default();
     for i in 0..duty.intervals() {
         let before = level;
         let asked = asked(duty, &losses, i);
-        let (charge, discharge) =
-            asked.map_or((0.0, 0.0), |asked| carried(asked, store, &losses, leak, step_h, before));
-        let flow = losses.inflow_kwh(discharge - charge, step_h);
-        level = bounded(leak.keep * before + leak.gain * flow, store.energy_kwh);
-        levels.push(level);
         let asked_now = asked.unwrap_or_default();
-        sums.add(&asked_now, charge, discharge, flow, before, level, leak, &losses, step_h, asked.is_some());
+        let wanted = within(asked_now, store.charge_kw, store.discharge_kw);
+        let (charge, discharge) = window.carried(wanted, &losses, leak, step_h, before);
+        let flow = losses.inflow_kwh(discharge - charge, step_h);
+        level = window.after(leak.keep * before + leak.gain * flow, before);
+        levels.push(level);
+        account.measured += usize::from(asked.is_some());
+        account.charged.add(charge);
+        account.discharged.add(discharge);
+        account.leaked.add(before * leak.lost + flow * leak.inflow_lost);
+        // Power that the rating allows and the energy does not.
+        let short_of_energy = wanted.1.min(asked_now.discharge) - discharge;
+        tally.add(&asked_now, charge, discharge, short_of_energy, (before, level));
         see(&Step {
             asked_kw: asked_now.charge - asked_now.discharge,
             carried_kw: charge - discharge,
@@ -81,44 +96,41 @@ pub fn run(duty: &Duty, store: &FixedStore, mut see: impl FnMut(&Step)) -> Simul
         });
     }
     let capacity = store.energy_kwh;
-    let taken = sums.taken.value();
-    let cycles: Sum =
-        rainflow(levels.iter().copied(), 1e-12 * capacity).iter().fold(Sum::default(), |mut sum, cycle| {
-            sum.add(cycle.range * cycle.count);
-            sum
-        });
-    let share =
-        |lost: f64, whole: Option<f64>| whole.filter(|whole| *whole > 0.0).map(|whole| 1.0 - lost / whole);
-    let (unserved, curtailed) = (sums.unserved.value() * step_h, sums.curtailed.value() * step_h);
-    let (charged, discharged) = (sums.charged.value() * step_h, sums.discharged.value() * step_h);
+    let (unserved, curtailed) = (tally.unserved_kwh(step_h), tally.curtailed_kwh(step_h));
+    let (self_consumption, self_sufficiency) = shares(duty, unserved, curtailed);
+    let (charged, discharged) = (account.charged.value() * step_h, account.discharged.value() * step_h);
+    let taken = discharged / losses.discharge;
     let lost = result::Losses {
         charging: (1.0 - losses.charge) * charged,
         discharging: (1.0 / losses.discharge - 1.0) * discharged,
-        self_discharge: sums.leaked.value(),
-        standing: losses.standing_kw * sums.measured as f64 * step_h,
+        self_discharge: account.leaked.value(),
+        standing: losses.standing_kw * account.measured as f64 * step_h,
     };
     SimulationResult {
         store: store.name.clone(),
         charge_kw: store.charge_kw,
         discharge_kw: store.discharge_kw,
-        energy_kwh: capacity,
-        served_kwh: sums.served.value() * step_h,
+        energy_kwh: Some(capacity),
+        served_kwh: tally.served_kwh(step_h),
         unserved_kwh: unserved,
+        unserved_by_cause: tally.unserved_by_cause(step_h),
         curtailed_kwh: curtailed,
-        self_consumption: share(curtailed, duty.totals.supply_kwh),
-        self_sufficiency: share(unserved, duty.totals.demand_kwh),
+        self_consumption,
+        self_sufficiency,
+        tracking_error: tally.tracking_error(),
         account_residual_kwh: charged
             - discharged
             - lost.charging
             - lost.discharging
             - lost.self_discharge
             - (level - start),
-        losses_kwh: lost,
+        losses_kwh: LossesByCause::Fixed(lost),
         equivalent_full_cycles: (capacity > 0.0).then(|| taken / capacity),
-        rainflow_cycles: (capacity > 0.0).then(|| cycles.value() / capacity),
-        mean_hold_s: (taken > 0.0).then(|| sums.held.value() * step_h * 3600.0 / taken),
+        rainflow_cycles: rainflow_cycles(&levels, capacity),
+        mean_hold_s: tally.mean_hold_s(step_h, taken),
         stored_start_kwh: start,
         stored_end_kwh: level,
+        state_end: None,
         least_import_limit_kw: match duty.kind {
             Kind::Limits(limits) => least_import_limit(duty, &limits, store),
             _ => None,
@@ -126,49 +138,14 @@ pub fn run(duty: &Duty, store: &FixedStore, mut see: impl FnMut(&Step)) -> Simul
     }
 }
 
-/// Running sums of a run; powers in kW, to be multiplied by the step.
+/// Running sums of the energy account; powers in kW, to be multiplied by the step.
 #[derive(Debug, Default)]
 struct Account {
-    served: Sum,
-    unserved: Sum,
-    curtailed: Sum,
     charged: Sum,
     discharged: Sum,
-    /// Energy taken from the store, kWh.
-    taken: Sum,
     /// Self-discharge, kWh, from the exact integral of the level (so that the account's residual is a real check).
     leaked: Sum,
-    /// Trapezoids of the level, kWh.
-    held: Sum,
     measured: usize,
-}
-
-impl Account {
-    #[allow(clippy::too_many_arguments, reason = "one call, in the loop that has all of these at hand")]
-    fn add(
-        &mut self,
-        asked: &Asked,
-        charge: f64,
-        discharge: f64,
-        flow: f64,
-        before: f64,
-        after: f64,
-        leak: Leak,
-        losses: &Losses,
-        step_h: f64,
-        measured: bool,
-    ) {
-        self.measured += usize::from(measured);
-        let served = discharge.min(asked.discharge);
-        self.served.add(served);
-        self.unserved.add(asked.discharge - served);
-        self.curtailed.add(asked.charge - charge.min(asked.charge));
-        self.charged.add(charge);
-        self.discharged.add(discharge);
-        self.taken.add(discharge * step_h / losses.discharge);
-        self.leaked.add(before * leak.lost + flow * leak.inflow_lost);
-        self.held.add(f64::midpoint(before, after));
-    }
 }
 
 /// What the duty asks in interval `i` after the store's standing load; none in a gap.
@@ -197,47 +174,88 @@ fn asked_by_limits(net_kw: f64, limits: &Limits) -> Asked {
     Asked { discharge, charge, refill: refill.max(0.0), empty }
 }
 
-/// Charge and discharge carried at the terminals, kW.
-fn carried(
-    asked: Asked,
-    store: &FixedStore,
-    losses: &Losses,
-    leak: Leak,
-    step_h: f64,
-    level: f64,
-) -> (f64, f64) {
-    let (charge, discharge) = wanted(asked, store);
-    if discharge > 0.0 {
-        let there = leak.keep * level * losses.discharge / (leak.gain * step_h);
-        return (0.0, discharge.min(there.max(0.0)));
-    }
-    let room = (store.energy_kwh - leak.keep * level) / (leak.gain * losses.charge * step_h);
-    (charge.min(room.max(0.0)), 0.0)
+/// The levels between which a store of fixed efficiencies works, kWh inside.
+#[derive(Debug, Clone, Copy)]
+struct Window {
+    least: f64,
+    greatest: f64,
 }
 
-/// Rounding must not carry the level out of its bounds.
-fn bounded(level: f64, capacity: f64) -> f64 {
-    level.clamp(0.0, capacity)
+impl Window {
+    fn of(store: &FixedStore) -> Self {
+        Self {
+            least: store.least_level * store.energy_kwh,
+            greatest: store.greatest_level * store.energy_kwh,
+        }
+    }
+
+    /// Charge and discharge carried at the terminals of those within the ratings, kW: the level at the interval's end stays inside.
+    fn carried(
+        &self,
+        (charge, discharge): (f64, f64),
+        losses: &Losses,
+        leak: Leak,
+        step_h: f64,
+        level: f64,
+    ) -> (f64, f64) {
+        if discharge > 0.0 {
+            let there = (leak.keep * level - self.least) * losses.discharge / (leak.gain * step_h);
+            return (0.0, discharge.min(there.max(0.0)));
+        }
+        let room = (self.greatest - leak.keep * level) / (leak.gain * losses.charge * step_h);
+        (charge.min(room.max(0.0)), 0.0)
+    }
+
+    /// The level after a step, from a level before it: rounding must not carry it out of its bounds; self-discharge may, but not below
+    /// zero.
+    fn after(&self, level: f64, before: f64) -> f64 {
+        let rounding = 1e-12 * self.greatest;
+        let least = if level < self.least - rounding || before < self.least { 0.0 } else { self.least };
+        level.clamp(least, self.greatest)
+    }
+
+    fn bounded(&self, level: f64) -> f64 {
+        level.clamp(self.least, self.greatest)
+    }
 }
 
 /// The level at which the record, repeated from full, settles.
 fn settled(duty: &Duty, store: &FixedStore, losses: &Losses, leak: Leak) -> f64 {
     let step_h = duty.record.step_h();
-    let mut settling = Settling::new(store.energy_kwh);
+    let window = Window::of(store);
+    let wanted = |i: usize| {
+        asked(duty, losses, i).map_or((0.0, 0.0), |asked| within(asked, store.charge_kw, store.discharge_kw))
+    };
+    if window.least > 0.0 && leak.lost > 0.0 {
+        // Below the window only self-discharge goes on, so that a pass is no clamp of a line: the passes themselves, falling from full.
+        let mut level = window.greatest;
+        for _ in 0..MOST_PASSES {
+            let start = level;
+            for i in 0..duty.intervals() {
+                let (charge, discharge) = window.carried(wanted(i), losses, leak, step_h, level);
+                let flow = losses.inflow_kwh(discharge - charge, step_h);
+                level = window.after(leak.keep * level + leak.gain * flow, level);
+            }
+            if (level - start).abs() <= 1e-13 * window.greatest {
+                break;
+            }
+        }
+        return level;
+    }
+    let mut settling = Settling::new(window.greatest - window.least);
     for i in 0..duty.intervals() {
-        let (charge, discharge) = asked(duty, losses, i).map_or((0.0, 0.0), |asked| wanted(asked, store));
+        let (charge, discharge) = wanted(i);
         settling.step(leak, losses.inflow_kwh(discharge - charge, step_h));
     }
-    settling.level()
+    window.least + settling.level()
 }
 
-/// Charge and discharge within the ratings, whatever the level, kW.
-fn wanted(asked: Asked, store: &FixedStore) -> (f64, f64) {
+/// Passes after which a level that still falls is taken as settled.
+const MOST_PASSES: usize = 60;
+
+/// Charge and discharge within the ratings (kW, none = no limit), whatever the level, kW.
+fn within(asked: Asked, charge_kw: Option<f64>, discharge_kw: Option<f64>) -> (f64, f64) {
     let limit = |power: f64, rating: Option<f64>| rating.map_or(power, |rating| power.min(rating));
-    let discharge = limit(asked.discharge + asked.empty, store.discharge_kw);
-    if discharge > 0.0 {
-        (0.0, discharge)
-    } else {
-        (limit(asked.charge + asked.refill, store.charge_kw), 0.0)
-    }
+    let discharge = limit(asked.discharge + asked.empty, discharge_kw);
+    if discharge > 0.0 { (0.0, discharge) } else { (limit(asked.charge + asked.refill, charge_kw), 0.0) }
 }

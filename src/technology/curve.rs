@@ -99,6 +99,64 @@ impl Meeting {
     }
 }
 
+/// A circuit for 1 kWh of rated energy as a simulation takes it.
+///
+/// For fixed efficiencies the energy decays by itself; otherwise y, the square of the state, runs from 1 at full down to `floor`, and
+/// the energy is half the capacitance times y.
+#[derive(Debug, Clone, Copy, PartialEq)]
+pub struct Lumped {
+    /// Fixed efficiencies alone.
+    pub fixed: bool,
+    /// Usable energy inside, kWh.
+    pub energy_kwh: f64,
+    /// y when empty.
+    pub floor: f64,
+    /// Twice the energy at y = 1, kWh.
+    pub capacitance: f64,
+    /// Conversion loss over the square of the power at y = 1, 1/kW.
+    pub resistance: f64,
+    /// Decay of the energy, per hour.
+    pub decay_per_h: f64,
+    /// Fixed part of the charge efficiency.
+    pub charge: f64,
+    /// Fixed part of the discharge efficiency.
+    pub discharge: f64,
+    /// Greatest power at the outer terminals, kW.
+    pub peak_kw: f64,
+}
+
+impl Lumped {
+    /// Rate of y (1/h) under a power of the element (kW, discharge positive).
+    pub fn rate(&self, y: f64, inner_kw: f64) -> f64 {
+        let spread = (1.0 - 4.0 * self.resistance * inner_kw / y).max(0.0).sqrt();
+        -4.0 * inner_kw / (self.capacitance * (1.0 + spread)) - self.decay_per_h * y
+    }
+
+    /// Energy delivered at the outer terminals from full to empty at a constant power, kWh.
+    pub fn delivered_kwh(&self, power_kw: f64) -> f64 {
+        let inner = power_kw / self.discharge;
+        let hours = if self.fixed {
+            let drawn = self.energy_kwh / inner;
+            if self.decay_per_h == 0.0 {
+                drawn
+            } else {
+                libm::log1p(drawn * self.decay_per_h) / self.decay_per_h
+            }
+        } else {
+            let leak = (self.decay_per_h > 0.0).then(|| 2.0 / (self.decay_per_h * self.capacitance));
+            let element = Element {
+                capacitance: self.capacitance,
+                resistance: self.resistance,
+                leak,
+                full: 1.0,
+                empty: self.floor.sqrt(),
+            };
+            element.discharge_time(inner)
+        };
+        power_kw * hours
+    }
+}
+
 /// The circuit of a design, for 1 kWh of rated energy: at its reference power it delivers exactly that.
 ///
 /// The tables give the energy inside to four digits and without the leak during the reference discharge; here it is
@@ -232,6 +290,24 @@ impl Circuit {
             if lasts(middle) >= hours { below = middle } else { above = middle }
         }
         Meeting::Curve(below)
+    }
+
+    /// The circuit with a usable share (`depth`) from full down, for a simulation.
+    pub fn lumped(&self, depth: f64) -> Lumped {
+        let element = self.element(self.leak_h);
+        let fixed = self.model == Model::Fixed;
+        Lumped {
+            fixed,
+            energy_kwh: self.energy_kwh * depth,
+            floor: 1.0 - depth * (1.0 - self.floor * self.floor),
+            capacitance: element.capacitance,
+            resistance: element.resistance,
+            // The energy decays twice as fast as the state.
+            decay_per_h: self.leak_h.map_or(0.0, |hours| if fixed { 1.0 / hours } else { 2.0 / hours }),
+            charge: self.eta_charge,
+            discharge: self.eta_discharge,
+            peak_kw: self.peak_kw,
+        }
     }
 
     /// The element per rated kWh, state 1 at full: C x^2 / 2 is kWh, a loss of r P at the full state and the reference

@@ -24,13 +24,15 @@ mod rows;
 mod screen;
 mod site;
 mod size;
+mod standing;
 
 pub use catalogue::{
     Catalogue, CircuitData, Indoors, Market, MassBasis, Model, Quantity, Range, Siting, Technology,
 };
-pub use curve::{Circuit, Meeting};
+pub use curve::{Circuit, Lumped, Meeting};
 pub use family::{Design, PLACES, Per};
 pub use hazards::{caution, hazard_words};
 pub use need::{Criterion, Judged, Need, Pair, Screened, Screening};
 pub use plane::{Point, plane, points};
 pub use screen::screen;
+pub use standing::Standing;

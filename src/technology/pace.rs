@@ -1,6 +1,6 @@
 //! Judges of pace and time: ramp, response, take-over, efficiency, holding, cycles and years.
 
-use super::catalogue::{MassBasis, Model, Quantity, Range};
+use super::catalogue::{Model, Quantity, Range};
 use super::judge::{Bench, per_hours};
 use super::need::{Criterion, Judged, Pair};
 use crate::chart::Verdict;
@@ -139,8 +139,7 @@ fn holding(bench: &Bench) -> Option<Judged> {
             }
         }
     };
-    let with_power =
-        data.model == Model::Fixed || bench.technology.siting.mass_basis == MassBasis::Electrolyte;
+    let with_power = bench.technology.stands_with_power();
     let standing = if data.self_discharge_is_standing {
         0.0
     } else {

@@ -4,8 +4,10 @@
 #![allow(clippy::unwrap_used, clippy::expect_used, reason = "a test that cannot go on should say where")]
 
 mod case;
+mod circuits;
 mod properties;
 mod reference;
 mod sheet;
 mod site;
+mod sizing;
 mod terminal;

@@ -247,7 +247,7 @@ fn least_import_limit_of_a_store() {
             start: Start::Cyclic,
             ..FixedStore::default()
         })];
-        let Store::Fixed(store) = &case.stores[0];
+        let Store::Fixed(store) = &case.stores[0] else { unreachable!() };
         let run = simulation::run(&duty(&hourly(), &case), store, |_| {});
         close(run.least_import_limit_kw.unwrap(), number(&expected["G_kw"]), 1e-6);
     }
