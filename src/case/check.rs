@@ -65,12 +65,17 @@ pub(super) fn ranges(case: &Case) -> Result<()> {
     optional_at("record.step_s", record.step_s)?;
     count("record.roles", record.roles.len())?;
     count("record.units", record.units.len())?;
+    count("record.scale", record.scale.len())?;
+    for (header, factor) in &record.scale {
+        number(&format!("record.scale.{}", quote(header)), *factor, -1e9, 1e9, "")?;
+    }
     for (header, unit) in &record.units {
         word(&format!("record.units.{}", quote(header)), unit)?;
     }
     for (field, headers) in [
         ("record.roles", record.roles.keys().collect::<Vec<_>>()),
         ("record.units", record.units.keys().collect()),
+        ("record.scale", record.scale.keys().collect()),
     ] {
         headers.into_iter().try_for_each(|header| word(field, header))?;
     }

@@ -11,8 +11,8 @@ use crate::record::Role;
 #[cfg_attr(feature = "terminal", derive(schemars::JsonSchema))]
 #[serde(deny_unknown_fields, default)]
 pub struct RecordCase {
-    /// Whether a stamp marks the start (the default) or the end of its interval.
-    pub stamp: Stamp,
+    /// Whether a stamp marks the start or the end of its interval; none = the start, unless the files say otherwise.
+    pub stamp: Option<Stamp>,
     /// Whether values are averages of intervals (the default) or instantaneous samples.
     pub reading: Values,
     /// IANA name of the zone of the stamps.
@@ -25,6 +25,9 @@ pub struct RecordCase {
     /// Unit of each column by its header (or `file/header`): W, kW, MW, Wh, kWh, MWh.
     #[serde(deserialize_with = "super::read::each_once")]
     pub units: BTreeMap<String, String>,
+    /// Factor for the values of a column by its header (or `file/header`), such as the rating for a series per rated kW.
+    #[serde(deserialize_with = "super::read::each_once")]
+    pub scale: BTreeMap<String, f64>,
     /// The sheet to read of each workbook, by the workbook's file name, where the guess is wrong.
     #[serde(deserialize_with = "super::read::each_once")]
     pub sheets: BTreeMap<String, String>,

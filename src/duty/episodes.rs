@@ -119,6 +119,14 @@ pub(super) fn integrate(duty: &Duty) -> (Vec<Episode>, DutyResult) {
         }
     }
     close(&mut open);
+    // Between two samples of opposite signs there is surplus and deficit in one interval, beyond its average.
+    if duty.given.is_none() {
+        for (_, power) in &record.hidden_kw {
+            surplus.add(*power);
+            deficit.add(*power);
+            direct.add(0.0 - *power);
+        }
+    }
     let share = |part: Option<f64>, whole: Option<f64>| match (part, whole) {
         (Some(part), Some(whole)) if whole > 0.0 => Some(part / whole),
         _ => None,

@@ -106,5 +106,8 @@ const fn words(kind: FindingKind) -> &'static str {
         FindingKind::Ignored => "Not used",
         FindingKind::TypicalYear => "Typical year",
         FindingKind::Netted => "Netted",
+        FindingKind::Quality => "Quality",
+        FindingKind::Phases => "Phases",
+        FindingKind::Register => "Register",
     }
 }

@@ -214,7 +214,8 @@ const ORDERS: [(&str, &str); 4] = [
     ("day_first", "day first"),
     ("month_first", "month first"),
 ];
-const STAMPS: [(&str, &str); 2] = [("start", "the start"), ("end", "the end")];
+const STAMPS: [(&str, &str); 3] =
+    [("", "as guessed, the start or the end"), ("start", "the start"), ("end", "the end")];
 const READINGS: [(&str, &str); 2] =
     [("intervals", "averages of their intervals"), ("samples", "instantaneous samples")];
 

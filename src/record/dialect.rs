@@ -6,6 +6,7 @@ use super::decode::{HEAD, text};
 use super::made;
 use super::number::{self, Cell, Evidence, Marks};
 use super::rows::Rows;
+use super::shape;
 use super::stamp;
 use super::unit::{self, Stated};
 use crate::case::{DateOrder, RecordCase};
@@ -32,6 +33,10 @@ pub(super) struct Dialect {
     pub(super) units: Vec<Stated>,
     /// Rows of values in the head with their row numbers.
     pub(super) rows: Vec<(u64, ByteRecord)>,
+    /// Columns that name the channel of a row.
+    pub(super) names: Vec<usize>,
+    /// What stands above the headers.
+    pub(super) preamble: String,
 }
 
 /// What a cell looks like before the decimal mark is known.
@@ -44,8 +49,8 @@ pub(super) enum Look {
     Other,
 }
 
-pub(super) const POINT: Marks = Marks { decimal: b'.', thousands: Some(b',') };
-const COMMA: Marks = Marks { decimal: b',', thousands: Some(b'.') };
+pub(super) const POINT: Marks = Marks { decimal: b'.', thousands: Some(b','), mixed: false };
+const COMMA: Marks = Marks { decimal: b',', thousands: Some(b'.'), mixed: false };
 
 /// Reads a stamp by whichever order makes a date of it.
 pub(super) fn any_stamp(cell: &[u8]) -> Option<stamp::Written> {
@@ -126,6 +131,9 @@ pub(super) fn decide(name: &str, head: &[u8], terms: &RecordCase) -> Result<Dial
             .collect(),
         None => Vec::new(),
     };
+    if let Some(row) = header {
+        joined_from_above(&rows, row, &mut headers);
+    }
     let mut width =
         rows[first..].iter().map(|(_, record)| record.len()).max().unwrap_or(0).max(headers.len());
     // A separator at the end of every row makes no column.
@@ -167,15 +175,26 @@ pub(super) fn decide(name: &str, head: &[u8], terms: &RecordCase) -> Result<Dial
             if below == Stated::Nothing { unit::unit_of(&headers[i]) } else { below }
         })
         .collect();
+    // Column by column, since whole numbers in one say nothing of the marks in another.
     let mut evidence = Evidence::default();
+    let mut of_column: Vec<Evidence> = vec![Evidence::default(); width];
     for i in first..rows.len() {
-        for (cell, look) in rows[i].1.iter().zip(&looks[i]) {
+        for ((cell, look), of_column) in rows[i].1.iter().zip(&looks[i]).zip(&mut of_column) {
             if *look == Look::Number {
-                evidence.add(cell);
+                of_column.add(cell);
             }
         }
     }
+    for of_column in &of_column {
+        evidence.join(of_column);
+    }
     let (marks, _) = evidence.decide(terms.decimal);
+    let preamble = rows[..header.unwrap_or(first)]
+        .iter()
+        .take(20)
+        .flat_map(|(_, record)| record.iter().map(text))
+        .collect::<Vec<_>>()
+        .join(" ");
     let numbers = rows.iter().map(|(row, _)| *row).collect::<Vec<_>>();
     let rows =
         rows.into_iter().skip(first).filter(|(_, record)| !blank(record) && !comment(record)).collect();
@@ -189,7 +208,32 @@ pub(super) fn decide(name: &str, head: &[u8], terms: &RecordCase) -> Result<Dial
         headers,
         units,
         rows,
+        names: Vec::new(),
+        preamble,
     })
+}
+
+/// Headers in two rows, the upper one over several columns ("Load" over "kW" and "status"): where the lower row alone names
+/// columns alike, the name above goes before, carried over the empty cells to its right.
+fn joined_from_above(rows: &[(u64, ByteRecord)], row: usize, headers: &mut [String]) {
+    let Some(above) = row.checked_sub(1).map(|above| &rows[above].1) else { return };
+    let names = above.iter().filter(|cell| look(cell) == Look::Other).count();
+    let filled = above.iter().filter(|cell| look(cell) != Look::Empty).count();
+    let alike =
+        |header: &String| !header.is_empty() && headers.iter().filter(|other| *other == header).count() > 1;
+    if names < 2 || names < filled || above.len() + 1 < headers.len() || !headers.iter().any(alike) {
+        return;
+    }
+    let mut name = String::new();
+    for (i, header) in headers.iter_mut().enumerate() {
+        let cell = above.get(i).map(text).unwrap_or_default();
+        if !cell.trim().is_empty() {
+            cell.trim().clone_into(&mut name);
+        }
+        if !name.is_empty() {
+            format!("{name} {header}").trim().clone_into(header);
+        }
+    }
 }
 
 impl Dialect {
@@ -289,6 +333,10 @@ fn fits(row: &[Look], pattern: &[Look]) -> bool {
 /// Rows of the header and of the units above the first row of values.
 fn header(rows: &[(u64, ByteRecord)], first: usize, width: usize) -> (Option<usize>, Option<usize>) {
     let filled = |row: usize| rows[row].1.iter().filter(|cell| !number::trim(cell).is_empty()).count();
+    let day = |row: usize| {
+        let cells: Vec<String> = rows[row].1.iter().map(text).collect();
+        shape::heads(cells.iter().map(String::as_str))
+    };
     let heads = |row: usize| {
         let count = filled(row);
         let numbers =
@@ -296,7 +344,7 @@ fn header(rows: &[(u64, ByteRecord)], first: usize, width: usize) -> (Option<usi
         rows[row].1.len() + 1 >= width
             && count >= 1
             && (count * 2 >= width || width <= 2)
-            && numbers * 2 <= count
+            && (numbers * 2 <= count || day(row))
     };
     let above: Vec<usize> =
         (0..first).rev().filter(|row| !blank(&rows[*row].1) && !comment(&rows[*row].1)).collect();

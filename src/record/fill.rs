@@ -5,8 +5,9 @@ use std::collections::BTreeMap;
 use csv::ByteRecord;
 
 use super::decode::text;
-use super::grid::Grid;
+use super::grid::{Fit, Grid};
 use super::number::{self, Cell, Marks};
+use super::quality::{Mark, Quality};
 use super::roles::key;
 use super::stamp::DAY;
 use super::timing::Timing;
@@ -15,9 +16,13 @@ use super::zone::Resolver;
 use super::{Clock, Series, dialect};
 use crate::case::{DateOrder, RepeatRemedy};
 use crate::fault::Result;
+use crate::numeric::Sum;
 
+mod lay;
+mod spread;
 mod tally;
 
+use spread::Pending;
 use tally::Tally;
 
 /// Powers beyond this (kW) are slips: a thousand times the largest plants.
@@ -72,6 +77,9 @@ pub(super) struct Use {
     pub(super) into: Vec<(usize, f64)>,
     /// Whether negative values are worth a finding.
     pub(super) watched: bool,
+    /// Whether it is one of three phases, and the sum of its values.
+    pub(super) phase: bool,
+    sum: Sum,
     text: Tally,
     outlier: Tally,
     negative: Tally,
@@ -84,9 +92,21 @@ impl Use {
         unit: Option<Unit>,
         into: Vec<(usize, f64)>,
         watched: bool,
+        phase: bool,
     ) -> Self {
         let none = Tally::default;
-        Self { cell, header, unit, into, watched, text: none(), outlier: none(), negative: none() }
+        Self {
+            cell,
+            header,
+            unit,
+            into,
+            watched,
+            phase,
+            sum: Sum::default(),
+            text: none(),
+            outlier: none(),
+            negative: none(),
+        }
     }
 }
 
@@ -106,6 +126,16 @@ pub(super) struct FilePlan {
     pub(super) lane: usize,
     pub(super) repeat: RepeatRemedy,
     pub(super) resolver: Resolver,
+    /// Columns of quality marks.
+    pub(super) quality: Vec<Quality>,
+    /// How the file's intervals lie on the clock.
+    pub(super) fit: Fit,
+    /// Whether rows run from the newest to the oldest.
+    pub(super) falling: bool,
+    /// Series that say how far each step is covered, one for each slot, where the file's intervals are no whole steps.
+    pub(super) covers: Vec<usize>,
+    /// The years that a typical year is laid on, if it is one.
+    pub(super) years: Vec<i64>,
 }
 
 /// The second pass over one file.
@@ -116,6 +146,8 @@ pub(super) struct Fill {
     sums: Vec<Option<f64>>,
     before: Option<i64>,
     at: Option<usize>,
+    /// Rows of values so far.
+    nth: i64,
     /// Rows with a stamp.
     rows: u64,
     stampless: Tally,
@@ -131,6 +163,10 @@ pub(super) struct Fill {
     comments: Tally,
     snapped: Tally,
     snapped_most: i64,
+    marked_missing: Tally,
+    estimated: Tally,
+    leap_days: Tally,
+    pending: Pending,
 }
 
 impl Fill {
@@ -142,6 +178,7 @@ impl Fill {
             record: ByteRecord::new(),
             before: None,
             at: None,
+            nth: 0,
             rows: 0,
             stampless: none(),
             foot: none(),
@@ -155,6 +192,10 @@ impl Fill {
             comments: none(),
             snapped: none(),
             snapped_most: 0,
+            marked_missing: none(),
+            estimated: none(),
+            leap_days: none(),
+            pending: Pending::default(),
         }
     }
 
@@ -168,7 +209,9 @@ impl Fill {
         if row < self.plan.first_row {
             return Ok(());
         }
-        let Some(moment) = self.plan.timing.read(&self.record, self.plan.order, self.plan.marks) else {
+        let nth = self.nth;
+        self.nth += 1;
+        let Some(moment) = self.plan.timing.read(&self.record, self.plan.order, self.plan.marks, nth) else {
             self.without_stamp(row);
             return Ok(());
         };
@@ -180,9 +223,13 @@ impl Fill {
             }
             self.stampless.count += foot.count;
         }
+        self.rows += 1;
+        if !self.plan.years.is_empty() {
+            return self.lay(row, moment, grid, table);
+        }
         let record = &self.record;
-        let shown = || text(record.get(self.plan.timing.column()).unwrap_or(b""));
-        let Some(instant) = self.plan.resolver.instant(moment.us, moment.offset_s) else {
+        let shown = || text(self.plan.timing.cell(record));
+        let Some(instant) = self.plan.resolver.moment(&moment) else {
             self.skipped.add(row, shown);
             return Ok(());
         };
@@ -190,35 +237,43 @@ impl Fill {
             self.disorder.add(row, shown);
         }
         self.before = Some(instant);
-        self.rows += 1;
-        let clock = &grid.clock;
-        let from_start = instant - grid.shift_us - clock.start_us;
-        let at = (from_start + clock.step_us / 2).div_euclid(clock.step_us);
-        let Some(i) = usize::try_from(at).ok().filter(|i| *i < clock.intervals) else {
-            self.outside.add(row, shown);
-            return Ok(());
-        };
-        let off = (from_start - at * clock.step_us).abs();
-        if off > grid.tolerance_us {
-            self.off_step.add(row, shown);
-            return Ok(());
+        if !self.plan.covers.is_empty() {
+            return self.spread(row, instant, grid, table);
         }
-        if off > 1000 {
-            self.snapped.add(row, shown);
-            self.snapped_most = self.snapped_most.max(off);
-        }
-        if let Some(last) = self.at
+        let Some(i) = self.place(row, instant, grid) else { return Ok(()) };
+        // The last step of the clock that the row before holds.
+        let last = self.at.replace(i).map(|last| last + self.plan.fit.cells - 1);
+        if let Some(last) = last
             && i > last + 1
             && table.leaps.len() < MOST_ROWS
         {
             table.leaps.insert(last, (self.plan.index, row.saturating_sub(1)));
         }
-        self.at = Some(i);
-        let whole = self.cells(row, clock);
+        let whole = self.cells(row, self.plan.fit.step_us);
         if !whole && table.holes.len() < MOST_ROWS {
             table.holes.entry(i).or_insert((self.plan.index, row));
         }
-        self.store(row, i, clock, table)
+        self.store(row, i, &grid.clock, table)
+    }
+
+    /// The step of the clock at which an instant's interval begins; none if it lies off the steps or outside.
+    fn place(&mut self, row: u64, instant: i64, grid: &Grid) -> Option<usize> {
+        let Self { record, plan, .. } = self;
+        let shown = || text(plan.timing.cell(record));
+        let (start, off) = plan.fit.start(instant);
+        let Some(i) = grid.step_at(start) else {
+            self.outside.add(row, shown);
+            return None;
+        };
+        if off > plan.fit.step_us / 20 {
+            self.off_step.add(row, shown);
+            return None;
+        }
+        if off > 1000 {
+            self.snapped.add(row, shown);
+            self.snapped_most = self.snapped_most.max(off);
+        }
+        Some(i)
     }
 
     fn without_stamp(&mut self, row: u64) {
@@ -226,7 +281,7 @@ impl Fill {
             return;
         }
         let Self { record, plan, .. } = self;
-        let shown = || text(record.get(plan.timing.column()).unwrap_or(b""));
+        let shown = || text(plan.timing.cell(record));
         if dialect::is_comment(record) {
             self.comments.add(row, shown);
             return;
@@ -247,14 +302,28 @@ impl Fill {
     }
 
     /// Adds up the row's cells; returns whether every cell holds a number.
-    fn cells(&mut self, row: u64, clock: &Clock) -> bool {
-        let step_h = clock.step_s() / 3600.0;
+    fn cells(&mut self, row: u64, step_us: i64) -> bool {
+        let step_h = step_us as f64 / 1e6 / 3600.0;
         self.sums.clear();
         self.sums.resize(self.plan.slots.len(), Some(0.0));
         let mut whole = true;
+        let mut absent: Option<Option<usize>> = None;
+        for quality in &self.plan.quality {
+            let cell = self.record.get(quality.column).unwrap_or(b"");
+            match quality.mark(cell) {
+                Mark::Estimated => self.estimated.add(row, || text(cell)),
+                Mark::Missing => {
+                    self.marked_missing.add(row, || text(cell));
+                    // Two marks on one row that speak of two columns: all of it is left out.
+                    absent = Some(if absent.is_none() { quality.of } else { None });
+                }
+                Mark::Measured | Mark::Unknown => {}
+            }
+        }
         for column in &mut self.plan.uses {
             let cell = self.record.get(column.cell).unwrap_or(b"");
             let value = match number::parse(cell, self.plan.marks) {
+                _ if absent.is_some_and(|of| of.is_none_or(|of| of == column.cell)) => None,
                 Cell::Number(value) => {
                     let value = column.unit.map_or(value, |unit| unit.kw(value, step_h));
                     if value.abs() <= MOST_KW {
@@ -271,13 +340,18 @@ impl Fill {
                 }
             };
             whole &= value.is_some();
+            if column.phase
+                && let Some(value) = value
+            {
+                column.sum.add(value);
+            }
             if column.watched && value.is_some_and(|value| value < 0.0) {
                 column.negative.add(row, || text(cell));
             }
             for (slot, sign) in &column.into {
                 let sum = &mut self.sums[*slot];
                 *sum = match (*sum, value) {
-                    (Some(sum), Some(value)) => Some(if *sign < 0.0 { sum - value } else { sum + value }),
+                    (Some(sum), Some(value)) => Some(sum + sign * value),
                     _ => None,
                 };
             }
@@ -286,6 +360,24 @@ impl Fill {
     }
 
     fn store(&mut self, row: u64, i: usize, clock: &Clock, table: &mut Table) -> Result<()> {
+        // A long interval holds its power through all the steps in it.
+        let (mut again, mut differs) = (false, false);
+        for i in i..(i + self.plan.fit.cells).min(clock.intervals) {
+            let (known, other) = self.store_one(i, clock, table)?;
+            again |= known;
+            differs |= other;
+        }
+        let shown = || text(self.plan.timing.cell(&self.record));
+        if differs {
+            self.conflict.add(row, shown);
+        } else if again {
+            self.repeat.add(row, shown);
+        }
+        Ok(())
+    }
+
+    /// Stores the row in one interval; tells whether a row was there before, and whether it differs.
+    fn store_one(&mut self, i: usize, clock: &Clock, table: &mut Table) -> Result<(bool, bool)> {
         let Self { plan, sums, .. } = self;
         let again = table.seen[plan.lane].get(i);
         if !again {
@@ -295,7 +387,7 @@ impl Fill {
                     table.series[*slot].set(i, *value)?;
                 }
             }
-            return Ok(());
+            return Ok((false, false));
         }
         let differs = plan.slots.iter().zip(sums.iter()).any(|(slot, value)| {
             matches!((table.series[*slot].get(i), value), (Some(old), Some(new)) if old != *new)
@@ -327,12 +419,6 @@ impl Fill {
         {
             *table.doubled.entry(clock.at_us(i).div_euclid(DAY)).or_insert(0) += 1;
         }
-        let shown = || text(self.record.get(plan.timing.column()).unwrap_or(b""));
-        if differs {
-            self.conflict.add(row, shown);
-        } else {
-            self.repeat.add(row, shown);
-        }
-        Ok(())
+        Ok((true, differs))
     }
 }

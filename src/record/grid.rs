@@ -1,13 +1,13 @@
 //! The regular clock behind the stamps of all files: step, phase, first and last interval.
 
-use std::collections::BTreeMap;
-
 use super::scan::{BLOCK, Block, Stats};
 use super::stamp::{DAY, SECOND};
-use super::{Clock, Finding, FindingKind, Zone};
-use crate::case::{RecordCase, Stamp};
+use super::{Clock, Finding, Zone};
+use crate::case::RecordCase;
 use crate::fault::{Fault, Result};
 use crate::units::people;
+
+mod steps;
 
 /// Most intervals of a record.
 const MOST_INTERVALS: i64 = 200_000_000;
@@ -19,25 +19,55 @@ const MOST_BYTES: i64 = 1_500_000_000;
 #[derive(Debug, Clone)]
 pub(super) struct Grid {
     pub(super) clock: Clock,
-    /// How far a stamp may lie off the step and still count, in microseconds.
-    pub(super) tolerance_us: i64,
+    /// How each file's intervals lie on the clock.
+    pub(super) fits: Vec<Fit>,
     /// Where the stamps leap furthest: file, row, distance in microseconds.
     leap: Option<(String, u64, i64)>,
-    /// What is subtracted from a stamp to get its interval's start, in microseconds.
-    pub(super) shift_us: i64,
+}
+
+/// How the intervals of a file lie on the clock.
+#[derive(Debug, Clone, Copy)]
+pub(super) struct Fit {
+    /// Length of the file's intervals in microseconds.
+    pub(super) step_us: i64,
+    /// An instant at which one of its stamps lies, or would lie.
+    pub(super) origin_us: i64,
+    /// Whether a stamp marks the end of its interval.
+    pub(super) late: bool,
+    /// Steps of the clock in an interval.
+    pub(super) cells: usize,
+    /// Whether intervals are no whole steps of the clock, or of unequal length: their energy is dealt out.
+    pub(super) spread: bool,
+    /// Longest distance of stamps that is an interval and no gap, in microseconds.
+    pub(super) longest_us: i64,
+}
+
+impl Fit {
+    /// Start of the interval of a stamp, and how far the stamp lies off its place.
+    pub(super) fn start(&self, instant: i64) -> (i64, i64) {
+        let from = instant - self.origin_us;
+        let nth = (from + self.step_us / 2).div_euclid(self.step_us);
+        let start = self.origin_us + nth * self.step_us;
+        (if self.late { start - self.step_us } else { start }, (from - nth * self.step_us).abs())
+    }
 }
 
 /// One file as the first pass left it.
 pub(super) struct Stamped<'a> {
     pub(super) name: &'a str,
     pub(super) stats: &'a Stats,
+    /// Whether stamps mark the end of their interval.
+    pub(super) late: bool,
+    /// Whether its stamps say where the record begins and ends (those of a typical year do not).
+    pub(super) anchors: bool,
 }
 
-/// Finds the clock.
+/// Finds the clock. `span` is the record's span where no file's stamps say it.
 pub(super) fn find(
     files: &[Stamped],
     terms: &RecordCase,
     zone: Zone,
+    whole: Option<(i64, i64)>,
     findings: &mut Vec<Finding>,
 ) -> Result<Grid> {
     if files.iter().all(|file| file.stats.rows == 0) {
@@ -48,31 +78,60 @@ pub(super) fn find(
             "State the order of day and month, or which column holds the stamps.",
         ));
     }
-    let step_us = step(files, terms, findings)?;
-    let (least, most, leap) = span(files, step_us)?;
-    let phase = phase(files, step_us, least, most);
-    // The smallest clock tick not before the first stamp; stamps off the step are left out later.
-    let tolerance_us = step_us / 20;
-    let steps_from = |instant: i64| (instant - phase).div_euclid(step_us);
-    let first = steps_from(least - tolerance_us + step_us - 1);
-    let last = steps_from(most + tolerance_us).max(first);
-    let start_us = phase + first * step_us;
-    let intervals = last - first + 1;
-    let shift_us = if terms.stamp == Stamp::End { step_us } else { 0 };
+    let paces = steps::paces(files, terms, findings)?;
+    let finest = paces.iter().map(|pace| pace.step_us).min().unwrap_or(SECOND);
+    let (least, most, leap) = match whole {
+        Some((least, most)) => (least, most, None),
+        None => span(files, finest)?,
+    };
+    let (step_us, phase, fits) = steps::align(files, &paces, terms, (least, most), findings);
+    let mut bounds: Option<(i64, i64)> = None;
+    for (file, fit) in files.iter().zip(&fits).filter(|(file, _)| file.anchors || whole.is_some()) {
+        let own = if let Some((first, last)) = whole {
+            Some((first, last - fit.step_us))
+        } else {
+            let inside = |at: &i64| (least..=most).contains(at);
+            let first = file.stats.blocks.values().map(|block| block.least).filter(inside).min();
+            first.zip(file.stats.blocks.values().map(|block| block.most).filter(inside).max())
+        };
+        let Some((first, last)) = own else { continue };
+        // The smallest place not before the first stamp; stamps off the step are left out later.
+        let tolerance = if fit.spread { 0 } else { fit.step_us / 20 };
+        let place = |instant: i64| (instant - fit.origin_us).div_euclid(fit.step_us);
+        let shift = if fit.late { fit.step_us } else { 0 };
+        let (start, end) = if fit.spread {
+            (first - shift, last + fit.step_us - shift)
+        } else {
+            let nth = place(first - tolerance + fit.step_us - 1);
+            let end = place(last + tolerance).max(nth) + 1;
+            (fit.origin_us + nth * fit.step_us - shift, fit.origin_us + end * fit.step_us - shift)
+        };
+        bounds = Some(bounds.map_or((start, end), |known| (known.0.min(start), known.1.max(end))));
+    }
+    let (start, end) = bounds.unwrap_or((least, most + step_us));
+    let first = (start - phase).div_euclid(step_us);
+    let last = (end - phase + step_us - 1).div_euclid(step_us).max(first + 1);
     let clock = Clock {
-        start_us: start_us - shift_us,
+        start_us: phase + first * step_us,
         step_us,
-        intervals: usize::try_from(intervals).unwrap_or(usize::MAX),
+        intervals: usize::try_from(last - first).unwrap_or(usize::MAX),
         zone,
     };
-    Ok(Grid { clock, tolerance_us, leap, shift_us })
+    Ok(Grid { clock, fits, leap })
 }
 
 impl Grid {
+    /// The step of the clock that holds an instant; none outside.
+    pub(super) fn step_at(&self, instant: i64) -> Option<usize> {
+        let at = (instant - self.clock.start_us).div_euclid(self.clock.step_us);
+        usize::try_from(at).ok().filter(|i| *i < self.clock.intervals)
+    }
+
     /// First and last instant of a file's stamps that lie on the clock.
     pub(super) fn span(&self, stats: &Stats) -> Option<(i64, i64)> {
-        let start = self.clock.start_us.saturating_add(self.shift_us - self.clock.step_us);
-        let end = self.clock.at_us(self.clock.intervals).saturating_add(self.shift_us);
+        let longest = self.fits.iter().map(|fit| fit.step_us).max().unwrap_or(0);
+        let start = self.clock.start_us.saturating_sub(self.clock.step_us);
+        let end = self.clock.at_us(self.clock.intervals).saturating_add(longest);
         let inside = || stats.blocks.values().filter(move |block| block.most >= start && block.least <= end);
         let least = inside().map(|block| block.least).min()?;
         let most = inside().map(|block| block.most).max()?;
@@ -127,126 +186,11 @@ pub(super) fn people_duration(seconds: f64) -> String {
     people::duration(seconds).to_string()
 }
 
-fn step(files: &[Stamped], terms: &RecordCase, findings: &mut Vec<Finding>) -> Result<i64> {
-    if let Some(step_s) = terms.step_s {
-        let step = (step_s * 1e6).round();
-        if (1.0..=3.2e13).contains(&step) {
-            return Ok(step as i64);
-        }
-        return Err(Fault::new(
-            format!("the step stated is {step_s} s"),
-            "case, at record.step_s",
-            "State a step of more than 0 s.",
-        ));
-    }
-    let mut steps: Vec<(&str, i64)> = Vec::new();
-    for file in files {
-        if let Some(found) = usual(&file.stats.distances) {
-            let share = |count: u64| count as f64 / found.total as f64;
-            if share(found.count) < 0.25 && found.total >= 4 {
-                return Err(Fault::new(
-                    format!(
-                        "the stamps keep no regular step: the most frequent distance, {}, makes up {} of all",
-                        people_duration(found.step_us as f64 / 1e6),
-                        people::percent(share(found.count))
-                    ),
-                    file.name,
-                    "Export readings at a regular step, or state the step.",
-                ));
-            }
-            if found.step_us > 8 * DAY {
-                return Err(Fault::new(
-                    format!(
-                        "the rows lie {} apart: nothing can be said of storage from them",
-                        people_duration(found.step_us as f64 / 1e6)
-                    ),
-                    file.name,
-                    "Choose a file with a reading at least every day, better every hour or quarter of an hour.",
-                ));
-            }
-            if let Some((second, count)) = found.second
-                && share(count) >= 0.1
-                && count >= 10
-                && second < 100 * found.step_us
-            {
-                findings.push(Finding {
-                    kind: FindingKind::MixedSteps,
-                    count,
-                    first_row: None,
-                    file: file.name.to_owned(),
-                    remedy: format!("step of {} taken", people_duration(found.step_us as f64 / 1e6)),
-                    text: format!(
-                        "The file holds two steps: {} between {} of the rows and {} between {}; the first is taken as the record's step.",
-                        people_duration(found.step_us as f64 / 1e6),
-                        people::percent(share(found.count)),
-                        people_duration(second as f64 / 1e6),
-                        people::percent(share(count)),
-                    ),
-                    changes_figures: true,
-                });
-            }
-            steps.push((file.name, found.step_us));
-        }
-    }
-    match steps[..] {
-        [] => Err(Fault::new(
-            "only one stamp reads, so that the step between readings is not known",
-            files.first().map_or("", |file| file.name),
-            "Choose a file with at least two rows of readings, or state the step.",
-        )),
-        [(_, step), ref rest @ ..] if rest.iter().all(|(_, other)| *other == step) => Ok(step),
-        _ => {
-            let list: Vec<String> = steps
-                .iter()
-                .take(8)
-                .map(|(name, step)| format!("{name}: {}", people_duration(*step as f64 / 1e6)))
-                .collect();
-            let other = steps.iter().find(|(_, step)| *step != steps[0].1).map_or("", |(name, _)| name);
-            Err(Fault::new(
-                format!("the files have different steps ({})", list.join(", ")),
-                other,
-                "Export the files with the same step; this version does not align them.",
-            ))
-        }
-    }
-}
-
-struct Usual {
-    step_us: i64,
-    count: u64,
-    total: u64,
-    second: Option<(i64, u64)>,
-}
-
-/// The usual distance between stamps, distances within a twentieth of it counted together.
-fn usual(distances: &BTreeMap<i64, u64>) -> Option<Usual> {
-    let total: u64 = distances.values().sum();
-    // Of equal counts the shorter distance counts, since gaps make long ones.
-    let (&mode, &exact) = distances.iter().rev().max_by_key(|(_, count)| **count)?;
-    let near = |distance: &i64| (distance - mode).abs() <= mode / 20;
-    let count: u64 = distances.iter().filter(|(distance, _)| near(distance)).map(|(_, count)| count).sum();
-    let second = distances.iter().filter(|(distance, _)| !near(distance)).max_by_key(|(_, count)| **count);
-    let step_us = if exact * 10 >= count * 6 { mode } else { round_step(mode).unwrap_or(mode) };
-    Some(Usual { step_us, count, total, second: second.map(|(distance, count)| (*distance, *count)) })
-}
-
-/// The round step that a jittering logger means, if one lies within a twentieth.
-fn round_step(step_us: i64) -> Option<i64> {
-    [
-        1, 2, 5, 10, 15, 20, 30, 60, 120, 180, 240, 300, 360, 600, 720, 900, 1200, 1800, 3600, 7200, 10_800,
-        21_600, 43_200, 86_400,
-    ]
-    .into_iter()
-    .map(|seconds| seconds * SECOND)
-    .filter(|step| (step - step_us).abs() * 20 <= *step)
-    .min_by_key(|step| (step - step_us).abs())
-}
-
 /// First and last instant, leaving out the few stamps that lie more than a year away from all others.
 #[allow(clippy::type_complexity, reason = "a triple used once")]
 fn span(files: &[Stamped], step_us: i64) -> Result<(i64, i64, Option<(String, u64, i64)>)> {
     let mut all: Vec<(i64, Block, &str)> = Vec::new();
-    for file in files {
+    for file in files.iter().filter(|file| file.anchors) {
         all.extend(file.stats.blocks.iter().map(|(key, block)| (*key, *block, file.name)));
     }
     all.sort_by_key(|(key, block, _)| (*key, block.least));
@@ -282,34 +226,4 @@ fn span(files: &[Stamped], step_us: i64) -> Result<(i64, i64, Option<(String, u6
         .max_by_key(|leap| leap.2)
         .or_else(|| kept.first().map(|only| (only.2.to_owned(), only.1.first_row, 0)));
     Ok((least, most, leap))
-}
-
-/// Where within the step the stamps lie.
-fn phase(files: &[Stamped], step_us: i64, least: i64, most: i64) -> i64 {
-    let mut counts: BTreeMap<i64, u64> = BTreeMap::new();
-    let mut total = 0;
-    for file in files {
-        for instant in file.stats.sample.iter().filter(|instant| (least..=most).contains(*instant)) {
-            *counts.entry(instant.rem_euclid(step_us)).or_insert(0) += 1;
-            total += 1;
-        }
-    }
-    let Some((&mode, &count)) = counts.iter().rev().max_by_key(|(_, count)| **count) else { return 0 };
-    let near_zero = mode.min(step_us - mode) <= step_us / 20;
-    if near_zero && count * 10 < total * 6 { 0 } else { mode }
-}
-
-#[cfg(test)]
-mod tests {
-    use super::*;
-
-    #[test]
-    fn the_usual_distance_is_the_step() {
-        let of = |list: &[(i64, u64)]| usual(&list.iter().map(|(s, n)| (s * SECOND, *n)).collect()).unwrap();
-        assert_eq!(of(&[(900, 10), (1800, 2)]).step_us, 900 * SECOND);
-        assert_eq!(of(&[(900, 2), (1800, 2)]).step_us, 900 * SECOND);
-        let jitter = of(&[(898, 10), (899, 11), (901, 12), (902, 9)]);
-        assert_eq!((jitter.step_us, jitter.count), (900 * SECOND, 42));
-        assert_eq!(of(&[(900, 80), (3600, 20)]).second, Some((3600 * SECOND, 20)));
-    }
 }

@@ -12,12 +12,14 @@ mod grid;
 mod made;
 mod nem12;
 mod number;
+mod quality;
 mod read;
 mod roles;
 mod rows;
 mod scan;
 mod series;
 mod settle;
+mod shape;
 mod sheets;
 mod source;
 mod stamp;
@@ -56,6 +58,9 @@ pub struct Record {
     pub demand_kw: Option<Series>,
     /// Net power (kW, positive = surplus) where the file gives it as such; none where it follows from supply and demand.
     pub net_kw: Option<Series>,
+    /// Power (kW, average of the interval) that is both surplus and deficit within an interval, for intervals in which net
+    /// power changes its sign between two samples: interval and power, in order. Empty for averages of intervals.
+    pub hidden_kw: Vec<(usize, f64)>,
     /// Columns that a duty names by header, in kW or as they stand in the file.
     pub extras: Vec<Extra>,
     /// What was found wrong or doubtful, in the order of the rows.
@@ -271,4 +276,10 @@ pub enum FindingKind {
     TypicalYear,
     /// Supply and demand netted before they were recorded.
     Netted,
+    /// Readings that their file marks as estimated or missing.
+    Quality,
+    /// Three phases added up, with the largest share.
+    Phases,
+    /// A meter reading that turned over, was reset, or stepped over missing readings.
+    Register,
 }

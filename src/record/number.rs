@@ -7,6 +7,8 @@ pub(super) struct Marks {
     pub(super) decimal: u8,
     /// The other mark, where it sets thousands apart. (Spaces and apostrophes between groups of three always do.)
     pub(super) thousands: Option<u8>,
+    /// Whether the file holds both decimal marks, so that a lone one in a cell is decimal, whichever it is.
+    pub(super) mixed: bool,
 }
 
 /// What a cell holds.
@@ -27,6 +29,7 @@ pub(super) fn parse(cell: &[u8], marks: Marks) -> Cell {
         return Cell::Empty;
     }
     let plain = |byte: &u8| byte.is_ascii_digit() || matches!(byte, b'.' | b'-' | b'+' | b'e' | b'E');
+    let marks = if marks.mixed { lone(cell, marks) } else { marks };
     if marks.decimal == b'.' && marks.thousands != Some(b'.') && cell.iter().all(plain) {
         return finite(cell);
     }
@@ -34,6 +37,16 @@ pub(super) fn parse(cell: &[u8], marks: Marks) -> Cell {
     match cleaned(cell, marks, &mut clean) {
         Some(count) => finite(&clean[..count]),
         None => Cell::Text,
+    }
+}
+
+/// The marks of a cell in a file that holds both decimal marks.
+fn lone(cell: &[u8], marks: Marks) -> Marks {
+    let count = |mark: u8| cell.split(|byte| *byte == mark).count() - 1;
+    match (count(b'.'), count(b',')) {
+        (1, 0) => Marks { decimal: b'.', thousands: None, ..marks },
+        (0, 1) => Marks { decimal: b',', thousands: None, ..marks },
+        _ => marks,
     }
 }
 
@@ -147,6 +160,8 @@ pub(super) struct Evidence {
     /// Cells that only make sense with a decimal comma, or with a decimal point.
     comma: u32,
     point: u32,
+    /// Cells in which one of the marks sets thousands apart.
+    grouping: u32,
     /// Cells such as "1,234": either.
     either_comma: u32,
     either_point: u32,
@@ -203,17 +218,32 @@ impl Evidence {
                     (false, false) => self.point += 1,
                 }
             }
-            (0, _) => self.comma += 1,
-            (_, 0) => self.point += 1,
-            _ if last(b',') > last(b'.') => self.comma += 1,
-            _ => self.point += 1,
+            (0, _) => (self.comma, self.grouping) = (self.comma + 1, self.grouping + 1),
+            (_, 0) => (self.point, self.grouping) = (self.point + 1, self.grouping + 1),
+            _ if last(b',') > last(b'.') => (self.comma, self.grouping) = (self.comma + 1, self.grouping + 1),
+            _ => (self.point, self.grouping) = (self.point + 1, self.grouping + 1),
         }
+    }
+
+    /// Adds what another column says. Its whole numbers count only beside numbers of its own with a mark.
+    pub(super) fn join(&mut self, other: &Self) {
+        self.comma += other.comma;
+        self.point += other.point;
+        self.grouping += other.grouping;
+        self.either_comma += other.either_comma;
+        self.either_point += other.either_point;
+        if other.either_comma + other.either_point > 0 {
+            self.bare += other.bare;
+        }
+        self.grouped_by = self.grouped_by.or(other.grouped_by);
     }
 
     /// The marks taken, and why.
     pub(super) fn decide(&self, chosen: Option<char>) -> (Marks, &'static str) {
-        let comma = Marks { decimal: b',', thousands: Some(b'.') };
-        let point = Marks { decimal: b'.', thousands: Some(b',') };
+        // A cell with both marks shows that one of them sets thousands apart.
+        let mixed = chosen.is_none() && self.comma > 0 && self.point > 0 && self.grouping == 0;
+        let comma = Marks { decimal: b',', thousands: Some(b'.'), mixed };
+        let point = Marks { decimal: b'.', thousands: Some(b','), mixed };
         match chosen {
             Some(',') => return (comma, "as stated"),
             Some(_) => return (point, "as stated"),
@@ -253,8 +283,8 @@ impl Evidence {
 mod tests {
     use super::*;
 
-    const POINT: Marks = Marks { decimal: b'.', thousands: Some(b',') };
-    const COMMA: Marks = Marks { decimal: b',', thousands: Some(b'.') };
+    const POINT: Marks = Marks { decimal: b'.', thousands: Some(b','), mixed: false };
+    const COMMA: Marks = Marks { decimal: b',', thousands: Some(b'.'), mixed: false };
 
     #[test]
     fn numbers_are_read_as_written() {

@@ -10,18 +10,21 @@ use super::made::Made;
 use super::roles::Column;
 use super::rows::Rows;
 use super::scan::{Scan, Scanned};
-use super::settle::{Settle, Settled, Shape};
+use super::settle::{Settle, Settled, Sums};
+use super::shape::{Shape, Shaped};
 use super::timing::Timing;
 use super::zone::Resolver;
 use super::{FileReading, Finding, Reading, Record, Source, Zone};
-use crate::case::{RecordCase, Stamp, Values};
+use crate::case::{RecordCase, Values};
 use crate::fault::{Fault, Result, quote};
 use crate::job::{Job, Progress};
 
 mod look;
 mod plan;
+mod table;
 
 use look::Look;
+use table::Surveyed;
 
 /// Reads the files of one site into a record.
 ///
@@ -54,13 +57,6 @@ pub fn read(
     if sources.is_empty() {
         return Err(Fault::new("there is no file to read", site, "Choose the site's meter file."));
     }
-    if terms.reading == Values::Samples {
-        return Err(Fault::new(
-            "the case says that values are samples; this version reads averages of intervals",
-            "case, at record.reading",
-            "Set record.reading to intervals, or average the samples over intervals first.",
-        ));
-    }
     let zone = match &terms.zone {
         None => None,
         Some(name) => Some(TimeZone::get(name).map_err(|_unknown| {
@@ -83,7 +79,7 @@ pub fn read(
         plans: Vec::new(),
         grid: None,
         table: Table::default(),
-        shape: Shape::default(),
+        sums: Sums::default(),
         findings: Vec::new(),
         stage: Stage::Look,
         at: 0,
@@ -105,7 +101,7 @@ pub struct Reader {
     plans: Vec<Option<FilePlan>>,
     grid: Option<Grid>,
     table: Table,
-    shape: Shape,
+    sums: Sums,
     findings: Vec<Finding>,
     stage: Stage,
     /// The file that the stage is at.
@@ -127,20 +123,30 @@ impl std::fmt::Debug for Reader {
 /// What is known of a file.
 struct File {
     name: String,
+    /// The source that it is in.
+    source: usize,
     container: Container,
     made: Made,
     dialect: Dialect,
+    shape: Shape,
     timing: Timing,
     columns: Vec<Column>,
     scanned: Option<Scanned>,
+    /// Whether stamps mark the end of their interval, and why that is taken.
+    late: bool,
+    late_why: String,
+    /// Whether it is a typical year, and the years that it is laid on.
+    typical: bool,
+    years: Vec<i64>,
 }
 
 #[allow(clippy::large_enum_variant, reason = "there is one stage at a time")]
 enum Stage {
     Look,
-    Scan(Rows<Decoded>, Scan),
+    Survey(Box<Surveyed>),
+    Scan(Shaped<Decoded>, Scan),
     Plan,
-    Fill(Option<(Rows<Decoded>, Fill)>),
+    Fill(Option<(Shaped<Decoded>, Fill)>),
     Settle(Settle),
     Done,
 }
@@ -151,27 +157,47 @@ impl Reader {
     pub fn into_sources(mut self) -> Vec<Box<dyn Source>> {
         let at = self.at;
         match std::mem::replace(&mut self.stage, Stage::Done) {
+            Stage::Survey(surveyed) => {
+                let at = surveyed.source;
+                self.sources[at] = Some(surveyed.rows.into_text().into_source());
+            }
             Stage::Scan(rows, _) | Stage::Fill(Some((rows, _))) => self.give_back(at, rows),
             _ => {}
         }
         self.sources.into_iter().flatten().chain(self.look.into_sources()).collect()
     }
 
-    fn give_back(&mut self, at: usize, rows: Rows<Decoded>) {
-        if let Some(slot) = self.sources.get_mut(at) {
+    /// Gives back the source of file `at`.
+    fn give_back(&mut self, at: usize, rows: Shaped<Decoded>) {
+        if let Some(slot) = self.files.get(at).and_then(|file| self.sources.get_mut(file.source)) {
             *slot = Some(rows.into_text().into_source());
         }
     }
 
-    fn open(&mut self, at: usize) -> Result<Rows<Decoded>> {
-        let source = self.sources.get_mut(at).and_then(Option::take);
-        match (source, self.files.get(at)) {
+    fn open(&mut self, at: usize) -> Result<Shaped<Decoded>> {
+        let file = self.files.get(at);
+        let source = file.and_then(|file| self.sources.get_mut(file.source)).and_then(Option::take);
+        match (source, file) {
             (Some(source), Some(file)) => {
                 let text = Decoded::open(source, &file.container);
-                Ok(Rows::new(text, file.dialect.separator).numbered(file.made.runs.clone()))
+                let rows = Rows::new(text, file.dialect.separator).numbered(file.made.runs.clone());
+                Ok(Shaped::new(rows, file.shape.clone(), file.dialect.first_row))
             }
             _ => Err(Fault::new("a file is no longer there", self.site.clone(), "Choose the files again.")),
         }
+    }
+
+    /// Begins the first pass.
+    fn begin(&mut self) -> Result<()> {
+        self.total = (0..self.files.len()).map(|at| self.len(at)).sum::<u64>().max(1);
+        self.at = 0;
+        self.start_scan()
+    }
+
+    /// Length in bytes of the source of file `at`.
+    fn len(&self, at: usize) -> u64 {
+        let source = self.files.get(at).and_then(|file| self.sources.get(file.source)?.as_ref());
+        source.map_or(0, |source| source.len())
     }
 
     fn start_scan(&mut self) -> Result<()> {
@@ -197,19 +223,20 @@ impl Reader {
 
     fn start_settle(&mut self) {
         let Some(grid) = &self.grid else { return };
-        let counted = self.files.iter().any(|file| matches!(file.timing, Timing::Counter { .. }));
+        let counted = self.files.iter().any(|file| file.timing.counted());
         self.stage = Stage::Settle(Settle::new(
             std::mem::take(&mut self.table),
-            std::mem::take(&mut self.shape),
+            std::mem::take(&mut self.sums),
             grid.clock.clone(),
-            self.terms.remedies.gap,
+            &self.terms,
+            grid.fits.iter().map(|fit| fit.step_us).max().unwrap_or(grid.clock.step_us),
             counted,
         ));
     }
 
     fn record(&mut self, settle: Settle) -> Result<Record> {
         let names: Vec<String> = self.files.iter().map(|file| file.name.clone()).collect();
-        let Settled { targets: [supply_kw, demand_kw, net_kw], extras, filled } =
+        let Settled { clock, targets: [supply_kw, demand_kw, net_kw], extras, filled, hidden_kw } =
             settle.finish(&names, &mut self.findings)?;
         let Some(grid) = self.grid.take() else {
             return Err(Fault::new("the record has no clock", self.site.clone(), "Report this as a defect."));
@@ -219,7 +246,7 @@ impl Reader {
             clock_note: self.clock_note(&grid),
         };
         let mut findings = std::mem::take(&mut self.findings);
-        let one = names.len() == 1;
+        let one = self.sources.len() == 1;
         for finding in &mut findings {
             if one {
                 finding.file.clear();
@@ -228,10 +255,11 @@ impl Reader {
         findings.sort_by_key(|finding| finding.first_row.unwrap_or(0));
         Ok(Record {
             site: self.site.clone(),
-            clock: grid.clock,
+            clock,
             supply_kw,
             demand_kw,
             net_kw,
+            hidden_kw,
             extras,
             findings,
             reading,
@@ -240,10 +268,21 @@ impl Reader {
     }
 
     fn clock_note(&self, grid: &Grid) -> String {
-        let mark = match self.terms.stamp {
-            Stamp::Start => "The stamp marks the interval's start",
-            Stamp::End => "The stamp marks the interval's end",
-        };
+        let mut marks: Vec<String> = Vec::new();
+        let samples = self.terms.reading == Values::Samples;
+        for file in &self.files {
+            let end = if file.late { "end" } else { "start" };
+            let why = if file.late_why.is_empty() { String::new() } else { format!(" ({})", file.late_why) };
+            let mark = if samples {
+                "Values are samples at the moment of their stamp, joined by straight lines; the change between surplus and deficit is found on the line".to_owned()
+            } else {
+                format!("The stamp marks the interval's {end}{why}")
+            };
+            if !marks.contains(&mark) {
+                marks.push(mark);
+            }
+        }
+        let mark = marks.join("; ");
         let step = grid::people_duration(grid.clock.step_s());
         let zone = match (&grid.clock.zone, &self.terms.zone) {
             (Zone::Named(_), Some(name)) => format!("stamps are read in the zone {name}"),
@@ -253,25 +292,27 @@ impl Reader {
                 "no zone is stated, so that stamps are taken as they stand, without summer time".to_owned()
             }
         };
-        let hours = self.files.iter().any(|file| matches!(file.timing, Timing::DateHour { first: 1, .. }));
-        let hours = if hours { "; hours are counted from 1, so that hour 1 begins at 00:00" } else { "" };
-        format!("{mark}; the step is {step}; {zone}{hours}.")
+        format!("{mark}; the step is {step}; {zone}.")
     }
 }
 
 impl File {
     /// What turns the file's stamps into instants.
     fn resolver(&self, zone: Option<&TimeZone>) -> Resolver {
-        if matches!(self.timing, Timing::Counter { .. }) {
+        if self.timing.counted() {
             return Resolver::new(None, false);
         }
+        Resolver::new(zone.cloned(), self.falling())
+    }
+
+    /// Whether rows run from the newest to the oldest.
+    fn falling(&self) -> bool {
         let moment = |row: Option<&(u64, csv::ByteRecord)>| {
             self.timing
-                .read(&row?.1, crate::case::DateOrder::DayFirst, self.dialect.marks)
+                .read(&row?.1, crate::case::DateOrder::DayFirst, self.dialect.marks, 0)
                 .map(|moment| moment.us)
         };
-        let falling = moment(self.dialect.rows.first()) > moment(self.dialect.rows.last());
-        Resolver::new(zone.cloned(), falling)
+        moment(self.dialect.rows.first()) > moment(self.dialect.rows.last())
     }
 
     /// How the file was read, for the page.
@@ -309,25 +350,47 @@ impl Job for Reader {
             let at = self.at;
             match &mut self.stage {
                 Stage::Look => {
-                    if self.look()? {
-                        self.start_scan()?;
+                    let done = self.look()?;
+                    left = left.saturating_sub(10_000);
+                    if let Some(surveyed) = self.look.surveys.pop_front() {
+                        self.open_survey(surveyed)?;
+                    } else if done {
+                        self.begin()?;
                     } else if self.waits() {
                         return Ok(None);
                     }
-                    left = left.saturating_sub(10_000);
+                }
+                Stage::Survey(surveyed) => {
+                    let mut ended = false;
+                    while left > 0 {
+                        let row = surveyed
+                            .rows
+                            .next(&mut surveyed.survey.record)
+                            .map_err(|error| decode::row_fault(&error, &self.site))?;
+                        let Some(row) = row else {
+                            ended = true;
+                            break;
+                        };
+                        surveyed.rows.text_mut().row_done();
+                        surveyed.survey.row(row)?;
+                        left -= 1;
+                    }
+                    if ended && let Stage::Survey(surveyed) = std::mem::replace(&mut self.stage, Stage::Look)
+                    {
+                        self.surveyed(*surveyed)?;
+                    }
                 }
                 Stage::Scan(rows, scan) => {
                     let first = self.files[at].dialect.first_row;
                     let mut ended = false;
                     while left > 0 {
                         let row = rows
-                            .next(scan.buffer())
+                            .next(scan.buffer(), Decoded::row_done)
                             .map_err(|error| decode::row_fault(&error, &self.files[at].name))?;
                         let Some(row) = row else {
                             ended = true;
                             break;
                         };
-                        rows.text_mut().row_done();
                         if row >= first {
                             scan.row(row);
                         }
@@ -338,9 +401,9 @@ impl Job for Reader {
                         self.hidden(at, rows.text().hidden());
                         self.give_back(at, rows);
                         self.files[at].scanned = Some(scan.finish(self.terms.date_order.is_some()));
-                        self.passed += self.sources[at].as_ref().map_or(0, |source| source.len());
+                        self.passed += self.len(at);
                         self.at += 1;
-                        if self.at < self.sources.len() {
+                        if self.at < self.files.len() {
                             self.start_scan()?;
                         }
                     }
@@ -361,25 +424,25 @@ impl Job for Reader {
                     let mut ended = false;
                     while left > 0 {
                         let row = rows
-                            .next(fill.buffer())
+                            .next(fill.buffer(), Decoded::row_done)
                             .map_err(|error| decode::row_fault(&error, &self.files[at].name))?;
                         let Some(row) = row else {
                             ended = true;
                             break;
                         };
-                        rows.text_mut().row_done();
                         fill.row(row, grid, &mut self.table)?;
                         left -= 1;
                     }
                     if ended
-                        && let Stage::Fill(Some((rows, fill))) =
+                        && let Stage::Fill(Some((rows, mut fill))) =
                             std::mem::replace(&mut self.stage, Stage::Fill(None))
                     {
-                        fill.finish(&grid.clock, &mut self.findings);
+                        fill.last(grid, &mut self.table)?;
+                        fill.finish(&mut self.findings);
                         self.give_back(at, rows);
-                        self.passed += self.sources[at].as_ref().map_or(0, |source| source.len());
+                        self.passed += self.len(at);
                         self.at += 1;
-                        if self.at < self.sources.len() { self.start_fill()? } else { self.start_settle() }
+                        if self.at < self.files.len() { self.start_fill()? } else { self.start_settle() }
                     }
                 }
                 Stage::Settle(settle) => {
@@ -407,7 +470,7 @@ impl Job for Reader {
         let two = 2.0 * self.total as f64;
         let share = |offset: u64| ((self.passed + offset) as f64 / two).min(1.0) * 0.9;
         match &self.stage {
-            Stage::Look => Progress { what: "looking at the files", done: 0.0 },
+            Stage::Look | Stage::Survey(_) => Progress { what: "looking at the files", done: 0.0 },
             Stage::Scan(rows, _) => Progress { what: "reading stamps", done: share(rows.text().offset()) },
             Stage::Plan => Progress { what: "finding the clock", done: share(0) },
             Stage::Fill(Some((rows, _))) => {

@@ -1,19 +1,19 @@
 //! What each column stands for, and how the columns of a site add up to supply, demand and net power.
 
 use super::dialect::Dialect;
-use super::number::{self, Cell};
-use super::stamp::{self, DAY};
 use super::timing::Timing;
 use super::unit::{Stated, Unit};
 use super::words::{self, Guess};
 use super::{ColumnReading, Role};
-use crate::case::{DateOrder, RecordCase};
+use crate::case::RecordCase;
 use crate::fault::{Fault, Result, quote};
 
 mod sums;
+mod values;
 
 use sums::list;
 pub(super) use sums::plan;
+use values::Values;
 
 /// A sum that columns add up to.
 #[derive(Debug, Clone, Copy, PartialEq, Eq, PartialOrd, Ord)]
@@ -22,7 +22,13 @@ pub(super) enum Target {
     Demand = 1,
     /// Net power as the files give it, positive = surplus.
     Net = 2,
+    /// What was drawn from the grid and what was fed to it, each on its own: told in a finding, not part of the record.
+    Drawn = 3,
+    Fed = 4,
 }
+
+/// Number of sums.
+pub(super) const TARGETS: usize = 5;
 
 /// A column as read so far.
 #[allow(clippy::struct_excessive_bools, reason = "independent facts about a column")]
@@ -37,6 +43,8 @@ pub(super) struct Column {
     guess: Guess,
     stated: bool,
     stated_unit: bool,
+    /// The unit that the file's name or the lines above the table mention, and which of them does.
+    hint: Option<(Unit, &'static str)>,
     open: bool,
     numeric: bool,
     /// Kept as an extra column.
@@ -44,18 +52,12 @@ pub(super) struct Column {
     /// What the column is added to, with its sign.
     pub(super) into: Vec<(Target, f64)>,
     look: Values,
-}
-
-/// What the head's values look like.
-#[derive(Debug, Clone, Copy, Default)]
-struct Values {
-    filled: usize,
-    numbers: usize,
-    zeros: usize,
-    negative: usize,
-    positive: usize,
-    night_sum: f64,
-    register: bool,
+    /// A running meter reading: the energy of an interval is the difference of two.
+    pub(super) register: bool,
+    /// One of three phases.
+    pub(super) phase: bool,
+    /// A column about which nothing needs to be said: it names the channel, or holds the unit.
+    quiet: bool,
 }
 
 /// Two headers are the same if they differ only by case and spaces.
@@ -93,8 +95,18 @@ pub(super) fn columns(
     named: &[String],
 ) -> Result<Vec<Column>> {
     let mut columns = Vec::with_capacity(dialect.headers.len());
+    let phases = values::phases(&dialect.headers);
+    let hint = [
+        (super::site_name(file), "the file's name says"),
+        (dialect.preamble.clone(), "the lines above the table say"),
+    ]
+    .into_iter()
+    .find_map(|(text, which)| match super::unit::unit_of(&text) {
+        Stated::Power(unit) => Some((unit, which)),
+        _ => None,
+    });
     for (i, header) in dialect.headers.iter().enumerate() {
-        let look = values(dialect, timing, i);
+        let look = values::values(dialect, timing, i);
         let numeric = look.numbers * 2 > look.filled;
         let wanted = stated(&terms.roles, file, header).copied();
         let unit = match stated(&terms.units, file, header) {
@@ -117,6 +129,7 @@ pub(super) fn columns(
             guess,
             stated: wanted.is_some(),
             stated_unit: stated(&terms.units, file, header).is_some(),
+            hint,
             open: false,
             numeric,
             extra: named
@@ -124,6 +137,9 @@ pub(super) fn columns(
                 .any(|name| key(name) == key(header) || key(name) == key(&format!("{file}/{header}"))),
             into: Vec::new(),
             look,
+            register: false,
+            phase: phases.iter().any(|set| set.contains(&i)),
+            quiet: false,
         };
         match &unit {
             Stated::Power(unit) => column.unit = Some(*unit),
@@ -131,13 +147,24 @@ pub(super) fn columns(
             Stated::Nothing => {}
         }
         column.role(timing.role(i), wanted, &unit);
+        if dialect.names.contains(&i) {
+            column.quiet = true;
+            column.open = false;
+            column.role = wanted.unwrap_or(Role::Ignore);
+            "its cells name the channel".clone_into(&mut column.why);
+        }
         columns.push(column);
     }
+    repeated(dialect, &mut columns);
     Ok(columns)
 }
 
 impl Column {
     fn role(&mut self, time: Option<Role>, wanted: Option<Role>, unit: &Stated) {
+        // A person who states a unit of power knows that the column is no reading.
+        self.register = self.look.register
+            && !(self.stated_unit && self.unit.is_some_and(|unit| !unit.is_energy()))
+            && !matches!(unit, Stated::Other(_));
         if let Some(role) = time {
             self.role = role;
             self.unit = None;
@@ -156,23 +183,22 @@ impl Column {
                 (Role::Ignore, "its cells are not numbers".to_owned())
             }
             Guess::Role(role, word) if is_power(role) && matches!(unit, Stated::Other(_)) => {
+                if let Some(role) = of_unit(&self.other) {
+                    self.role = role;
+                    self.why = format!("its unit is {}", quote(&self.other));
+                    return;
+                }
                 (Role::Ignore, format!("its header says {}, but its unit is no power or energy", quote(word)))
             }
-            Guess::Role(role, _) if is_power(role) && self.look.register => (
-                Role::Ignore,
-                "its values only ever rise: a running meter reading, not the energy of an interval"
-                    .to_owned(),
-            ),
             Guess::Role(role, word) => (role, format!("its header says {}", quote(word))),
+            Guess::Net(_) | Guess::Unknown if of_unit(&self.other).is_some() => {
+                let role = of_unit(&self.other).unwrap_or(Role::Ignore);
+                (role, format!("its unit is {}", quote(&self.other)))
+            }
             _ if matches!(unit, Stated::Other(_)) => {
                 (Role::Ignore, "its unit is no power or energy".to_owned())
             }
             _ if self.look.filled == 0 => (Role::Ignore, "it is empty".to_owned()),
-            _ if self.look.register => (
-                Role::Ignore,
-                "its values only ever rise: a running meter reading, not the energy of an interval"
-                    .to_owned(),
-            ),
             Guess::Net(_) | Guess::Unknown => {
                 self.open = true;
                 (Role::Ignore, "its header says nothing that is known".to_owned())
@@ -180,6 +206,11 @@ impl Column {
         };
         self.role = role;
         self.why = why;
+    }
+
+    /// Whether its numbers are power or energy.
+    fn counts(&self) -> bool {
+        self.numeric && self.unit.is_some()
     }
 
     fn take(&mut self, role: Role, why: String) {
@@ -198,51 +229,42 @@ impl Column {
     }
 }
 
-fn values(dialect: &Dialect, timing: Timing, column: usize) -> Values {
-    let mut found = Values::default();
-    let mut before: Option<f64> = None;
-    let (mut falls, mut first, mut most_rise) = (0, 0.0, 0.0_f64);
-    for (_, record) in &dialect.rows {
-        let cell = record.get(column).unwrap_or(b"");
-        match number::parse(cell, dialect.marks) {
-            Cell::Empty => continue,
-            Cell::Text => {}
-            Cell::Number(value) => {
-                found.numbers += 1;
-                found.zeros += usize::from(value == 0.0);
-                found.negative += usize::from(value < 0.0);
-                found.positive += usize::from(value > 0.0);
-                if let Some(before) = before {
-                    falls += usize::from(value < before);
-                    most_rise = most_rise.max(value - before);
-                } else {
-                    first = value;
-                }
-                before = Some(value);
-                if night(record, timing) {
-                    found.night_sum += value;
-                }
-            }
-        }
-        found.filled += 1;
-    }
-    found.register = found.numbers >= 24 && falls == 0 && most_rise > 0.0 && first > 10.0 * most_rise;
-    found
+/// The role that a unit other than power or energy stands for.
+fn of_unit(unit: &str) -> Option<Role> {
+    let low = unit.to_lowercase();
+    Some(match low.as_str() {
+        "kvar" | "kvarh" | "var" | "varh" | "mvar" | "mvarh" => Role::Reactive,
+        "hz" => Role::Frequency,
+        _ if super::unit::money(&low) => Role::Price,
+        _ => return None,
+    })
 }
 
-/// Whether a row's stamp lies in the four hours after midnight.
-fn night(record: &csv::ByteRecord, timing: Timing) -> bool {
-    let time = match timing {
-        Timing::Stamp(column) => record
-            .get(column)
-            .and_then(|cell| {
-                stamp::stamp(cell, DateOrder::DayFirst).or_else(|| stamp::stamp(cell, DateOrder::MonthFirst))
-            })
-            .map(|read| read.civil_us.rem_euclid(DAY)),
-        Timing::DateClock(_, clock) => record.get(clock).and_then(stamp::time_of_day).map(|time| time.0),
-        _ => None,
+/// Leaves out columns that repeat another, and the parts of a column that is their sum.
+fn repeated(dialect: &Dialect, columns: &mut [Column]) {
+    let kind = |at: usize| {
+        let column = &columns[at];
+        let counts = column.numeric && !column.stated && (column.open || is_power(column.role));
+        // Roles by their kind, since a total may be headed by another word than its parts.
+        let class = match column.role {
+            Role::Import | Role::Demand | Role::Ignore => 0,
+            Role::Export => 1,
+            Role::Supply | Role::Generation => 2,
+            _ => 3,
+        };
+        counts.then_some(class)
     };
-    time.is_some_and(|time| time < 4 * 3600 * stamp::SECOND)
+    for again in values::again(dialect, &kind, &|at| columns[at].phase, &|at| {
+        columns[at].unit.is_some_and(Unit::is_energy)
+    }) {
+        let whole = quote(&columns[again.whole].header);
+        for part in again.parts {
+            let column = &mut columns[part];
+            column.role = Role::Ignore;
+            column.open = false;
+            column.why = format!("{whole} holds it already");
+        }
+    }
 }
 
 /// Refuses roles and units stated for columns that no file has.
@@ -250,6 +272,7 @@ pub(super) fn check_stated(files: &[(String, Vec<Column>)], terms: &RecordCase) 
     for (field, names) in [
         ("record.roles", terms.roles.keys().collect::<Vec<_>>()),
         ("record.units", terms.units.keys().collect()),
+        ("record.scale", terms.scale.keys().collect()),
     ] {
         for name in names {
             let wanted = key(name);

@@ -16,6 +16,10 @@ const SAMPLE: usize = 4096;
 /// Most different distances between stamps that are counted.
 const DISTANCES: usize = 4096;
 
+/// A leap between rows that no gap of a meter explains, and how many are kept.
+const LEAP: i64 = 180 * DAY;
+const MOST_LEAPS: usize = 64;
+
 /// Length of the blocks in which rows are counted over time.
 pub(super) const BLOCK: i64 = 30 * DAY;
 
@@ -35,6 +39,12 @@ pub(super) struct Stats {
     pub(super) rows: u64,
     /// Distances between consecutive stamps (microseconds, either way) and how often each comes.
     pub(super) distances: BTreeMap<i64, u64>,
+    /// The longest run of rows that keep a distance.
+    pub(super) runs: BTreeMap<i64, u64>,
+    /// Instants before and after each of the first leaps of more than half a year.
+    pub(super) leaps: Vec<(i64, i64)>,
+    /// First and last instant in the order of the rows.
+    pub(super) ends: Option<(i64, i64)>,
     /// Rows per block of time.
     pub(super) blocks: BTreeMap<i64, Block>,
     /// The first instants.
@@ -64,8 +74,14 @@ pub(super) struct Scan {
     open: Vec<DateOrder>,
     offset_s: Option<i32>,
     halves: bool,
+    /// Rows whose stamp is written as 24:00.
+    day_ends: u64,
+    /// Rows whose stamp states no year.
+    yearless: u64,
     mark: u8,
     record: ByteRecord,
+    /// Rows of values so far.
+    nth: i64,
 }
 
 /// What the first pass found.
@@ -79,6 +95,10 @@ pub(super) struct Scanned {
     pub(super) doubt: bool,
     /// The offset that the first stamp with one states.
     pub(super) offset_s: Option<i32>,
+    /// Rows whose stamp is written as 24:00, the end of its day.
+    pub(super) day_ends: u64,
+    /// Whether the stamps state no year.
+    pub(super) yearless: bool,
     pub(super) stats: Stats,
 }
 
@@ -97,8 +117,11 @@ impl Scan {
             open,
             offset_s: None,
             halves: false,
+            day_ends: 0,
+            yearless: 0,
             mark: 0,
             record: ByteRecord::new(),
+            nth: 0,
         }
     }
 
@@ -109,9 +132,11 @@ impl Scan {
 
     /// Takes the row in the buffer.
     pub(super) fn row(&mut self, row: u64) {
+        let nth = self.nth;
+        self.nth += 1;
         let Self { timing, marks, candidates, open, record, .. } = self;
         if candidates.len() == 1 {
-            let first = timing.read(record, candidates[0].order, *marks);
+            let first = timing.read(record, candidates[0].order, *marks, nth);
             if let Some(moment) = first
                 && (moment.clear || open.is_empty())
             {
@@ -119,7 +144,8 @@ impl Scan {
                 self.candidates[0].push(row, moment);
                 return;
             }
-            if first.is_none() && open.iter().all(|order| timing.read(record, *order, *marks).is_none()) {
+            if first.is_none() && open.iter().all(|order| timing.read(record, *order, *marks, nth).is_none())
+            {
                 return;
             }
             // The first stamp that could be read in several orders: from here each is followed.
@@ -130,7 +156,7 @@ impl Scan {
         let mut moments = [None; 3];
         for (candidate, moment) in candidates.iter().zip(&mut moments) {
             if !candidate.hopeless() {
-                *moment = timing.read(record, candidate.order, *marks);
+                *moment = timing.read(record, candidate.order, *marks, nth);
             }
         }
         let Some(any) = moments.iter().flatten().next().copied() else { return };
@@ -150,6 +176,8 @@ impl Scan {
             self.offset_s = moment.offset_s;
         }
         self.halves |= moment.halves;
+        self.day_ends += u64::from(moment.day_end);
+        self.yearless += u64::from(moment.yearless);
         self.mark = moment.mark;
     }
 
@@ -173,6 +201,8 @@ impl Scan {
                 why: String::new(),
                 doubt: false,
                 offset_s: None,
+                day_ends: 0,
+                yearless: false,
                 stats: Stats::new(),
             };
         };
@@ -180,6 +210,7 @@ impl Scan {
         let (why, doubt) = match (&next, self.timing) {
             (_, Timing::Unix { .. }) => ("the numbers count from 1970 in UTC".to_owned(), false),
             (_, Timing::Serial(_)) => ("the numbers are days as spreadsheets count them".to_owned(), false),
+            (_, Timing::Rows(_)) => ("rows follow each other at the step stated".to_owned(), false),
             (_, Timing::Counter { .. }) => ("the column counts from the record's start".to_owned(), false),
             _ if stated => ("as stated".to_owned(), false),
             (None, _) => {
@@ -203,11 +234,21 @@ impl Scan {
         let words = match self.timing {
             Timing::Unix { .. } => "count since 1970",
             Timing::Serial(_) => "spreadsheet days",
+            Timing::Rows(_) => "none, rows counted",
             Timing::Counter { .. } => "count from the start",
             _ if single && !stated => "year first",
             _ => words(order),
         };
-        Scanned { order, words, why, doubt, offset_s: self.offset_s, stats: best.stats }
+        Scanned {
+            order,
+            words,
+            why,
+            doubt,
+            offset_s: self.offset_s,
+            day_ends: self.day_ends,
+            yearless: self.yearless > 0 && self.yearless * 2 > best.stats.rows,
+            stats: best.stats,
+        }
     }
 }
 
@@ -228,7 +269,7 @@ impl Candidate {
     }
 
     fn push(&mut self, row: u64, moment: Moment) {
-        if let Some(instant) = self.resolver.instant(moment.us, moment.offset_s) {
+        if let Some(instant) = self.resolver.moment(&moment) {
             self.stats.push(row, instant);
         }
     }
@@ -239,6 +280,9 @@ impl Stats {
         Self {
             rows: 0,
             distances: BTreeMap::new(),
+            runs: BTreeMap::new(),
+            leaps: Vec::new(),
+            ends: None,
             blocks: BTreeMap::new(),
             sample: Vec::new(),
             before: None,
@@ -263,7 +307,11 @@ impl Stats {
                 self.settle_run();
                 self.run = (distance, 1);
             }
+            if distance > LEAP && self.leaps.len() < MOST_LEAPS {
+                self.leaps.push((before, instant));
+            }
         }
+        self.ends = Some((self.ends.map_or(instant, |ends| ends.0), instant));
         self.before = Some(instant);
         let key = instant.div_euclid(BLOCK);
         match &mut self.current {
@@ -283,6 +331,8 @@ impl Stats {
         let (distance, count) = self.run;
         if count > 0 && (self.distances.len() < DISTANCES || self.distances.contains_key(&distance)) {
             *self.distances.entry(distance).or_insert(0) += count;
+            let longest = self.runs.entry(distance).or_insert(0);
+            *longest = (*longest).max(count);
         }
     }
 

@@ -94,6 +94,17 @@ impl Series {
         }
     }
 
+    /// Leaves out all values from `len` on.
+    pub fn truncate(&mut self, len: usize) {
+        if len < self.len {
+            self.chunks.truncate(len.div_ceil(CHUNK));
+            if let Some(last) = self.chunks.last_mut().filter(|_| !len.is_multiple_of(CHUNK)) {
+                last.truncate(len % CHUNK);
+            }
+            self.len = len;
+        }
+    }
+
     /// The values in order.
     pub fn iter(&self) -> impl Iterator<Item = Option<f64>> + '_ {
         self.chunks.iter().flatten().map(|value| (!value.is_nan()).then_some(*value))

@@ -1,30 +1,64 @@
-//! Filled series to a record: sums over files, gaps and their remedy.
+//! Filled series to a record: sums over files, differences of running readings, gaps and their remedy.
 
 use super::fill::{Bits, Table};
-use super::grid::people_duration;
-use super::stamp::{DAY, SECOND};
-use super::{Clock, Extra, Finding, FindingKind, Series, Zone};
-use crate::case::GapRemedy;
+use super::roles::{TARGETS, Target};
+use super::stamp::SECOND;
+use super::{Clock, Extra, Finding, FindingKind, Role, Series};
+use crate::case::{GapRemedy, RecordCase, Values};
 use crate::fault::Result;
+use crate::numeric::Sum;
 
-/// Which of the table's series make up the record.
+mod gaps;
+mod register;
+mod samples;
+
+pub(super) use register::Register;
+
+/// Which of the table's series make up the record, as sums.
 #[derive(Debug, Default)]
-pub(super) struct Shape {
-    /// Series of supply, demand and net power, to be added up.
-    pub(super) targets: [Vec<usize>; 3],
+pub(super) struct Sums {
+    /// Number of series.
+    pub(super) series: usize,
+    /// Series of each sum with their signs.
+    pub(super) targets: [Vec<(usize, f64)>; TARGETS],
+    /// Whether a running reading is in the sum.
+    pub(super) own: [bool; TARGETS],
+    /// The series that each sum is written to.
+    pub(super) out: [Option<usize>; TARGETS],
+    /// Running readings.
+    pub(super) registers: Vec<Register>,
+    /// Series whose steps are covered by parts, with the series that says how far.
+    pub(super) spread: Vec<(usize, usize)>,
     /// Further columns: header, role and series.
-    pub(super) extras: Vec<(String, super::Role, usize)>,
+    pub(super) extras: Vec<(String, Role, usize)>,
+}
+
+/// Energy drawn and fed, where both were recorded.
+#[derive(Debug, Default)]
+struct Both {
+    drawn: Sum,
+    fed: Sum,
+    /// The smaller of the two in each interval, added up, and the number of intervals in which it is more than zero.
+    shared: Sum,
+    intervals: u64,
 }
 
 /// The last stage, resumable by interval.
 #[derive(Debug)]
 pub(super) struct Settle {
     table: Table,
-    shape: Shape,
+    sums: Sums,
     clock: Clock,
+    /// Stamps on the clock: one more than intervals where values belong to moments.
+    points: usize,
     remedy: GapRemedy,
+    samples: bool,
+    /// Longest distance of samples that a line joins, in steps.
+    joined: usize,
     counted: bool,
     next: usize,
+    both: Both,
+    hidden_kw: Vec<(usize, f64)>,
     missing: Bits,
     missing_count: u64,
     /// Of the missing intervals, those without any row.
@@ -40,21 +74,43 @@ pub(super) struct Settle {
 /// What the last stage yields.
 #[derive(Debug)]
 pub(super) struct Settled {
+    pub(super) clock: Clock,
     pub(super) targets: [Option<Series>; 3],
     pub(super) extras: Vec<Extra>,
     pub(super) filled: usize,
+    pub(super) hidden_kw: Vec<(usize, f64)>,
 }
 
 impl Settle {
-    pub(super) fn new(table: Table, shape: Shape, clock: Clock, remedy: GapRemedy, counted: bool) -> Self {
+    /// `longest_us` is the longest step of a file.
+    pub(super) fn new(
+        table: Table,
+        sums: Sums,
+        mut clock: Clock,
+        terms: &RecordCase,
+        longest_us: i64,
+        counted: bool,
+    ) -> Self {
+        let points = clock.intervals;
+        let samples = terms.reading == Values::Samples;
+        if (samples || sums.registers.iter().any(|register| !register.late)) && points > 1 {
+            // Between as many moments lies one interval less.
+            clock.intervals = points - 1;
+        }
+        let joined = (longest_us.max(4 * clock.step_us).max(3600 * SECOND) / clock.step_us) as usize;
         let missing = Bits::new(clock.intervals);
         Self {
             table,
-            shape,
+            sums,
             clock,
-            remedy,
+            points,
+            remedy: terms.remedies.gap,
+            samples,
+            joined,
             counted,
             next: 0,
+            both: Both::default(),
+            hidden_kw: Vec::new(),
             missing,
             missing_count: 0,
             rowless: 0,
@@ -68,55 +124,110 @@ impl Settle {
 
     /// Share done.
     pub(super) fn done(&self) -> f64 {
-        self.next as f64 / self.clock.intervals.max(1) as f64
+        self.next as f64 / self.points.max(1) as f64
     }
 
     /// Adds up the next intervals and looks for gaps; true once all are done.
     pub(super) fn advance(&mut self, budget: usize) -> Result<bool> {
-        let end = self.next.saturating_add(budget.max(1)).min(self.clock.intervals);
+        let end = self.next.saturating_add(budget.max(1)).min(self.points);
         for i in self.next..end {
+            self.whole_steps(i)?;
+            self.differences(i)?;
             let present = self.add_up(i)?;
-            if present {
-                self.close_run(i);
-            } else {
-                self.missing.set(i);
-                self.missing_count += 1;
-                self.rowless += u64::from(self.table.seen.iter().all(|seen| !seen.get(i)));
-                self.run.get_or_insert(i);
+            if i < self.clock.intervals && !self.samples {
+                self.note(i, present);
             }
         }
         self.next = end;
-        if end == self.clock.intervals {
-            self.close_run(end);
+        if end < self.points {
+            return Ok(false);
         }
-        Ok(end == self.clock.intervals)
+        if self.samples {
+            self.join_samples()?;
+            for i in 0..self.clock.intervals {
+                let present = self.present(i);
+                self.note(i, present);
+            }
+        }
+        self.close_run(self.clock.intervals);
+        Ok(true)
     }
 
-    /// Adds the series of each sum into its first, and tells whether net power is there.
-    fn add_up(&mut self, i: usize) -> Result<bool> {
-        let mut there = [None; 3];
-        for (target, there) in self.shape.targets.iter().zip(&mut there) {
-            let Some((first, rest)) = target.split_first() else { continue };
-            let mut sum = self.table.series[*first].get(i);
-            for other in rest {
-                sum = sum.zip(self.table.series[*other].get(i)).map(|(a, b)| a + b);
-            }
-            *there = Some(sum.is_some());
-            if !rest.is_empty() {
-                match sum {
-                    Some(sum) => self.table.series[*first].set(i, sum)?,
-                    None => self.table.series[*first].clear(i),
+    fn note(&mut self, i: usize, present: bool) {
+        if present {
+            self.close_run(i);
+        } else {
+            self.missing.set(i);
+            self.missing_count += 1;
+            self.rowless += u64::from(self.table.seen.iter().all(|seen| !seen.get(i)));
+            self.run.get_or_insert(i);
+        }
+    }
+
+    /// Whether all is there that net power needs.
+    fn present(&self, i: usize) -> bool {
+        let mut outs = self.sums.out[..=Target::Net as usize].iter().flatten().peekable();
+        if outs.peek().is_none() {
+            return self.sums.extras.iter().all(|extra| self.table.series[extra.2].get(i).is_some());
+        }
+        outs.all(|out| self.table.series[*out].get(i).is_some())
+    }
+
+    /// Steps of the clock that are covered by parts of intervals: only those covered whole count.
+    fn whole_steps(&mut self, i: usize) -> Result<()> {
+        for (series, cover) in &self.sums.spread {
+            match self.table.series[*cover].get(i) {
+                Some(covered) if covered > 1.0 - 1e-6 => {
+                    // Rows that overlap each other count together for their mean.
+                    if covered > 1.0 + 1e-6
+                        && let Some(value) = self.table.series[*series].get(i)
+                    {
+                        self.table.series[*series].set(i, value / covered)?;
+                    }
                 }
+                Some(_) => self.table.series[*series].clear(i),
+                None => {}
             }
         }
-        if there == [None; 3] {
-            return Ok(self
-                .shape
-                .extras
-                .iter()
-                .all(|(_, _, series)| self.table.series[*series].get(i).is_some()));
+        Ok(())
+    }
+
+    /// Adds up the series of each sum, and tells whether net power is there.
+    fn add_up(&mut self, i: usize) -> Result<bool> {
+        let mut found: [Option<f64>; TARGETS] = [None; TARGETS];
+        for (members, found) in self.sums.targets.iter().zip(&mut found) {
+            let mut sum: Option<f64> = None;
+            for (nth, (series, sign)) in members.iter().enumerate() {
+                let value = self.table.series[*series]
+                    .get(i)
+                    .map(|value| if *sign == 1.0 { value } else { sign * value });
+                sum = if nth == 0 { value } else { sum.zip(value).map(|(a, b)| a + b) };
+            }
+            *found = sum;
         }
-        Ok(there.iter().flatten().all(|there| *there))
+        for (target, found) in found.iter().enumerate().take(Target::Net as usize + 1) {
+            let Some(out) = self.sums.out[target] else { continue };
+            if self.sums.targets[target].len() == 1 && !self.sums.own[target] {
+                continue;
+            }
+            match *found {
+                Some(sum) => self.table.series[out].set(i, sum)?,
+                None => self.table.series[out].clear(i),
+            }
+        }
+        if let (Some(drawn), Some(fed)) = (found[Target::Drawn as usize], found[Target::Fed as usize]) {
+            self.both.drawn.add(drawn);
+            self.both.fed.add(fed);
+            if drawn > 0.0 && fed > 0.0 {
+                self.both.shared.add(drawn.min(fed));
+                self.both.intervals += 1;
+            }
+        }
+        if self.sums.out[..=Target::Net as usize].iter().all(Option::is_none) {
+            return Ok(self.present(i));
+        }
+        Ok((0..=Target::Net as usize)
+            .all(|target| self.sums.out[target].is_none() || found[target].is_some()))
     }
 
     fn close_run(&mut self, end: usize) {
@@ -140,12 +251,17 @@ impl Settle {
     pub(super) fn finish(mut self, files: &[String], findings: &mut Vec<Finding>) -> Result<Settled> {
         self.gaps(files, findings);
         self.clock_change(findings);
+        self.both_ways(findings);
+        let step_h = self.clock.step_s() / 3600.0;
+        for register in &self.sums.registers {
+            register.tell(step_h, &self.clock, findings);
+        }
         let mut targets: [Option<Series>; 3] = [None, None, None];
-        for (target, list) in targets.iter_mut().zip(&self.shape.targets) {
-            *target = list.first().map(|series| std::mem::take(&mut self.table.series[*series]));
+        for (target, out) in targets.iter_mut().zip(&self.sums.out) {
+            *target = out.map(|series| std::mem::take(&mut self.table.series[series]));
         }
         let mut extras: Vec<Extra> = self
-            .shape
+            .sums
             .extras
             .iter()
             .map(|(header, role, series)| Extra {
@@ -155,7 +271,8 @@ impl Settle {
             })
             .collect();
         for series in targets.iter_mut().flatten().chain(extras.iter_mut().map(|extra| &mut extra.values)) {
-            fill(series, self.remedy, self.clock.step_us)?;
+            series.truncate(self.clock.intervals);
+            gaps::fill(series, self.remedy, self.clock.step_us)?;
         }
         let mut filled = 0;
         let powered = targets.iter().any(Option::is_some);
@@ -180,205 +297,41 @@ impl Settle {
                 count: filled as u64,
                 first_row: None,
                 file: String::new(),
-                remedy: remedy_words(self.remedy).to_owned(),
+                remedy: gaps::words(self.remedy).to_owned(),
                 text: format!(
                     "{filled} of {} missing intervals were filled: {}.",
                     self.missing_count,
-                    remedy_words(self.remedy)
+                    gaps::words(self.remedy)
                 ),
                 changes_figures: true,
             });
         }
-        Ok(Settled { targets, extras, filled })
+        Ok(Settled { clock: self.clock, targets, extras, filled, hidden_kw: self.hidden_kw })
     }
 
-    fn gaps(&self, files: &[String], findings: &mut Vec<Finding>) {
-        let Some(first) = self.first_gap else { return };
-        let place = self.table.holes.get(&first).or_else(|| {
-            // The row after which the gap begins.
-            first.checked_sub(1).and_then(|before| self.table.leaps.get(&before))
-        });
-        let long: Vec<String> = self
-            .longest
-            .iter()
-            .map(|(len, start)| {
-                format!("{} from {}", people_duration(*len as f64 * self.clock.step_s()), self.stamp(*start))
-            })
-            .collect();
-        let cells = self.missing_count - self.rowless;
-        let cause = match (self.rowless, cells) {
-            (_, 0) => "there is no row for them".to_owned(),
-            (0, _) => "a cell of their row is empty or unreadable".to_owned(),
-            (rows, cells) => format!("{rows} have no row, {cells} an empty or unreadable cell"),
-        };
-        let text = format!(
-            "{} of {} intervals ({}) are missing: {cause}. {} {}.",
-            self.missing_count,
-            self.clock.intervals,
-            crate::units::people::percent(self.missing_count as f64 / self.clock.intervals.max(1) as f64),
-            match self.runs {
-                1 => "The gap is".to_owned(),
-                2 | 3 => format!("The {} gaps are", self.runs),
-                runs => format!("The longest of {runs} gaps are"),
-            },
-            long.join(", "),
-        );
-        findings.push(Finding {
-            kind: FindingKind::Gap,
-            count: self.missing_count,
-            first_row: place.map(|(_, row)| *row),
-            file: place.and_then(|(file, _)| files.get(*file)).cloned().unwrap_or_default(),
-            remedy: remedy_words(self.remedy).to_owned(),
-            text,
-            changes_figures: true,
-        });
-    }
-
-    /// Traces of summer time in stamps without a zone.
-    fn clock_change(&self, findings: &mut Vec<Finding>) {
-        if self.clock.zone != Zone::Unstated || self.counted || self.clock.step_us > 3600 * SECOND {
+    /// Where energy was drawn and fed in one interval: what the registers say beside what is left of it net.
+    fn both_ways(&self, findings: &mut Vec<Finding>) {
+        if self.both.intervals == 0 {
             return;
         }
-        let hour = 3600 * SECOND / self.clock.step_us;
-        let autumn = self
-            .table
-            .doubled
-            .iter()
-            .find(|(_, rows)| i64::try_from(**rows) == Ok(hour))
-            .map(|(day, _)| *day);
-        let mut traces = Vec::new();
-        if let Some(spring) = self.spring {
-            traces.push(format!("an hour is missing at {}", self.stamp(spring)));
-        }
-        if let Some(day) = autumn {
-            let i = ((day * DAY - self.clock.start_us) / self.clock.step_us).max(0) as usize;
-            let stamp = self.stamp(i);
-            traces.push(format!("an hour comes twice on {}", stamp.get(..10).unwrap_or("a day in autumn")));
-        }
-        if traces.is_empty() {
-            return;
-        }
+        let step_h = self.clock.step_s() / 3600.0;
+        let kwh = |power: f64| format!("{}\u{202f}kWh", crate::units::people::significant(power * step_h, 6));
+        let (drawn, fed, shared) = (self.both.drawn.value(), self.both.fed.value(), self.both.shared.value());
         findings.push(Finding {
-            kind: FindingKind::ClockChange,
-            count: traces.len() as u64,
+            kind: FindingKind::Netted,
+            count: self.both.intervals,
             first_row: None,
             file: String::new(),
-            remedy: "stamps taken as they stand".to_owned(),
+            remedy: "net of each interval taken".to_owned(),
             text: format!(
-                "The stamps seem to follow summer time: {}. State the zone (such as Europe/Berlin), and each row falls in its place.",
-                traces.join(" and ")
+                "In {} intervals energy was both drawn and fed. The registers add up to {} drawn and {} fed; net of each interval it is {} and {}. The net of each interval is used: what changes its sign within an interval does not show.",
+                self.both.intervals,
+                kwh(drawn),
+                kwh(fed),
+                kwh(drawn - shared),
+                kwh(fed - shared),
             ),
             changes_figures: true,
         });
-    }
-
-    /// A stamp for messages: without seconds, and without an offset that nobody stated.
-    fn stamp(&self, i: usize) -> String {
-        let stamp = self.clock.stamp(i);
-        let long = self.clock.step_us % (60 * SECOND) != 0;
-        let end = if long { 19 } else { 16 };
-        stamp.get(..end).unwrap_or(&stamp).replace('T', " ")
-    }
-}
-
-/// A remedy in words.
-fn remedy_words(remedy: GapRemedy) -> &'static str {
-    match remedy {
-        GapRemedy::LeaveOut => "left out",
-        GapRemedy::Hold => "the last value is held",
-        GapRemedy::Line => "a straight line joins the neighbours",
-        GapRemedy::Zero => "zero is taken",
-        GapRemedy::NeighbourDays => "the mean of the same time on the neighbouring days is taken",
-    }
-}
-
-/// Fills the missing values of a series where the remedy knows how.
-fn fill(series: &mut Series, remedy: GapRemedy, step_us: i64) -> Result<()> {
-    let len = series.len();
-    match remedy {
-        GapRemedy::LeaveOut => {}
-        GapRemedy::Zero => {
-            for i in 0..len {
-                if series.get(i).is_none() {
-                    series.set(i, 0.0)?;
-                }
-            }
-        }
-        GapRemedy::Hold => {
-            let mut last = None;
-            for i in 0..len {
-                match (series.get(i), last) {
-                    (Some(value), _) => last = Some(value),
-                    (None, Some(last)) => series.set(i, last)?,
-                    (None, None) => {}
-                }
-            }
-        }
-        GapRemedy::Line => {
-            let mut last: Option<(usize, f64)> = None;
-            for i in 0..len {
-                let Some(value) = series.get(i) else { continue };
-                if let Some((from, start)) = last {
-                    let steps = (i - from) as f64;
-                    for k in from + 1..i {
-                        series.set(k, start + (value - start) * ((k - from) as f64 / steps))?;
-                    }
-                }
-                last = Some((i, value));
-            }
-        }
-        GapRemedy::NeighbourDays => {
-            if DAY % step_us != 0 {
-                return Ok(());
-            }
-            let day = (DAY / step_us) as usize;
-            let mut found = Vec::new();
-            for i in (0..len).filter(|i| series.get(*i).is_none()) {
-                let before = i.checked_sub(day).and_then(|at| series.get(at));
-                let after = series.get(i + day);
-                let value = match (before, after) {
-                    (Some(before), Some(after)) => Some(before + (after - before) / 2.0),
-                    (one, other) => one.or(other),
-                };
-                found.extend(value.map(|value| (i, value)));
-            }
-            for (i, value) in found {
-                series.set(i, value)?;
-            }
-        }
-    }
-    Ok(())
-}
-
-#[cfg(test)]
-mod tests {
-    use super::*;
-
-    fn filled(values: &[Option<f64>], remedy: GapRemedy, step_us: i64) -> Vec<Option<f64>> {
-        let mut series = Series::from_values(values).unwrap();
-        fill(&mut series, remedy, step_us).unwrap();
-        series.iter().collect()
-    }
-
-    #[test]
-    fn remedies_fill_what_they_can() {
-        let values = [None, Some(1.0), None, None, Some(4.0), None];
-        let hour = 3600 * SECOND;
-        assert_eq!(filled(&values, GapRemedy::LeaveOut, hour), values);
-        assert_eq!(
-            filled(&values, GapRemedy::Hold, hour),
-            [None, Some(1.0), Some(1.0), Some(1.0), Some(4.0), Some(4.0)]
-        );
-        assert_eq!(
-            filled(&values, GapRemedy::Line, hour),
-            [None, Some(1.0), Some(2.0), Some(3.0), Some(4.0), None]
-        );
-        assert_eq!(
-            filled(&values, GapRemedy::Zero, hour),
-            [Some(0.0), Some(1.0), Some(0.0), Some(0.0), Some(4.0), Some(0.0)]
-        );
-        let half_days = [Some(1.0), Some(2.0), None, Some(4.0), Some(5.0), None];
-        let expected = [Some(1.0), Some(2.0), Some(3.0), Some(4.0), Some(5.0), Some(4.0)];
-        assert_eq!(filled(&half_days, GapRemedy::NeighbourDays, DAY / 2), expected);
     }
 }

@@ -5,6 +5,8 @@ use crate::case::DateOrder;
 
 mod fixed;
 mod month;
+#[cfg(test)]
+mod tests;
 
 use month::month;
 
@@ -13,6 +15,7 @@ pub(super) const SECOND: i64 = 1_000_000;
 pub(super) const DAY: i64 = 86_400 * SECOND;
 
 /// A stamp as it is written.
+#[allow(clippy::struct_excessive_bools, reason = "independent facts about a stamp")]
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
 pub(super) struct Written {
     /// Microseconds from 1970-01-01T00:00 on the clock that was read.
@@ -25,9 +28,25 @@ pub(super) struct Written {
     pub(super) timed: bool,
     /// Whether the time of day came with AM or PM.
     pub(super) halves: bool,
+    /// Whether the time of day was written as 24:00.
+    pub(super) day_end: bool,
+    /// Whether no year was written: [`NO_YEAR`] stands in its place.
+    pub(super) yearless: bool,
+    /// Which of the two hours that clocks show twice in autumn, where the stamp says so ("02:15A", "02:15B").
+    pub(super) fold: Option<Fold>,
     /// The mark between the parts of the date.
     pub(super) mark: u8,
 }
+
+/// One of the two hours that clocks show twice.
+#[derive(Debug, Clone, Copy, PartialEq, Eq)]
+pub(super) enum Fold {
+    First,
+    Second,
+}
+
+/// The year that stands for none: a common one, so that a typical year of 365 days has no hole.
+pub(super) const NO_YEAR: i64 = 2001;
 
 /// Days before each month in a year without leap day.
 const BEFORE: [i64; 12] = [0, 31, 59, 90, 120, 151, 181, 212, 243, 273, 304, 334];
@@ -53,6 +72,23 @@ pub(super) fn days(year: i64, month: i64, day: i64) -> Option<i64> {
     Some(past * 365 + past / 4 - past / 100 + past / 400 + before + day - 1 - 719_162)
 }
 
+/// Year, month and day of a count of days from 1970-01-01: the reverse of [`days`].
+pub(super) fn date_of(count: i64) -> (i64, i64, i64) {
+    // Years of 365.2425 days, put right by looking.
+    let mut year = 1970 + (count * 400).div_euclid(146_097);
+    while days(year, 1, 1).is_some_and(|first| first > count) {
+        year -= 1;
+    }
+    while days(year + 1, 1, 1).is_some_and(|first| first <= count) {
+        year += 1;
+    }
+    let mut month = 12;
+    while month > 1 && days(year, month, 1).is_some_and(|first| first > count) {
+        month -= 1;
+    }
+    (year, month, count - days(year, month, 1).unwrap_or(count) + 1)
+}
+
 /// Reads a stamp, a date with or without time of day.
 pub(super) fn stamp(cell: &[u8], order: DateOrder) -> Option<Written> {
     let cell = trim(cell);
@@ -61,7 +97,7 @@ pub(super) fn stamp(cell: &[u8], order: DateOrder) -> Option<Written> {
 
 /// Reads a stamp by scanning it part by part.
 fn scanned(cell: &[u8], order: DateOrder) -> Option<Written> {
-    let mut scan = Scan { rest: cell };
+    let mut scan = Scan { rest: cell, yearless: false };
     let (days, clear, mark, glued) = scan.date(order)?;
     let mut written = Written {
         civil_us: days.checked_mul(DAY)?,
@@ -69,8 +105,14 @@ fn scanned(cell: &[u8], order: DateOrder) -> Option<Written> {
         clear,
         timed: false,
         halves: false,
+        day_end: false,
+        yearless: scan.yearless,
+        fold: None,
         mark,
     };
+    if scan.yearless && scan.rest.is_empty() {
+        return None;
+    }
     if scan.rest.is_empty() && glued.is_none() {
         return Some(written);
     }
@@ -85,21 +127,25 @@ fn scanned(cell: &[u8], order: DateOrder) -> Option<Written> {
         None => scan.time()?,
     };
     written.civil_us += time;
+    written.day_end = time == DAY;
     written.timed = true;
     written.halves = halves;
+    written.fold = scan.fold();
     written.offset_s = scan.offset()?;
     Some(written)
 }
 
 /// Reads a time of day in microseconds; 24:00 is the day's end.
 pub(super) fn time_of_day(cell: &[u8]) -> Option<(i64, bool)> {
-    let mut scan = Scan { rest: trim(cell) };
+    let mut scan = Scan { rest: trim(cell), yearless: false };
     let time = scan.time()?;
+    scan.fold();
     scan.tail().then_some(time)
 }
 
 struct Scan<'a> {
     rest: &'a [u8],
+    yearless: bool,
 }
 
 impl Scan<'_> {
@@ -179,7 +225,21 @@ impl Scan<'_> {
             return None;
         }
         let (second, second_width) = self.number()?;
-        if second_width > 2 || self.skip(&[mark]) != 1 {
+        if second_width > 2 {
+            return None;
+        }
+        // "01-31 00:00" and "31.01. 00:00" state no year; a time of day must follow, since "1-2" is no date.
+        let dotted = mark == b'.' && self.rest.starts_with(b". ");
+        if width <= 2 && (dotted || self.rest.first() == Some(&b' ') || self.rest.first() == Some(&b'T')) {
+            self.skip(b".");
+            let (month, day) = match (order, mark) {
+                (_, b'-') | (DateOrder::MonthFirst | DateOrder::YearFirst, _) => (first, second),
+                (DateOrder::DayFirst, _) => (second, first),
+            };
+            self.yearless = true;
+            return Some((days(NO_YEAR, month, day)?, mark == b'-', mark, None));
+        }
+        if self.skip(&[mark]) != 1 {
             return None;
         }
         let (third, third_width) = self.number()?;
@@ -284,6 +344,17 @@ impl Scan<'_> {
         right.then_some(((hour * 3600 + minute * 60 + second) * SECOND + micro, halves.is_some()))
     }
 
+    /// The mark of one of the hours that come twice.
+    fn fold(&mut self) -> Option<Fold> {
+        let fold = match self.rest {
+            [b'A'] => Fold::First,
+            [b'B'] => Fold::Second,
+            _ => return None,
+        };
+        self.rest = &[];
+        Some(fold)
+    }
+
     /// The offset from UTC, if one is written; none if something else follows.
     #[allow(clippy::option_option, reason = "no offset and no stamp are two things")]
     fn offset(&mut self) -> Option<Option<i32>> {
@@ -337,8 +408,12 @@ impl Scan<'_> {
     }
 }
 
-fn century(year: i64) -> i64 {
-    if year < 70 { 2000 + year } else { 1900 + year }
+pub(super) fn century(year: i64) -> i64 {
+    match year {
+        0..70 => 2000 + year,
+        70..100 => 1900 + year,
+        _ => year,
+    }
 }
 
 fn compact(value: i64, width: usize) -> Option<(i64, bool, u8, Option<i64>)> {
@@ -363,115 +438,4 @@ fn compact(value: i64, width: usize) -> Option<(i64, bool, u8, Option<i64>)> {
         Some(_) => return None,
     };
     Some((days, true, b'0', time))
-}
-
-#[cfg(test)]
-mod tests {
-    use jiff::civil;
-    use proptest::prelude::*;
-
-    use super::*;
-
-    fn at(year: i64, month: i64, day: i64, seconds: i64) -> i64 {
-        days(year, month, day).unwrap() * DAY + seconds * SECOND
-    }
-
-    #[test]
-    fn one_moment_in_many_hands() {
-        let moment = at(2026, 1, 31, 13 * 3600 + 15 * 60);
-        for (cell, order) in [
-            ("2026-01-31T13:15", DateOrder::DayFirst),
-            ("2026-01-31 13:15:00", DateOrder::MonthFirst),
-            ("2026-01-31T13:15:00.000", DateOrder::DayFirst),
-            ("2026/01/31 13:15", DateOrder::DayFirst),
-            ("2026.1.31 13:15", DateOrder::DayFirst),
-            ("202601311315", DateOrder::DayFirst),
-            ("20260131131500", DateOrder::DayFirst),
-            ("20260131 1315", DateOrder::DayFirst),
-            ("20260131T131500", DateOrder::DayFirst),
-            ("31.01.2026 13:15", DateOrder::DayFirst),
-            ("31.1.26 13:15", DateOrder::DayFirst),
-            ("31/01/2026 13:15:00", DateOrder::DayFirst),
-            ("31-01-2026 13.15", DateOrder::DayFirst),
-            ("01/31/2026 1:15 PM", DateOrder::MonthFirst),
-            ("1/31/26 01:15:00 pm", DateOrder::MonthFirst),
-            ("1/31/2026, 1:15 p.m.", DateOrder::MonthFirst),
-            ("26-01-31 13:15", DateOrder::YearFirst),
-            ("31-Jan-2026 13:15", DateOrder::MonthFirst),
-            ("31 January 2026 13:15", DateOrder::DayFirst),
-            ("31. Januar 2026 13:15 Uhr", DateOrder::DayFirst),
-            ("Jan 31, 2026 13:15", DateOrder::DayFirst),
-            ("Sat 31/01/2026 13:15", DateOrder::DayFirst),
-            ("Sa, 31.01.2026 13:15", DateOrder::DayFirst),
-            ("31.01.2026 13:15 - 31.01.2026 13:30", DateOrder::DayFirst),
-            ("31/Jan/2026:13:15:00", DateOrder::DayFirst),
-        ] {
-            assert_eq!(stamp(cell.as_bytes(), order).map(|read| read.civil_us), Some(moment), "{cell}");
-        }
-    }
-
-    #[test]
-    fn offsets_midnight_and_fractions() {
-        let read = |cell: &str| {
-            stamp(cell.as_bytes(), DateOrder::DayFirst).map(|read| (read.civil_us, read.offset_s))
-        };
-        let midnight = at(2026, 2, 1, 0);
-        assert_eq!(read("2026-01-31 24:00"), Some((midnight, None)));
-        assert_eq!(read("2026-02-01"), Some((midnight, None)));
-        assert_eq!(read("2026-02-01T00:00Z"), Some((midnight, Some(0))));
-        assert_eq!(read("2026-02-01T00:00:00+01:00"), Some((midnight, Some(3600))));
-        assert_eq!(read("2026-02-01T00:00:00-0330"), Some((midnight, Some(-12_600))));
-        assert_eq!(read("2026-02-01 00:00 +02"), Some((midnight, Some(7200))));
-        assert_eq!(read("2026-02-01 00:00:00 UTC"), Some((midnight, Some(0))));
-        assert_eq!(read("2026-02-01T00:00:00+01:00[Europe/Berlin]"), Some((midnight, Some(3600))));
-        assert_eq!(read("2026-02-01 00:00:00,250"), Some((midnight + 250_000, None)));
-        assert_eq!(
-            stamp(b"12/31/2026 12:00 AM", DateOrder::MonthFirst).unwrap().civil_us,
-            at(2026, 12, 31, 0)
-        );
-        assert_eq!(time_of_day(b"7:05"), Some((25_500 * SECOND, false)));
-        assert_eq!(time_of_day(b"0015"), Some((900 * SECOND, false)));
-    }
-
-    #[test]
-    fn what_is_no_stamp_is_refused() {
-        for cell in [
-            "",
-            "12.5",
-            "2026-02-30",
-            "31.13.2026",
-            "hello",
-            "2026-01-01 25:00",
-            "2026-01-01 12:60",
-            "1234",
-            "Total",
-            "2026-01-01x",
-            "0.0.0",
-            "99999999",
-            "2026-01-01 00:00 foo",
-            "May",
-            "1-2",
-            "13:15",
-        ] {
-            assert_eq!(stamp(cell.as_bytes(), DateOrder::DayFirst), None, "{cell}");
-        }
-    }
-
-    proptest! {
-        #[test]
-        fn every_date_agrees_with_the_calendar(year in 1i16..9999, month in 1i8..=12, day in 1i8..=31) {
-            let expected = civil::Date::new(year, month, day).ok().map(|date| {
-                i64::from((date - civil::date(1970, 1, 1)).get_days())
-            });
-            prop_assert_eq!(days(i64::from(year), i64::from(month), i64::from(day)), expected);
-        }
-
-        #[test]
-        fn no_bytes_make_it_panic(bytes in proptest::collection::vec(any::<u8>(), 0..40)) {
-            for order in [DateOrder::DayFirst, DateOrder::MonthFirst, DateOrder::YearFirst] {
-                stamp(&bytes, order);
-            }
-            time_of_day(&bytes);
-        }
-    }
 }

@@ -9,11 +9,14 @@ use crate::case::{DateOrder, GapRemedy, RecordCase, RepeatRemedy, Stamp};
 use crate::fault::{Fault, Result};
 use crate::job::{Job, finish};
 
+mod clocks;
 mod containers;
 mod dialects;
 mod encodings;
+mod shapes;
 mod usage;
 mod workbooks;
+mod written;
 
 fn read_with(files: &[(&str, &[u8])], terms: &RecordCase, named: &[&str]) -> Result<Record> {
     let sources =
@@ -148,7 +151,7 @@ fn energy_becomes_average_power() {
 #[test]
 fn what_the_case_states_goes_before_guesses() {
     let text = "when;A;B;C\n31.01.2026 00:15;1;2;7\n31.01.2026 00:30;3;4;8\n";
-    let mut terms = RecordCase { stamp: Stamp::End, ..RecordCase::default() };
+    let mut terms = RecordCase { stamp: Some(Stamp::End), ..RecordCase::default() };
     terms.roles.insert("b".to_owned(), Role::Demand);
     terms.roles.insert("x.csv/a".to_owned(), Role::Supply);
     terms.units.insert("A".to_owned(), "W".to_owned());
@@ -298,8 +301,9 @@ fn files_of_one_site_share_a_clock() {
     let record = read_with(&[("jan", january), ("feb", february), ("sun", sun)], &terms, &[]).unwrap();
     assert_eq!(net(&record), [None, Some(8.0), Some(17.0), None]);
     let quarter: &[u8] = b"time,PV kW\n2026-01-31 23:00,10\n2026-01-31 23:15,20\n";
-    let fault = read_with(&[("jan", january), ("q", quarter)], &terms, &[]).unwrap_err();
-    insta::assert_snapshot!(fault, @"the files have different steps (jan: 1 h, q: 15 min) (q). Export the files with the same step; this version does not align them.");
+    let record = read_with(&[("jan", january), ("q", quarter)], &terms, &[]).unwrap();
+    assert_eq!(record.clock.step_s(), 900.0);
+    assert_eq!(net(&record)[3..7], [None, Some(8.0), Some(18.0), None]);
 }
 
 #[test]
@@ -331,7 +335,7 @@ fn faults_say_what_where_and_what_to_do() {
         assert!(fault.place.contains("meter.csv"), "{fault}");
         assert!(!fault.remedy.is_empty(), "{fault}");
     }
-    insta::assert_snapshot!(refusal("name,load kW\nfoo,1\nbar,5\n"), @"no column holds stamps; the first row of values begins “foo 1” (meter.csv, row 2). State which column holds the stamps (role time), or export the table with date and time in its first column.");
+    insta::assert_snapshot!(refusal("name,load kW\nfoo,1\nbar,5\n"), @"no column holds stamps; the first row of values begins “foo 1” (meter.csv, row 2). State which column holds the stamps (role time) or, if rows follow each other at a regular step, that step in seconds (record.step_s).");
 }
 
 #[test]

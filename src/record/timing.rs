@@ -5,10 +5,15 @@ use csv::ByteRecord;
 use super::Role;
 use super::dialect::{Dialect, Look, look};
 use super::number::{self, Cell, Marks};
-use super::stamp::{self, DAY, SECOND};
+use super::stamp::{self, DAY, Fold, SECOND};
 use super::words;
 use crate::case::DateOrder;
 use crate::fault::{Fault, Result, quote};
+
+mod parts;
+
+pub(super) use parts::Parts;
+use parts::parts;
 
 /// Where the moment of a row stands.
 #[derive(Debug, Clone, Copy, PartialEq, Eq)]
@@ -17,27 +22,42 @@ pub(super) enum Timing {
     Stamp(usize),
     /// Date in one column and time of day in another.
     DateClock(usize, usize),
+    /// Date in one column, and in another the time passed since the day began.
+    DateElapsed(usize, usize),
     /// Date in one column and the number of the hour in another; `first` is the number of the day's first hour.
     DateHour { date: usize, hour: usize, first: i64 },
+    /// Year, month, day, hour and minute in columns of their own.
+    Parts(Parts),
     /// Time since 1970-01-01T00:00Z in units of so many microseconds.
     Unix { column: usize, unit_us: i64 },
     /// Days since 1899-12-30, as spreadsheets count them.
     Serial(usize),
     /// Time since the first row of a plain count, in units of so many microseconds.
     Counter { column: usize, unit_us: i64, unit_known: bool },
+    /// No column at all: rows follow each other at a step that the person stated, in microseconds.
+    Rows(i64),
 }
 
 /// A row's moment as it is written.
+#[allow(clippy::struct_excessive_bools, reason = "independent facts about a stamp")]
 #[derive(Debug, Clone, Copy)]
 pub(super) struct Moment {
     /// Microseconds on the clock that was read, or since 1970 in UTC where the offset is 0.
     pub(super) us: i64,
+    /// Time passed since then, in microseconds: clocks may have changed meanwhile.
+    pub(super) after_us: i64,
     /// Offset from UTC in seconds east, if stated.
     pub(super) offset_s: Option<i32>,
     /// Whether day and month cannot be mistaken.
     pub(super) clear: bool,
     /// Whether AM or PM was written.
     pub(super) halves: bool,
+    /// Whether the time of day was written as 24:00.
+    pub(super) day_end: bool,
+    /// Whether no year was written.
+    pub(super) yearless: bool,
+    /// Which of the two hours that clocks show twice, if it is said.
+    pub(super) fold: Option<Fold>,
     /// The mark between the parts of the date.
     pub(super) mark: u8,
 }
@@ -50,35 +70,85 @@ impl Timing {
             | Self::Unix { column: c, .. }
             | Self::Serial(c)
             | Self::Counter { column: c, .. } => (c == column).then_some(Role::Time),
-            Self::DateClock(date, clock) | Self::DateHour { date, hour: clock, .. } => {
+            Self::DateClock(date, clock)
+            | Self::DateElapsed(date, clock)
+            | Self::DateHour { date, hour: clock, .. } => {
                 if column == date {
                     Some(Role::Date)
                 } else {
                     (column == clock).then_some(Role::Clock)
                 }
             }
+            Self::Parts(parts) => {
+                let clock = parts.hour == Some(column) || parts.minute == Some(column);
+                parts.columns().any(|part| part == column).then_some(if clock {
+                    Role::Clock
+                } else {
+                    Role::Date
+                })
+            }
+            Self::Rows(_) => None,
+        }
+    }
+
+    /// The columns used, the one with the date first.
+    pub(super) fn columns(self) -> Vec<usize> {
+        match self {
+            Self::DateClock(date, clock)
+            | Self::DateElapsed(date, clock)
+            | Self::DateHour { date, hour: clock, .. } => vec![date, clock],
+            Self::Parts(parts) => parts.columns().collect(),
+            other => other.column().into_iter().collect(),
         }
     }
 
     /// The column that holds the date, or all of it.
-    pub(super) fn column(self) -> usize {
+    pub(super) fn column(self) -> Option<usize> {
         match self {
             Self::Stamp(c)
             | Self::Unix { column: c, .. }
             | Self::Serial(c)
-            | Self::Counter { column: c, .. } => c,
-            Self::DateClock(date, _) | Self::DateHour { date, .. } => date,
+            | Self::Counter { column: c, .. } => Some(c),
+            Self::DateClock(date, _) | Self::DateElapsed(date, _) | Self::DateHour { date, .. } => Some(date),
+            Self::Parts(parts) => Some(parts.day),
+            Self::Rows(_) => None,
         }
+    }
+
+    /// What stands in that column.
+    pub(super) fn cell(self, record: &ByteRecord) -> &[u8] {
+        self.column().and_then(|column| record.get(column)).unwrap_or(b"")
+    }
+
+    /// Whether the stamps count from the record's start, so that they carry no date.
+    pub(super) fn counted(self) -> bool {
+        matches!(self, Self::Counter { .. } | Self::Rows(_))
     }
 
     /// Whether the stamps can depend on the order of day and month.
     pub(super) fn dated(self) -> bool {
-        matches!(self, Self::Stamp(_) | Self::DateClock(..) | Self::DateHour { .. })
+        matches!(self, Self::Stamp(_) | Self::DateClock(..) | Self::DateElapsed(..) | Self::DateHour { .. })
     }
 
-    /// Reads a row's moment; none if its cells hold none.
-    pub(super) fn read(self, record: &ByteRecord, order: DateOrder, marks: Marks) -> Option<Moment> {
-        let exact = |us: i64, offset_s| Moment { us, offset_s, clear: true, halves: false, mark: b'0' };
+    /// Reads the moment of the `nth` row of values, from 0; none if its cells hold none.
+    pub(super) fn read(
+        self,
+        record: &ByteRecord,
+        order: DateOrder,
+        marks: Marks,
+        nth: i64,
+    ) -> Option<Moment> {
+        let exact = |us: i64, offset_s| Moment {
+            us,
+            after_us: 0,
+            offset_s,
+            clear: true,
+            halves: false,
+            day_end: false,
+            yearless: false,
+            fold: None,
+            mark: b'0',
+        };
         let count = |column: usize| match number::parse(record.get(column)?, marks) {
             Cell::Number(value) if value.abs() < 1e17 => Some(value),
             _ => None,
@@ -88,9 +158,13 @@ impl Timing {
                 let read = stamp::stamp(record.get(column)?, order)?;
                 Some(Moment {
                     us: read.civil_us,
+                    after_us: 0,
                     offset_s: read.offset_s,
                     clear: read.clear,
                     halves: read.halves,
+                    day_end: read.day_end,
+                    yearless: read.yearless,
+                    fold: read.fold,
                     mark: read.mark,
                 })
             }
@@ -98,7 +172,41 @@ impl Timing {
                 let read = stamp::stamp(record.get(date)?, order)?;
                 let (time, halves) = stamp::time_of_day(record.get(clock)?)?;
                 let us = read.civil_us.div_euclid(DAY) * DAY + time;
-                Some(Moment { us, offset_s: read.offset_s, clear: read.clear, halves, mark: read.mark })
+                let fold = match record.get(clock)?.trim_ascii_end().last() {
+                    Some(b'A') => Some(Fold::First),
+                    Some(b'B') => Some(Fold::Second),
+                    _ => None,
+                };
+                Some(Moment {
+                    us,
+                    after_us: 0,
+                    offset_s: read.offset_s,
+                    clear: read.clear,
+                    halves,
+                    day_end: time == DAY,
+                    yearless: read.yearless,
+                    fold,
+                    mark: read.mark,
+                })
+            }
+            Self::DateElapsed(date, clock) => {
+                let read = stamp::stamp(record.get(date)?, order)?;
+                // "25:00:00" is written by the shape of the table alone.
+                let mut after = 0;
+                for part in record.get(clock)?.split(|byte| *byte == b':') {
+                    after = after * 60 + std::str::from_utf8(part).ok()?.parse::<i64>().ok()?;
+                }
+                Some(Moment {
+                    us: read.civil_us.div_euclid(DAY) * DAY,
+                    after_us: after * SECOND,
+                    offset_s: read.offset_s,
+                    clear: read.clear,
+                    halves: false,
+                    day_end: false,
+                    yearless: read.yearless,
+                    fold: read.fold,
+                    mark: read.mark,
+                })
             }
             Self::DateHour { date, hour, first } => {
                 let read = stamp::stamp(record.get(date)?, order)?;
@@ -109,9 +217,13 @@ impl Timing {
                 let us = read.civil_us.div_euclid(DAY) * DAY + (hour * 3600.0).round() as i64 * SECOND;
                 Some(Moment {
                     us,
+                    after_us: 0,
                     offset_s: read.offset_s,
                     clear: read.clear,
                     halves: false,
+                    day_end: false,
+                    yearless: read.yearless,
+                    fold: read.fold,
                     mark: read.mark,
                 })
             }
@@ -121,6 +233,25 @@ impl Timing {
             // Serial days carry rounding of the spreadsheet: whole seconds are what was meant.
             Self::Serial(column) => within((count(column)? - 25_569.0) * 86_400.0 * 1e6)
                 .map(|us| exact((us / 1e6).round() as i64 * SECOND, None)),
+            Self::Parts(parts) => {
+                let part =
+                    |column: usize| count(column).filter(|value| value.fract() == 0.0).map(|v| v as i64);
+                let year = parts.year.map_or(Some(stamp::NO_YEAR), part)?;
+                let days = stamp::days(stamp::century(year), part(parts.month)?, part(parts.day)?)?;
+                let hour = parts.hour.map_or(Some(0.0), count)? - parts.first as f64;
+                let minute = parts.minute.map_or(Some(0.0), count)?;
+                if !(0.0..=24.0).contains(&hour) || !(0.0..=60.0).contains(&minute) {
+                    return None;
+                }
+                let us = days * DAY + ((hour * 3600.0 + minute * 60.0) * 1e6).round() as i64;
+                let yearless = parts.year.is_none();
+                Some(Moment { day_end: hour == 24.0, yearless, ..exact(us, None) })
+            }
+            Self::Rows(step_us) => {
+                let number = |cell| matches!(number::parse(cell, marks), Cell::Number(_));
+                record.get(0).filter(|_| record.iter().any(number))?;
+                Some(exact(nth.saturating_mul(step_us), None))
+            }
             // A count of hours with a few decimals means whole milliseconds.
             Self::Counter { column, unit_us, .. } => within(count(column)? * unit_us as f64)
                 .map(|us| exact((us / 1e3).round() as i64 * 1000, None)),
@@ -191,18 +322,10 @@ pub(super) fn choose(
     name: &str,
     dialect: &Dialect,
     stated: &dyn Fn(usize) -> Option<Role>,
+    step_s: Option<f64>,
 ) -> Result<Timing> {
     let width = dialect.headers.len();
     let profiles: Vec<Profile> = (0..width).map(|column| Profile::new(dialect, column)).collect();
-    let by_day =
-        dialect.headers.iter().filter(|header| stamp::time_of_day(header.as_bytes()).is_some()).count();
-    if by_day >= 20 && by_day * 3 >= width * 2 {
-        return Err(Fault::new(
-            format!("the table has one row per day and {by_day} columns for the times of day"),
-            format!("{name}, row {}", dialect.header_row.unwrap_or(1)),
-            "Export the readings with one row per reading: this version reads no other shape.",
-        ));
-    }
     let find = |role: Role| (0..width).find(|column| stated(*column) == Some(role));
     let free = |column: &usize| {
         stated(*column).is_none_or(|role| matches!(role, Role::Time | Role::Date | Role::Clock))
@@ -242,6 +365,11 @@ pub(super) fn choose(
             return Ok(clock.map_or(Timing::Stamp(date), |clock| date_and(date, clock, &profiles)));
         }
     }
+    if stated_time.is_none()
+        && let Some(parts) = parts(dialect, &profiles, &free)
+    {
+        return Ok(Timing::Parts(parts));
+    }
     let counted = |column: usize| numeric(dialect, column, &profiles[column], stated_time == Some(column));
     let numbers = || (0..width).filter(|column| stated_time.map_or(free(column), |stated| stated == *column));
     let found = numbers()
@@ -250,6 +378,10 @@ pub(super) fn choose(
         .or_else(|| numbers().take(1).find_map(counted));
     if let Some(timing) = found {
         return Ok(timing);
+    }
+    // Rows without stamps, one step after the other.
+    if let Some(step_s) = step_s.filter(|step_s| (1e-6..=1e7).contains(step_s)) {
+        return Ok(Timing::Rows((step_s * 1e6).round() as i64));
     }
     let clocks_only = (0..width).any(|column| profiles[column].mostly(profiles[column].clocks));
     let (row, cells) = dialect.rows.first().map_or((dialect.first_row, String::new()), |(row, record)| {
@@ -262,7 +394,7 @@ pub(super) fn choose(
             format!("no column holds stamps; the first row of values begins {}", quote(&cells))
         },
         format!("{name}, row {row}"),
-        "State which column holds the stamps (role time), or export the table with date and time in its first column.",
+        "State which column holds the stamps (role time) or, if rows follow each other at a regular step, that step in seconds (record.step_s).",
     ))
 }
 

@@ -29,6 +29,21 @@ impl Unit {
         })
     }
 
+    /// Whether it measures energy.
+    pub(super) fn is_energy(self) -> bool {
+        matches!(self, Self::Wh | Self::Kwh | Self::Mwh | Self::Gwh)
+    }
+
+    /// The unit of energy that belongs to a unit of power; itself if it is one.
+    pub(super) fn energy(self) -> Self {
+        match self {
+            Self::W | Self::Wh => Self::Wh,
+            Self::Kw | Self::Kwh => Self::Kwh,
+            Self::Mw | Self::Mwh => Self::Mwh,
+            Self::Gw | Self::Gwh => Self::Gwh,
+        }
+    }
+
     /// As written for people.
     pub(super) fn label(self) -> &'static str {
         match self {
@@ -111,7 +126,8 @@ pub(super) fn in_unit_row(cell: &str) -> bool {
         )
 }
 
-fn money(low: &str) -> bool {
+/// Whether a unit in small letters is money per energy.
+pub(super) fn money(low: &str) -> bool {
     let has = |part: &str| low.contains(part);
     has("/") && ["eur", "€", "usd", "$", "ct", "gbp", "£", "chf", "cent"].iter().any(|coin| has(coin))
 }
@@ -144,6 +160,10 @@ pub(super) fn unit_of(header: &str) -> Stated {
         words.iter().rev().map(|word| whole_or_after_slash(word)).find(|stated| *stated != Stated::Nothing)
     {
         return stated;
+    }
+    // power_w: a single letter counts where names are joined by underscores.
+    if header.trim_end().to_lowercase().ends_with("_w") {
+        return Stated::Power(Unit::W);
     }
     // supplyKW, LoadkWh
     for ending in ["kWh", "KWh", "KWH", "MWh", "MWH", "kW", "KW", "MW"] {
@@ -189,6 +209,7 @@ mod tests {
             ("kWh", Unit::Kwh),
             ("Wind+PV kW", Unit::Kw),
             ("total_wh", Unit::Wh),
+            ("power_w", Unit::W),
         ] {
             assert_eq!(unit_of(header), Stated::Power(unit), "{header}");
         }

@@ -41,6 +41,61 @@ const CLOCK: Words = (
     &["time", "zeit", "heure", "hora", "tijd", "hour", "stunde", "uur", "clock"],
 );
 
+const END: Words = (
+    &[
+        "period end",
+        "interval end",
+        "hour ending",
+        "time ending",
+        "end time",
+        "endzeit",
+        "zeit bis",
+        "hourending",
+    ],
+    &["end", "ende", "ending", "endet", "bis", "to", "until", "hasta", "fin", "einde", "tot", "he", "stop"],
+);
+
+/// Whether the header of a stamp says that it marks the end of an interval.
+pub(super) fn says_end(header: &str) -> bool {
+    matches(header, END).is_some()
+}
+
+const CHANNEL: Words = (
+    &[
+        "channel",
+        "kanal",
+        "register",
+        "meter",
+        "obis",
+        "zähler",
+        "zaehler",
+        "messstelle",
+        "zählpunkt",
+        "zaehlpunkt",
+        "lokation",
+        "variable",
+        "direction",
+        "richtung",
+        "parameter",
+        "device",
+        "compteur",
+        "contador",
+        "medidor",
+        "sensor",
+        "circuit",
+        "measurement",
+    ],
+    &[
+        "type", "typ", "name", "code", "point", "tag", "signal", "kennzahl", "quantity", "stream", "suffix",
+        "series", "reihe", "ean", "site", "id", "flow", "sens",
+    ],
+);
+
+/// Whether a header names the channel, register or meter of a row.
+pub(super) fn says_channel(header: &str) -> bool {
+    matches(header, CHANNEL).is_some()
+}
+
 /// Whether a header speaks of a stamp.
 pub(super) fn says_time(header: &str) -> bool {
     matches(header, TIME).is_some() || says_date(header) || says_clock(header)
@@ -125,9 +180,6 @@ const UNUSED: Words = (
         "cosphi",
         "power factor",
         "leistungsfaktor",
-        "zählerstand",
-        "zaehlerstand",
-        "meter reading",
         "humidity",
         "ladezustand",
         "state of charge",
@@ -140,7 +192,6 @@ const UNUSED: Words = (
         "soc",
         "current",
         "strom_a",
-        "index",
         "id",
         "nr",
         "no",
@@ -158,6 +209,68 @@ const UNUSED: Words = (
         "dst",
     ],
 );
+const REGISTER: Words = (
+    &[
+        "zählerstand",
+        "zaehlerstand",
+        "meter reading",
+        "meterreading",
+        "meterstand",
+        "cumulative",
+        "kumul",
+        "cumul",
+        "lifetime",
+        "acumul",
+        "counter",
+        "register",
+        "totali",
+    ],
+    &["reading", "index", "total", "stand", "relevé", "lectura", "odometer"],
+);
+
+/// Whether a header speaks of a running meter reading.
+pub(super) fn says_register(header: &str) -> bool {
+    matches(header, REGISTER).is_some() || obis(header).is_some_and(|code| code.1 == 8)
+}
+
+/// The quantity and the kind of value of a code of the OBIS scheme (IEC 62056-61), "1-1:1.29.0": C and D of A-B:C.D.E.
+fn obis(header: &str) -> Option<(u32, u32)> {
+    let code = header
+        .split(|c: char| !(c.is_ascii_digit() || matches!(c, '.' | ':' | '-' | '*')))
+        .find(|word| word.matches('.').count() == 2)?;
+    let code = code.rsplit(':').next()?;
+    let code = code.split('*').next()?;
+    let mut parts = code.split('.').map(|part| part.parse::<u32>().ok().filter(|part| *part < 256));
+    let (c, d, _) = (parts.next()??, parts.next()??, parts.next()??);
+    Some((c, d))
+}
+
+/// What a code of the OBIS scheme, or the sign that meters print in its place, says of the role.
+fn coded(header: &str) -> Option<Guess> {
+    if let Some((quantity, _)) = obis(header) {
+        return Some(match quantity {
+            1 | 21 | 41 | 61 => Guess::Role(Role::Import, "a code for active energy drawn"),
+            2 | 22 | 42 | 62 => Guess::Role(Role::Export, "a code for active energy fed"),
+            16 => Guess::Role(Role::NetImport, "a code for active energy, net"),
+            3..=8 => Guess::Role(Role::Reactive, "a code for reactive energy"),
+            14 => Guess::Role(Role::Frequency, "a code for frequency"),
+            _ => Guess::Role(Role::Ignore, "a code for another quantity"),
+        });
+    }
+    let words =
+        || header.split(|c: char| c.is_whitespace() || matches!(c, '[' | ']' | '(' | ')' | ',' | '/' | '_'));
+    let says = |signs: &[&str]| words().any(|word| signs.contains(&word));
+    if says(&["A+", "+A", "P+", "+P"]) {
+        Some(Guess::Role(Role::Import, "the sign for active energy drawn"))
+    } else if says(&["A-", "-A", "P-", "-P"]) {
+        Some(Guess::Role(Role::Export, "the sign for active energy fed"))
+    } else if says(&["R+", "R-", "+R", "-R", "Q+", "Q-", "+Q", "-Q", "Ri+", "Ri-", "Rc+", "Rc-"]) {
+        Some(Guess::Role(Role::Reactive, "the sign for reactive energy"))
+    } else {
+        None
+    }
+}
+
 const NET: Words =
     (&["netto", "saldo", "solde", "balance", "bilanz", "residual", "residuel"], &["net", "neto", "nette"]);
 const IMPORT: Words = (
@@ -262,6 +375,9 @@ const GRID: Words = (&[], &["grid", "netz", "red", "réseau", "reseau", "mains",
 /// What a header says of the role of a column of numbers.
 pub(super) fn guess(header: &str) -> Guess {
     let has = |words: Words| matches(header, words);
+    if let Some(guess) = coded(header) {
+        return guess;
+    }
     if let Some(word) = has(OF_STORE) {
         if has(DISCHARGE).is_some() {
             return Guess::Role(Role::StoreDischarge, word);
@@ -337,6 +453,11 @@ mod tests {
             ("Status", Role::Quality),
             ("battery discharge", Role::StoreDischarge),
             ("Temperatur", Role::Ignore),
+            ("DE000123 / 1-1:1.29.0", Role::Import),
+            ("1-0:2.8.0*255 (kWh)", Role::Export),
+            ("A- [kWh]", Role::Export),
+            ("1-1:3.29.0", Role::Reactive),
+            ("Zählerstand Bezug", Role::Import),
         ] {
             assert!(
                 matches!(guess(header), Guess::Role(found, _) if found == role),

@@ -4,7 +4,8 @@ use jiff::civil::DateTime;
 use jiff::tz::{AmbiguousOffset, TimeZone};
 use jiff::{SignedDuration, Timestamp};
 
-use super::stamp::{DAY, SECOND};
+use super::stamp::{DAY, Fold, SECOND};
+use super::timing::Moment;
 
 /// A span of local readings in which the offset holds for certain: start, end, offset (all microseconds).
 type Steady = (i64, i64, i64);
@@ -23,6 +24,43 @@ impl Resolver {
     /// A resolver for stamps in `zone`, or for stamps that are taken as they stand.
     pub(super) fn new(zone: Option<TimeZone>, falling: bool) -> Self {
         Self { zone, falling, before: None, steady: (0, 0, 0) }
+    }
+
+    /// The instant of a moment, or none if clocks in the zone never show it.
+    ///
+    /// Time counted since a day's beginning runs on past changes of the clock; where no zone is known it ends with the day.
+    pub(super) fn moment(&mut self, moment: &Moment) -> Option<i64> {
+        if let (Some(fold), None, Some(_)) = (moment.fold, moment.offset_s, &self.zone) {
+            let both = self.moments(moment);
+            let instant = if fold == Fold::Second { both[1].or(both[0]) } else { both[0] };
+            self.before = instant.or(self.before);
+            return instant;
+        }
+        if moment.after_us == 0 {
+            return self.instant(moment.us, moment.offset_s);
+        }
+        if self.zone.is_none() && moment.after_us >= DAY {
+            return None;
+        }
+        self.instant(moment.us, moment.offset_s).map(|instant| instant + moment.after_us)
+    }
+
+    /// Every instant at which clocks show a moment: two in the hour that comes twice, none in the one left out.
+    pub(super) fn moments(&self, moment: &Moment) -> [Option<i64>; 2] {
+        match (moment.offset_s, &self.zone) {
+            (Some(offset), _) => [Some(moment.us - i64::from(offset) * SECOND), None],
+            (None, None) => [Some(moment.us + moment.after_us), None],
+            (None, Some(zone)) => {
+                let read = DateTime::constant(1970, 1, 1, 0, 0, 0, 0)
+                    .checked_add(SignedDuration::from_micros(moment.us));
+                let shift = |offset: jiff::tz::Offset| moment.us - i64::from(offset.seconds()) * SECOND;
+                match read.map(|read| zone.to_ambiguous_timestamp(read).offset()) {
+                    Ok(AmbiguousOffset::Unambiguous { offset }) => [Some(shift(offset)), None],
+                    Ok(AmbiguousOffset::Fold { before, after }) => [Some(shift(before)), Some(shift(after))],
+                    Ok(AmbiguousOffset::Gap { .. }) | Err(_) => [None, None],
+                }
+            }
+        }
     }
 
     /// The instant of a reading, or none if clocks in the zone never show it.

@@ -33,6 +33,7 @@ fn empty(step_s: i64, intervals: usize) -> Record {
         extras: Vec::new(),
         findings: Vec::new(),
         reading: Reading::default(),
+        hidden_kw: Vec::new(),
         filled: 0,
     }
 }

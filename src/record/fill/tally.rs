@@ -1,10 +1,11 @@
 //! What the second pass found, told in sentences.
 
 use super::super::grid::people_duration;
-use super::super::{Clock, Finding, FindingKind};
-use super::Fill;
+use super::super::{Finding, FindingKind};
+use super::{Fill, Use};
 use crate::case::RepeatRemedy;
 use crate::fault::quote;
+use crate::units::people;
 
 /// How often something was seen, and where first.
 #[derive(Debug, Default, Clone)]
@@ -27,7 +28,7 @@ impl Tally {
 
 impl Fill {
     /// Lists what was found, in words.
-    pub(in crate::record) fn finish(self, clock: &Clock, findings: &mut Vec<Finding>) {
+    pub(in crate::record) fn finish(self, findings: &mut Vec<Finding>) {
         let file = self.plan.name.clone();
         let mut say = |kind, tally: &Tally, remedy: &str, changes: bool, text: String| {
             if tally.count > 0 {
@@ -98,7 +99,7 @@ impl Fill {
             format!(
                 "{} off the regular step of {}: {}.",
                 rows(self.off_step.count, "lies", "lie"),
-                people_duration(clock.step_s()),
+                people_duration(self.plan.fit.step_us as f64 / 1e6),
                 first(&self.off_step)
             ),
         );
@@ -111,7 +112,7 @@ impl Fill {
                 "{} up to {} off the regular step of {}: {}.",
                 rows(self.snapped.count, "lies", "lie"),
                 people_duration(self.snapped_most as f64 / 1e6),
-                people_duration(clock.step_s()),
+                people_duration(self.plan.fit.step_us as f64 / 1e6),
                 first(&self.snapped)
             ),
         );
@@ -164,6 +165,61 @@ impl Fill {
                 first(&self.conflict)
             ),
         );
+        let count = self.rows.max(1);
+        say(
+            FindingKind::Quality,
+            &self.marked_missing,
+            "taken as missing",
+            true,
+            format!(
+                "{} marked as missing: {}.",
+                rows(self.marked_missing.count, "is", "are"),
+                first(&self.marked_missing)
+            ),
+        );
+        say(
+            FindingKind::Quality,
+            &self.estimated,
+            "kept as read",
+            false,
+            format!(
+                "{} marked as estimated or substituted, {} of all: {}.",
+                rows(self.estimated.count, "is", "are"),
+                people::percent(self.estimated.count as f64 / count as f64),
+                first(&self.estimated)
+            ),
+        );
+        say(
+            FindingKind::TypicalYear,
+            &self.leap_days,
+            "left out",
+            true,
+            format!(
+                "{} on 29 February, which the record's years do not have: {}.",
+                rows(self.leap_days.count, "lies", "lie"),
+                first(&self.leap_days)
+            ),
+        );
+        let phases: Vec<&Use> = self.plan.uses.iter().filter(|column| column.phase).collect();
+        let total: f64 = phases.iter().map(|column| column.sum.value()).sum();
+        let largest = phases.iter().fold(None, |most: Option<&Use>, column| match most {
+            Some(most) if most.sum.value() >= column.sum.value() => Some(most),
+            _ => Some(column),
+        });
+        if let Some(largest) = largest
+            && total > 0.0
+        {
+            let headers: Vec<String> = phases.iter().map(|column| quote(&column.header)).collect();
+            let tally =
+                Tally { count: phases.len() as u64, first_row: self.plan.first_row, what: String::new() };
+            let text = format!(
+                "The phases {} are added up; the largest share is {} with {} of the energy.",
+                headers.join(", "),
+                quote(&largest.header),
+                people::percent(largest.sum.value() / total)
+            );
+            say(FindingKind::Phases, &tally, "added up", false, text);
+        }
         for column in &self.plan.uses {
             let header = quote(&column.header);
             let cells = |tally: &Tally, what: &str, many: &str| {

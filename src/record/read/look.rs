@@ -6,9 +6,9 @@ use super::super::archive::{self, Archive};
 use super::super::decode::{self, Container, Decoded, Kind};
 use super::super::made::Made;
 use super::super::sheets::{self, WorkbookSheet};
-use super::super::{Finding, FindingKind, Memory, Source, dialect, nem12, roles, timing, usage_xml};
-use super::{File, Reader};
-use crate::case::RecordCase;
+use super::super::{Finding, FindingKind, Memory, Source, nem12, usage_xml};
+use super::Reader;
+use super::table::Unsurveyed;
 use crate::fault::{Fault, Result, quote};
 
 /// Largest workbook (bytes).
@@ -52,6 +52,8 @@ pub(super) struct Look {
     archives: Vec<Opened>,
     /// Files that are no table.
     refused: Vec<Box<dyn Source>>,
+    /// Tables whose channels are still to be listed.
+    pub(super) surveys: VecDeque<Unsurveyed>,
     workbook: Workbook,
     /// The workbook that is waited for, by its name and the archive that it lies in.
     awaited: Option<(String, Option<usize>)>,
@@ -71,6 +73,7 @@ impl Look {
             queue: sources.into_iter().map(|source| Waiting { source, within: None }).collect(),
             archives: Vec::new(),
             refused: Vec::new(),
+            surveys: VecDeque::new(),
             workbook: Workbook::None,
             awaited: None,
             workbooks: Vec::new(),
@@ -159,7 +162,6 @@ impl Reader {
                 "Correct the name, or remove the entry.",
             ));
         }
-        self.total = self.sources.iter().flatten().map(|source| source.len()).sum::<u64>().max(1);
         Ok(true)
     }
 
@@ -237,7 +239,7 @@ impl Reader {
             Kind::Nem12 | Kind::Usage => {
                 let text = Decoded::open(source, &container);
                 let make = if container.kind == Kind::Nem12 { nem12::tables } else { usage_xml::tables };
-                for (text, made) in make(text, self.terms.stamp, &mut self.findings)? {
+                for (text, made) in make(text, self.terms.stamp.unwrap_or_default(), &mut self.findings)? {
                     self.made_table(&name, text, made)?;
                 }
                 Ok(())
@@ -323,7 +325,9 @@ impl Reader {
 
     /// Tells of characters that were left out because nobody sees them.
     pub(super) fn hidden(&mut self, at: usize, count: u64) {
-        if count == 0 {
+        // The channels of a table share its characters.
+        let again = at > 0 && self.files[at - 1].source == self.files[at].source;
+        if count == 0 || again {
             return;
         }
         self.findings.push(Finding {
@@ -383,38 +387,18 @@ impl Reader {
         made: Made,
     ) -> Result<()> {
         let name = source.name().to_owned();
-        match self.columns(name, container, head, made) {
-            Ok(file) => {
-                self.files.push(file);
-                self.sources.push(Some(source));
+        let at = self.sources.len();
+        let looked = self.shape(name, container, head, made).and_then(|(table, keys)| match keys {
+            Some(keys) => {
+                self.look.surveys.push_back(Unsurveyed { source: at, table, keys });
                 Ok(())
             }
-            Err(fault) => {
-                self.look.refused.push(source);
-                Err(fault)
-            }
+            None => self.add(at, &table, None),
+        });
+        match looked {
+            Ok(()) => self.sources.push(Some(source)),
+            Err(_) => self.look.refused.push(source),
         }
-    }
-
-    fn columns(&mut self, name: String, container: Container, head: &[u8], made: Made) -> Result<File> {
-        let stated;
-        let terms = if made.words.is_empty() {
-            &self.terms
-        } else {
-            stated = RecordCase {
-                separator: Some('\t'),
-                decimal: if made.point { Some('.') } else { self.terms.decimal },
-                ..self.terms.clone()
-            };
-            &stated
-        };
-        let mut dialect = dialect::decide(&name, head, terms)?;
-        if !made.runs.is_empty() {
-            dialect.renumber(&made.runs);
-        }
-        let role = |column: usize| roles::stated(&terms.roles, &name, &dialect.headers[column]).copied();
-        let timing = timing::choose(&name, &dialect, &role)?;
-        let columns = roles::columns(&name, &dialect, timing, terms, &self.named)?;
-        Ok(File { name, container, made, dialect, timing, columns, scanned: None })
+        looked
     }
 }

@@ -1,8 +1,8 @@
 //! How the columns of a site add up to supply, demand and net power.
 
 use super::super::unit::Unit;
-use super::super::words::Guess;
-use super::super::{Finding, FindingKind, Role};
+use super::super::words::{self, Guess};
+use super::super::{Finding, FindingKind, Role, site_name};
 use super::{Column, Target, is_extra, is_power, key};
 use crate::fault::{Fault, Result, quote};
 
@@ -11,7 +11,9 @@ pub(in crate::record) fn plan(
     files: &mut [(String, Vec<Column>)],
     findings: &mut Vec<Finding>,
 ) -> Result<()> {
+    by_file_name(files);
     settle_open(files, findings);
+    beside_intervals(files);
     let count =
         |role: Role| files.iter().flat_map(|file| &file.1).filter(|column| column.role == role).count();
     let [supply, demand, import, export] =
@@ -19,15 +21,19 @@ pub(in crate::record) fn plan(
     let generated = supply + count(Role::Generation);
     let nets = count(Role::NetImport) + count(Role::NetExport);
     let grid = import + export + nets > 0;
+    let both = import > 0 && export > 0;
     let mut doubt = None;
     for column in files.iter_mut().flat_map(|file| &mut file.1) {
         use Target::{Demand, Net, Supply};
-        // Import and export stand for net power only where no net column does.
+        // Import and export stand for net power only where no net column does. What a store that is there already takes
+        // and gives is taken out again: the record is the site without it.
         let (drawn, fed) = match column.role {
             Role::Import if nets == 0 => (1.0, 0.0),
             Role::Export if nets == 0 => (0.0, 1.0),
             Role::NetImport => (1.0, 0.0),
             Role::NetExport => (0.0, 1.0),
+            Role::StoreCharge if grid && column.counts() => (0.0, 1.0),
+            Role::StoreDischarge if grid && column.counts() => (1.0, 0.0),
             _ => (0.0, 0.0),
         };
         let out = fed - drawn;
@@ -42,18 +48,30 @@ pub(in crate::record) fn plan(
                 vec![(Supply, 1.0), (Demand, 1.0)]
             }
             Role::Supply | Role::Generation => vec![(Supply, 1.0)],
-            Role::Demand if generated == 0 && (nets > 0 || (import > 0 && export > 0)) => {
+            Role::Demand if generated == 0 && (nets > 0 || both) => {
                 vec![(Demand, 1.0), (Supply, 1.0)]
             }
             Role::Demand => vec![(Demand, 1.0)],
             _ if out == 0.0 => Vec::new(),
             _ if generated > 0 && demand > 0 => Vec::new(),
             _ if generated > 0 => vec![(Demand, 0.0 - out)],
-            _ if demand > 0 && (nets > 0 || (import > 0 && export > 0)) => vec![(Supply, out)],
+            _ if demand > 0 && (nets > 0 || both) => vec![(Supply, out)],
             _ if demand > 0 => Vec::new(),
-            _ if nets == 0 && export == 0 => vec![(Demand, 1.0)],
+            _ if nets == 0 && export == 0 => vec![(Demand, 0.0 - out)],
             _ => vec![(Net, out)],
         };
+        if both && nets == 0 && !column.into.is_empty() {
+            match column.role {
+                Role::Import => column.into.push((Target::Drawn, 1.0)),
+                Role::Export => column.into.push((Target::Fed, 1.0)),
+                _ => {}
+            }
+        }
+        if matches!(column.role, Role::StoreCharge | Role::StoreDischarge) && !column.into.is_empty() {
+            column
+                .why
+                .push_str("; taken out of the site's power, which is given as it would be without the store");
+        }
         if is_power(column.role) && column.into.is_empty() {
             column.why.push_str("; not needed beside the other columns");
         }
@@ -71,7 +89,7 @@ pub(in crate::record) fn plan(
     if let Some(text) = doubt {
         findings.push(note(FindingKind::SignDoubt, 1, "", "taken as zero", text.to_owned(), true));
     }
-    if generated == 0 && demand == 0 && (nets > 0 || (import > 0 && export > 0)) {
+    if generated == 0 && demand == 0 && (nets > 0 || both) {
         findings.push(note(
             FindingKind::Netted,
             1,
@@ -87,6 +105,62 @@ pub(in crate::record) fn plan(
         return Err(nothing(files));
     }
     Ok(())
+}
+
+/// Roles of columns whose headers say nothing, from the name of their file.
+fn by_file_name(files: &mut [(String, Vec<Column>)]) {
+    let guess = |file: &str| match words::guess(&site_name(file)) {
+        Guess::Role(role, word) => Some((role, word)),
+        _ => None,
+    };
+    let named = |role: Role| files.iter().any(|(file, _)| guess(file).is_some_and(|guess| guess.0 == role));
+    // "export.csv" alone is a file that somebody exported.
+    let meters = named(Role::Import) && named(Role::Export);
+    for (file, columns) in files.iter_mut() {
+        let Some((role, word)) = guess(file) else { continue };
+        let usable = match role {
+            Role::Supply | Role::Demand | Role::Generation => true,
+            Role::Import | Role::Export => meters,
+            _ => false,
+        };
+        if !usable || columns.iter().any(|column| is_power(column.role)) {
+            continue;
+        }
+        let open = |column: &Column| column.open && column.guess == Guess::Unknown && column.look.filled > 0;
+        let powers = columns.iter().filter(|column| open(column) && column.unit.is_some()).count();
+        let many = columns.iter().filter(|column| open(column)).count();
+        for column in columns.iter_mut().filter(|column| open(column)) {
+            let one_sign = column.look.negative == 0 || column.look.positive == 0;
+            if one_sign && (column.unit.is_some() || (powers == 0 && many == 1)) {
+                column.take(role, format!("its file's name says {}", quote(word)));
+            }
+        }
+    }
+}
+
+/// Leaves out running readings where the same file holds the energy of the intervals beside them.
+fn beside_intervals(files: &mut [(String, Vec<Column>)]) {
+    let class = |role: Role| match role {
+        Role::Import | Role::Demand | Role::NetImport => 1,
+        Role::Export | Role::NetExport => 2,
+        Role::Supply | Role::Generation => 3,
+        _ => 0,
+    };
+    let intervals: Vec<(String, u8)> = files
+        .iter()
+        .flat_map(|(file, columns)| columns.iter().map(move |column| (file, column)))
+        .filter(|(_, column)| !column.register && class(column.role) > 0)
+        .map(|(file, column)| (file.clone(), class(column.role)))
+        .collect();
+    for (file, columns) in files.iter_mut() {
+        for column in columns.iter_mut().filter(|column| column.register && !column.stated) {
+            let class = class(column.role);
+            if class > 0 && intervals.iter().any(|(other, known)| other == file && *known == class) {
+                column.role = Role::Ignore;
+                column.why.push_str("; a running reading beside the values of the intervals");
+            }
+        }
+    }
 }
 
 /// Roles of columns whose headers say nothing, from what else is there and from their values.
@@ -150,24 +224,56 @@ fn settle_open(files: &mut [(String, Vec<Column>)], findings: &mut Vec<Finding>)
         }
         return;
     }
+    // Channels of one table, and the phases of one connection, are taken together.
+    let apart: Vec<(usize, usize)> = open.iter().copied().filter(|(f, c)| !files[*f].1[*c].phase).collect();
+    let channels = files.len() > 1 && files.iter().all(|file| file.0 == files[0].0);
+    if apart.is_empty() || channels {
+        let mut names = Vec::new();
+        for (f, c) in open {
+            let column = &mut files[f].1[c];
+            let often_zero = column.look.zeros * 5 > column.look.numbers;
+            let role = if often_zero && channels && !supply { Role::Supply } else { Role::Demand };
+            column
+                .take(role, "no header says what is what; channels of one quantity are added up".to_owned());
+            names.push(format!(
+                "{} ({})",
+                quote(&column.header),
+                if role == Role::Supply { "supply" } else { "demand" }
+            ));
+        }
+        let text =
+            format!("The headers do not say what these columns are; they are added up: {}.", list(&names));
+        findings.push(note(FindingKind::SignDoubt, names.len() as u64, "", "role guessed", text, true));
+        return;
+    }
     // Of two columns the one that is often zero is supply, as the sun does not shine at night.
     let zeros = |(f, c): (usize, usize)| {
         let look = &files[f].1[c].look;
         look.zeros as f64 / look.numbers.max(1) as f64
     };
-    let idle = open.iter().copied().find(|at| !supply && zeros(*at) > 0.2);
-    let busy = open.iter().copied().find(|at| Some(*at) != idle && zeros(*at) < 0.1);
-    let (idle, busy) = if busy.is_some() { (idle, busy) } else { (None, Some(open[0])) };
-    for (at, role, why) in [
+    let mut idle: Vec<_> = open.iter().copied().filter(|at| !supply && zeros(*at) > 0.2).collect();
+    let mut busy: Vec<_> = open.iter().copied().filter(|at| !idle.contains(at) && zeros(*at) < 0.1).collect();
+    if busy.is_empty() {
+        (idle, busy) = (Vec::new(), vec![open[0]]);
+    }
+    // Without units nothing says that further columns are of the same kind.
+    if !open.iter().all(|(f, c)| files[*f].1[*c].unit.is_some()) {
+        idle.truncate(1);
+        busy.truncate(1);
+    }
+    for (list, role, why) in [
         (idle, Role::Supply, "it is zero for much of the time"),
         (busy, Role::Demand, "no header says what is what"),
     ] {
-        let Some((f, c)) = at else { continue };
-        let (file, columns) = &mut files[f];
-        columns[c].take(role, why.to_owned());
-        let name = if role == Role::Supply { "supply" } else { "demand" };
-        let text = format!("Column {} is taken as {name} by a guess: {why}.", quote(&columns[c].header));
-        findings.push(note(FindingKind::SignDoubt, 1, file, "role guessed", text, true));
+        let added = if list.len() > 1 { ", added to the others of its kind" } else { "" };
+        for (f, c) in list {
+            let (file, columns) = &mut files[f];
+            columns[c].take(role, why.to_owned());
+            let name = if role == Role::Supply { "supply" } else { "demand" };
+            let text =
+                format!("Column {} is taken as {name} by a guess: {why}{added}.", quote(&columns[c].header));
+            findings.push(note(FindingKind::SignDoubt, 1, file, "role guessed", text, true));
+        }
     }
 }
 
@@ -205,16 +311,40 @@ fn units(files: &mut [(String, Vec<Column>)], findings: &mut Vec<Finding>) {
             if let Some(unit) = column.unit {
                 let how = if column.stated_unit { "as stated" } else { "as the header or units row says" };
                 column.why = format!("{}; {} {how}", column.why, unit.label());
+            } else if let Some((unit, which)) = column.hint {
+                column.unit = Some(unit);
+                column.why = format!("{}; {}, as {which}", column.why, unit.label());
             } else {
                 column.unit = Some(Unit::Kw);
-                column.why.push_str("; no unit is stated, kW is a guess");
                 guessed.push(quote(&column.header));
             }
+            if column.register {
+                let energy = column.unit.map_or(Unit::Kwh, Unit::energy);
+                column.unit = Some(energy);
+                column.why.push_str(
+                    "; its values only ever rise: a running reading, of which differences are taken",
+                );
+            }
         }
-        if !guessed.is_empty() {
-            let text = format!("No unit is stated for {}: kW (average power) is taken.", list(&guessed));
-            findings.push(note(FindingKind::UnitDoubt, 1, file, "kW taken", text, true));
+        if guessed.is_empty() {
+            continue;
         }
+        let registers = columns.iter().all(|column| column.into.is_empty() || column.register);
+        let unit = if registers { "kWh" } else { "kW" };
+        for column in columns.iter_mut().filter(|column| guessed.contains(&quote(&column.header))) {
+            column.why = format!("{}; no unit is stated, {unit} is a guess", column.why);
+        }
+        let text = format!(
+            "No unit is stated for {}: {} is taken.{}",
+            list(&guessed),
+            if registers { "kWh" } else { "kW (average power)" },
+            if registers {
+                ""
+            } else {
+                " If the values are kWh per interval, every energy is too small or too large by the number of intervals in an hour."
+            }
+        );
+        findings.push(note(FindingKind::UnitDoubt, 1, file, &format!("{unit} taken"), text, true));
     }
 }
 
@@ -227,6 +357,7 @@ fn ignored(files: &[(String, Vec<Column>)], findings: &mut Vec<Finding>) {
                     && column.into.is_empty()
                     && column.look.filled > 0
                     && !column.stated
+                    && !column.quiet
                     && (column.role == Role::Ignore || is_power(column.role))
             })
             .map(|column| quote(&column.header))
@@ -234,24 +365,20 @@ fn ignored(files: &[(String, Vec<Column>)], findings: &mut Vec<Finding>) {
         if unused.is_empty() {
             continue;
         }
-        let registers = columns
-            .iter()
-            .any(|column| column.role == Role::Ignore && column.look.register && !column.stated);
         let text = format!(
-            "{} not used: {}.{}",
+            "{} not used: {}.",
             if unused.len() == 1 {
                 "One column is".to_owned()
             } else {
                 format!("{} columns are", unused.len())
             },
-            list(&unused),
-            if registers {
-                " A column that only ever rises is a running meter reading; state its role if it is not."
-            } else {
-                ""
-            }
+            list(&unused)
         );
-        findings.push(note(FindingKind::Ignored, unused.len() as u64, file, "left out", text, false));
+        let found = note(FindingKind::Ignored, unused.len() as u64, file, "left out", text, false);
+        // The channels of a table share its other columns.
+        if !findings.contains(&found) {
+            findings.push(found);
+        }
     }
 }
 
@@ -285,14 +412,9 @@ fn nothing(files: &[(String, Vec<Column>)]) -> Fault {
     let (file, columns) =
         files.first().map_or(("", &[][..]), |(file, columns)| (file.as_str(), &columns[..]));
     let headers: Vec<String> = columns.iter().map(|column| quote(&column.header)).collect();
-    let register = columns.iter().any(|column| column.look.register);
     Fault::new(
         format!("no column holds numbers that could be power or energy; the columns are {}", list(&headers)),
         file,
-        if register {
-            "A column that only ever rises is a running meter reading: export the energy or power of each interval, or state the column's role."
-        } else {
-            "State the role of the column that holds supply, demand or net power, or choose another file."
-        },
+        "State the role of the column that holds supply, demand or net power, or choose another file.",
     )
 }

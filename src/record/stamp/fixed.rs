@@ -40,6 +40,9 @@ pub(super) fn fixed(cell: &[u8], order: DateOrder) -> Option<Written> {
         clear,
         timed: true,
         halves: false,
+        day_end: false,
+        yearless: false,
+        fold: None,
         mark,
     })
 }

@@ -70,7 +70,7 @@ fn the_order_of_nem12_records_does_not_matter() {
     .collect();
     let other = read_text(&text);
     assert_eq!((&other.clock, net(&other)), (&one.clock, net(&one)));
-    let terms = RecordCase { stamp: Stamp::End, ..RecordCase::default() };
+    let terms = RecordCase { stamp: Some(Stamp::End), ..RecordCase::default() };
     let ends = read_with(&[("meter.csv", nem12().as_bytes())], &terms, &[]).unwrap();
     assert_eq!(
         (&ends.clock, net(&ends)),
