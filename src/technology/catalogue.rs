@@ -478,9 +478,8 @@ mod tests {
         let edited = catalogue.edited(&[edit("li_ion_lfp", "supplier's sheet")]).unwrap();
         let range = edited.find("li_ion_lfp").unwrap().range(Quantity::CycleLife);
         assert_eq!((range.low, range.typical, range.high, range.verified), (10.0, 20.0, 30.0, true));
-        assert_eq!(range.unit, "cycles", "the unit stays");
-        let edited = catalogue.edited(&[edit("li_ion_lfp", "")]).unwrap();
-        assert!(!edited.find("li_ion_lfp").unwrap().range(Quantity::CycleLife).verified);
+        let unsourced = catalogue.edited(&[edit("li_ion_lfp", "")]).unwrap();
+        assert!(!unsourced.find("li_ion_lfp").unwrap().range(Quantity::CycleLife).verified);
         let fault = catalogue.edited(&[edit("perpetual_motion", "")]).unwrap_err();
         assert_eq!(fault.place, "case, at catalogue[0].technology");
         assert!(fault.remedy.contains("li_ion_lfp"));

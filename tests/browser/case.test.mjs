@@ -5,7 +5,7 @@ import { tmpdir } from "node:os";
 import { join } from "node:path";
 import { after, before, test } from "node:test";
 import {
-  assertQuiet, chooseFiles, demoFile, demos, dropFiles, figures, savedResult, setUp, settled, shot, terminalText,
+  assertQuiet, chooseFiles, demoFile, demos, dropFiles, figures, openDemo, savedResult, setUp, settled, shot, terminalText,
 } from "./helpers.mjs";
 
 let site;
@@ -28,9 +28,9 @@ const openFold = async (page, name) => {
   return fold;
 };
 
-async function withSite(options, demo = demos[0]) {
-  const page = await site.open(options);
-  await chooseFiles(page, demoFile(demo));
+async function withSite() {
+  const page = await site.open();
+  await chooseFiles(page, demoFile(demos[0]));
   await settled(page);
   return page;
 }
@@ -126,7 +126,9 @@ test("a field that does not read leaves the keys to the browser, and the case as
 
 for (const demo of demos) {
   test(`${demo.name}: a saved case gives the same result wherever it is opened, bit for bit`, async () => {
-    const page = await withSite({}, demo);
+    const page = await site.open();
+    await openDemo(page, demo);
+    await settled(page);
     await page.locator("input[name=case-name]").fill("Second try, with losses");
     await openFold(page, "Notes").then((fold) => fold.locator("textarea").fill("as agreed\non Monday"));
     const radio = page.getByRole("radio", { name: "connected" });
