@@ -24,6 +24,9 @@ use super::tree::Tree;
 /// A person who types is left to finish, ms.
 const TYPING_MS: u32 = 150;
 
+/// Said while a worker that took over from a dead one is at work.
+const ANEW: &str = "The computation stopped and was started anew with the same case.";
+
 /// The page's state, handed to every station.
 #[derive(Clone, Copy)]
 pub(crate) struct Desk {
@@ -385,7 +388,11 @@ fn heard(
             // The result may hold its own error: what could be read is shown beside it.
             let fault = made.error.clone();
             sheet.set(Some(made));
-            status.set(Status { fault, ..Status::default() });
+            // What was said when the work began still holds; that it began anew does not matter any more.
+            status.update(|status| {
+                let remark = if status.remark == ANEW { "" } else { status.remark };
+                *status = Status { fault, remark, ..Status::default() };
+            });
         }
         Event::Fault(fault) => status.set(Status { fault: Some(fault), ..Status::default() }),
         Event::Case { case, files } => {
@@ -401,7 +408,7 @@ fn heard(
         Event::Failed(fault) => status.update(|status| status.fault = Some(fault)),
         Event::Restarted => {
             status.update(|status| {
-                status.remark = "The computation stopped and was started anew with the same case.";
+                status.remark = ANEW;
             });
         }
     }
