@@ -6,6 +6,7 @@
 mod case;
 mod circuits;
 mod duties;
+mod open_data;
 mod properties;
 mod reference;
 mod sheet;
