@@ -194,6 +194,12 @@ impl Bridge {
         self.post(&Request::Stop);
     }
 
+    /// Has no files open any more.
+    pub(crate) fn close(&self) {
+        self.0.borrow_mut().files.clear();
+        self.stop();
+    }
+
     /// Whether an answer is awaited.
     pub(crate) fn waiting(&self) -> bool {
         let inner = self.0.borrow();

@@ -23,8 +23,10 @@ thread_local! {
 /// Does it, and gives back what was taken from there.
 pub(super) async fn keep(act: Act, beside: &Array) -> Result<Array, Trouble> {
     let database = database().await.map_err(|_unopened| Trouble::Denied)?;
+    let writes = matches!(act, Act::Put { .. });
     done(&database, act, beside).await.map_err(|error| {
-        let full = error.source().is_some_and(|source| source.to_string().contains("Quota"));
+        let aborted = writes && error == rexie::Error::TransactioncommitFailed;
+        let full = aborted || error.source().is_some_and(|source| source.to_string().contains("Quota"));
         if full { Trouble::Full } else { Trouble::Refused }
     })
 }
@@ -70,8 +72,12 @@ async fn done(database: &Rexie, act: Act, beside: &Array) -> rexie::Result<Array
             files.clear().await?;
         }
     }
-    transaction.done().await?;
-    Ok(found)
+    // A transaction that found no room for what it had taken ends without an error of its own.
+    if transaction.done().await?.is_committed() {
+        Ok(found)
+    } else {
+        Err(rexie::Error::TransactioncommitFailed)
+    }
 }
 
 async fn database() -> rexie::Result<Rc<Rexie>> {

@@ -57,7 +57,10 @@ fn open() -> Result<(), JsValue> {
     let died = EventListener::new(&worker, "error", |event| {
         event.prevent_default();
         // Whoever waits hears that nothing came of it; the next request starts another worker.
-        DOOR.with_borrow_mut(|door| door.worker = None);
+        if let Some((worker, listeners)) = DOOR.with_borrow_mut(|door| door.worker.take()) {
+            worker.terminate();
+            drop(listeners);
+        }
         hand(|_| true, &JsValue::NULL);
     });
     DOOR.with_borrow_mut(|door| door.worker = Some((worker, [heard, died])));

@@ -394,7 +394,10 @@ fn pack(case: &str, files: &[File]) -> Result<String> {
     for file in files {
         case.files.push(CarriedFile::pack(&mut BlobSource::new(file.clone())?)?);
     }
-    case.to_json()
+    let text = case.to_json()?;
+    // What is saved must be readable again.
+    Case::from_json(&text)?;
+    Ok(text)
 }
 
 enum Done {

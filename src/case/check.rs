@@ -136,6 +136,8 @@ pub(super) fn ranges(case: &Case) -> Result<()> {
     edits(&case.catalogue)?;
     prices(&case.prices)?;
     count("files", case.files.len())?;
+    let all: f64 = case.files.iter().map(|file| file.bytes as f64).sum();
+    number("files (bytes of all together)", all, 0.0, LARGEST as f64, "bytes")?;
     for (i, file) in case.files.iter().enumerate() {
         word(&format!("files[{i}].name"), &file.name)?;
         number(&format!("files[{i}].bytes"), file.bytes as f64, 0.0, LARGEST as f64, "bytes")?;

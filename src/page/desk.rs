@@ -124,9 +124,10 @@ impl Desk {
 
     /// Opens files in place of those that are open; the case stays, but for what was corrected of other files' reading.
     pub(crate) fn open(self, files: Vec<File>) {
-        let again = self
-            .files
-            .with_untracked(|open| open.iter().eq(files.iter().map(File::name).collect::<Vec<_>>().iter()));
+        // A case without files waits for its own.
+        let again = self.files.with_untracked(|open| {
+            open.is_empty() || open.iter().eq(files.iter().map(File::name).collect::<Vec<_>>().iter())
+        });
         let case = self.case.with_untracked(|case| if again { case.clone() } else { afresh(case) });
         self.open_as(files, case, !again);
     }
@@ -162,9 +163,8 @@ impl Desk {
 
     /// Takes up steps that were kept. Without files the case is there, and its record has to be handed over again.
     pub(crate) fn resume(self, steps: Steps) {
-        let files = !steps.here().files.is_empty();
         self.steps.set_value(steps);
-        self.arrive(files);
+        self.arrive(true);
     }
 
     /// One step back.
@@ -199,12 +199,22 @@ impl Desk {
         self.steps.with_value(pick)
     }
 
+    /// Has the steps of one kept case be those of another.
+    pub(crate) fn rename_steps(self, old: &str, new: &Rc<str>) {
+        self.steps.update_value(|steps| steps.rename(old, new));
+    }
+
     /// Puts what the present step holds on the desk, and has it computed.
     fn arrive(self, open: bool) {
         let Step { case, files, .. } = self.steps.with_value(|steps| steps.here().clone());
         self.waits.typing.set_value(None);
         self.case.set(case);
-        if open {
+        if open && files.is_empty() {
+            self.files.set(Vec::new());
+            self.sheet.set(None);
+            self.bridge.with_value(Bridge::close);
+            self.settle_soon();
+        } else if open {
             let names: Vec<String> = files.iter().map(File::name).collect();
             let site = site_of(&names);
             self.files.set(names);

@@ -19,6 +19,9 @@ use super::tree::Tree;
 /// The demo sites that come with the page.
 const SITES: &str = include_str!("../../demo-profiles/sites.json");
 
+/// Bytes of the largest case file; the engine's reader has the same bound.
+const LARGEST_CASE: f64 = 268_435_456.0;
+
 #[derive(Clone, serde::Deserialize)]
 struct Demo {
     name: String,
@@ -131,6 +134,13 @@ fn take(desk: Desk, files: Vec<File>) {
     let (cases, meters): (Vec<File>, Vec<File>) =
         files.into_iter().partition(|file| file.name().to_ascii_lowercase().ends_with(".json"));
     if let Some(file) = cases.into_iter().next_back() {
+        if file.size() > LARGEST_CASE {
+            return desk.fail(Fault::new(
+                "the case file is larger than any that this page writes",
+                file.name(),
+                "Choose a case file that this page wrote.",
+            ));
+        }
         desk.fetch();
         spawn_local(async move {
             let name = file.name();

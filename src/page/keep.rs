@@ -75,6 +75,8 @@ const ELSEWHERE: &str =
     "That case is open in another tab. What you see here is a copy, kept as a case of its own.";
 const WAITS: &str =
     "The case you were at last is open in another tab. Open it from the kept cases to work on a copy here.";
+const GONE: &str = "That case is no longer kept in this browser.";
+const UNREAD: &str = "The browser did not hand the kept record over. Reload the page to try again.";
 const BARE: &str = "The case was kept without its record: hand over the meter file again.";
 
 /// A kept case.
@@ -125,6 +127,8 @@ struct Keeper {
     again: Cell<bool>,
     /// The case and the files that were written last.
     written: RefCell<Option<Written>>,
+    /// Files that the browser had no room for.
+    too_large: RefCell<Option<Rc<Vec<File>>>>,
     /// The case that this tab holds, and what lets go of it.
     held: RefCell<Option<(Rc<str>, Function)>>,
 }
@@ -181,10 +185,15 @@ async fn start(desk: Desk, fresh: bool) {
         .or_else(|| kept.first())
         .filter(|kept| kept.damaged.is_none())
         .cloned();
-    desk.kept.set(kept);
-    if !fresh && let Some(last) = last {
+    desk.kept.update(|all| {
+        let known: Vec<String> = all.iter().map(|kept| kept.id.clone()).collect();
+        all.extend(kept.into_iter().filter(|kept| !known.contains(&kept.id)));
+    });
+    // Whoever has begun something meanwhile is not disturbed.
+    let idle = || desk.with_steps(|steps| steps.list.len() == 1 && steps.here().files.is_empty());
+    if !fresh && let Some(last) = last.filter(|_| idle()) {
         if hold(&last.id).await {
-            take_up(desk, &last, last.id.as_str().into()).await;
+            take_up_if(desk, &last, last.id.as_str().into(), idle).await;
         } else {
             desk.remark(WAITS);
         }
@@ -220,21 +229,52 @@ fn entry(value: JsValue) -> Kept {
 pub(crate) fn open(desk: Desk, kept: Kept) {
     desk.fetch();
     spawn_local(async move {
-        if hold(&kept.id).await {
-            take_up(desk, &kept, kept.id.as_str().into()).await;
-        } else {
-            take_up(desk, &kept, new_id()).await;
-            desk.remark(ELSEWHERE);
+        // What is on the desk is written first.
+        while KEEPER.with(|keeper| keeper.writing.get()) {
+            pause().await;
+        }
+        let mine = hold(&kept.id).await;
+        // Another tab may have gone on with it since the list was made.
+        match stored(&kept.id).await {
+            Some(kept) if mine => take_up(desk, &kept, kept.id.as_str().into()).await,
+            Some(kept) => {
+                take_up(desk, &kept, new_id()).await;
+                desk.remark(ELSEWHERE);
+            }
+            None => desk.remark(GONE),
         }
         desk.fetched();
     });
 }
 
+/// A moment in which others come to their turn.
+async fn pause() {
+    let moment = Promise::new(&mut |done, _| {
+        gloo::timers::callback::Timeout::new(20, move || {
+            let _ = done.call0(&JsValue::NULL);
+        })
+        .forget();
+    });
+    let _ = JsFuture::from(moment).await;
+}
+
+/// A kept case as it stands in the browser now; none if it is not there or damaged.
+async fn stored(id: &str) -> Option<Kept> {
+    let all = keep(Act::List, &Array::new()).await.ok()?;
+    all.iter().map(entry).find(|kept| kept.id == id && kept.damaged.is_none())
+}
+
 async fn take_up(desk: Desk, kept: &Kept, id: Rc<str>) {
-    let files = if kept.record { files_of(&kept.id).await } else { None };
-    if files.is_none() && !kept.files.is_empty() {
-        desk.remark(BARE);
+    take_up_if(desk, kept, id, || true).await;
+}
+
+async fn take_up_if(desk: Desk, kept: &Kept, id: Rc<str>, still: impl Fn() -> bool) {
+    let files = if kept.record { files_of(&kept.id).await } else { Ok(None) };
+    let Ok(files) = files else { return desk.remark(UNREAD) };
+    if !still() {
+        return;
     }
+    let bare = files.is_none() && !kept.files.is_empty();
     let files = Rc::new(files.unwrap_or_default());
     let list = kept
         .steps
@@ -243,16 +283,19 @@ async fn take_up(desk: Desk, kept: &Kept, id: Rc<str>) {
             Some(Step::first(words.clone(), Tree::of_case(case)?, Rc::clone(&files), Rc::clone(&id)))
         })
         .collect();
-    if *id == *kept.id {
+    if *id == *kept.id && !files.is_empty() {
         KEEPER.with(|keeper| *keeper.written.borrow_mut() = Some((id, files)));
     }
     desk.resume(Steps { list, at: kept.at });
+    if bare {
+        desk.remark(BARE);
+    }
 }
 
-async fn files_of(id: &str) -> Option<Vec<File>> {
-    let files = keep(Act::Files { id: id.to_owned() }, &Array::new()).await.ok()?;
+async fn files_of(id: &str) -> Result<Option<Vec<File>>, Trouble> {
+    let files = keep(Act::Files { id: id.to_owned() }, &Array::new()).await?;
     let files: Vec<File> = files.iter().filter_map(|file| file.dyn_into().ok()).collect();
-    (!files.is_empty()).then_some(files)
+    Ok((!files.is_empty()).then_some(files))
 }
 
 /// Keeps the present state, as soon as what is being written is done.
@@ -286,7 +329,7 @@ async fn write(desk: Desk) {
             id: here.id.to_string(),
             name: desk.name(),
             changed_ms: Date::now(),
-            files: here.files.iter().map(File::name).collect(),
+            files: names(desk, here),
             record: false,
             at,
             steps: same.into_iter().map(|step| (step.words.clone(), step.case.text())).collect(),
@@ -297,22 +340,50 @@ async fn write(desk: Desk) {
     if files.is_empty() && kept.steps.len() < 2 {
         return;
     }
+    let (mut id, mut kept) = (id, kept);
     let holds = KEEPER.with(|keeper| keeper.held.borrow().as_ref().is_some_and(|(held, _)| *held == id));
-    if !holds && !hold(&id).await {
-        // Steps back led to a case that another tab has taken meanwhile.
-        return desk.keeping.set(Keeping::Cannot(ELSEWHERE));
+    if !holds {
+        let known = desk
+            .kept
+            .with_untracked(|all| all.iter().find(|other| other.id == *id).map(|other| other.changed_ms));
+        let free = hold(&id).await;
+        let newer = match known {
+            Some(known) if free => stored(&id).await.is_some_and(|kept| kept.changed_ms > known),
+            _ => false,
+        };
+        if !free || newer {
+            // Steps back led to a case that another tab has gone on with: it is left alone, and these steps are another case.
+            let new = new_id();
+            desk.rename_steps(&id, &new);
+            kept.id = new.to_string();
+            id = new;
+            hold(&id).await;
+        }
+    }
+    if KEEPER.with(|keeper| keeper.off.get()) {
+        return KEEPER.with(release);
     }
     remember(Memory::Window, HERE, Some(&id));
-    remember(Memory::Browser, TRACE, Some("yes"));
-    let record = with_record();
+    let no_room = KEEPER
+        .with(|keeper| keeper.too_large.borrow().as_ref().is_some_and(|known| Rc::ptr_eq(known, &files)));
+    let record = with_record() && !no_room;
     let outcome = match put(&kept, &files, record).await {
-        Err(Trouble::Full) if record => put(&kept, &files, false).await.map(|kept| (kept, Keeping::NoRoom)),
+        Err(trouble) if record && trouble != Trouble::Denied => {
+            let state =
+                if trouble == Trouble::Full { Keeping::NoRoom } else { Keeping::On { record: false } };
+            if trouble == Trouble::Full {
+                KEEPER.with(|keeper| *keeper.too_large.borrow_mut() = Some(Rc::clone(&files)));
+            }
+            put(&kept, &files, false).await.map(|kept| (kept, state))
+        }
+        Ok(kept) if no_room => Ok((kept, Keeping::NoRoom)),
         outcome => outcome.map(|kept| (kept, Keeping::On { record })),
     };
     let state = match outcome {
-        Ok(_) if KEEPER.with(|keeper| keeper.off.get()) => return,
+        _ if KEEPER.with(|keeper| keeper.off.get()) => return,
         Ok((kept, state)) => {
-            KEEPER.with(|keeper| *keeper.written.borrow_mut() = Some((id, files)));
+            remember(Memory::Browser, TRACE, Some("yes"));
+            KEEPER.with(|keeper| *keeper.written.borrow_mut() = kept.record.then_some((id, files)));
             desk.kept.update(|all| {
                 all.retain(|other| other.id != kept.id);
                 all.insert(0, kept);
@@ -322,6 +393,16 @@ async fn write(desk: Desk) {
         Err(trouble) => Keeping::Cannot(sentence(trouble)),
     };
     desk.keeping.set(state);
+}
+
+/// Names of the files of a step; of a case that waits for its record, those that it waits for.
+fn names(desk: Desk, step: &Step) -> Vec<String> {
+    if step.files.is_empty() {
+        let known =
+            |all: &Vec<Kept>| all.iter().find(|kept| kept.id == *step.id).map(|kept| kept.files.clone());
+        return desk.kept.with_untracked(known).unwrap_or_default();
+    }
+    step.files.iter().map(File::name).collect()
 }
 
 /// Writes a case, and its files where they are not there yet.
@@ -349,6 +430,12 @@ pub(crate) fn remove(desk: Desk, id: String) {
         if let Err(trouble) = keep(Act::Remove { id: id.clone() }, &Array::new()).await {
             return desk.keeping.set(Keeping::Cannot(sentence(trouble)));
         }
+        KEEPER.with(|keeper| {
+            let mut written = keeper.written.borrow_mut();
+            if written.as_ref().is_some_and(|(known, _)| **known == *id) {
+                *written = None;
+            }
+        });
         desk.kept.update(|all| all.retain(|kept| kept.id != id));
         if desk.kept.with_untracked(Vec::is_empty) {
             remember(Memory::Browser, TRACE, None);
@@ -402,7 +489,10 @@ pub(crate) fn again(desk: Desk) {
 /// Keeps the record as well, or the case alone.
 pub(crate) fn set_record(desk: Desk, record: bool) {
     remember(Memory::Browser, WISH, (!record).then_some("bare"));
-    KEEPER.with(|keeper| *keeper.written.borrow_mut() = None);
+    KEEPER.with(|keeper| {
+        *keeper.written.borrow_mut() = None;
+        *keeper.too_large.borrow_mut() = None;
+    });
     soon(desk);
 }
 
@@ -451,6 +541,7 @@ async fn hold(id: &str) -> bool {
     // The lock lasts as long as the promise that its callback gives back.
     let answered = Promise::new(&mut |answer, _| {
         let until = Rc::clone(&until);
+        let answer_of = answer.clone();
         let granted = Closure::once_into_js(move |lock: JsValue| -> JsValue {
             let _ = answer.call1(&JsValue::NULL, &JsValue::from(!lock.is_null()));
             if lock.is_null() {
@@ -458,7 +549,18 @@ async fn hold(id: &str) -> bool {
             }
             Promise::new(&mut |release, _| *until.borrow_mut() = Some(release)).into()
         });
-        let _ = request.call3(&locks, &name, &options, &granted);
+        let asked = request.call3(&locks, &name, &options, &granted).map(Promise::from);
+        // A browser that refuses its locks cannot tell whose a case is; its store will say what it refuses.
+        let refused = answer_of.clone();
+        spawn_local(async move {
+            let failed = match asked {
+                Ok(promise) => JsFuture::from(promise).await.is_err(),
+                Err(_) => true,
+            };
+            if failed {
+                let _ = refused.call1(&JsValue::NULL, &JsValue::TRUE);
+            }
+        });
     });
     let free = JsFuture::from(answered).await.is_ok_and(|answer| answer.is_truthy());
     if free && let Some(function) = held_until.borrow_mut().take() {

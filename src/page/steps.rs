@@ -75,7 +75,9 @@ impl Steps {
                 self.at -= 1;
                 return;
             }
-            if changes.first().map(|change| &change.path) == here.typed.as_ref() {
+            let now = differences(&here.case, &case);
+            let same = |list: &[Change]| list.first().map(|change| &change.path) == here.typed.as_ref();
+            if same(&changes) && (now.is_empty() || same(&now)) {
                 let words = words(&changes);
                 let here = &mut self.list[self.at];
                 (here.words, here.case) = (words, case);
@@ -97,6 +99,13 @@ impl Steps {
             self.list.remove(0);
         }
         self.at = self.list.len() - 1;
+    }
+
+    /// Has the steps of one kept case be those of another.
+    pub(crate) fn rename(&mut self, old: &str, new: &Rc<str>) {
+        for step in self.list.iter_mut().filter(|step| *step.id == *old) {
+            step.id = Rc::clone(new);
+        }
     }
 
     /// What the page shows of it.

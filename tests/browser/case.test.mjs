@@ -97,6 +97,19 @@ test("every step can be taken back and done again, by button, key and list", asy
   await page.closeAll();
 });
 
+test("what is typed into two fields are two steps", async () => {
+  const page = await withSite();
+  await page.locator("input[name=case-name]").pressSequentially("Farm");
+  const notes = await openFold(page, "Notes").then((fold) => fold.locator("textarea"));
+  await notes.pressSequentially("as agreed");
+  await page.locator("[data-role=undo]").click();
+  assert.equal(await notes.inputValue(), "");
+  assert.equal(await page.locator("input[name=case-name]").inputValue(), "Farm");
+  await page.locator("[data-role=undo]").click();
+  assert.equal(await page.locator("input[name=case-name]").inputValue(), "");
+  await page.closeAll();
+});
+
 test("another site is a step like any other, and its predecessor comes back with its case", async () => {
   const page = await withSite();
   await share(page).fill("80 %");
@@ -386,6 +399,19 @@ test("a store that is full keeps the case without its record, or says that it ca
   const fuller = await faulty(`${put} IDBObjectStore.prototype.put = full;`);
   await keeping(fuller, "no room left to keep the case");
   await fuller.closeAll();
+  // A disk that fills while the transaction ends: every request went well, and nothing is there.
+  const late = await faulty(`const put = IDBObjectStore.prototype.put; IDBObjectStore.prototype.put = function (...a) {
+    const request = put.apply(this, a);
+    if (a[0].files?.[0] instanceof File) this.transaction.large = true;
+    else if (this.transaction.large) request.addEventListener("success", () => this.transaction.abort());
+    return request;
+  };`);
+  await keeping(late, "no room for the record: the case is kept without it");
+  await share(late).fill("80 %");
+  await share(late).blur();
+  await settled(late);
+  await keeping(late, "no room for the record: the case is kept without it");
+  await late.closeAll();
 });
 
 async function meddle(page, act) {
