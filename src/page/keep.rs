@@ -3,14 +3,15 @@
 //! Kept are the steps with the case after each, and the record's files. A case is open for keeping in one tab at a time (Web
 //! Locks); another tab works on a copy.
 
+mod kept;
+
 use std::cell::{Cell, RefCell};
 use std::rc::Rc;
 
 use gloo::events::EventListener;
-use js_sys::{Array, Date, Function, JSON, Math, Object, Promise, Reflect};
+use js_sys::{Array, Date, Function, Math, Object, Promise, Reflect};
 use leptos::prelude::*;
 use leptos::task::spawn_local;
-use serde::{Deserialize, Serialize};
 use wasm_bindgen::closure::Closure;
 use wasm_bindgen::{JsCast, JsValue};
 use wasm_bindgen_futures::JsFuture;
@@ -21,6 +22,9 @@ use millpond::fault::Fault;
 use crate::bridge::host::{Memory, remember, remembered};
 use crate::bridge::keeping::keep;
 use crate::bridge::{Act, Trouble};
+
+use kept::{BARE, ELSEWHERE, EVICTED, FROM_DISK, GONE, UNREAD, WAITS, entry, sentence};
+pub(crate) use kept::{Keeping, Kept};
 
 use super::desk::Desk;
 use super::save;
@@ -33,88 +37,6 @@ const WISH: &str = "millpond-keep";
 const TRACE: &str = "millpond-kept";
 /// The case that this tab is at.
 const HERE: &str = "millpond-tab";
-
-/// Whether and how the case is kept.
-#[derive(Clone, Copy, Default, PartialEq)]
-pub(crate) enum Keeping {
-    /// Not known yet.
-    #[default]
-    Starting,
-    /// Everything so far is kept, with the record or without.
-    On { record: bool },
-    /// The person wants nothing kept.
-    Nothing,
-    /// Kept without the record, since there is no room for it.
-    NoRoom,
-    /// It cannot be kept, and why.
-    Cannot(&'static str),
-}
-
-impl Keeping {
-    /// The state in words.
-    pub(crate) fn words(self) -> &'static str {
-        match self {
-            Self::Starting => "",
-            Self::On { record: true } => "Kept in this browser, with the record.",
-            Self::On { record: false } => "Kept in this browser, without the record.",
-            Self::Nothing => "Nothing is kept on this computer.",
-            Self::NoRoom => {
-                "The browser has no room for the record: the case is kept without it. Save it with its record as a file."
-            }
-            Self::Cannot(why) => why,
-        }
-    }
-}
-
-const FROM_DISK: &str = "A page opened from disk keeps nothing. Save the case as a file.";
-const DENIED: &str = "This browser does not let the page keep anything (a private window, or a setting). Save the case as a file before you leave.";
-const FULL: &str = "The browser has no room left to keep the case. Save it as a file, or remove kept cases.";
-const REFUSED: &str = "The browser did not keep the last step. Save the case as a file.";
-const EVICTED: &str = "What was kept here is gone: browsers remove it when they need room, or when their data are cleared. Case files are not concerned.";
-const ELSEWHERE: &str =
-    "That case is open in another tab. What you see here is a copy, kept as a case of its own.";
-const WAITS: &str =
-    "The case you were at last is open in another tab. Open it from the kept cases to work on a copy here.";
-const GONE: &str = "That case is no longer kept in this browser.";
-const UNREAD: &str = "The browser did not hand the kept record over. Reload the page to try again.";
-const BARE: &str = "The case was kept without its record: hand over the meter file again.";
-
-/// A kept case.
-#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
-pub(crate) struct Kept {
-    /// Its key.
-    pub(crate) id: String,
-    /// Its name for people.
-    pub(crate) name: String,
-    /// When it was changed last, ms since 1970.
-    pub(crate) changed_ms: f64,
-    /// Names of its record's files.
-    pub(crate) files: Vec<String>,
-    /// Whether those are kept too.
-    pub(crate) record: bool,
-    at: usize,
-    /// Each step in words, and the case after it as the text of its file.
-    steps: Vec<(String, String)>,
-    /// What cannot be read, as it stands.
-    #[serde(skip)]
-    pub(crate) damaged: Option<String>,
-}
-
-impl Kept {
-    /// When it was changed last, on this computer's clock.
-    pub(crate) fn when(&self) -> String {
-        let date = Date::new(&self.changed_ms.into());
-        let two = |number: u32| format!("{number:02}");
-        format!(
-            "{}-{}-{} {}:{}",
-            date.get_full_year(),
-            two(date.get_month() + 1),
-            two(date.get_date()),
-            two(date.get_hours()),
-            two(date.get_minutes())
-        )
-    }
-}
 
 /// A case by its key, and the files of its record.
 type Written = (Rc<str>, Rc<Vec<File>>);
@@ -199,30 +121,6 @@ async fn start(desk: Desk, fresh: bool) {
         }
     }
     soon(desk);
-}
-
-fn sentence(trouble: Trouble) -> &'static str {
-    match trouble {
-        Trouble::Denied => DENIED,
-        Trouble::Full => FULL,
-        Trouble::Refused => REFUSED,
-    }
-}
-
-/// A kept case, or what is left of it.
-fn entry(value: JsValue) -> Kept {
-    let text = JSON::stringify(&value).ok().map(String::from).unwrap_or_default();
-    let id = Reflect::get(&value, &"id".into()).ok().and_then(|id| id.as_string()).unwrap_or_default();
-    let kept: Option<Kept> = serde_wasm_bindgen::from_value(value).ok();
-    match kept {
-        Some(kept)
-            if kept.at < kept.steps.len()
-                && kept.steps.iter().all(|(_, case)| Tree::of_case(case).is_some()) =>
-        {
-            kept
-        }
-        _ => Kept { name: "damaged".to_owned(), id, damaged: Some(text), ..Kept::default() },
-    }
 }
 
 /// Opens a kept case in place of what is on the desk; one that another tab holds as a copy.
