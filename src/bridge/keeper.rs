@@ -1,7 +1,7 @@
 //! What is kept in the browser, by IndexedDB: in `cases` the kept cases, in `files` the files of their records.
 //!
-//! It stands in the worker's program because the library for it would be a sixth of the page's; the page has a worker of its own
-//! for it, which never computes.
+//! It stands in the worker's program because the library for it would add 20 kB (gzipped) to the page's; the page has a worker of
+//! its own for it, which never computes.
 
 use std::cell::RefCell;
 use std::error::Error;
